@@ -1,0 +1,1 @@
+"""From spots to a verdict."""

@@ -1,0 +1,32 @@
+"""Troubles of the second half, each named for what went wrong.
+
+    AnalyseError
+    ├── TableWrong          a points or counts table cannot be read as one
+    ├── GridWrong           the quadrats asked for do not fit the study area
+    ├── TooFewQuadrats      a test needs more quadrats than there are
+    └── RecipeWrong         the recipe of a survey cannot be followed
+
+All of them are wrong requests (exit 2). A message says what is wrong, the value seen, and what to do.
+"""
+
+from __future__ import annotations
+
+
+class AnalyseError(Exception):
+    """Anything a user can cause in the second half; catch this for all of it."""
+
+
+class TableWrong(AnalyseError):
+    """A points or counts table has a missing column, text in a cell, or an impossible value."""
+
+
+class GridWrong(AnalyseError):
+    """The quadrats asked for do not fit the study area."""
+
+
+class TooFewQuadrats(AnalyseError):
+    """A test needs more quadrats than there are."""
+
+
+class RecipeWrong(AnalyseError):
+    """The recipe of a survey names an unknown key or an impossible value."""

@@ -1,0 +1,1 @@
+"""From a photograph to spots that a person has checked."""
