@@ -129,7 +129,9 @@ def parse_pair(text: str, *, name: str, separator: Literal["-", "x"]) -> tuple[L
     pattern = rf"\s*({_NUMBER}){_UNIT}{separator}\s*({_NUMBER}){_UNIT}"
     match = re.fullmatch(pattern, text)
     if match is None or (match[2] or match[4]) is None or (match[2] and not match[4]):
-        raise OptionWrong(f"{name} must be two lengths with a unit such as {example}, not {text!r}.")
+        raise OptionWrong(
+            f"{name} must be two lengths with a unit such as {example}, not {text!r}."
+        )
     first = _length(match[1], match[2] or match[4], name, text)
     second = _length(match[3], match[4], name, text)
     if first.unit != second.unit:
@@ -142,7 +144,9 @@ def parse_pair(text: str, *, name: str, separator: Literal["-", "x"]) -> tuple[L
 def _length(number: str, unit: str | None, name: str, text: str) -> Length:
     """One checked length, with the option's name in the complaint."""
     if unit is None:
-        raise OptionWrong(f"{name} needs a unit: {text!r} could be px or mm; write {text.strip()}mm.")
+        raise OptionWrong(
+            f"{name} needs a unit: {text!r} could be px or mm; write {text.strip()}mm."
+        )
     value = float(number)
     if not (math.isfinite(value) and value > 0):
         raise OptionWrong(f"{name} must be positive and finite, not {text!r}.")
