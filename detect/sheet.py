@@ -1,0 +1,332 @@
+"""The record of one photograph on disk, what people changed on it, and the state that follows."""
+
+from __future__ import annotations
+
+import json
+import math
+from collections.abc import Sequence
+from dataclasses import dataclass, fields, replace
+from pathlib import Path
+from typing import Any
+
+import numpy as np
+
+from detect.amendments import AMENDMENTS_SUFFIX as AMENDMENTS_SUFFIX
+from detect.amendments import SHEET_SUFFIX as SHEET_SUFFIX
+from detect.amendments import Amendment as Amendment
+from detect.amendments import amendments_path as amendments_path
+from detect.amendments import append_amendment as append_amendment
+from detect.amendments import explain, load_json, read_record
+from detect.amendments import read_amendments as read_amendments
+from detect.area import StudyArea
+from detect.errors import DetectError, SheetUnreadable
+from detect.files import csv_text, write_text_atomically
+from detect.photograph import Photograph
+from detect.scale import Scale
+from detect.spots import Spots
+
+SCHEMA = 1
+_DAMAGED = "{} is damaged ({}); restore a copy or detect again."
+_SPOT_COLUMNS = tuple(field.name for field in fields(Spots))
+_POINT_COLUMNS = [
+    "id",
+    "x_px",
+    "y_px",
+    "x_mm",
+    "y_mm",
+    "radius_px",
+    "radius_mm",
+    "area_mm2",
+    "contrast",
+    "doubt",
+    "origin",
+    "standing",
+]
+
+
+@dataclass(frozen=True, slots=True)
+class PhotographIdentity:
+    """Which file a sheet is about: name, sha256 of its bytes, size in pixels, when taken."""
+
+    name: str
+    sha256: str
+    width: int
+    height: int
+    taken: str | None = None
+
+    @classmethod
+    def of(cls, photograph: Photograph) -> PhotographIdentity:
+        """Return the identity of a photograph that has been read."""
+        return cls(
+            photograph.name,
+            photograph.sha256,
+            photograph.width,
+            photograph.height,
+            photograph.taken,
+        )
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Sheet:
+    """The record of one photograph: identity, scale, area, settings, spots.
+
+    Parameters
+    ----------
+    schema : int
+        Number of the file format.
+    tool_version : str
+        Version of the program that wrote it.
+    photograph : PhotographIdentity
+        The file it is about.
+    scale : Scale or None
+        None where no scale is known.
+    area : StudyArea
+        In pixels.
+    settings : dict
+        What was asked for and what it was resolved to; plain values.
+    spots : Spots
+        In pixels.
+    planted : dict or None
+        Results of the planted-object test, once measured.
+    """
+
+    schema: int
+    tool_version: str
+    photograph: PhotographIdentity
+    scale: Scale | None
+    area: StudyArea
+    settings: dict[str, Any]
+    spots: Spots
+    planted: dict[str, Any] | None = None
+
+    def __post_init__(self) -> None:
+        if self.schema != SCHEMA:
+            raise ValueError(f"schema {self.schema} is not {SCHEMA}")
+
+    @property
+    def stem(self) -> str:
+        """Name of the photograph without its last suffix, which the files beside it share."""
+        return Path(self.photograph.name).stem
+
+
+def sheet_path(folder: Path, stem: str) -> Path:
+    """Return where the sheet of a photograph with this stem lies in a folder."""
+    return folder / f"{stem}{SHEET_SUFFIX}"
+
+
+def write_sheet(sheet: Sheet, folder: Path) -> Path:
+    """Write a sheet, complete or not at all.
+
+    Parameters
+    ----------
+    sheet : Sheet
+        The record; numbers are written so that they read back the same.
+    folder : Path
+        Where to.
+
+    Returns
+    -------
+    Path
+        The file.
+
+    Raises
+    ------
+    FolderNotWritable
+        If it cannot be written.
+    """
+    path = sheet_path(folder, sheet.stem)
+    write_text_atomically(path, _sheet_text(sheet))
+    return path
+
+
+def read_sheet(path: Path) -> Sheet:
+    """Read a sheet.
+
+    Parameters
+    ----------
+    path : Path
+        A file named `<stem>.sheet.json`.
+
+    Returns
+    -------
+    Sheet
+
+    Raises
+    ------
+    SheetUnreadable
+        If the file is missing, damaged, or written by a later version.
+    """
+    try:
+        values = load_json(read_record(path))
+    except ValueError as trouble:
+        raise SheetUnreadable(_DAMAGED.format(path.name, explain(trouble))) from trouble
+    if not isinstance(values, dict) or "schema" not in values:
+        raise SheetUnreadable(f"{path.name} is no sheet: it has no schema number.")
+    if values["schema"] != SCHEMA:
+        raise SheetUnreadable(
+            f"{path.name} has schema {values['schema']!r}, but this version reads {SCHEMA};"
+            " use the version that wrote it or detect again."
+        )
+    try:
+        return _sheet_from(values)
+    except (KeyError, TypeError, ValueError, IndexError, AttributeError, DetectError) as trouble:
+        raise SheetUnreadable(_DAMAGED.format(path.name, explain(trouble))) from trouble
+
+
+def points_csv(sheet: Sheet) -> str:
+    """Return the spots of a sheet as a table, struck ones included.
+
+    Parameters
+    ----------
+    sheet : Sheet
+        As found, or with amendments applied by `current_state`.
+
+    Returns
+    -------
+    str
+        CSV; the cells in millimetres are empty where no scale is known.
+    """
+    spots, scale = sheet.spots, sheet.scale
+    unknown = np.full(len(spots), np.nan)
+    mm = np.column_stack([unknown, unknown]) if scale is None else scale.to_mm(spots.centres)
+    factor = unknown if scale is None else scale.mm_per_px(spots.centres)
+    rows = [
+        (
+            spots.id[i],
+            spots.x[i],
+            spots.y[i],
+            mm[i, 0],
+            mm[i, 1],
+            spots.radius[i],
+            spots.radius[i] * factor[i],
+            spots.area[i] * factor[i] ** 2,
+            spots.contrast[i],
+            spots.doubt[i],
+            "found" if spots.found[i] else "placed",
+            "counted" if spots.counted[i] else "struck",
+        )
+        for i in range(len(spots))
+    ]
+    return csv_text(_POINT_COLUMNS, rows, digits=7)
+
+
+def current_state(sheet: Sheet, amendments: Sequence[Amendment]) -> Sheet:
+    """Apply amendments to a sheet: strike, restore, place, move, resize.
+
+    Parameters
+    ----------
+    sheet : Sheet
+        As found.
+    amendments : sequence of Amendment
+        In order.
+
+    Returns
+    -------
+    Sheet
+        The same sheet with its spots changed; spots are never removed, only struck.
+
+    Raises
+    ------
+    SheetUnreadable
+        If an amendment names a spot the sheet has not, places one under a taken id, or leaves
+        the photograph.
+    """
+    rows = [
+        {name: getattr(sheet.spots, name)[i] for name in _SPOT_COLUMNS}
+        for i in range(len(sheet.spots))
+    ]
+    by_id = {str(row["id"]): row for row in rows}
+    for amendment in amendments:
+        _check_applies(sheet, amendment, by_id)
+        _apply(amendment, by_id)
+    columns: list[Any] = [tuple(by_id)]
+    columns += [np.array([row[name] for row in by_id.values()]) for name in _SPOT_COLUMNS[1:]]
+    return replace(sheet, spots=Spots(*columns))
+
+
+def _apply(amendment: Amendment, by_id: dict[str, dict[str, Any]]) -> None:
+    """Apply one amendment that has been checked."""
+    if amendment.what == "place":
+        fresh = {"contrast": np.nan, "fill": 1.0, "doubt": 0.0, "found": False}
+        by_id[amendment.spot] = {"id": amendment.spot, **fresh}
+    row = by_id[amendment.spot]
+    if amendment.what in ("place", "move"):
+        row |= {"x": amendment.x, "y": amendment.y}
+    if amendment.radius is not None:
+        row |= {"radius": amendment.radius, "area": math.pi * amendment.radius**2}
+    if amendment.what in ("strike", "restore", "place"):
+        row["counted"] = amendment.what != "strike"
+
+
+def _check_applies(sheet: Sheet, amendment: Amendment, known: dict[str, Any]) -> None:
+    """Refuse an amendment that does not fit the sheet."""
+    if (amendment.what == "place") == (amendment.spot in known):
+        trouble = "already is one" if amendment.what == "place" else "is no such spot"
+        raise SheetUnreadable(
+            f"The amendment {amendment.id!r} of {sheet.photograph.name} would {amendment.what}"
+            f" spot {amendment.spot!r}, but there {trouble}; put its log right."
+        )
+    width, height = sheet.photograph.width, sheet.photograph.height
+    inside = amendment.x is None or (
+        -0.5 <= amendment.x <= width - 0.5 and -0.5 <= (amendment.y or 0.0) <= height - 0.5
+    )
+    if not inside:
+        raise SheetUnreadable(
+            f"The amendment {amendment.id!r} of {sheet.photograph.name} puts a spot at"
+            f" {amendment.x:g}, {amendment.y:g}, outside the photograph; put its log right."
+        )
+
+
+def _sheet_text(sheet: Sheet) -> str:
+    """Write the sheet as JSON: a line per part, and a line per spot."""
+    parts = {
+        "schema": sheet.schema,
+        "tool_version": sheet.tool_version,
+        "photograph": {
+            field.name: getattr(sheet.photograph, field.name) for field in fields(sheet.photograph)
+        },
+        "scale": None if sheet.scale is None else sheet.scale.as_dict(),
+        "area": sheet.area.as_dict(),
+        "settings": sheet.settings,
+        "planted": sheet.planted,
+        "spot_columns": list(_SPOT_COLUMNS),
+    }
+    lines = [f"{json.dumps(name)}: {_json(value)}" for name, value in parts.items()]
+    rows = ",\n".join(_json(row) for row in _spot_rows(sheet.spots))
+    return "{\n" + ",\n".join(lines) + ',\n"spots": [\n' + rows + "\n]\n}\n"
+
+
+def _spot_rows(spots: Spots) -> list[list[Any]]:
+    """Return the spots row by row as plain values, None for what was not measured."""
+    columns = [getattr(spots, name) for name in _SPOT_COLUMNS]
+    plain = [list(columns[0]), *(column.tolist() for column in columns[1:])]
+    return [
+        [None if value != value else value for value in row] for row in zip(*plain, strict=True)
+    ]
+
+
+def _sheet_from(values: dict[str, Any]) -> Sheet:
+    """Build the sheet that a file's values describe."""
+    if tuple(values["spot_columns"]) != _SPOT_COLUMNS:
+        raise ValueError(f"spot columns {values['spot_columns']}")
+    rows = values["spots"]
+    if any(len(row) != len(_SPOT_COLUMNS) for row in rows):
+        raise ValueError("a spot has too few or too many values")
+    columns: list[Any] = [tuple(str(row[0]) for row in rows)]
+    for k in range(1, len(_SPOT_COLUMNS)):
+        columns.append(np.array([np.nan if row[k] is None else row[k] for row in rows]))
+    return Sheet(
+        values["schema"],
+        str(values["tool_version"]),
+        PhotographIdentity(**values["photograph"]),
+        None if values["scale"] is None else Scale.from_dict(values["scale"]),
+        StudyArea.from_dict(values["area"]),
+        dict(values["settings"]),
+        Spots(*columns),
+        values["planted"],
+    )
+
+
+def _json(value: Any) -> str:
+    """Write a value as compact JSON in which NaN cannot hide."""
+    return json.dumps(value, ensure_ascii=False, allow_nan=False)
