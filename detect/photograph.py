@@ -2,15 +2,33 @@
 
 from __future__ import annotations
 
+import hashlib
+import re
+from collections.abc import Callable
 from dataclasses import dataclass
 from pathlib import Path
+from typing import Any
 
 import cv2
 import numpy as np
 from numpy.typing import NDArray
 
+from detect.containers import Claim, read_claim
+from detect.errors import PhotographUnreadable, RequestWrong
+
 PixelsFloat = NDArray[np.float32]
 StoredPixels = NDArray[np.uint8] | NDArray[np.uint16]
+
+IMAGE_SUFFIXES = (".jpg", ".jpeg", ".png", ".tif", ".tiff", ".bmp")
+SUFFIXES_TO_EXPORT = (
+    *(".heic", ".heif", ".avif", ".webp"),
+    *(".dng", ".cr2", ".cr3", ".nef", ".arw", ".orf", ".rw2", ".raf", ".pef", ".srw", ".raw"),
+)
+MOST_PIXELS = 500_000_000
+SMALLEST_SIDE = 16
+# Unpacking has limits: deflate gives at most 1,032 bytes for one (RFC 1951), a blank JPEG less.
+MOST_DECODED_PER_BYTE = 1200
+_FLAGS = cv2.IMREAD_ANYCOLOR | cv2.IMREAD_ANYDEPTH | cv2.IMREAD_IGNORE_ORIENTATION
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -76,3 +94,140 @@ class Photograph:
             size = (max(1, round(self.width * shrink)), max(1, round(self.height * shrink)))
             array = cv2.resize(array, size, interpolation=cv2.INTER_AREA)  # type: ignore[assignment]
         return array.astype(np.float32) * np.float32(1.0 / np.iinfo(array.dtype).max)
+
+
+def read_photograph(path: Path) -> Photograph:
+    """Read one image file, upright, in red, green and blue.
+
+    Parameters
+    ----------
+    path : Path
+        A JPEG, PNG, TIFF or BMP file, told by what it holds rather than by its name.
+
+    Returns
+    -------
+    Photograph
+        Grey becomes three equal channels; transparency and colour profiles are left aside, and
+        of a TIFF with many pages the first is read: each of these with a note.
+
+    Raises
+    ------
+    PhotographUnreadable
+        If the file cannot be read, is no image, is damaged or cut short, claims more than its
+        bytes can hold or more than `MOST_PIXELS`, or is smaller than `SMALLEST_SIDE`.
+    """
+    try:
+        data = _bytes_of(path)
+        claim = read_claim(data)
+        _check_size(claim, len(data))
+        stored = _decode(claim)
+    except PhotographUnreadable as trouble:
+        raise PhotographUnreadable(f"{path.name}: {trouble}.") from trouble
+    return Photograph(path, hashlib.sha256(data).hexdigest(), stored, claim.taken, claim.notes)
+
+
+def find_photographs(folder: Path) -> list[Path]:
+    """Return the photographs of a folder, in natural order (dish_2 before dish_10).
+
+    Parameters
+    ----------
+    folder : Path
+        Looked through without its subfolders. Hidden files and pictures that this program drew
+        (`*.overlay.jpg`) are passed over, and so is a raw or phone file beside a readable
+        picture of the same name; without one it is listed, so that its trouble is told.
+
+    Returns
+    -------
+    list of Path
+
+    Raises
+    ------
+    RequestWrong
+        If there is no such folder or no photograph in it.
+    """
+    if not folder.is_dir():
+        raise RequestWrong(f"There is no folder {folder}; check the path.")
+    files = [f for f in folder.iterdir() if f.is_file() and not f.name.startswith(".")]
+    files = [f for f in files if not f.name.lower().endswith(".overlay.jpg")]
+    found = [f for f in files if f.suffix.lower() in IMAGE_SUFFIXES]
+    stems = {f.stem for f in found}
+    found += [f for f in files if f.suffix.lower() in SUFFIXES_TO_EXPORT and f.stem not in stems]
+    if not found:
+        known = ", ".join(IMAGE_SUFFIXES)
+        raise RequestWrong(
+            f"The folder {folder} holds no photograph ({known}); give the folder they lie in."
+        )
+    return sorted(found, key=lambda f: (_natural(f.name), f.name))
+
+
+def _natural(name: str) -> list[tuple[int, int, str]]:
+    """Order numbers within names by value."""
+    parts = re.split(r"(\d+)", name.lower())
+    return [(1, int(p), "") if p.isdecimal() else (0, 0, p) for p in parts]
+
+
+def _bytes_of(path: Path) -> bytes:
+    """Read a file's bytes; every way this can fail becomes one sentence."""
+    if path.suffix.lower() in SUFFIXES_TO_EXPORT:
+        raise PhotographUnreadable(
+            f"{path.suffix} files are not read; export the picture as JPEG or TIFF"
+        )
+    try:
+        return path.read_bytes()
+    except FileNotFoundError as error:
+        raise PhotographUnreadable("there is no such file; check the path") from error
+    except IsADirectoryError as error:
+        raise PhotographUnreadable("this is a folder; give a picture in it") from error
+    except OSError as error:
+        reason = (error.strerror or "unknown reason").lower()
+        raise PhotographUnreadable(
+            f"the file cannot be opened ({reason}); check its permissions"
+        ) from error
+
+
+def _check_size(claim: Claim, file_size: int) -> None:
+    """Refuse sizes that are of no use, or that the bytes cannot hold, before memory is taken."""
+    size = f"{claim.width} x {claim.height} pixels"
+    if min(claim.width, claim.height) < SMALLEST_SIDE:
+        raise PhotographUnreadable(
+            f"the picture has {size}, too small to count in; at least {SMALLEST_SIDE} each way are needed"
+        )
+    if claim.width * claim.height > MOST_PIXELS:
+        raise PhotographUnreadable(
+            f"the picture has {size}, more than {MOST_PIXELS // 10**6} million; cut it into parts"
+        )
+    if claim.decoded_bytes > MOST_DECODED_PER_BYTE * file_size:
+        raise PhotographUnreadable(
+            f"the header claims {size}, which {file_size} bytes cannot hold; the file is damaged"
+        )
+
+
+def _decode(claim: Claim) -> StoredPixels:
+    """Decode, make three channels, and stand the picture upright."""
+    try:
+        array: Any = cv2.imdecode(np.frombuffer(claim.data, dtype=np.uint8), _FLAGS)
+    except cv2.error:
+        array = None
+    if array is None or array.shape[:2] != (claim.height, claim.width):
+        raise PhotographUnreadable(
+            "the picture cannot be decoded; open it in an image viewer and save it as JPEG or TIFF"
+        )
+    if claim.inverted:
+        array = np.iinfo(array.dtype).max - array
+    turned = _TURNS[claim.turn](array)
+    code = cv2.COLOR_GRAY2RGB if turned.ndim == 2 else cv2.COLOR_BGR2RGB
+    stored: StoredPixels = cv2.cvtColor(turned, code)
+    return stored
+
+
+# Exif's eight turns (Exif 2.32, tag 0112 hex), each undone.
+_TURNS: dict[int, Callable[[Any], Any]] = {
+    1: lambda array: array,
+    2: lambda array: cv2.flip(array, 1),
+    3: lambda array: cv2.rotate(array, cv2.ROTATE_180),
+    4: lambda array: cv2.flip(array, 0),
+    5: cv2.transpose,
+    6: lambda array: cv2.rotate(array, cv2.ROTATE_90_CLOCKWISE),
+    7: lambda array: cv2.rotate(cv2.transpose(array), cv2.ROTATE_180),
+    8: lambda array: cv2.rotate(array, cv2.ROTATE_90_COUNTERCLOCKWISE),
+}
