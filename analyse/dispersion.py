@@ -1,0 +1,366 @@
+"""How counts vary between quadrats: the variance-to-mean ratio, its test and related indices.
+
+Conventions: the variance divides by q - 1 (q quadrats); X2 = (q - 1) VMR with q - 1 degrees of
+freedom; the upper tail means clumped, the lower one even, and the two-sided p is twice the smaller.
+"""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import ArrayLike, NDArray
+from scipy import special
+
+from analyse.errors import TooFewQuadrats
+
+
+@dataclass(frozen=True, slots=True)
+class Dispersion:
+    """How counts vary between quadrats, against the variation that chance alone would give.
+
+    Parameters
+    ----------
+    q : int
+        Quadrats, at least 2.
+    n : int
+        Points in them.
+    mean, variance : float
+        Of the counts; the variance divides by q - 1. For quadrats of unequal area the variance
+        is `vmr` times the mean: what equal quadrats would show.
+    vmr : float
+        Variance-to-mean ratio, X2 / (q - 1): about 1 at random, above clumped, below even.
+    chi2 : float
+        Index-of-dispersion statistic X2 = sum (x - E)^2 / E.
+    df : int
+        Degrees of freedom, q - 1.
+    p_clumped, p_even, p_two_sided : float
+        Chi-square p: upper tail, lower tail, and twice the smaller (at most 1).
+
+    Notes
+    -----
+    Without any point the ratio and what follows from it are NaN.
+    """
+
+    q: int
+    n: int
+    mean: float
+    variance: float
+    vmr: float
+    chi2: float
+    df: int
+    p_clumped: float
+    p_even: float
+    p_two_sided: float
+
+
+@dataclass(frozen=True, slots=True)
+class Limits:
+    """A number with its confidence limits."""
+
+    value: float
+    low: float
+    high: float
+    level: float
+
+
+def dispersion(counts: ArrayLike) -> Dispersion:
+    """Return the variance-to-mean ratio of counts in equal quadrats, and its chi-square test.
+
+    Parameters
+    ----------
+    counts : array_like of int, shape (q,)
+        One count per quadrat.
+
+    Returns
+    -------
+    Dispersion
+
+    Raises
+    ------
+    TooFewQuadrats
+        If there are fewer than 2 quadrats.
+    ValueError
+        If a count is negative or no whole number.
+
+    Notes
+    -----
+    X2 = sum (x - m)^2 / m = (q - 1) s^2 / m, compared with chi-square on q - 1 degrees of freedom;
+    conditional on the total, the counts are multinomial at random. The approximation needs a mean
+    count of about 1 or more.
+
+    References
+    ----------
+    Fisher, R. A., Thornton, H. G. and Mackenzie, W. A. (1922). The accuracy of the plating method
+    of estimating the density of bacterial populations. Annals of Applied Biology 9, 325-359.
+
+    Examples
+    --------
+    >>> d = dispersion([12, 16, 20])
+    >>> d.chi2, d.df, round(d.p_clumped, 5)
+    (2.0, 2, 0.36788)
+    """
+    x = checked_counts(counts)
+    _enough(x.size)
+    mean = float(x.mean())
+    variance = float(((x - mean) ** 2).sum() / (x.size - 1))
+    chi2 = (x.size - 1) * variance / mean if mean > 0 else math.nan
+    return _judged(x, variance, chi2)
+
+
+def clipped_dispersion(counts: ArrayLike, areas: ArrayLike) -> Dispersion:
+    """Return the same for quadrats of unequal area, whose expected counts go by area.
+
+    Parameters
+    ----------
+    counts : array_like of int, shape (q,)
+        One count per quadrat.
+    areas : array_like of float, shape (q,)
+        Area of each quadrat inside the study area, in any one unit.
+
+    Returns
+    -------
+    Dispersion
+        With E = n a / A, X2 = sum (x - E)^2 / E and `vmr` = X2 / (q - 1). For equal areas it is
+        the same as `dispersion`.
+
+    Raises
+    ------
+    TooFewQuadrats
+        If there are fewer than 2 quadrats.
+    ValueError
+        If a count or an area is impossible, or their numbers differ.
+
+    References
+    ----------
+    Pearson, K. (1900). On the criterion that a given system of deviations ... Philosophical
+    Magazine 50, 157-175.
+
+    Examples
+    --------
+    >>> clipped_dispersion([2, 4, 6], [1, 2, 3]).chi2
+    0.0
+    """
+    x = checked_counts(counts)
+    _enough(x.size)
+    expected = expected_counts(x, areas)
+    n = float(x.sum())
+    chi2 = float(((x - expected) ** 2 / expected).sum()) if n > 0 else math.nan
+    variance = chi2 / (x.size - 1) * n / x.size if n > 0 else 0.0
+    return _judged(x, variance, chi2)
+
+
+def expected_counts(counts: ArrayLike, areas: ArrayLike | None) -> NDArray[np.float64]:
+    """Return the counts expected at random given their total: by area, equal where it is unknown.
+
+    Parameters
+    ----------
+    counts : array_like of int, shape (q,)
+        One count per quadrat.
+    areas : array_like of float, shape (q,), or None
+        Areas in any one unit.
+
+    Returns
+    -------
+    ndarray of shape (q,)
+
+    Raises
+    ------
+    ValueError
+        If an area is not positive or the numbers of counts and areas differ.
+    """
+    x = checked_counts(counts)
+    a = np.ones(x.size) if areas is None else checked_areas(areas)
+    if a.size != x.size:
+        raise ValueError(f"{a.size} areas for {x.size} counts")
+    return np.asarray(x.sum() * (a / a.sum()))
+
+
+def residuals(counts: ArrayLike, expected: ArrayLike) -> NDArray[np.float64]:
+    """Return the standardised residual of each quadrat: how far from random, in standard errors.
+
+    Parameters
+    ----------
+    counts : array_like of int, shape (q,)
+        One count per quadrat.
+    expected : array_like of float, shape (q,)
+        Counts expected at random; they sum to the total.
+
+    Returns
+    -------
+    ndarray of shape (q,)
+        (x - E) / sqrt(E (1 - E / n)); NaN without points.
+
+    References
+    ----------
+    Haberman, S. J. (1973). The analysis of residuals in cross-classified tables. Biometrics 29,
+    205-220.
+
+    Examples
+    --------
+    >>> residuals([0, 4, 0, 0], [1, 1, 1, 1]).round(3).tolist()
+    [-1.155, 3.464, -1.155, -1.155]
+    """
+    x, e = checked_counts(counts), np.asarray(expected, dtype=np.float64)
+    total = e.sum()
+    if not total > 0:
+        return np.full(x.size, np.nan)
+    spread = np.sqrt(e * (1 - e / total))
+    unknown = np.full(x.size, np.nan)
+    return np.asarray(np.divide(x - e, spread, out=unknown, where=spread > 0))
+
+
+def normal_deviate(chi2: float, df: int) -> float:
+    """Return d = sqrt(2 X2) - sqrt(2 df - 1), near standard normal at random for many quadrats.
+
+    References
+    ----------
+    Fisher, R. A. (1925). Statistical Methods for Research Workers. Oliver and Boyd, Edinburgh.
+
+    Examples
+    --------
+    >>> round(normal_deviate(475.7179, 399), 4)
+    2.6142
+    """
+    return math.sqrt(2 * chi2) - math.sqrt(2 * df - 1)
+
+
+def garwood_limits(count: int, *, level: float = 0.95) -> Limits:
+    """Return exact confidence limits of the mean of a Poisson count.
+
+    Parameters
+    ----------
+    count : int
+        What was counted, 0 or more.
+    level : float
+        Confidence level, between 0 and 1.
+
+    Returns
+    -------
+    Limits
+        The lower limit of a count of 0 is 0.
+
+    Raises
+    ------
+    ValueError
+        If the count or the level is impossible.
+
+    References
+    ----------
+    Garwood, F. (1936). Fiducial limits for the Poisson distribution. Biometrika 28, 437-442.
+
+    Examples
+    --------
+    >>> limits = garwood_limits(10)
+    >>> round(limits.low, 2), round(limits.high, 2)
+    (4.8, 18.39)
+    """
+    if count < 0 or count != int(count):
+        raise ValueError(f"a count must be a whole number of 0 or more, not {count}")
+    if not 0 < level < 1:
+        raise ValueError(f"a confidence level lies between 0 and 1, not at {level}")
+    tail = (1 - level) / 2
+    low = float(special.gammaincinv(count, tail)) if count > 0 else 0.0
+    high = float(special.gammainccinv(count + 1, tail))
+    return Limits(float(count), low, high, level)
+
+
+def morisita_index(counts: ArrayLike) -> float:
+    """Return Morisita's index, q sum x(x - 1) / (S (S - 1)): 1 at random, q if all are in one.
+
+    References
+    ----------
+    Morisita, M. (1959). Measuring of the dispersion of individuals and analysis of the
+    distributional patterns. Memoirs of the Faculty of Science, Kyushu University, E 2, 215-235.
+
+    Examples
+    --------
+    >>> morisita_index([5, 0, 0, 0])
+    4.0
+    """
+    x = checked_counts(counts).astype(np.float64)
+    total = x.sum()
+    return float(x.size * (x * (x - 1)).sum() / (total * (total - 1))) if total > 1 else math.nan
+
+
+def mean_crowding(counts: ArrayLike) -> float:
+    """Return mean crowding, m + VMR - 1: the others in its quadrat that a point meets on average.
+
+    References
+    ----------
+    Lloyd, M. (1967). Mean crowding. Journal of Animal Ecology 36, 1-30.
+
+    Examples
+    --------
+    >>> mean_crowding([1, 1, 1, 1])
+    0.0
+    """
+    d = dispersion(counts)
+    return d.mean + d.vmr - 1
+
+
+def cluster_size_index(counts: ArrayLike) -> float:
+    """Return the index of cluster size, VMR - 1: 0 at random.
+
+    References
+    ----------
+    David, F. N. and Moore, P. G. (1954). Notes on contagious distributions in plant populations.
+    Annals of Botany 18, 47-53.
+
+    Examples
+    --------
+    >>> cluster_size_index([4, 0, 0, 0])
+    3.0
+    """
+    return dispersion(counts).vmr - 1
+
+
+def greens_index(counts: ArrayLike) -> float:
+    """Return Green's index, (VMR - 1) / (S - 1) with S points: 1 if all are in one quadrat.
+
+    References
+    ----------
+    Green, R. H. (1966). Measurement of non-randomness in spatial distributions. Researches on
+    Population Ecology 8, 1-7.
+
+    Examples
+    --------
+    >>> greens_index([4, 0, 0, 0])
+    1.0
+    """
+    d = dispersion(counts)
+    return (d.vmr - 1) / (d.n - 1) if d.n > 1 else math.nan
+
+
+def checked_counts(counts: ArrayLike) -> NDArray[np.int64]:
+    """Return counts as whole numbers, or refuse them."""
+    x = np.asarray(counts).reshape(-1)
+    if x.size and not (np.isfinite(x).all() and (x >= 0).all() and (x == np.floor(x)).all()):
+        raise ValueError("counts must be whole numbers of 0 or more")
+    return x.astype(np.int64)
+
+
+def checked_areas(areas: ArrayLike) -> NDArray[np.float64]:
+    """Return areas as positive finite numbers, or refuse them."""
+    a = np.asarray(areas, dtype=np.float64).reshape(-1)
+    if not (np.isfinite(a).all() and (a > 0).all()):
+        raise ValueError("areas must be positive and finite")
+    return a
+
+
+def _enough(q: int) -> None:
+    """Refuse fewer than 2 quadrats."""
+    if q < 2:
+        raise TooFewQuadrats(
+            f"Dispersion needs at least 2 quadrats, not {q}; choose smaller quadrats."
+        )
+
+
+def _judged(x: NDArray[np.int64], variance: float, chi2: float) -> Dispersion:
+    """Return the dispersion with its chi-square p values."""
+    q, df = x.size, x.size - 1
+    upper, lower = float(special.chdtrc(df, chi2)), float(special.chdtr(df, chi2))
+    two_sided = min(1.0, 2 * min(upper, lower)) if math.isfinite(chi2) else math.nan
+    mean, vmr = float(x.mean()), chi2 / df
+    return Dispersion(q, int(x.sum()), mean, variance, vmr, chi2, df, upper, lower, two_sided)

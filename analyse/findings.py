@@ -1,0 +1,452 @@
+"""From points or counts to everything that is said about them."""
+
+from __future__ import annotations
+
+import math
+import zlib
+from collections.abc import Sequence
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+from numpy.typing import ArrayLike, NDArray
+from scipy import special
+from shapely.geometry.base import BaseGeometry
+
+from analyse.dispersion import (
+    Dispersion,
+    Limits,
+    clipped_dispersion,
+    dispersion,
+    expected_counts,
+    garwood_limits,
+    residuals,
+)
+from analyse.errors import GridWrong
+from analyse.models import LARGEST_COUNT, PoissonFit, poisson_frequencies
+from analyse.nulls import SIMULATIONS, SimulatedTest, simulated_p
+from analyse.pattern import CountTable, Pattern, Unit
+from analyse.quadrats import GridOptions, QuadratCounts, count_in_quadrats, lay_grid
+from analyse.verdict import (
+    FEW_QUADRATS,
+    FEWEST_QUADRATS,
+    LARGE_CLIPPED,
+    LEVEL,
+    LOW_EXPECTED,
+    Verdict,
+    decide,
+    detectable,
+    flag_sentences,
+    sentence,
+)
+from detect.errors import OptionWrong
+
+SEED = 1
+_CM2 = 100.0  # square millimetres in a square centimetre
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Findings:
+    """What was found for one photograph or table.
+
+    Parameters
+    ----------
+    name : str
+        File name of the photograph or table.
+    n : int
+        Points counted.
+    unit : {"mm", "px"} or None
+        Unit of lengths; None for a table of counts without a side.
+    area : float or None
+        Study area in the square of `unit`.
+    pattern : Pattern or None
+        The points; None for a table of counts.
+    counts : QuadratCounts
+        Counts and, for points, the grid.
+    expected, residuals : ndarray of shape (q,)
+        Counts expected at random given n, and standardised residuals (NaN without points).
+    dispersion_whole : Dispersion or None
+        Over whole quadrats; None where there are fewer than 2.
+    dispersion_all : Dispersion
+        Over all quadrats, expected counts by area.
+    simulated : SimulatedTest
+        X2 over all quadrats judged by simulation given n: what the verdict rests on.
+    density : Limits or None
+        Points per square centimetre with 95 % limits; None where no millimetres are known.
+    poisson : PoissonFit or None
+        Frequencies in whole quadrats; None without 2 whole ones or with counts above 10,000.
+    verdict : str
+        The verdict.
+    sentence : str
+        The verdict as a sentence.
+    detectable : (low, high)
+        VMR that would have been seen with 80 % power, on the even and the clumped side.
+    flags : tuple of str
+        Reasons for care, names in `analyse.verdict.FLAGS`.
+    flag_values : dict
+        Numbers that the flags' sentences quote.
+    seed : int
+        Seed of the simulations.
+    settings : dict
+        How the quadrats were laid and the test was done; plain values.
+    """
+
+    name: str
+    n: int
+    unit: Unit | None
+    area: float | None
+    pattern: Pattern | None
+    counts: QuadratCounts
+    expected: NDArray[np.float64]
+    residuals: NDArray[np.float64]
+    dispersion_whole: Dispersion | None
+    dispersion_all: Dispersion
+    simulated: SimulatedTest
+    density: Limits | None
+    poisson: PoissonFit | None
+    verdict: Verdict
+    sentence: str
+    detectable: tuple[float, float]
+    flags: tuple[str, ...]
+    flag_values: dict[str, Any]
+    seed: int
+    settings: dict[str, Any]
+
+    def __post_init__(self) -> None:
+        for name in ("expected", "residuals"):
+            column = np.array(getattr(self, name), dtype=np.float64)
+            if column.shape != (len(self.counts),):
+                raise ValueError(f"{name} has shape {column.shape} for {len(self.counts)} quadrats")
+            column.setflags(write=False)
+            object.__setattr__(self, name, column)
+
+    @property
+    def flag_sentences(self) -> tuple[str, ...]:
+        """The flags as sentences."""
+        return flag_sentences(self.flags, self.flag_values)
+
+    @property
+    def rests_on(self) -> str:
+        """What the verdict rests on, in words."""
+        return (
+            f"simulated two-sided p of X2 over all {len(self.counts)} quadrats,"
+            f" expected counts by area, given {self.n} points"
+        )
+
+
+def analyse_points(
+    points: ArrayLike,
+    area: BaseGeometry | Sequence[float],
+    *,
+    name: str = "points",
+    grid: GridOptions | None = None,
+    seed: int = SEED,
+    simulations: int = SIMULATIONS,
+) -> Findings:
+    """Analyse points in a study area, both in millimetres.
+
+    Parameters
+    ----------
+    points : array_like of shape (n, 2)
+        x, y in millimetres; those outside the area are left out and counted.
+    area : shapely geometry or (x0, y0, x1, y1)
+        Study area in millimetres.
+    name : str
+        What the points are called in tables and reports.
+    grid : GridOptions or None
+        How to lay the quadrats; None for the rule.
+    seed : int
+        Seed of the simulations.
+    simulations : int
+        How many.
+
+    Returns
+    -------
+    Findings
+
+    Examples
+    --------
+    >>> points = [[x + 5, y + 5] for x in range(0, 100, 10) for y in range(0, 100, 10)]
+    >>> print(analyse_points(points, (0, 0, 100, 100), grid=GridOptions(shape=(6, 6))).sentence)
+    Evenly spaced: ...
+    """
+    pattern = Pattern.of(points, area, name=name)
+    return analyse_pattern(pattern, grid, seed=seed, simulations=simulations)
+
+
+def analyse_pattern(
+    pattern: Pattern,
+    grid_options: GridOptions | None = None,
+    *,
+    seed: int = SEED,
+    simulations: int = SIMULATIONS,
+) -> Findings:
+    """Count a pattern in quadrats, test the counts and say what follows.
+
+    Parameters
+    ----------
+    pattern : Pattern
+        Points in a study area.
+    grid_options : GridOptions or None
+        How to lay the quadrats; None for the rule.
+    seed : int
+        Seed of the simulations, 0 or more. Together with the pattern's name it fixes the result,
+        whatever else is analysed before or beside it.
+    simulations : int
+        How many.
+
+    Returns
+    -------
+    Findings
+
+    Raises
+    ------
+    GridWrong
+        If the quadrats do not fit the study area.
+    OptionWrong
+        If the seed or the number of simulations is out of range.
+
+    Notes
+    -----
+    Density limits are Garwood's exact Poisson limits of the count over the area. The area's
+    relative standard uncertainty is twice that of a length; it is combined with the count's on
+    the log scale, in quadrature of the half widths, and widens the limits.
+
+    Examples
+    --------
+    >>> import shapely
+    >>> from analyse.nulls import random_points
+    >>> area = shapely.Point(0, 0).buffer(43)
+    >>> points = random_points(area, 90, np.random.default_rng(7))
+    >>> analyse_pattern(Pattern.of(points, area, name="dish")).verdict
+    'no departure from random found'
+    """
+    options = grid_options or GridOptions()
+    grid = lay_grid(pattern.area, len(pattern), options, pattern.unit, pattern.dish)
+    seen = count_in_quadrats(pattern.points, grid)
+    counts = QuadratCounts(seen, grid.area, grid.whole, grid, grid.row, grid.column)
+    settings: dict[str, Any] = {
+        "quadrats": grid.shape,
+        "side": grid.side,
+        "side_by_rule": options == GridOptions(join_below=options.join_below),
+        "unit": pattern.unit,
+        "rows": grid.rows,
+        "columns": grid.columns,
+        "join_below": options.join_below,
+        "joined": grid.joined,
+    }
+    area = float(pattern.area.area)
+    density = None
+    if pattern.unit == "mm":
+        density = density_per_cm2(len(pattern), area, pattern.relative_uncertainty)
+    extra = {"outside": pattern.outside, "duplicates": pattern.duplicates}
+    extra["doubtful"] = pattern.doubtful
+    return _judged(
+        pattern.name, pattern.unit, area, pattern, counts, density, pattern.flags, extra,
+        seed, simulations, settings,
+    )  # fmt: skip
+
+
+def analyse_counts(
+    table: CountTable, *, seed: int = SEED, simulations: int = SIMULATIONS
+) -> Findings:
+    """Test the counts of a table in equal quadrats and say what follows.
+
+    Parameters
+    ----------
+    table : CountTable
+        Counts, with the side of a quadrat where it is known.
+    seed : int
+        Seed of the simulations, 0 or more.
+    simulations : int
+        How many.
+
+    Returns
+    -------
+    Findings
+        Area and density only where the side of a quadrat is known.
+
+    Raises
+    ------
+    GridWrong
+        If the side is in pixels.
+    OptionWrong
+        If the seed or the number of simulations is out of range.
+
+    Examples
+    --------
+    >>> analyse_counts(CountTable("bed", np.array([0, 9, 0, 0, 8, 1, 0, 7, 0, 0]))).verdict
+    'clumped'
+    """
+    q = table.counts.size
+    side = None
+    if table.side is not None:
+        if table.side.in_pixels:
+            raise GridWrong(
+                f"--quadrat {table.side} is in pixels; give the side of a counted quadrat in mm."
+            )
+        side = table.side.to_mm()
+    places = np.arange(q)
+    row, column = (None, None) if table.columns is None else np.divmod(places, table.columns)
+    areas = None if side is None else np.full(q, side * side)
+    counts = QuadratCounts(table.counts, areas, np.ones(q, dtype=bool), None, row, column)
+    n = int(table.counts.sum())
+    settings: dict[str, Any] = {
+        "quadrats": "counted" if table.rows is None else "square",
+        "side": side,
+        "side_by_rule": False,
+        "unit": None if side is None else "mm",
+        "rows": table.rows,
+        "columns": table.columns,
+        "joined": 0,
+    }
+    area = None if side is None else q * side * side
+    density = None if area is None else density_per_cm2(n, area, 0.0)
+    flags = ("no_area",) if side is None else ()
+    return _judged(
+        table.name, None if side is None else "mm", area, None, counts, density, flags, {},
+        seed, simulations, settings,
+    )  # fmt: skip
+
+
+def density_per_cm2(n: int, area_mm2: float, relative_uncertainty: float) -> Limits:
+    """Return points per square centimetre with 95 % limits, widened by the scale's uncertainty.
+
+    Parameters
+    ----------
+    n : int
+        Points counted.
+    area_mm2 : float
+        Study area.
+    relative_uncertainty : float
+        Standard uncertainty of a length, as a fraction of it.
+
+    Returns
+    -------
+    Limits
+
+    Notes
+    -----
+    Garwood's limits of the count divided by the area. An area is a length squared, so its relative
+    standard uncertainty is twice a length's; 1.96 times that is its half width on the log scale,
+    and it is added in quadrature to the half width of each of Garwood's limits, ln(limit / n).
+    Without points there is no half width to add to: the upper limit is multiplied instead.
+
+    References
+    ----------
+    Garwood, F. (1936). Fiducial limits for the Poisson distribution. Biometrika 28, 437-442.
+
+    Examples
+    --------
+    >>> d = density_per_cm2(100, 10_000.0, 0.01)
+    >>> round(d.value, 3), round(d.low, 3), round(d.high, 3)
+    (1.0, 0.811, 1.221)
+    """
+    count = garwood_limits(n)
+    of_area = float(special.ndtri(0.5 + count.level / 2)) * 2 * relative_uncertainty
+    per = _CM2 / area_mm2
+    if n == 0:
+        return Limits(0.0, 0.0, count.high * math.exp(of_area) * per, count.level)
+    low = n * math.exp(-math.hypot(math.log(n / count.low), of_area))
+    high = n * math.exp(math.hypot(math.log(count.high / n), of_area))
+    return Limits(n * per, low * per, high * per, count.level)
+
+
+def stream(seed: int, name: str) -> np.random.Generator:
+    """Return the source of randomness of one photograph, which no other one disturbs.
+
+    Parameters
+    ----------
+    seed : int
+        0 or more.
+    name : str
+        File name of the photograph or table.
+
+    Returns
+    -------
+    numpy.random.Generator
+
+    Raises
+    ------
+    OptionWrong
+        If the seed is negative.
+    """
+    if seed < 0:
+        raise OptionWrong(f"--seed must be a whole number of 0 or more, not {seed}.")
+    return np.random.default_rng([seed, zlib.crc32(name.encode("utf-8"))])
+
+
+def _judged(
+    name: str,
+    unit: Unit | None,
+    area: float | None,
+    pattern: Pattern | None,
+    counts: QuadratCounts,
+    density: Limits | None,
+    flags: tuple[str, ...],
+    flag_values: dict[str, Any],
+    seed: int,
+    simulations: int,
+    settings: dict[str, Any],
+) -> Findings:
+    """Test counts and put the findings together."""
+    x, areas = counts.counts, counts.area
+    expected = expected_counts(x, areas)
+    everything = dispersion(x) if areas is None else clipped_dispersion(x, areas)
+    whole = dispersion(x[counts.whole]) if counts.whole.sum() >= 2 else None
+    weights = np.ones(x.size) if areas is None else areas
+    rng = stream(seed, name)
+    simulated = simulated_p(x, weights, simulations=simulations, rng=rng)
+    verdict = decide(everything.n, everything.q, simulated)
+    values = flag_values | _flag_values(counts, everything)
+    return Findings(
+        name=name,
+        n=everything.n,
+        unit=unit,
+        area=area,
+        pattern=pattern,
+        counts=counts,
+        expected=expected,
+        residuals=residuals(x, expected),
+        dispersion_whole=whole,
+        dispersion_all=everything,
+        simulated=simulated,
+        density=density,
+        poisson=_frequencies(x[counts.whole]),
+        verdict=verdict,
+        sentence=sentence(verdict, everything, whole, simulated),
+        detectable=detectable(everything.df),
+        flags=flags + _count_flags(values),
+        flag_values=values,
+        seed=seed,
+        settings=settings | {"simulations": simulations, "level": LEVEL},
+    )
+
+
+def _flag_values(counts: QuadratCounts, everything: Dispersion) -> dict[str, Any]:
+    """Return the numbers that flags about counts depend on and quote."""
+    return {
+        "n": everything.n,
+        "q": everything.q,
+        "whole": int(counts.whole.sum()),
+        "mean_expected": everything.mean,
+        "clipped_share": counts.clipped_share,
+    }
+
+
+def _count_flags(values: dict[str, Any]) -> tuple[str, ...]:
+    """Return the flags that counts give rise to."""
+    known = {
+        "few_quadrats": values["q"] < FEW_QUADRATS,
+        "low_expected": 0 < values["mean_expected"] < LOW_EXPECTED,
+        "few_whole": values["whole"] < min(FEWEST_QUADRATS, values["q"]),
+        "clipped_large": values["clipped_share"] > LARGE_CLIPPED,
+    }
+    return tuple(name for name, raised in known.items() if raised)
+
+
+def _frequencies(counts: NDArray[np.int64]) -> PoissonFit | None:
+    """Return the frequencies of counts in whole quadrats, where they can be given."""
+    if counts.size < 2 or counts.max() > LARGEST_COUNT:
+        return None
+    return poisson_frequencies(counts)

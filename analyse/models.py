@@ -1,0 +1,219 @@
+"""Frequencies of counts, as seen and as the Poisson law expects them at random."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Iterable, Sequence
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import ArrayLike, NDArray
+from scipy import special
+
+from analyse.dispersion import checked_counts
+from analyse.errors import TooFewQuadrats
+
+CountClass = tuple[int, int | None]
+SMALLEST_EXPECTED = 1.0
+LARGEST_COUNT = 10_000
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class PoissonFit:
+    """Frequencies of counts beside those of a Poisson law with the same mean.
+
+    Parameters
+    ----------
+    mean : float
+        Mean count, estimated from the counts.
+    frequencies, poisson : ndarray of shape (k,)
+        Quadrats with exactly 0, 1, ... k - 1 points, seen and expected, for drawing. The last
+        ones follow the largest count.
+    classes : tuple of (low, high)
+        Pooled classes of the test, both ends included; the last is open (high is None).
+    observed, expected : ndarray of shape (len(classes),)
+        Quadrats in each class, seen and expected.
+    chi2 : float
+        sum (observed - expected)^2 / expected.
+    df : int
+        Classes - 2: one for the total and one for the mean.
+    p : float
+        Upper chi-square tail; NaN where `df` is below 1.
+    """
+
+    mean: float
+    frequencies: NDArray[np.int64]
+    poisson: NDArray[np.float64]
+    classes: tuple[CountClass, ...]
+    observed: NDArray[np.int64]
+    expected: NDArray[np.float64]
+    chi2: float
+    df: int
+    p: float
+
+    def __post_init__(self) -> None:
+        if not len(self.classes) == len(self.observed) == len(self.expected):
+            raise ValueError("classes, observed and expected differ in length")
+        for name in ("frequencies", "poisson", "observed", "expected"):
+            column = np.array(getattr(self, name))
+            column.setflags(write=False)
+            object.__setattr__(self, name, column)
+
+    @property
+    def labels(self) -> tuple[str, ...]:
+        """Return the classes in words: "0", "1-2", "3 or more"."""
+        return tuple(_label(low, high) for low, high in self.classes)
+
+
+def poisson_frequencies(
+    counts: ArrayLike,
+    *,
+    pool_classes: Sequence[CountClass] | None = None,
+    smallest_expected: float = SMALLEST_EXPECTED,
+) -> PoissonFit:
+    """Fit a Poisson law to counts in equal quadrats and test the fit.
+
+    Parameters
+    ----------
+    counts : array_like of int, shape (q,)
+        One count per quadrat, at least 2 and none above 10,000.
+    pool_classes : sequence of (low, high) or None
+        Classes that cover 0, 1, 2, ... without a gap, the last with high None; None pools by
+        `smallest_expected`.
+    smallest_expected : float
+        Classes are pooled from both tails until each expects this many quadrats.
+
+    Returns
+    -------
+    PoissonFit
+
+    Raises
+    ------
+    TooFewQuadrats
+        If there are fewer than 2 counts.
+    ValueError
+        If the classes leave a gap, or a count is impossible.
+
+    Notes
+    -----
+    Poisson counts are what random points give in equal quadrats; the converse does not hold, for
+    the frequencies do not know where the quadrats lie.
+
+    References
+    ----------
+    "Student" (1907). On the error of counting with a haemacytometer. Biometrika 5, 351-360.
+    Cochran, W. G. (1954). Some methods for strengthening the common chi-square tests. Biometrics
+    10, 417-451 (expected counts of 1 in the tails).
+
+    Examples
+    --------
+    >>> fit = poisson_frequencies([0] * 109 + [1] * 65 + [2] * 22 + [3] * 3 + [4])
+    >>> fit.labels, fit.df
+    (('0', '1', '2', '3 or more'), 2)
+    """
+    x = checked_counts(counts)
+    if x.size < 2:
+        raise TooFewQuadrats(f"Frequencies need at least 2 quadrats, not {x.size}; count more.")
+    top = int(x.max())
+    if top > LARGEST_COUNT:
+        raise ValueError(f"a count of {top} is above {LARGEST_COUNT}: too many classes")
+    mean = float(x.mean())
+    frequencies = np.bincount(x)
+    poisson = x.size * poisson_law(mean, np.arange(top + 1))
+    if pool_classes is None:
+        pool_classes = pooled(mean, x.size, smallest_expected, top)
+    _check_classes(pool_classes)
+    observed = np.array([_seen(frequencies, low, high) for low, high in pool_classes])
+    expected = x.size * np.array([_share(mean, low, high) for low, high in pool_classes])
+    df = len(pool_classes) - 2
+    usable = df >= 1 and bool((expected > 0).all())
+    chi2 = float(((observed - expected) ** 2 / expected).sum()) if usable else math.nan
+    p = float(special.chdtrc(df, chi2)) if usable else math.nan
+    classes = tuple((int(low), high) for low, high in pool_classes)
+    return PoissonFit(mean, frequencies, poisson, classes, observed, expected, chi2, df, p)
+
+
+def poisson_law(mean: float, values: ArrayLike) -> NDArray[np.float64]:
+    """Return the Poisson probability of each value, also for a mean of 0."""
+    k = np.asarray(values, dtype=np.float64)
+    return np.asarray(np.exp(special.xlogy(k, mean) - mean - special.gammaln(k + 1)))
+
+
+def pooled(mean: float, q: int, smallest: float, top: int) -> tuple[CountClass, ...]:
+    """Return classes pooled from both tails towards the mode until each expects enough quadrats.
+
+    Parameters
+    ----------
+    mean : float
+        Mean of the law.
+    q : int
+        Quadrats.
+    smallest : float
+        Quadrats each class must expect.
+    top : int
+        Largest count seen; no class starts above it plus one.
+
+    Returns
+    -------
+    tuple of (low, high)
+    """
+    mode = int(mean)
+    ends = [*range(max(top, mode) + 1), None]
+    expected = [q * _share(mean, k, end) for k, end in enumerate(ends)]
+    left, spare = _gathered(range(mode + 1), expected, smallest)
+    right, more = _gathered(range(len(ends) - 1, mode, -1), expected, smallest)
+    middle = [*spare, *more]
+    if sum(expected[k] for k in middle) >= smallest or not (left or right):
+        left.append(middle)
+    else:
+        (left or right)[-1].extend(middle)
+    starts = sorted(min(group) for group in [*left, *right] if group)
+    return (*zip(starts, [start - 1 for start in starts[1:]], strict=False), (starts[-1], None))
+
+
+def _gathered(
+    values: Iterable[int], expected: Sequence[float], smallest: float
+) -> tuple[list[list[int]], list[int]]:
+    """Group values in order until each group expects enough; return the groups and what is left."""
+    groups: list[list[int]] = []
+    group: list[int] = []
+    for value in values:
+        group.append(value)
+        if sum(expected[k] for k in group) >= smallest:
+            groups.append(group)
+            group = []
+    return groups, group
+
+
+def _share(mean: float, low: int, high: int | None) -> float:
+    """Return the Poisson probability of a class."""
+    below = float(special.pdtr(low - 1, mean)) if low > 0 else 0.0
+    if high is None:
+        return float(special.pdtrc(low - 1, mean)) if low > 0 else 1.0
+    if high == low:
+        return float(poisson_law(mean, low))
+    return float(special.pdtr(high, mean)) - below
+
+
+def _seen(frequencies: NDArray[np.int64], low: int, high: int | None) -> int:
+    """Return how many quadrats fall in a class."""
+    return int(frequencies[low : None if high is None else high + 1].sum())
+
+
+def _check_classes(classes: Sequence[CountClass]) -> None:
+    """Refuse classes that do not cover 0, 1, 2, ... once."""
+    starts = [low for low, _ in classes]
+    ends = [high for _, high in classes]
+    joined = all(
+        high is not None and low <= high and high + 1 == after
+        for low, high, after in zip(starts, ends, starts[1:], strict=False)
+    )
+    if not classes or starts[0] != 0 or ends[-1] is not None or not joined:
+        raise ValueError("classes must run from 0 upwards without a gap, the last without an end")
+
+
+def _label(low: int, high: int | None) -> str:
+    """Return a class in words."""
+    if high is None:
+        return f"{low} or more"
+    return str(low) if low == high else f"{low}-{high}"

@@ -1,0 +1,211 @@
+"""What chance alone would give: random points in any area, and random counts in any quadrats."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Iterator
+from dataclasses import dataclass
+
+import numpy as np
+import shapely
+from numpy.typing import ArrayLike, NDArray
+from shapely.geometry.base import BaseGeometry
+
+from analyse.dispersion import checked_areas, clipped_dispersion
+from detect.errors import OptionWrong
+
+SIMULATIONS = 999
+FEWEST_SIMULATIONS = 99
+MOST_SIMULATIONS = 1_000_000
+_TIE = 1e-9  # statistics closer than this share of themselves count as equal
+_CELLS_AT_ONCE = 2_000_000
+_POINTS_AT_ONCE = 1_000_000
+
+
+@dataclass(frozen=True, slots=True)
+class SimulatedTest:
+    """A statistic judged against simulations of chance.
+
+    Parameters
+    ----------
+    statistic : float
+        X2 of the counts, with expected counts by area.
+    p_clumped, p_even, p_two_sided : float
+        Simulated p: share of simulations at least as large, at least as small, and twice the
+        smaller (at most 1); never 0.
+    simulations : int
+        How many there were.
+    """
+
+    statistic: float
+    p_clumped: float
+    p_even: float
+    p_two_sided: float
+    simulations: int
+
+
+def random_points(area: BaseGeometry, n: int, rng: np.random.Generator) -> NDArray[np.float64]:
+    """Return points placed uniformly at random in an area.
+
+    Parameters
+    ----------
+    area : shapely Polygon or MultiPolygon
+        Any polygon, with holes.
+    n : int
+        How many points.
+    rng : numpy.random.Generator
+        Source of randomness.
+
+    Returns
+    -------
+    ndarray of shape (n, 2)
+        x, y in the unit of the area.
+
+    Raises
+    ------
+    ValueError
+        If `n` is negative or the area encloses nothing.
+
+    Notes
+    -----
+    Points are drawn in the bounding box and kept where they fall in the area, which is exactly
+    uniform.
+
+    Examples
+    --------
+    >>> import shapely
+    >>> random_points(shapely.box(0, 0, 2, 1), 3, np.random.default_rng(1)).shape
+    (3, 2)
+    """
+    if n < 0:
+        raise ValueError(f"the number of points must be 0 or more, not {n}")
+    if not area.area > 0:
+        raise ValueError("the area encloses nothing")
+    x0, y0, x1, y1 = area.bounds
+    share = area.area / ((x1 - x0) * (y1 - y0))
+    shapely.prepare(area)
+    found, missing = [np.empty((0, 2))], n
+    while missing > 0:
+        tries = min(_POINTS_AT_ONCE, math.ceil(missing / share * 1.1) + 8)
+        xy = rng.uniform((x0, y0), (x1, y1), (tries, 2))
+        found.append(xy[shapely.contains_xy(area, xy[:, 0], xy[:, 1])][:missing])
+        missing -= len(found[-1])
+    return np.concatenate(found)
+
+
+def multinomial_counts(
+    n: int, areas: ArrayLike, simulations: int, rng: np.random.Generator
+) -> NDArray[np.int64]:
+    """Return the counts that n points placed at random would give in quadrats of these areas.
+
+    Parameters
+    ----------
+    n : int
+        Points in all.
+    areas : array_like of shape (q,)
+        Area of each quadrat; together they are the study area.
+    simulations : int
+        How many times.
+    rng : numpy.random.Generator
+        Source of randomness.
+
+    Returns
+    -------
+    ndarray of int, shape (simulations, q)
+        Every row sums to n.
+
+    Notes
+    -----
+    The same distribution as counting `random_points` in the quadrats, without placing a point.
+
+    Examples
+    --------
+    >>> multinomial_counts(5, [1, 1, 2], 4, np.random.default_rng(1)).sum(axis=1).tolist()
+    [5, 5, 5, 5]
+    """
+    a = checked_areas(areas)
+    return np.asarray(rng.multinomial(n, a / a.sum(), size=simulations), dtype=np.int64)
+
+
+def simulated_p(
+    counts: ArrayLike,
+    areas: ArrayLike,
+    *,
+    simulations: int = SIMULATIONS,
+    rng: np.random.Generator,
+) -> SimulatedTest:
+    """Judge X2 of counts in quadrats of any areas by simulation, given the total.
+
+    Parameters
+    ----------
+    counts : array_like of int, shape (q,)
+        One count per quadrat.
+    areas : array_like of float, shape (q,)
+        Area of each quadrat.
+    simulations : int
+        How many sets of random counts to draw, from 99 to 1,000,000.
+    rng : numpy.random.Generator
+        Source of randomness.
+
+    Returns
+    -------
+    SimulatedTest
+        All NaN without points.
+
+    Raises
+    ------
+    OptionWrong
+        If the number of simulations is out of range.
+    TooFewQuadrats
+        If there are fewer than 2 quadrats.
+
+    Notes
+    -----
+    p = (1 + number at least as extreme) / (simulations + 1). Ties count as extreme, which keeps
+    the test valid where counts are few and X2 takes few values.
+
+    References
+    ----------
+    Davison, A. C. and Hinkley, D. V. (1997). Bootstrap Methods and their Application. Cambridge
+    University Press, section 4.2.
+    Phipson, B. and Smyth, G. K. (2010). Permutation p-values should never be zero. Statistical
+    Applications in Genetics and Molecular Biology 9, article 39.
+
+    Examples
+    --------
+    >>> test = simulated_p([9, 0, 0, 1], [1, 1, 1, 1], rng=np.random.default_rng(1))
+    >>> test.p_clumped < 0.01 < test.p_even
+    True
+    """
+    check_simulations(simulations)
+    seen = clipped_dispersion(counts, areas)
+    if seen.n == 0:
+        return SimulatedTest(math.nan, math.nan, math.nan, math.nan, simulations)
+    tie = _TIE * max(1.0, seen.chi2)
+    larger = smaller = 0
+    for chi2 in simulated_chi2(seen.n, areas, simulations, rng):
+        larger += int((chi2 >= seen.chi2 - tie).sum())
+        smaller += int((chi2 <= seen.chi2 + tie).sum())
+    upper, lower = (1 + larger) / (simulations + 1), (1 + smaller) / (simulations + 1)
+    return SimulatedTest(seen.chi2, upper, lower, min(1.0, 2 * min(upper, lower)), simulations)
+
+
+def simulated_chi2(
+    n: int, areas: ArrayLike, simulations: int, rng: np.random.Generator
+) -> Iterator[NDArray[np.float64]]:
+    """Yield X2 of random counts, in batches that bound the memory and do not change the values."""
+    a = checked_areas(areas)
+    expected = n * (a / a.sum())
+    batch = max(1, _CELLS_AT_ONCE // a.size)
+    for start in range(0, simulations, batch):
+        off = multinomial_counts(n, a, min(batch, simulations - start), rng) - expected
+        yield np.asarray((off * off) @ (1 / expected))
+
+
+def check_simulations(simulations: int) -> None:
+    """Refuse a number of simulations that cannot judge at 5 % or would never end."""
+    if not FEWEST_SIMULATIONS <= simulations <= MOST_SIMULATIONS:
+        raise OptionWrong(
+            f"--simulations must lie between {FEWEST_SIMULATIONS} and {MOST_SIMULATIONS:,},"
+            f" not at {simulations}; 999 serves most purposes."
+        )

@@ -1,0 +1,185 @@
+"""The verdict, in words a reader can defend, and the reasons for care that go with it."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from typing import Any, Literal
+
+from scipy import special
+
+from analyse.dispersion import Dispersion
+from analyse.nulls import SimulatedTest
+
+Verdict = Literal["clumped", "evenly spaced", "no departure from random found", "too few to tell"]
+LEVEL = 0.05
+POWER = 0.80
+FEWEST_SPOTS = 10  # common practice
+FEWEST_QUADRATS = 6  # common practice: more than 5
+FEW_QUADRATS = 10  # below this only strong departures can be seen: our own limit
+LOW_EXPECTED = 1.0  # mean expected count below which the chi-square p is rough
+LARGE_CLIPPED = 0.5  # share of the study area in quadrats that are not whole
+
+FLAGS: dict[str, str] = {
+    "uncalibrated": "No scale is known: lengths are in pixels, and no density is given.",
+    "unreviewed": "No person has checked these spots: everything here rests on the detector alone.",
+    "doubtful": "Counted spots that are more likely false than real: {doubtful} of {n}; check them.",
+    "outside": "Points outside the study area, which were left out: {outside}.",
+    "duplicates": "Points at the very place of another: {duplicates}; check for double entries.",
+    "no_area": "A table of counts tells no study area, so no density is given.",
+    "few_quadrats": "With only {q} quadrats, only a strong departure from random could be seen.",
+    "low_expected": "A quadrat expects only {mean_expected:.2g} points on average:"
+    " the chi-square p is rough there; the simulated p holds.",
+    "few_whole": "Only {whole} of {q} quadrats are whole, so the VMR of whole quadrats says little;"
+    " the verdict uses all quadrats.",
+    "clipped_large": "Of the study area, {clipped_share:.0%} lies in clipped quadrats;"
+    " the verdict takes their areas into account, the VMR of whole quadrats leaves them out.",
+}
+
+
+def decide(n: int, q: int, simulated: SimulatedTest) -> Verdict:
+    """Return the verdict on counts in quadrats.
+
+    Parameters
+    ----------
+    n : int
+        Points.
+    q : int
+        Quadrats, clipped ones included.
+    simulated : SimulatedTest
+        X2 over all quadrats, judged by simulation given n.
+
+    Returns
+    -------
+    {"clumped", "evenly spaced", "no departure from random found", "too few to tell"}
+
+    Notes
+    -----
+    Two-sided at 5 %. Fewer than 10 points or 6 quadrats are too few to tell (common practice).
+
+    Examples
+    --------
+    >>> decide(62, 25, SimulatedTest(54.9, 0.001, 1.0, 0.002, 999))
+    'clumped'
+    """
+    if n < FEWEST_SPOTS or q < FEWEST_QUADRATS:
+        return "too few to tell"
+    if simulated.p_two_sided > LEVEL:
+        return "no departure from random found"
+    return "clumped" if simulated.p_clumped < simulated.p_even else "evenly spaced"
+
+
+def detectable(df: int, *, level: float = LEVEL, power: float = POWER) -> tuple[float, float]:
+    """Return the VMR at or below which, and at or above which, a departure would have been seen.
+
+    Parameters
+    ----------
+    df : int
+        Quadrats - 1.
+    level : float
+        Two-sided level of the test.
+    power : float
+        Wanted probability of seeing the departure.
+
+    Returns
+    -------
+    (low, high) : tuple of float
+        VMR of even and of clumped counts.
+
+    Notes
+    -----
+    With a true ratio V, X2 / V is taken as chi-square on `df` degrees of freedom, so that
+    V = chi2(1 - level / 2) / chi2(1 - power) on the clumped side. An approximation: with low
+    mean counts the power depends on how the points clump.
+
+    References
+    ----------
+    Bartlett, M. S. (1936). Some notes on insecticide tests in the laboratory and in the field.
+    Journal of the Royal Statistical Society, Supplement 3, 185-194 (the scaled chi-square).
+
+    Examples
+    --------
+    >>> low, high = detectable(24)
+    >>> round(low, 2), round(high, 2)
+    (0.42, 2.18)
+    """
+    upper, lower = _quantile(df, 1 - level / 2), _quantile(df, level / 2)
+    return lower / _quantile(df, power), upper / _quantile(df, 1 - power)
+
+
+def sentence(
+    verdict: Verdict, everything: Dispersion, whole: Dispersion | None, simulated: SimulatedTest
+) -> str:
+    """Return the verdict as a sentence.
+
+    Parameters
+    ----------
+    verdict : str
+        As `decide` gave it.
+    everything : Dispersion
+        Over all quadrats, by area.
+    whole : Dispersion or None
+        Over the whole quadrats only.
+    simulated : SimulatedTest
+        What the verdict rests on.
+
+    Returns
+    -------
+    str
+    """
+    if everything.n == 0:
+        return "No spots: nothing to test."
+    if verdict == "too few to tell":
+        return _too_few(everything)
+    numbers = _numbers(everything, whole, simulated)
+    times = f"{_short(everything.vmr)} times as much as they would at random"
+    if verdict == "clumped":
+        return f"Clumped: the counts vary {times} ({numbers})."
+    if verdict == "evenly spaced":
+        return f"Evenly spaced: the counts vary only {times} ({numbers})."
+    low, high = detectable(everything.df)
+    return (
+        f"No departure from random found ({numbers}). With these {everything.q} quadrats a VMR of"
+        f" {_short(high)} or more, or of {_short(low)} or less, would have been seen with"
+        f" {POWER:.0%} power."
+    )
+
+
+def flag_sentences(flags: Sequence[str], values: Mapping[str, Any]) -> tuple[str, ...]:
+    """Return flags as sentences, with their numbers filled in."""
+    return tuple(FLAGS[flag].format_map(values) for flag in flags)
+
+
+def p_text(p: float) -> str:
+    """Return a p in words, such as "p = 0.002"; never "p = 0"."""
+    if p < 0.001:
+        return "p < 0.001"
+    return f"p = {p:.3f}" if p < 0.1 else f"p = {p:.2f}"
+
+
+def _too_few(seen: Dispersion) -> str:
+    """Say how many there are and how many it takes."""
+    lacking = []
+    if seen.n < FEWEST_SPOTS:
+        lacking.append(f"{seen.n} spot{'s' * (seen.n != 1)} (a test needs at least {FEWEST_SPOTS})")
+    if seen.q < FEWEST_QUADRATS:
+        lacking.append(f"{seen.q} quadrats (a test needs at least {FEWEST_QUADRATS})")
+    return f"Too few to tell: {' and '.join(lacking)}."
+
+
+def _numbers(everything: Dispersion, whole: Dispersion | None, simulated: SimulatedTest) -> str:
+    """Return the figures behind a verdict, and say which of them it rests on."""
+    judged = f"two-sided {p_text(simulated.p_two_sided)}, simulated"
+    if whole is not None and whole.q == everything.q:
+        return f"VMR {everything.vmr:.2f}, {judged}"
+    rest = "" if whole is None else f"; VMR {whole.vmr:.2f} on the {whole.q} whole ones"
+    return f"X2/df {everything.vmr:.2f} over all {everything.q} quadrats by area, {judged}{rest}"
+
+
+def _short(ratio: float) -> str:
+    """Return a ratio with two figures."""
+    return f"{ratio:.0f}" if ratio >= 10 else f"{ratio:.2g}"
+
+
+def _quantile(df: int, probability: float) -> float:
+    """Return the chi-square value that this share lies below."""
+    return float(special.chdtri(df, 1 - probability))
