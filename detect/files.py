@@ -17,7 +17,7 @@ from detect.errors import FolderNotWritable
 
 Cell = str | int | float | bool | np.generic | None
 _PLAIN_NUMBER = re.compile(r"[-+]?(\d+\.?\d*|\.\d+)([eE][-+]?\d+)?")
-_FORMULA_STARTS = ("=", "+", "-", "@", "\t", "\r", "\n")
+_FORMULA_STARTS = ("=", "+", "-", "@", "\t", "\n")
 
 
 def make_folder(path: Path) -> Path:
@@ -91,9 +91,10 @@ def write_text_atomically(path: Path, text: str) -> None:
     path : Path
         The file.
     text : str
-        What it shall hold; line ends are kept as they are.
+        What it shall hold; line ends are kept as they are. Of a file name that is no proper
+        text, the odd bytes are written as escapes.
     """
-    write_bytes_atomically(path, text.encode("utf-8"))
+    write_bytes_atomically(path, text.encode("utf-8", errors="backslashreplace"))
 
 
 def csv_text(
@@ -167,7 +168,8 @@ def _number(value: float, digits: int | None) -> str:
 
 
 def _harmless(text: str) -> str:
-    """Return text that no spreadsheet takes for a formula."""
+    """Return text that no spreadsheet takes for a formula, nor a reader for two rows."""
+    text = text.replace("\r\n", "\n").replace("\r", "\n")
     if text.startswith(_FORMULA_STARTS) and not _PLAIN_NUMBER.fullmatch(text):
         return f"'{text}"
     return text

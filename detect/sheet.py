@@ -10,6 +10,7 @@ from pathlib import Path
 from typing import Any
 
 import numpy as np
+import shapely
 
 from detect.amendments import AMENDMENTS_SUFFIX as AMENDMENTS_SUFFIX
 from detect.amendments import SHEET_SUFFIX as SHEET_SUFFIX
@@ -26,6 +27,15 @@ from detect.scale import Scale
 from detect.spots import Spots
 
 SCHEMA = 1
+_IMPOSSIBLE = (
+    KeyError,
+    TypeError,
+    ValueError,
+    IndexError,
+    AttributeError,
+    DetectError,
+    shapely.errors.ShapelyError,
+)
 _DAMAGED = "{} is damaged ({}); restore a copy or detect again."
 _SPOT_COLUMNS = tuple(field.name for field in fields(Spots))
 _POINT_COLUMNS = [
@@ -169,7 +179,7 @@ def read_sheet(path: Path) -> Sheet:
         )
     try:
         return _sheet_from(values)
-    except (KeyError, TypeError, ValueError, IndexError, AttributeError, DetectError) as trouble:
+    except _IMPOSSIBLE as trouble:
         raise SheetUnreadable(_DAMAGED.format(path.name, explain(trouble))) from trouble
 
 
