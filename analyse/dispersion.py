@@ -13,6 +13,7 @@ import numpy as np
 from numpy.typing import ArrayLike, NDArray
 from scipy import special
 
+from analyse.density import garwood_limits as garwood_limits
 from analyse.errors import TooFewQuadrats
 
 
@@ -53,16 +54,6 @@ class Dispersion:
     p_clumped: float
     p_even: float
     p_two_sided: float
-
-
-@dataclass(frozen=True, slots=True)
-class Limits:
-    """A number with its confidence limits."""
-
-    value: float
-    low: float
-    high: float
-    level: float
 
 
 def dispersion(counts: ArrayLike) -> Dispersion:
@@ -224,46 +215,6 @@ def normal_deviate(chi2: float, df: int) -> float:
     2.6142
     """
     return math.sqrt(2 * chi2) - math.sqrt(2 * df - 1)
-
-
-def garwood_limits(count: int, *, level: float = 0.95) -> Limits:
-    """Return exact confidence limits of the mean of a Poisson count.
-
-    Parameters
-    ----------
-    count : int
-        What was counted, 0 or more.
-    level : float
-        Confidence level, between 0 and 1.
-
-    Returns
-    -------
-    Limits
-        The lower limit of a count of 0 is 0.
-
-    Raises
-    ------
-    ValueError
-        If the count or the level is impossible.
-
-    References
-    ----------
-    Garwood, F. (1936). Fiducial limits for the Poisson distribution. Biometrika 28, 437-442.
-
-    Examples
-    --------
-    >>> limits = garwood_limits(10)
-    >>> round(limits.low, 2), round(limits.high, 2)
-    (4.8, 18.39)
-    """
-    if count < 0 or count != int(count):
-        raise ValueError(f"a count must be a whole number of 0 or more, not {count}")
-    if not 0 < level < 1:
-        raise ValueError(f"a confidence level lies between 0 and 1, not at {level}")
-    tail = (1 - level) / 2
-    low = float(special.gammaincinv(count, tail)) if count > 0 else 0.0
-    high = float(special.gammainccinv(count + 1, tail))
-    return Limits(float(count), low, high, level)
 
 
 def morisita_index(counts: ArrayLike) -> float:

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import math
 import zlib
 from collections.abc import Sequence
 from dataclasses import dataclass
@@ -10,39 +9,26 @@ from typing import Any
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
-from scipy import special
 from shapely.geometry.base import BaseGeometry
 
+from analyse.density import Limits, density_per_cm2
 from analyse.dispersion import (
     Dispersion,
-    Limits,
     clipped_dispersion,
     dispersion,
     expected_counts,
-    garwood_limits,
     residuals,
 )
 from analyse.errors import GridWrong
+from analyse.flags import count_flags, flag_sentences
 from analyse.models import LARGEST_COUNT, PoissonFit, poisson_frequencies
 from analyse.nulls import SIMULATIONS, SimulatedTest, simulated_p
 from analyse.pattern import CountTable, Pattern, Unit
 from analyse.quadrats import GridOptions, QuadratCounts, count_in_quadrats, lay_grid
-from analyse.verdict import (
-    FEW_QUADRATS,
-    FEWEST_QUADRATS,
-    LARGE_CLIPPED,
-    LEVEL,
-    LOW_EXPECTED,
-    Verdict,
-    decide,
-    detectable,
-    flag_sentences,
-    sentence,
-)
+from analyse.verdict import LEVEL, Verdict, decide, detectable, sentence
 from detect.errors import OptionWrong
 
 SEED = 1
-_CM2 = 100.0  # square millimetres in a square centimetre
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -82,7 +68,7 @@ class Findings:
     detectable : (low, high)
         VMR that would have been seen with 80 % power, on the even and the clumped side.
     flags : tuple of str
-        Reasons for care, names in `analyse.verdict.FLAGS`.
+        Reasons for care, names in `analyse.flags.FLAGS`.
     flag_values : dict
         Numbers that the flags' sentences quote.
     seed : int
@@ -309,49 +295,6 @@ def analyse_counts(
     )  # fmt: skip
 
 
-def density_per_cm2(n: int, area_mm2: float, relative_uncertainty: float) -> Limits:
-    """Return points per square centimetre with 95 % limits, widened by the scale's uncertainty.
-
-    Parameters
-    ----------
-    n : int
-        Points counted.
-    area_mm2 : float
-        Study area.
-    relative_uncertainty : float
-        Standard uncertainty of a length, as a fraction of it.
-
-    Returns
-    -------
-    Limits
-
-    Notes
-    -----
-    Garwood's limits of the count divided by the area. An area is a length squared, so its relative
-    standard uncertainty is twice a length's; 1.96 times that is its half width on the log scale,
-    and it is added in quadrature to the half width of each of Garwood's limits, ln(limit / n).
-    Without points there is no half width to add to: the upper limit is multiplied instead.
-
-    References
-    ----------
-    Garwood, F. (1936). Fiducial limits for the Poisson distribution. Biometrika 28, 437-442.
-
-    Examples
-    --------
-    >>> d = density_per_cm2(100, 10_000.0, 0.01)
-    >>> round(d.value, 3), round(d.low, 3), round(d.high, 3)
-    (1.0, 0.811, 1.221)
-    """
-    count = garwood_limits(n)
-    of_area = float(special.ndtri(0.5 + count.level / 2)) * 2 * relative_uncertainty
-    per = _CM2 / area_mm2
-    if n == 0:
-        return Limits(0.0, 0.0, count.high * math.exp(of_area) * per, count.level)
-    low = n * math.exp(-math.hypot(math.log(n / count.low), of_area))
-    high = n * math.exp(math.hypot(math.log(count.high / n), of_area))
-    return Limits(n * per, low * per, high * per, count.level)
-
-
 def stream(seed: int, name: str) -> np.random.Generator:
     """Return the source of randomness of one photograph, which no other one disturbs.
 
@@ -398,7 +341,15 @@ def _judged(
     rng = stream(seed, name)
     simulated = simulated_p(x, weights, simulations=simulations, rng=rng)
     verdict = decide(everything.n, everything.q, simulated)
-    values = flag_values | _flag_values(counts, everything)
+    values = flag_values | {
+        "n": everything.n,
+        "q": everything.q,
+        "whole": int(counts.whole.sum()),
+        "mean_expected": everything.mean,
+        "clipped_percent": 100 * counts.clipped_share,
+    }
+    if verdict != "too few to tell":
+        flags += count_flags(values)
     return Findings(
         name=name,
         n=everything.n,
@@ -416,33 +367,11 @@ def _judged(
         verdict=verdict,
         sentence=sentence(verdict, everything, whole, simulated),
         detectable=detectable(everything.df),
-        flags=flags + _count_flags(values),
+        flags=flags,
         flag_values=values,
         seed=seed,
         settings=settings | {"simulations": simulations, "level": LEVEL},
     )
-
-
-def _flag_values(counts: QuadratCounts, everything: Dispersion) -> dict[str, Any]:
-    """Return the numbers that flags about counts depend on and quote."""
-    return {
-        "n": everything.n,
-        "q": everything.q,
-        "whole": int(counts.whole.sum()),
-        "mean_expected": everything.mean,
-        "clipped_share": counts.clipped_share,
-    }
-
-
-def _count_flags(values: dict[str, Any]) -> tuple[str, ...]:
-    """Return the flags that counts give rise to."""
-    known = {
-        "few_quadrats": values["q"] < FEW_QUADRATS,
-        "low_expected": 0 < values["mean_expected"] < LOW_EXPECTED,
-        "few_whole": values["whole"] < min(FEWEST_QUADRATS, values["q"]),
-        "clipped_large": values["clipped_share"] > LARGE_CLIPPED,
-    }
-    return tuple(name for name, raised in known.items() if raised)
 
 
 def _frequencies(counts: NDArray[np.int64]) -> PoissonFit | None:

@@ -13,15 +13,15 @@ import shapely
 from numpy.typing import ArrayLike, NDArray
 from shapely.geometry.base import BaseGeometry
 
+from analyse.count_table import CountTable as CountTable
+from analyse.count_table import read_counts as read_counts
 from analyse.errors import TableWrong
-from analyse.rows import Row, read_rows, real_in, whole_in
-from detect.errors import AreaWrong, OptionWrong
-from detect.lengths import Length
+from analyse.region import MM_PER_UNIT, TableUnit, check_area, rectangle
+from analyse.region import area_from_option as area_from_option
+from analyse.rows import read_rows, real_in
 from detect.sheet import Amendment, Sheet, current_state
 
 Unit = Literal["mm", "px"]
-TableUnit = Literal["mm", "cm", "m"]
-MM_PER_UNIT: dict[TableUnit, float] = {"mm": 1.0, "cm": 10.0, "m": 1000.0}
 DOUBTFUL = 0.5  # a doubt above this is more likely false than real
 
 
@@ -57,7 +57,7 @@ class Pattern:
     reviewed : bool
         Whether a person has been over the points (always so for a table).
     flags : tuple of str
-        Reasons for care known already (see `analyse.verdict.FLAGS`).
+        Reasons for care known already (see `analyse.flags.FLAGS`).
     dish : Circle or None
         The circle that rings and sectors are laid in.
     outside : int
@@ -144,7 +144,7 @@ class Pattern:
         (2, 1, ('outside',))
         """
         kind = "polygon" if isinstance(area, BaseGeometry) else "rectangle"
-        region = area if isinstance(area, BaseGeometry) else _rectangle([float(v) for v in area])
+        region = area if isinstance(area, BaseGeometry) else rectangle([float(v) for v in area])
         xy = np.asarray(points, dtype=np.float64).reshape(-1, 2)
         check_area(region)
         shapely.prepare(region)
@@ -165,58 +165,6 @@ class Pattern:
     def doubtful(self) -> int:
         """Number of points more likely false than real by their doubt."""
         return int((self.doubt > DOUBTFUL).sum())
-
-
-@dataclass(frozen=True, slots=True, eq=False)
-class CountTable:
-    """Counts of a table that has no points.
-
-    Parameters
-    ----------
-    name : str
-        File name of the table.
-    counts : ndarray of int, shape (q,)
-        One count per quadrat, row by row for a rectangle.
-    rows, columns : int or None
-        Shape of the rectangle the quadrats form, where they form one.
-    side : Length or None
-        Side of a quadrat, where it is known.
-
-    Raises
-    ------
-    ValueError
-        If the shape does not hold the counts or a count is negative.
-    """
-
-    name: str
-    counts: NDArray[np.int64]
-    rows: int | None = None
-    columns: int | None = None
-    side: Length | None = None
-
-    def __post_init__(self) -> None:
-        counts = np.array(self.counts, dtype=np.int64).reshape(-1)
-        if (counts < 0).any():
-            raise ValueError("a count is negative")
-        if self.rows is not None and self.rows * (self.columns or 0) != counts.size:
-            raise ValueError(
-                f"{self.rows} x {self.columns} quadrats cannot hold {counts.size} counts"
-            )
-        counts.setflags(write=False)
-        object.__setattr__(self, "counts", counts)
-
-
-def check_area(area: BaseGeometry) -> None:
-    """Refuse a study area that is no polygon, crosses itself or encloses nothing."""
-    if area.geom_type not in ("Polygon", "MultiPolygon"):
-        raise AreaWrong(
-            f"A study area must be a polygon, not a {area.geom_type}; give a closed outline."
-        )
-    if not area.is_valid:
-        reason = shapely.is_valid_reason(area)
-        raise AreaWrong(f"The study area is not usable ({reason}); draw it without crossings.")
-    if not (math.isfinite(area.area) and area.area > 0):
-        raise AreaWrong("The study area encloses nothing; give one with an area above 0.")
 
 
 def pattern_from_sheet(sheet: Sheet, amendments: Sequence[Amendment] = ()) -> Pattern:
@@ -299,154 +247,6 @@ def read_points(path: Path, *, area: BaseGeometry, unit: TableUnit = "mm") -> Pa
     points = [[real_in(row, at[name], name) for name in ("x", "y")] for row in body]
     xy = np.array(points, dtype=np.float64).reshape(-1, 2) * MM_PER_UNIT[unit]
     return Pattern.of(xy, area, name=path.name)
-
-
-def read_counts(path: Path, *, side: Length | None = None) -> CountTable:
-    """Read a table of counts: a column `count`, or a bare rectangle of whole numbers.
-
-    Parameters
-    ----------
-    path : Path
-        A CSV file. With a header, one row per quadrat; without, contiguous quadrats.
-    side : Length or None
-        Side of a quadrat, where it is known.
-
-    Returns
-    -------
-    CountTable
-
-    Raises
-    ------
-    TableWrong
-        If a count is no whole number of 0 or more, rows differ in length, or there are fewer
-        than 2 quadrats.
-    """
-    rows = read_rows(path)
-    names = [cell.lower() for cell in rows[0].cells]
-    if "count" in names:
-        column = names.index("count")
-        counts = [whole_in(row, column, "count") for row in rows[1:]]
-        shape = None
-    else:
-        counts, shape = _rectangle_of_counts(path, rows)
-    if len(counts) < 2:
-        raise TableWrong(
-            f"{path.name} holds {len(counts)} quadrat{'s' * (len(counts) != 1)};"
-            " dispersion needs counts of at least 2."
-        )
-    columns = None if shape is None else shape[1]
-    return CountTable(path.name, np.array(counts), shape and shape[0], columns, side)
-
-
-def area_from_option(text: str, unit: TableUnit = "mm") -> BaseGeometry:
-    """Return the study area a person typed for a table, in millimetres.
-
-    Parameters
-    ----------
-    text : str
-        ``X0,Y0,X1,Y1`` of a rectangle, or the path of a GeoJSON file with one polygon.
-    unit : {"mm", "cm", "m"}
-        Unit of the numbers.
-
-    Returns
-    -------
-    shapely geometry
-
-    Raises
-    ------
-    AreaWrong
-        If the text is neither, or the area is unusable.
-    OptionWrong
-        If the unit is unknown.
-
-    Examples
-    --------
-    >>> area_from_option("0,0,2,1", "cm").area
-    200.0
-    """
-    if unit not in MM_PER_UNIT:
-        raise OptionWrong(f"--unit must be mm, cm or m, not {unit!r}.")
-    factor = MM_PER_UNIT[unit]
-    numbers = _four_numbers(text)
-    if numbers is not None:
-        return _rectangle([value * factor for value in numbers])
-    area = _polygon_in(Path(text))
-    return shapely.transform(area, lambda xy: xy * factor)
-
-
-def _rectangle(numbers: Sequence[float]) -> BaseGeometry:
-    """Return the rectangle with the corners x0, y0 and x1, y1."""
-    if len(numbers) != 4 or not all(math.isfinite(value) for value in numbers):
-        raise AreaWrong(
-            f"A rectangle needs four finite numbers X0,Y0,X1,Y1, not {list(numbers)}; give all four."
-        )
-    x0, y0, x1, y1 = numbers
-    if not (x1 > x0 and y1 > y0):
-        raise AreaWrong(
-            f"The rectangle {x0:g},{y0:g},{x1:g},{y1:g} encloses nothing;"
-            " give the smaller corner first, then the larger one."
-        )
-    return shapely.box(x0, y0, x1, y1)
-
-
-def _four_numbers(text: str) -> list[float] | None:
-    """Return the numbers of a rectangle, or None where the text is meant as a path."""
-    parts = text.split(",")
-    try:
-        return [float(part) for part in parts]
-    except ValueError:
-        return None
-
-
-def _polygon_in(path: Path) -> BaseGeometry:
-    """Return the one polygon of a GeoJSON file."""
-    try:
-        text = path.read_text(encoding="utf-8")
-    except (OSError, ValueError) as error:
-        raise AreaWrong(
-            f"The study area {str(path)!r} is neither X0,Y0,X1,Y1 nor a file that can be read;"
-            " check the path."
-        ) from error
-    try:
-        shapes = shapely.get_parts(shapely.from_geojson(text))
-    except shapely.GEOSException as error:
-        raise AreaWrong(
-            f"{path.name} is not GeoJSON; save one polygon as GeoJSON and name that file."
-        ) from error
-    if len(shapes) != 1 and {shape.geom_type for shape in shapes} != {"Polygon"}:
-        raise AreaWrong(
-            f"{path.name} holds {len(shapes)} shapes; a study area is one polygon, with holes if need be."
-        )
-    area: BaseGeometry = shapes[0] if len(shapes) == 1 else shapely.MultiPolygon(list(shapes))
-    check_area(area)
-    return area
-
-
-def _rectangle_of_counts(path: Path, rows: Sequence[Row]) -> tuple[list[int], tuple[int, int]]:
-    """Return the counts of contiguous quadrats row by row, and the shape they form."""
-    first = rows[0]
-    if not any(_is_number(cell) for cell in first.cells):
-        raise TableWrong(
-            f"{path.name} has no column 'count' (its columns: {', '.join(first.cells)});"
-            " name the column count, or give a bare rectangle of whole numbers."
-        )
-    for row in rows:
-        if len(row.cells) != len(first.cells):
-            raise TableWrong(
-                f"{row.where} holds {len(row.cells)} counts, but row {first.number} holds"
-                f" {len(first.cells)}; a grid of quadrats needs rows of one length."
-            )
-    counts = [whole_in(row, k, str(k + 1)) for row in rows for k in range(len(first.cells))]
-    return counts, (len(rows), len(first.cells))
-
-
-def _is_number(text: str) -> bool:
-    """Tell whether a cell reads as a number of any kind."""
-    try:
-        float(text)
-    except ValueError:
-        return False
-    return True
 
 
 def _point_flags(

@@ -13,60 +13,16 @@ from shapely.geometry.base import BaseGeometry
 
 from analyse.cells import Lattice, Sectors, joined
 from analyse.errors import GridWrong
+from analyse.grid_options import GridOptions as GridOptions
+from analyse.grid_options import default_side as default_side
+from analyse.grid_options import side_in
 from analyse.pattern import Circle, Unit
-from detect.lengths import Length
 
 GridShape = Literal["square", "rectangle", "sectors"]
-SENSIBLE = (1.0, 1.2, 1.5, 2.0, 2.5, 3.0, 4.0, 5.0, 6.0, 8.0)
-FEWEST_POINTS = 8  # fewer count as this many in the rule for the side, so that a grid exists
 MOST_QUADRATS = 100_000
 _SLACK = 1e-3  # of a cell: how far an area may overhang the last cell before another is laid
 _NEARLY_WHOLE = 0.998  # share of a full cell from which a cell is called whole
 _EQUAL_SECTORS = 0.01  # how far a whole sector may differ from its share of the dish
-
-
-@dataclass(frozen=True, slots=True)
-class GridOptions:
-    """How the study area is cut into quadrats; with nothing chosen, squares by `default_side`.
-
-    Parameters
-    ----------
-    side : Length or None
-        Side of square quadrats.
-    shape : (rows, columns) or None
-        Divide the bounding box of the area into this many equal rectangles.
-    rings : (rings, sectors) or None
-        Divide a dish into rings and sectors of equal area.
-    join_below : float
-        A clipped quadrat with less than this share of a full one is joined to a neighbour.
-
-    Raises
-    ------
-    GridWrong
-        If two ways are chosen at once, or a number is impossible.
-    """
-
-    side: Length | None = None
-    shape: tuple[int, int] | None = None
-    rings: tuple[int, int] | None = None
-    join_below: float = 0.25
-
-    def __post_init__(self) -> None:
-        chosen = [way for way in (self.side, self.shape, self.rings) if way is not None]
-        if len(chosen) > 1:
-            raise GridWrong(
-                "Only one of --quadrat, --grid and --rings can lay the quadrats; choose one."
-            )
-        for option, pair in (("--grid", self.shape), ("--rings", self.rings)):
-            if pair is not None and not (min(pair) >= 1 and math.prod(pair) >= 2):
-                raise GridWrong(
-                    f"{option} {pair[0]}x{pair[1]} makes no grid of at least 2 quadrats;"
-                    f" give two numbers such as {'5x5' if option == '--grid' else '3x8'}."
-                )
-        if not 0 <= self.join_below < 1:
-            raise GridWrong(
-                f"The share below which quadrats are joined must lie from 0 to below 1, not at {self.join_below:g}."
-            )
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -178,37 +134,6 @@ class QuadratCounts:
         return float(self.area[~self.whole].sum() / self.area.sum())
 
 
-def default_side(area: float, n: int) -> float:
-    """Return the side of square quadrats by rule: about sqrt(2 A / n), a sensible figure.
-
-    Parameters
-    ----------
-    area : float
-        Study area A.
-    n : int
-        Points in it; fewer than 8 count as 8.
-
-    Returns
-    -------
-    float
-        The nearest, in ratio, of 1, 1.2, 1.5, 2, 2.5, 3, 4, 5, 6 and 8 times a power of ten.
-
-    Notes
-    -----
-    A rule of the area and the number alone: where the points lie has no say, so a test given n
-    stays valid. It puts about two points in a quadrat (common practice).
-
-    Examples
-    --------
-    >>> default_side(750_000.0, 120)
-    120.0
-    """
-    wished = math.sqrt(2 * area / max(n, FEWEST_POINTS))
-    power = math.floor(math.log10(wished))
-    figures = [s * 10.0**p for p in (power - 1, power, power + 1) for s in SENSIBLE]
-    return float(f"{min(figures, key=lambda side: abs(math.log(side / wished))):.12g}")
-
-
 def lay_grid(
     area: BaseGeometry,
     n: int,
@@ -263,7 +188,7 @@ def lay_grid(
         rows, columns = options.shape
         lattice = Lattice(x0, y0, (x1 - x0) / columns, (y1 - y0) / rows, rows, columns)
         return _clipped(lattice, area, options, unit, None)
-    side = default_side(area.area, n) if options.side is None else _side(options.side, unit)
+    side = default_side(area.area, n) if options.side is None else side_in(options.side, unit)
     if side * (1 - _SLACK) >= max(x1 - x0, y1 - y0):
         raise GridWrong(
             f"A quadrat of {side:g} {unit} is larger than the study area"
@@ -313,17 +238,6 @@ def count_in_quadrats(points: ArrayLike, grid: Grid) -> NDArray[np.int64]:
         away = shapely.distance(shapely.Point(xy[i]), np.array(grid.polygons, dtype=object))
         quadrat[i] = int(np.argmin(away))
     return np.bincount(quadrat, minlength=len(grid)).astype(np.int64)
-
-
-def _side(side: Length, unit: Unit) -> float:
-    """Return a side in the unit of the area, or refuse one that cannot be turned into it."""
-    if side.in_pixels and unit == "mm":
-        raise GridWrong(f"--quadrat {side} is in pixels, but the scale is known; give it in mm.")
-    if not side.in_pixels and unit == "px":
-        raise GridWrong(
-            f"--quadrat {side} needs a scale, and none is known; give a scale, or the side in px."
-        )
-    return side.value if side.in_pixels else side.to_mm()
 
 
 def _clipped(

@@ -2,12 +2,12 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
-from typing import Any, Literal
+from typing import Literal
 
 from scipy import special
 
 from analyse.dispersion import Dispersion
+from analyse.flags import FLAGS as FLAGS
 from analyse.nulls import SimulatedTest
 
 Verdict = Literal["clumped", "evenly spaced", "no departure from random found", "too few to tell"]
@@ -15,25 +15,6 @@ LEVEL = 0.05
 POWER = 0.80
 FEWEST_SPOTS = 10  # common practice
 FEWEST_QUADRATS = 6  # common practice: more than 5
-FEW_QUADRATS = 10  # below this only strong departures can be seen: our own limit
-LOW_EXPECTED = 1.0  # mean expected count below which the chi-square p is rough
-LARGE_CLIPPED = 0.5  # share of the study area in quadrats that are not whole
-
-FLAGS: dict[str, str] = {
-    "uncalibrated": "No scale is known: lengths are in pixels, and no density is given.",
-    "unreviewed": "No person has checked these spots: everything here rests on the detector alone.",
-    "doubtful": "Counted spots that are more likely false than real: {doubtful} of {n}; check them.",
-    "outside": "Points outside the study area, which were left out: {outside}.",
-    "duplicates": "Points at the very place of another: {duplicates}; check for double entries.",
-    "no_area": "A table of counts tells no study area, so no density is given.",
-    "few_quadrats": "With only {q} quadrats, only a strong departure from random could be seen.",
-    "low_expected": "A quadrat expects only {mean_expected:.2g} points on average:"
-    " the chi-square p is rough there; the simulated p holds.",
-    "few_whole": "Only {whole} of {q} quadrats are whole, so the VMR of whole quadrats says little;"
-    " the verdict uses all quadrats.",
-    "clipped_large": "Of the study area, {clipped_share:.0%} lies in clipped quadrats;"
-    " the verdict takes their areas into account, the VMR of whole quadrats leaves them out.",
-}
 
 
 def decide(n: int, q: int, simulated: SimulatedTest) -> Verdict:
@@ -140,13 +121,8 @@ def sentence(
     return (
         f"No departure from random found ({numbers}). With these {everything.q} quadrats a VMR of"
         f" {_short(high)} or more, or of {_short(low)} or less, would have been seen with"
-        f" {POWER:.0%} power."
+        f" {100 * POWER:.0f} % power."
     )
-
-
-def flag_sentences(flags: Sequence[str], values: Mapping[str, Any]) -> tuple[str, ...]:
-    """Return flags as sentences, with their numbers filled in."""
-    return tuple(FLAGS[flag].format_map(values) for flag in flags)
 
 
 def p_text(p: float) -> str:
@@ -176,8 +152,10 @@ def _numbers(everything: Dispersion, whole: Dispersion | None, simulated: Simula
 
 
 def _short(ratio: float) -> str:
-    """Return a ratio with two figures."""
-    return f"{ratio:.0f}" if ratio >= 10 else f"{ratio:.2g}"
+    """Return a ratio with about two figures, more of them next to 1."""
+    if ratio >= 10:
+        return f"{ratio:.0f}"
+    return f"{ratio:.1f}" if ratio >= 1.1 else f"{ratio:.2f}"
 
 
 def _quantile(df: int, probability: float) -> float:

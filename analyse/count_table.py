@@ -1,0 +1,117 @@
+"""Counts of a table that has no points: a column of counts, or a grid of contiguous quadrats."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+from pathlib import Path
+
+import numpy as np
+from numpy.typing import NDArray
+
+from analyse.errors import TableWrong
+from analyse.rows import Row, read_rows, whole_in
+from detect.lengths import Length
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class CountTable:
+    """Counts of a table that has no points.
+
+    Parameters
+    ----------
+    name : str
+        File name of the table.
+    counts : ndarray of int, shape (q,)
+        One count per quadrat, row by row for a rectangle.
+    rows, columns : int or None
+        Shape of the rectangle the quadrats form, where they form one.
+    side : Length or None
+        Side of a quadrat, where it is known.
+
+    Raises
+    ------
+    ValueError
+        If the shape does not hold the counts or a count is negative.
+    """
+
+    name: str
+    counts: NDArray[np.int64]
+    rows: int | None = None
+    columns: int | None = None
+    side: Length | None = None
+
+    def __post_init__(self) -> None:
+        counts = np.array(self.counts, dtype=np.int64).reshape(-1)
+        if (counts < 0).any():
+            raise ValueError("a count is negative")
+        if self.rows is not None and self.rows * (self.columns or 0) != counts.size:
+            raise ValueError(
+                f"{self.rows} x {self.columns} quadrats cannot hold {counts.size} counts"
+            )
+        counts.setflags(write=False)
+        object.__setattr__(self, "counts", counts)
+
+
+def read_counts(path: Path, *, side: Length | None = None) -> CountTable:
+    """Read a table of counts: a column `count`, or a bare rectangle of whole numbers.
+
+    Parameters
+    ----------
+    path : Path
+        A CSV file. With a header, one row per quadrat; without, contiguous quadrats.
+    side : Length or None
+        Side of a quadrat, where it is known.
+
+    Returns
+    -------
+    CountTable
+
+    Raises
+    ------
+    TableWrong
+        If a count is no whole number of 0 or more, rows differ in length, or there are fewer
+        than 2 quadrats.
+    """
+    rows = read_rows(path)
+    names = [cell.lower() for cell in rows[0].cells]
+    if "count" in names:
+        column = names.index("count")
+        counts = [whole_in(row, column, "count") for row in rows[1:]]
+        shape = None
+    else:
+        counts, shape = _rectangle_of_counts(path, rows)
+    if len(counts) < 2:
+        raise TableWrong(
+            f"{path.name} holds {len(counts)} quadrat{'s' * (len(counts) != 1)};"
+            " dispersion needs counts of at least 2."
+        )
+    columns = None if shape is None else shape[1]
+    return CountTable(path.name, np.array(counts), shape and shape[0], columns, side)
+
+
+def _rectangle_of_counts(path: Path, rows: Sequence[Row]) -> tuple[list[int], tuple[int, int]]:
+    """Return the counts of contiguous quadrats row by row, and the shape they form."""
+    first = rows[0]
+    if not any(_is_number(cell) for cell in first.cells):
+        raise TableWrong(
+            f"{path.name} has no column 'count' (its columns: {', '.join(first.cells)});"
+            " name the column count, or give a bare rectangle of whole numbers."
+        )
+    for row in rows:
+        if len(row.cells) != len(first.cells):
+            raise TableWrong(
+                f"{row.where} holds {len(row.cells)} counts, but row {first.number} holds"
+                f" {len(first.cells)}; a grid of quadrats needs rows of one length."
+            )
+    counts = [whole_in(row, k, str(k + 1)) for row in rows for k in range(len(first.cells))]
+    return counts, (len(rows), len(first.cells))
+
+
+def _is_number(text: str) -> bool:
+    """Tell whether a cell reads as a number of any kind."""
+    try:
+        float(text)
+    except ValueError:
+        return False
+    return True

@@ -1,0 +1,103 @@
+"""How dense the points lie, with limits that know the count's chance and the scale's uncertainty."""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+
+from scipy import special
+
+_CM2 = 100.0  # square millimetres in a square centimetre
+
+
+@dataclass(frozen=True, slots=True)
+class Limits:
+    """A number with its confidence limits."""
+
+    value: float
+    low: float
+    high: float
+    level: float
+
+
+def garwood_limits(count: int, *, level: float = 0.95) -> Limits:
+    """Return exact confidence limits of the mean of a Poisson count.
+
+    Parameters
+    ----------
+    count : int
+        What was counted, 0 or more.
+    level : float
+        Confidence level, between 0 and 1.
+
+    Returns
+    -------
+    Limits
+        The lower limit of a count of 0 is 0.
+
+    Raises
+    ------
+    ValueError
+        If the count or the level is impossible.
+
+    References
+    ----------
+    Garwood, F. (1936). Fiducial limits for the Poisson distribution. Biometrika 28, 437-442.
+
+    Examples
+    --------
+    >>> limits = garwood_limits(10)
+    >>> round(limits.low, 2), round(limits.high, 2)
+    (4.8, 18.39)
+    """
+    if count < 0 or count != int(count):
+        raise ValueError(f"a count must be a whole number of 0 or more, not {count}")
+    if not 0 < level < 1:
+        raise ValueError(f"a confidence level lies between 0 and 1, not at {level}")
+    tail = (1 - level) / 2
+    low = float(special.gammaincinv(count, tail)) if count > 0 else 0.0
+    high = float(special.gammainccinv(count + 1, tail))
+    return Limits(float(count), low, high, level)
+
+
+def density_per_cm2(n: int, area_mm2: float, relative_uncertainty: float) -> Limits:
+    """Return points per square centimetre with 95 % limits, widened by the scale's uncertainty.
+
+    Parameters
+    ----------
+    n : int
+        Points counted.
+    area_mm2 : float
+        Study area.
+    relative_uncertainty : float
+        Standard uncertainty of a length, as a fraction of it.
+
+    Returns
+    -------
+    Limits
+
+    Notes
+    -----
+    Garwood's limits of the count divided by the area. An area is a length squared, so its relative
+    standard uncertainty is twice a length's; 1.96 times that is its half width on the log scale,
+    and it is added in quadrature to the half width of each of Garwood's limits, ln(limit / n).
+    Without points there is no half width to add to: the upper limit is multiplied instead.
+
+    References
+    ----------
+    Garwood, F. (1936). Fiducial limits for the Poisson distribution. Biometrika 28, 437-442.
+
+    Examples
+    --------
+    >>> d = density_per_cm2(100, 10_000.0, 0.01)
+    >>> round(d.value, 3), round(d.low, 3), round(d.high, 3)
+    (1.0, 0.811, 1.221)
+    """
+    count = garwood_limits(n)
+    of_area = float(special.ndtri(0.5 + count.level / 2)) * 2 * relative_uncertainty
+    per = _CM2 / area_mm2
+    if n == 0:
+        return Limits(0.0, 0.0, count.high * math.exp(of_area) * per, count.level)
+    low = n * math.exp(-math.hypot(math.log(n / count.low), of_area))
+    high = n * math.exp(math.hypot(math.log(count.high / n), of_area))
+    return Limits(n * per, low * per, high * per, count.level)

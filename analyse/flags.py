@@ -1,0 +1,71 @@
+"""Reasons for care that go with doubtful but usable results: one table, shown in every output."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from typing import Any
+
+FEW_QUADRATS = 10  # below this only strong departures can be seen: our own limit
+LOW_EXPECTED = 1.0  # mean expected count below which the chi-square p is rough (common practice)
+FEW_WHOLE = 6  # whole quadrats below which their VMR says little, as for any test
+LARGE_CLIPPED = 0.5  # share of the study area in quadrats that are not whole: our own limit
+
+FLAGS: dict[str, str] = {
+    "uncalibrated": "No scale is known: lengths are in pixels, and no density is given.",
+    "unreviewed": "No person has checked these spots: everything here rests on the detector alone.",
+    "doubtful": "Counted spots that are more likely false than real: {doubtful} of {n}; check them.",
+    "outside": "Points outside the study area, which were left out: {outside}.",
+    "duplicates": "Points at the very place of another: {duplicates}; check for double entries.",
+    "no_area": "A table of counts tells no study area, so no density is given.",
+    "few_quadrats": "With only {q} quadrats, only a strong departure from random could be seen.",
+    "low_expected": "A quadrat expects only {mean_expected:.2g} points on average:"
+    " the chi-square p is rough there; the simulated p holds.",
+    "few_whole": "Whole quadrats: {whole} of {q}. Their VMR says little; the verdict uses all.",
+    "clipped_large": "Of the study area, {clipped_percent:.0f} % lies in clipped quadrats;"
+    " the verdict takes their areas into account, the VMR of whole quadrats leaves them out.",
+}
+
+
+def flag_sentences(flags: Sequence[str], values: Mapping[str, Any]) -> tuple[str, ...]:
+    """Return flags as sentences, with their numbers filled in.
+
+    Parameters
+    ----------
+    flags : sequence of str
+        Names in `FLAGS`.
+    values : mapping
+        The numbers the sentences quote.
+
+    Returns
+    -------
+    tuple of str
+
+    Examples
+    --------
+    >>> flag_sentences(["outside"], {"outside": 3})
+    ('Points outside the study area, which were left out: 3.',)
+    """
+    return tuple(FLAGS[flag].format_map(values) for flag in flags)
+
+
+def count_flags(values: Mapping[str, Any]) -> tuple[str, ...]:
+    """Return the flags that counts in quadrats give rise to, where they are judged at all.
+
+    Parameters
+    ----------
+    values : mapping
+        ``q`` quadrats of which ``whole`` are whole, ``mean_expected`` points in each, and
+        ``clipped_percent`` of the study area in the others.
+
+    Returns
+    -------
+    tuple of str
+        Names in `FLAGS`.
+    """
+    known = {
+        "few_quadrats": values["q"] < FEW_QUADRATS,
+        "low_expected": values["mean_expected"] < LOW_EXPECTED,
+        "few_whole": values["whole"] < min(FEW_WHOLE, values["q"]),
+        "clipped_large": values["clipped_percent"] > 100 * LARGE_CLIPPED,
+    }
+    return tuple(name for name, raised in known.items() if raised)

@@ -1,0 +1,286 @@
+"""The tables of an analysis: quadrats, one row per photograph, and one row per statistic."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Iterator, Mapping, Sequence
+
+from scipy import special
+
+from analyse.dispersion import (
+    Dispersion,
+    cluster_size_index,
+    greens_index,
+    mean_crowding,
+    morisita_index,
+    normal_deviate,
+)
+from analyse.findings import Findings
+from analyse.verdict import POWER
+from detect.files import Cell, csv_text
+
+DIGITS = 9
+QUADRAT_COLUMNS = [
+    "photograph",
+    "quadrat",
+    "row",
+    "column",
+    "x_mm",
+    "y_mm",
+    "area_mm2",
+    "whole",
+    "count",
+    "expected",
+    "residual",
+    "x_px",
+    "y_px",
+    "area_px2",
+]
+SUMMARY_COLUMNS = [
+    "photograph",
+    "count",
+    "area_mm2",
+    "density_per_cm2",
+    "density_low",
+    "density_high",
+    "quadrat_mm",
+    "quadrats",
+    "mean",
+    "variance",
+    "vmr",
+    "chi2",
+    "df",
+    "p_clumped",
+    "p_even",
+    "p_two_sided",
+    "p_simulated",
+    "verdict",
+    "whole_quadrats",
+    "vmr_by_area",
+    "chi2_whole",
+    "df_whole",
+    "p_clumped_whole",
+    "p_even_whole",
+    "p_two_sided_whole",
+    "p_simulated_clumped",
+    "p_simulated_even",
+    "vmr_seen_low",
+    "vmr_seen_high",
+    "quadrat_area_mm2",
+    "quadrat_px",
+    "area_px2",
+    "simulations",
+    "seed",
+    "rests_on",
+    "flags",
+    "sentence",
+]
+TEST_COLUMNS = ["photograph", "statistic", "value", "low", "high", "p", "method", "n", "notes"]
+_FISHER = "index of dispersion, chi-square (Fisher, Thornton and Mackenzie 1922)"
+_BY_AREA = "index of dispersion with expected counts by area, chi-square (Pearson 1900)"
+_SIMULATED = "simulated given the total (Davison and Hinkley 1997)"
+_SIDES = {"clumped": "upper tail", "even": "lower tail", "two_sided": "twice the smaller tail"}
+
+
+def quadrats_csv(findings: Sequence[Findings]) -> str:
+    """Return every quadrat of every photograph as CSV.
+
+    Parameters
+    ----------
+    findings : sequence of Findings
+        One per photograph or table.
+
+    Returns
+    -------
+    str
+        Quadrats, rows and columns are numbered from 1 at the top left; places and areas in
+        millimetres are empty where no scale is known, and pixel cells where one is.
+    """
+    rows = (row for each in findings for row in _quadrats(each))
+    return csv_text(QUADRAT_COLUMNS, rows, digits=DIGITS)
+
+
+def summary_csv(
+    findings: Sequence[Findings], *, factors: Mapping[str, Mapping[str, str]] | None = None
+) -> str:
+    """Return one row per photograph as CSV.
+
+    Parameters
+    ----------
+    findings : sequence of Findings
+        One per photograph or table.
+    factors : mapping from photograph name to (factor, value), or None
+        Treatment, block and the like, which become columns at the end.
+
+    Returns
+    -------
+    str
+
+    Notes
+    -----
+    ``mean``, ``variance`` and ``vmr`` are of whole quadrats; ``chi2``, ``df`` and the p after them
+    are of all ``quadrats``, with expected counts by area, and ``vmr_by_area`` is their chi2 / df.
+    ``p_simulated`` is two-sided and what the verdict rests on. Columns that end in ``_whole`` are
+    the chi-square test of whole quadrats.
+    """
+    known = factors or {}
+    names = list(dict.fromkeys(name for each in known.values() for name in each))
+    rows = (
+        [*_summary(each), *(known.get(each.name, {}).get(name, "") for name in names)]
+        for each in findings
+    )
+    return csv_text([*SUMMARY_COLUMNS, *names], rows, digits=DIGITS)
+
+
+def tests_csv(findings: Sequence[Findings]) -> str:
+    """Return one row per statistic of every photograph as CSV.
+
+    Parameters
+    ----------
+    findings : sequence of Findings
+        One per photograph or table.
+
+    Returns
+    -------
+    str
+        ``n`` is the number of quadrats behind a statistic, for the density that of points.
+    """
+    rows = (
+        [each.name, *row]
+        for each in findings
+        for part in (_density_rows, _whole_rows, _all_rows, _simulated_rows, _poisson_rows)
+        for row in part(each)
+    )
+    return csv_text(TEST_COLUMNS, rows, digits=DIGITS)
+
+
+def _quadrats(each: Findings) -> Iterator[list[Cell]]:
+    """Yield the quadrats of one photograph as rows."""
+    counts, grid = each.counts, each.counts.grid
+    for k in range(len(counts)):
+        place: list[Cell] = [None, None] if grid is None else [grid.x[k], grid.y[k]]
+        place.append(None if counts.area is None else counts.area[k])
+        nothing: list[Cell] = [None] * 3
+        yield [
+            each.name,
+            k + 1,
+            None if counts.row is None else counts.row[k] + 1,
+            None if counts.column is None else counts.column[k] + 1,
+            *(place if each.unit == "mm" else nothing),
+            bool(counts.whole[k]),
+            counts.counts[k],
+            each.expected[k],
+            each.residuals[k],
+            *(place if each.unit == "px" else nothing),
+        ]
+
+
+def _summary(each: Findings) -> list[Cell]:
+    """Return the row of one photograph, without its factors."""
+    everything, whole, density = each.dispersion_all, each.dispersion_whole, each.density
+    side, simulated = each.settings["side"], each.simulated
+    mm, px = each.unit == "mm", each.unit == "px"
+    grid = each.counts.grid
+    return [
+        each.name,
+        each.n,
+        each.area if mm else None,
+        *([None] * 3 if density is None else [density.value, density.low, density.high]),
+        side if mm else None,
+        everything.q,
+        *([None] * 3 if whole is None else [whole.mean, whole.variance, whole.vmr]),
+        *_tested(everything),
+        simulated.p_two_sided,
+        each.verdict,
+        int(each.counts.whole.sum()),
+        everything.vmr,
+        *_tested(whole),
+        simulated.p_clumped,
+        simulated.p_even,
+        *each.detectable,
+        grid.full_area if grid is not None and mm else None,
+        side if px else None,
+        each.area if px else None,
+        simulated.simulations,
+        each.seed,
+        each.rests_on,
+        " ".join(each.flags),
+        each.sentence,
+    ]
+
+
+def _tested(seen: Dispersion | None) -> list[Cell]:
+    """Return X2, its degrees of freedom and its three p."""
+    if seen is None:
+        return [None] * 5
+    return [seen.chi2, seen.df, seen.p_clumped, seen.p_even, seen.p_two_sided]
+
+
+def _density_rows(each: Findings) -> Iterator[list[Cell]]:
+    """Yield the density."""
+    if each.density is not None:
+        low, high = each.density.low, each.density.high
+        method = "exact Poisson limits (Garwood 1936), widened by the uncertainty of the scale"
+        note = f"limits at {100 * each.density.level:g} %"
+        yield ["density_per_cm2", each.density.value, low, high, None, method, each.n, note]
+
+
+def _whole_rows(each: Findings) -> Iterator[list[Cell]]:
+    """Yield what is said about whole quadrats."""
+    whole = each.dispersion_whole
+    if whole is None:
+        return
+    counts = each.counts.counts[each.counts.whole]
+    note = "whole quadrats"
+    yield ["vmr", whole.vmr, None, None, None, "variance-to-mean ratio", whole.q, note]
+    yield from _sides("chi2_whole", whole.chi2, whole, _FISHER, whole.q, f"df {whole.df}; {note}")
+    indices = {
+        "morisita_index": (morisita_index(counts), "Morisita (1959)"),
+        "mean_crowding": (mean_crowding(counts), "m + VMR - 1 (Lloyd 1967)"),
+        "cluster_size_index": (cluster_size_index(counts), "VMR - 1 (David and Moore 1954)"),
+        "greens_index": (greens_index(counts), "(VMR - 1) / (S - 1) (Green 1966)"),
+    }
+    for name, (value, method) in indices.items():
+        yield [name, value, None, None, None, method, whole.q, note]
+
+
+def _all_rows(each: Findings) -> Iterator[list[Cell]]:
+    """Yield what is said about all quadrats."""
+    seen = each.dispersion_all
+    note = f"df {seen.df}; all quadrats"
+    yield ["vmr_by_area", seen.vmr, None, None, None, "X2 / df", seen.q, note]
+    yield from _sides("chi2", seen.chi2, seen, _BY_AREA, seen.q, note)
+    d = normal_deviate(seen.chi2, seen.df)
+    p = 2 * float(special.ndtr(-abs(d))) if math.isfinite(d) else math.nan
+    method = "sqrt(2 X2) - sqrt(2 df - 1), two-sided normal p (Fisher 1925)"
+    yield ["normal_deviate", d, None, None, p, method, seen.q, note]
+    low, high = each.detectable
+    method = "VMR at or beyond which a departure would have been seen (scaled chi-square)"
+    note = f"with {100 * POWER:.0f} % power, two-sided at {100 * each.settings['level']:g} %"
+    yield ["vmr_seen", None, low, high, None, method, seen.q, note]
+
+
+def _simulated_rows(each: Findings) -> Iterator[list[Cell]]:
+    """Yield the simulated test, which the verdict rests on."""
+    test = each.simulated
+    note = f"{test.simulations} simulations, seed {each.seed}; all quadrats; the verdict's test"
+    yield from _sides("chi2_simulated", test.statistic, test, _SIMULATED, len(each.counts), note)
+
+
+def _poisson_rows(each: Findings) -> Iterator[list[Cell]]:
+    """Yield the fit of a Poisson law to the frequencies."""
+    fit = each.poisson
+    if fit is not None and fit.df >= 1:
+        method = "Poisson goodness of fit, chi-square (Student 1907; Cochran 1954)"
+        note = f"df {fit.df}; classes {', '.join(fit.labels)}; whole quadrats"
+        n = int(fit.observed.sum())
+        yield ["poisson_fit", fit.chi2, None, None, fit.p, method, n, note]
+
+
+def _sides(
+    name: str, value: float, test: object, method: str, n: int, note: str
+) -> Iterator[list[Cell]]:
+    """Yield one row per side of a test, each saying which it is."""
+    for side, words in _SIDES.items():
+        p = getattr(test, f"p_{side}")
+        yield [f"{name}_{side}", value, None, None, p, f"{method}, {words}", n, note]
