@@ -77,22 +77,28 @@ class Photograph:
         """Height in pixels."""
         return int(self.stored.shape[0])
 
-    def pixels(self, *, shrink: float = 1.0) -> PixelsFloat:
+    def pixels(
+        self, *, shrink: float = 1.0, box: tuple[int, int, int, int] | None = None
+    ) -> PixelsFloat:
         """Return the pixels as red, green, blue in 0..1, made smaller by area averages.
 
         Parameters
         ----------
         shrink : float
             Factor from 0 (excluded) to 1 by which width and height are multiplied.
+        box : tuple of int or None
+            Left, top, right, bottom of the part wanted (right and bottom excluded); None for all.
 
         Returns
         -------
         ndarray of shape (round(height * shrink), round(width * shrink), 3), float32
         """
-        array = self.stored
+        left, top, right, bottom = box or (0, 0, self.width, self.height)
+        array = self.stored[top:bottom, left:right]
         if shrink < 1.0:
-            size = (max(1, round(self.width * shrink)), max(1, round(self.height * shrink)))
-            array = cv2.resize(array, size, interpolation=cv2.INTER_AREA)  # type: ignore[assignment]
+            height, width = array.shape[:2]
+            size = (max(1, round(width * shrink)), max(1, round(height * shrink)))
+            array = cv2.resize(array, size, interpolation=cv2.INTER_AREA)
         return array.astype(np.float32) * np.float32(1.0 / np.iinfo(array.dtype).max)
 
 

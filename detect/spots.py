@@ -1,9 +1,9 @@
-"""Contrast map -> spots: find, split, measure."""
+"""The record of spots: what was found or placed, where, how large, how doubtful."""
 
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass, fields
+from dataclasses import dataclass, fields, replace
 from typing import Any, Literal
 
 import numpy as np
@@ -114,9 +114,13 @@ class Spots:
         """Centres as an (n, 2) array of x, y."""
         return np.column_stack([self.x, self.y])
 
-    def where(self, chosen: NDArray[np.bool_] | Sequence[int]) -> Spots:
+    def where(self, chosen: NDArray[np.bool_] | NDArray[np.integer[Any]] | Sequence[int]) -> Spots:
         """Return the chosen rows, by a mask or by positions."""
         rows = np.arange(len(self))[chosen]
         columns: list[Any] = [tuple(self.id[i] for i in rows)]
         columns += [getattr(self, field.name)[rows] for field in fields(self)[1:]]
         return Spots(*columns)
+
+    def renumbered(self) -> Spots:
+        """Return the same spots named "1", "2", ... in their order; for a new detection only."""
+        return replace(self, id=tuple(str(i + 1) for i in range(len(self))))

@@ -1,0 +1,124 @@
+"""How likely each candidate is to be false: a small logistic model anyone can check by hand."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from detect.regions import Candidates
+
+FEATURES = ("size", "open", "faint", "slope", "rough", "texture")
+
+
+@dataclass(frozen=True, slots=True)
+class DoubtModel:
+    """Weights of a logistic regression: logit(1 - doubt) = intercept + sum of weight x feature.
+
+    Parameters
+    ----------
+    intercept : float
+    size : float
+        Weight of the distance of ln(diameter) from the middle of the range, in half ranges.
+    open : float
+        Weight of the share of the boundary beyond which contrast falls away.
+    faint : float
+        Weight of the squared log of how much weaker the edge step is than the picture's usual one.
+    slope : float
+        Weight of the fall of contrast across the boundary over the mean contrast.
+    rough : float
+        Weight of the boundary's spread about the ellipse of equal moments.
+    texture : float
+        Weight of the relative standard deviation of contrast inside.
+
+    References
+    ----------
+    Cox, D. R. (1958), The regression analysis of binary sequences, J. R. Stat. Soc. B 20, 215-242.
+    """
+
+    intercept: float
+    size: float
+    open: float
+    faint: float
+    slope: float
+    rough: float
+    texture: float
+
+    @property
+    def weights(self) -> NDArray[np.float64]:
+        """The weights in the order of `FEATURES`."""
+        return np.array([getattr(self, name) for name in FEATURES])
+
+
+# Fitted by tests/benchmarks/fit_doubt.py on hand-marked photographs of five subjects.
+GENERAL = DoubtModel(
+    intercept=1.100,
+    size=-0.860,
+    open=0.998,
+    faint=-0.112,
+    slope=0.916,
+    rough=-8.780,
+    texture=-1.477,
+)
+
+
+def features(
+    candidates: Candidates, *, smallest_px: float, largest_px: float
+) -> NDArray[np.float64]:
+    """Measure what the model weighs.
+
+    Parameters
+    ----------
+    candidates : Candidates
+        Regions of one photograph.
+    smallest_px, largest_px : float
+        Expected range of diameters, in the candidates' pixels.
+
+    Returns
+    -------
+    ndarray of shape (n, 6)
+        Columns in the order of `FEATURES`.
+    """
+    middle = 0.5 * np.log(smallest_px * largest_px)
+    half = 0.5 * np.log(largest_px / smallest_px) + 0.2
+    size = np.minimum(np.abs(np.log(candidates.diameter) - middle) / half, 2.5)
+    relative = np.log(np.maximum(candidates.step, 1e-6) / usual_step(candidates))
+    return np.column_stack(
+        [
+            size,
+            candidates.open,
+            np.clip(relative, -3.0, 0.0) ** 2,
+            np.clip(candidates.slope, -1.0, 3.0),
+            np.minimum(candidates.rough, 0.5),
+            np.minimum(candidates.texture, 1.5),
+        ]
+    )
+
+
+def usual_step(candidates: Candidates) -> float:
+    """Median edge step of the picture's well-shaped, free-standing candidates."""
+    positive = candidates.step > 0
+    good = positive & (candidates.fill > 0.93) & (candidates.open > 0.7)
+    if good.sum() < 5:
+        good = positive
+    return float(np.median(candidates.step[good])) if good.any() else 1.0
+
+
+def doubt_of(measured: NDArray[np.float64], model: DoubtModel) -> NDArray[np.float64]:
+    """Estimate the probability that each candidate is false.
+
+    Parameters
+    ----------
+    measured : ndarray of shape (n, 6)
+        As `features` returns it.
+    model : DoubtModel
+        Weights.
+
+    Returns
+    -------
+    ndarray of shape (n,)
+        Doubt, 0..1.
+    """
+    logit = model.intercept + measured @ model.weights
+    return np.asarray(1.0 / (1.0 + np.exp(np.clip(logit, -50.0, 50.0))))

@@ -1,0 +1,139 @@
+"""Find the spots of a photograph: the detector from end to end."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+from detect.area import StudyArea
+from detect.choice import choose
+from detect.doubt import GENERAL, DoubtModel
+from detect.errors import OptionWrong
+from detect.judge import Judgement, judged
+from detect.wanted import DetectOptions, Kind
+from detect.outline import settle_outlines
+from detect.photograph import Photograph
+from detect.scale import Scale
+from detect.sizes import learn_diameters
+from detect.spots import Spots
+from detect.view import View, view_of
+
+# Diameters looked for when none are given but a scale is known, in millimetres (common practice).
+_USUAL_MM: dict[Kind, tuple[float, float]] = {
+    "colonies": (0.8, 6.0),
+    "seedlings": (8.0, 60.0),
+    "lesions": (0.8, 8.0),
+}
+# The working map is reduced until the smallest object measures this many pixels.
+_WORKING_PX = 8.0
+
+
+@dataclass(frozen=True, slots=True)
+class Found:
+    """Spots, and what the detector settled on to find them."""
+
+    spots: Spots
+    settings: dict[str, Any]
+
+
+def find_spots(
+    photograph: Photograph,
+    area: StudyArea,
+    options: DetectOptions,
+    *,
+    scale: Scale | None = None,
+    model: DoubtModel = GENERAL,
+) -> Found:
+    """Find the objects of a photograph within its study area.
+
+    Parameters
+    ----------
+    photograph : Photograph
+    area : StudyArea
+        Only spots whose centre lies in it are returned.
+    options : DetectOptions
+    scale : Scale or None
+        Needed when diameters are given in millimetres.
+    model : DoubtModel
+        Weights of the doubt.
+
+    Returns
+    -------
+    Found
+        Spots, ordered from top to bottom, and the settings they were found with.
+
+    Raises
+    ------
+    OptionWrong
+        If diameters are in millimetres and no scale is known, or exceed the area.
+    """
+    smallest, largest = _diameters(photograph, area, options, scale, model)
+    view = view_of(photograph, area, shrink=min(1.0, _WORKING_PX / smallest))
+    small, large = smallest * view.shrink, largest * view.shrink
+    judgement = judged(view, small, large, options, model)
+    contrast = judgement.contrast
+    rows = choose(judgement.candidates, judgement.doubt, highest_doubt=options.highest_doubt)
+    spots = _spots(view, judgement, rows)
+    spots = spots.where(area.contains(spots.centres))
+    order = np.lexsort((spots.x, spots.y))
+    spots = spots.where(order).renumbered()
+    settings = {
+        "kind": options.kind,
+        "diameter_px": [round(smallest, 2), round(largest, 2)],
+        "colour": options.colour,
+        "direction_lab": [round(float(v), 4) for v in contrast.direction],
+        "noise_lab": round(contrast.noise, 4),
+        "working_px_per_px": round(view.shrink, 6),
+        "highest_doubt": options.highest_doubt,
+    }
+    return Found(spots, settings)
+
+
+def _diameters(
+    photograph: Photograph,
+    area: StudyArea,
+    options: DetectOptions,
+    scale: Scale | None,
+    model: DoubtModel,
+) -> tuple[float, float]:
+    """Smallest and largest diameter in photograph pixels: given, usual for the kind, or learned."""
+    mm_per_px = None
+    if scale is not None:
+        mm_per_px = float(scale.mm_per_px([area.polygon.centroid.coords[0]])[0])
+    if options.diameter is not None:
+        smallest, largest = (length.to_px(mm_per_px) for length in options.diameter)
+    elif mm_per_px is not None and options.kind in _USUAL_MM:
+        smallest, largest = (d / mm_per_px for d in _USUAL_MM[options.kind])
+    else:
+        smallest, largest = learn_diameters(photograph, area, options, model)
+    x0, y0, x1, y1 = area.polygon.bounds
+    if smallest > min(x1 - x0, y1 - y0):
+        raise OptionWrong(
+            f"The smallest diameter ({smallest:.0f} px) is larger than the study area"
+            f" ({x1 - x0:.0f} x {y1 - y0:.0f} px); give smaller diameters."
+        )
+    if largest < 3.0:
+        raise OptionWrong(
+            f"Objects of at most {largest:.1f} px cannot be seen; give larger diameters or take"
+            " the photograph from closer."
+        )
+    return max(smallest, 2.0), largest
+
+
+def _spots(view: View, judgement: Judgement, rows: NDArray[np.intp]) -> Spots:
+    """Turn chosen regions into spots in photograph pixels."""
+    contrast, chosen = judgement.contrast, judgement.candidates.where(rows)
+    grown = settle_outlines(chosen, contrast.map)
+    x, y = view.to_photograph(chosen.x, chosen.y)
+    radius = np.sqrt(chosen.area / np.pi) * grown / view.shrink
+    return Spots.found_at(
+        x,
+        y,
+        radius,
+        contrast=chosen.contrast / contrast.noise,
+        fill=chosen.fill,
+        doubt=judgement.doubt[rows],
+    )

@@ -1,0 +1,89 @@
+"""Contrast, candidates and their doubt for one view of a photograph, on the right side of the ground."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from detect.candidates import find_candidates
+from detect.choice import choose
+from detect.contrast import Colour, Contrast, contrast_map
+from detect.doubt import DoubtModel, doubt_of, features
+from detect.wanted import DetectOptions, Kind
+from detect.regions import Candidates
+from detect.view import View
+
+_USUAL_COLOUR: dict[Kind, Colour] = {"seedlings": "green"}
+# Below this evidence for one side, both are tried.
+_SURE = 0.6
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Judgement:
+    """Candidates of one view with their doubt, a probability per row."""
+
+    contrast: Contrast
+    candidates: Candidates
+    doubt: NDArray[np.float64]
+
+
+def judged(
+    view: View, smallest_px: float, largest_px: float, options: DetectOptions, model: DoubtModel
+) -> Judgement:
+    """Contrast, candidates and their doubt; both sides are tried when the picture is unclear.
+
+    Parameters
+    ----------
+    view : View
+    smallest_px, largest_px : float
+        Expected diameters in working pixels; candidates down to 0.7 and up to 1.4 times the range
+        are looked at.
+    options : DetectOptions
+    model : DoubtModel
+
+    Returns
+    -------
+    Judgement
+    """
+    first = _judge(view, smallest_px, largest_px, options, model, flipped=False)
+    if first.contrast.sureness > _SURE:
+        return first
+    other = _judge(view, smallest_px, largest_px, options, model, flipped=True)
+    return max(first, other, key=_worth)
+
+
+def _judge(
+    view: View,
+    smallest_px: float,
+    largest_px: float,
+    options: DetectOptions,
+    model: DoubtModel,
+    *,
+    flipped: bool,
+) -> Judgement:
+    """Contrast, candidates and their doubt for one side."""
+    colour = options.colour
+    if colour == "auto":
+        colour = _USUAL_COLOUR.get(options.kind, "auto")
+    contrast = contrast_map(
+        view.lab,
+        view.inside,
+        smallest_px=smallest_px,
+        largest_px=largest_px,
+        colour=colour,
+        polarity=options.polarity,
+        flipped=flipped,
+    )
+    candidates = find_candidates(
+        contrast, view.inside, smallest_px=0.7 * smallest_px, largest_px=1.4 * largest_px
+    )
+    measured = features(candidates, smallest_px=smallest_px, largest_px=largest_px)
+    return Judgement(contrast, candidates, doubt_of(measured, model))
+
+
+def _worth(judgement: Judgement) -> float:
+    """How much of the picture is explained by plausible objects."""
+    rows = choose(judgement.candidates, judgement.doubt, highest_doubt=0.6)
+    return float(((0.6 - judgement.doubt[rows]) * judgement.candidates.area[rows]).sum())

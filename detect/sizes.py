@@ -1,0 +1,81 @@
+"""How large the objects are, learned from the picture when nobody says."""
+
+from __future__ import annotations
+
+import numpy as np
+from numpy.typing import NDArray
+
+from detect.area import StudyArea
+from detect.choice import choose
+from detect.doubt import DoubtModel
+from detect.judge import judged
+from detect.wanted import DetectOptions
+from detect.photograph import Photograph
+from detect.view import view_of
+
+# Octaves of diameter start here, in photograph pixels, or at this share of the area's short side.
+_SMALLEST_PX, _SMALLEST_SHARE = 5.0, 1 / 400
+_LARGEST_SHARE = 0.45
+_WORKING_PX = 8.0
+
+
+def learn_diameters(
+    photograph: Photograph, area: StudyArea, options: DetectOptions, model: DoubtModel
+) -> tuple[float, float]:
+    """Learn the range of diameters in which the picture holds the most plausible objects.
+
+    Parameters
+    ----------
+    photograph : Photograph
+    area : StudyArea
+    options : DetectOptions
+        Its `diameter` is not looked at.
+    model : DoubtModel
+
+    Returns
+    -------
+    tuple of float
+        Smallest and largest diameter in photograph pixels.
+
+    Notes
+    -----
+    Every octave of diameter is searched on its own; each is worth the sum over its objects of
+    (0.6 - doubt) times diameter to the power 1.5, so neither many specks nor one giant wins. The
+    range runs between weighted quantiles of the diameters found in the best octave and its
+    neighbours.
+    """
+    x0, y0, x1, y1 = area.polygon.bounds
+    short = min(x1 - x0, y1 - y0)
+    lowest = max(_SMALLEST_PX, _SMALLEST_SHARE * short)
+    count = max(1, int(np.floor(np.log2(_LARGEST_SHARE * short / lowest))))
+    found = [
+        _octave(photograph, area, options, model, lowest * 2.0**k, lowest * 2.0 ** (k + 1))
+        for k in range(count)
+    ]
+    worth = np.array([weight.sum() for _, weight in found])
+    best = int(np.argmax(worth))
+    if not worth[best] > 0:
+        return lowest, lowest * 2.0**count
+    near = found[max(0, best - 1) : best + 2]
+    diameter = np.concatenate([d for d, _ in near])
+    weight = np.concatenate([w for _, w in near])
+    order = np.argsort(diameter)
+    share = np.cumsum(weight[order]) / weight.sum()
+    low, high = (diameter[order][np.searchsorted(share, q)] for q in (0.1, 0.9))
+    return float(0.75 * low), float(1.3 * high)
+
+
+def _octave(
+    photograph: Photograph,
+    area: StudyArea,
+    options: DetectOptions,
+    model: DoubtModel,
+    smallest: float,
+    largest: float,
+) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
+    """Diameters (photograph pixels) found in one octave, and what each is worth."""
+    view = view_of(photograph, area, shrink=min(1.0, _WORKING_PX / smallest))
+    judgement = judged(view, smallest * view.shrink, largest * view.shrink, options, model)
+    rows = choose(judgement.candidates, judgement.doubt, highest_doubt=0.6)
+    diameter = judgement.candidates.diameter[rows] / view.shrink
+    return diameter, (0.6 - judgement.doubt[rows]) * diameter**1.5

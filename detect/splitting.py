@@ -1,0 +1,139 @@
+"""Where touching objects part: cuts between the peaks of a relief, along a power diagram."""
+
+from __future__ import annotations
+
+import cv2
+import numpy as np
+from numpy.typing import NDArray
+from scipy.sparse import coo_array
+from scipy.sparse.csgraph import connected_components
+from scipy.spatial import cKDTree
+
+from detect.contrast import Map
+from detect.regions import Column, Labels
+
+# Two peaks stay one when the relief between them stays above this share of the lower one.
+_TOGETHER = 0.95
+
+
+def split_regions(
+    labels: Labels, count: int, *, distance: Map, relief: Map, smallest_px: float, largest_px: float
+) -> tuple[Labels, int] | None:
+    """Cut each region between the peaks of a relief.
+
+    Parameters
+    ----------
+    labels : ndarray of shape (height, width), int32
+        0 for ground, 1..count - 1 for regions.
+    count : int
+        One more than the highest label.
+    distance : ndarray of shape (height, width), float32
+        Distance to the ground, smoothed; its value at a peak is that piece's radius.
+    relief : ndarray of shape (height, width), float32
+        Peaks of this map are the seeds: the distance itself, or distance and contrast combined.
+    smallest_px, largest_px : float
+        Range of object diameters in pixels.
+
+    Returns
+    -------
+    (labels, count) or None
+        The pieces of the regions that fall apart; None when none does.
+
+    Notes
+    -----
+    A pixel goes to the seed with least (distance^2 - radius^2), the power diagram of Aurenhammer
+    (1987): for overlapping discs it cuts along the line through the two points where they cross.
+    """
+    x, y, peak, owner = _peaks(relief, labels, distance, 0.2 * smallest_px)
+    group = _joined(x, y, peak, owner, relief, 1.2 * largest_px)
+    keep = _highest_of_each(group, peak)
+    x, y, owner = x[keep], y[keep], owner[keep]
+    several = np.bincount(owner, minlength=count) > 1
+    if not several.any():
+        return None
+    radius = distance[y.astype(np.intp), x.astype(np.intp)].astype(np.float64)
+    return _power_pieces(labels, count, several, np.column_stack([x, y]), radius, owner)
+
+
+def _peaks(
+    relief: Map, labels: Labels, distance: Map, lowest: float
+) -> tuple[Column, Column, Column, NDArray[np.intp]]:
+    """Local maxima of the relief, far enough inside: x, y, height and the region of each."""
+    top = cv2.dilate(relief, np.ones((3, 3), np.uint8))
+    is_peak = ((relief >= top) & (distance > lowest) & (labels > 0)).astype(np.uint8)
+    count, _, _, centres = cv2.connectedComponentsWithStats(is_peak, connectivity=8)
+    x, y = np.rint(centres[1:count]).T.astype(np.intp)
+    inside = labels[y, x] > 0
+    x, y = x[inside], y[inside]
+    height = relief[y, x].astype(np.float64)
+    return x.astype(np.float64), y.astype(np.float64), height, labels[y, x].astype(np.intp)
+
+
+def _joined(
+    x: Column, y: Column, peak: Column, owner: NDArray[np.intp], relief: Map, reach: float
+) -> NDArray[np.intp]:
+    """Group peaks of one region between which the relief hardly dips."""
+    n = x.size
+    group = np.arange(n)
+    if n < 2:
+        return group
+    pairs = cKDTree(np.column_stack([x, y])).query_pairs(reach, output_type="ndarray")
+    pairs = pairs[owner[pairs[:, 0]] == owner[pairs[:, 1]]]
+    if not len(pairs):
+        return group
+    i, j = pairs.T
+    t = np.linspace(0.0, 1.0, 13)[1:-1]
+    xs = np.rint(x[i][:, None] * (1 - t) + x[j][:, None] * t).astype(np.intp)
+    ys = np.rint(y[i][:, None] * (1 - t) + y[j][:, None] * t).astype(np.intp)
+    saddle = relief[ys, xs].min(axis=1)
+    together = saddle > _TOGETHER * np.minimum(peak[i], peak[j])
+    links = coo_array((np.ones(together.sum()), (i[together], j[together])), shape=(n, n))
+    return np.asarray(connected_components(links, directed=False)[1])
+
+
+def _highest_of_each(group: NDArray[np.intp], peak: Column) -> NDArray[np.intp]:
+    """Position of the highest peak of each group."""
+    order = np.lexsort((-peak, group))
+    first = np.r_[True, np.diff(group[order]) > 0] if order.size else np.zeros(0, bool)
+    return np.asarray(order[first])
+
+
+def _power_pieces(
+    labels: Labels,
+    count: int,
+    several: NDArray[np.bool_],
+    seed: NDArray[np.float64],
+    radius: Column,
+    owner: NDArray[np.intp],
+) -> tuple[Labels, int]:
+    """Give each pixel to the seed with least (distance^2 - radius^2) within its region."""
+    width = labels.shape[1]
+    at = np.flatnonzero(several[labels])
+    of = labels.ravel()[at]
+    order = np.argsort(of, kind="stable")
+    at, of = at[order], of[order]
+    starts = np.searchsorted(of, np.arange(count + 1))
+    by_owner = np.argsort(owner, kind="stable")
+    seed_starts = np.searchsorted(owner[by_owner], np.arange(count + 1))
+    piece = np.zeros(at.size, dtype=np.int32)
+    for region in np.flatnonzero(several):
+        rows = slice(starts[region], starts[region + 1])
+        seeds = by_owner[seed_starts[region] : seed_starts[region + 1]]
+        y, x = np.divmod(at[rows], width)
+        points = np.column_stack([x, y]).astype(np.float64)
+        piece[rows] = seeds[_nearest_by_power(points, seed[seeds], radius[seeds])] + 1
+    out = np.zeros(labels.size, dtype=np.int32)
+    out[at] = piece
+    return out.reshape(labels.shape), len(seed) + 1
+
+
+def _nearest_by_power(
+    points: NDArray[np.float64], seed: NDArray[np.float64], radius: Column
+) -> NDArray[np.intp]:
+    """Index of the seed with least (distance^2 - radius^2); a tree of lifted seeds when many."""
+    if len(seed) <= 8:
+        power = ((points[:, None, :] - seed[None]) ** 2).sum(axis=2) - radius**2
+        return np.asarray(power.argmin(axis=1))
+    lift = np.sqrt(np.maximum(radius.max() ** 2 - radius**2, 0.0))
+    tree = cKDTree(np.column_stack([seed, lift]))
+    return np.asarray(tree.query(np.column_stack([points, np.zeros(len(points))]))[1])

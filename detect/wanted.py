@@ -1,0 +1,61 @@
+"""What to look for: the choices a person makes, and their defaults."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import Literal, get_args
+
+from detect.contrast import Colour, Polarity
+from detect.errors import OptionWrong
+from detect.lengths import Length
+
+Kind = Literal["colonies", "seedlings", "lesions", "spots"]
+
+
+@dataclass(frozen=True, slots=True)
+class DetectOptions:
+    """What to look for.
+
+    Parameters
+    ----------
+    kind : {"colonies", "seedlings", "lesions", "spots"}
+        Preset of sizes and colour.
+    diameter : pair of Length or None
+        Smallest and largest diameter; None takes the kind's usual range where a scale is known,
+        and learns it from the picture where not.
+    colour : Colour
+        Direction in which objects stand out; "auto" learns it (seedlings: green).
+    polarity : {"auto", "dark", "bright"}
+        Whether objects are darker or lighter than the ground.
+    highest_doubt : float
+        Spots of more doubt than this are not kept.
+
+    Raises
+    ------
+    OptionWrong
+        If a value is impossible.
+    """
+
+    kind: Kind = "spots"
+    diameter: tuple[Length, Length] | None = None
+    colour: Colour = "auto"
+    polarity: Polarity = "auto"
+    highest_doubt: float = 0.5
+
+    def __post_init__(self) -> None:
+        for name, known in (("kind", Kind), ("colour", Colour), ("polarity", Polarity)):
+            value = getattr(self, name)
+            if value not in get_args(known):
+                raise OptionWrong(
+                    f"The {name} {value!r} is not known; use one of {', '.join(get_args(known))}."
+                )
+        if not 0.0 < self.highest_doubt <= 1.0:
+            raise OptionWrong(
+                f"The highest doubt must lie between 0 and 1, not {self.highest_doubt:g};"
+                " 0.5 keeps what is more likely real than not."
+            )
+        if self.polarity != "auto" and self.colour not in ("auto", "grey"):
+            raise OptionWrong(
+                f"--polarity {self.polarity} cannot apply with --colour {self.colour}:"
+                " a named colour says already which side is the object; leave one of them out."
+            )
