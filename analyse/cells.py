@@ -12,6 +12,7 @@ from numpy.typing import NDArray
 from shapely.geometry.base import BaseGeometry
 
 _ARC_STEPS = 720  # straight pieces per full circle: areas right to 2 parts in 100,000
+_TOUCH = 1e-6  # of a cell: differences below this are rounding and break no tie
 
 
 @dataclass(frozen=True, slots=True)
@@ -164,19 +165,20 @@ def joined(
 
     Notes
     -----
-    The smallest goes first. It is joined to a clipped neighbour before a whole one, then to that
-    with the longest common edge, then to the first; an island without neighbour to the nearest.
+    The smallest goes first. It is joined to a clipped neighbour before a whole one, among these to
+    that with the longest common edge, then to the smaller, then to the first; an island without
+    neighbour to the nearest.
     """
     groups = {int(k): [int(k)] for k in np.flatnonzero(sizes > 0)}
     home = np.where(sizes > 0, np.arange(sizes.size), -1)
-    total = sizes.copy()
+    total: list[float] = sizes.tolist()
     queue = [(total[k], k) for k in groups if total[k] < smallest]
     heapq.heapify(queue)
     while queue and len(groups) > 1:
         size, name = heapq.heappop(queue)
         if name not in groups or total[name] != size:
             continue
-        other = _partner(lattice, area, groups, home, whole, name)
+        other = _partner(lattice, area, groups, home, whole, total, name)
         keep, gone = sorted((name, other), key=lambda k: (-sizes[k], k))
         groups[keep] += groups.pop(gone)
         total[keep] += total[gone]
@@ -192,6 +194,7 @@ def _partner(
     groups: dict[int, list[int]],
     home: NDArray[np.int64],
     whole: NDArray[np.bool_],
+    total: list[float],
     name: int,
 ) -> int:
     """Return the group that a small group is joined to."""
@@ -200,12 +203,18 @@ def _partner(
         for cell, edge in lattice.sides(member):
             other = int(home[cell])
             if other not in (-1, name):
-                length = shapely.intersection(edge, area).length
-                common[other] = common.get(other, 0.0) + length
-    touching = [k for k, length in common.items() if length > 1e-9 * lattice.width]
+                common[other] = common.get(other, 0.0) + _shared(edge, area)
+    unit = max(lattice.width, lattice.height)
+    touching = [k for k, length in common.items() if length > _TOUCH * unit]
     if touching:
         return min(
-            touching, key=lambda k: (_is_whole(groups, whole, k), -_rough(common[k], lattice), k)
+            touching,
+            key=lambda k: (
+                len(groups[k]) == 1 and bool(whole[k]),
+                -round(common[k] / unit / _TOUCH),
+                round(total[k] / unit**2 / _TOUCH),
+                k,
+            ),
         )
     centres = lattice.centres()
     others = [k for k in groups if k != name]
@@ -213,14 +222,10 @@ def _partner(
     return others[int(np.argmin(far))]
 
 
-def _is_whole(groups: dict[int, list[int]], whole: NDArray[np.bool_], name: int) -> bool:
-    """Tell whether a group is a single whole cell."""
-    return len(groups[name]) == 1 and bool(whole[name])
-
-
-def _rough(length: float, lattice: Lattice) -> int:
-    """Return a length in millionths of a cell, so that rounding breaks no tie."""
-    return round(1e6 * length / max(lattice.width, lattice.height))
+def _shared(edge: BaseGeometry, area: BaseGeometry) -> float:
+    """Return the length of an edge with the area on both sides of it."""
+    along = shapely.intersection(edge, area.boundary)
+    return float(shapely.intersection(edge, area).length - along.length)
 
 
 def _index(

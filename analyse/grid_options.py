@@ -10,6 +10,7 @@ from analyse.pattern import Unit
 from detect.lengths import Length
 
 SENSIBLE = (1.0, 1.2, 1.5, 2.0, 2.5, 3.0, 4.0, 5.0, 6.0, 8.0)
+MOST_QUADRATS = 100_000
 FEWEST_POINTS = 8  # fewer count as this many in the rule for the side, so that a grid exists
 
 
@@ -50,6 +51,11 @@ class GridOptions:
                 raise GridWrong(
                     f"{option} {pair[0]}x{pair[1]} makes no grid of at least 2 quadrats;"
                     f" give two numbers such as {'5x5' if option == '--grid' else '3x8'}."
+                )
+            if pair is not None and math.prod(pair) > MOST_QUADRATS:
+                raise GridWrong(
+                    f"{option} {pair[0]}x{pair[1]} makes more than {MOST_QUADRATS:,} quadrats;"
+                    " give fewer."
                 )
         if not 0 <= self.join_below < 1:
             raise GridWrong(

@@ -13,13 +13,12 @@ from shapely.geometry.base import BaseGeometry
 
 from analyse.cells import Lattice, Sectors, joined
 from analyse.errors import GridWrong
+from analyse.grid_options import MOST_QUADRATS, side_in
 from analyse.grid_options import GridOptions as GridOptions
 from analyse.grid_options import default_side as default_side
-from analyse.grid_options import side_in
 from analyse.pattern import Circle, Unit
 
 GridShape = Literal["square", "rectangle", "sectors"]
-MOST_QUADRATS = 100_000
 _SLACK = 1e-3  # of a cell: how far an area may overhang the last cell before another is laid
 _NEARLY_WHOLE = 0.998  # share of a full cell from which a cell is called whole
 _EQUAL_SECTORS = 0.01  # how far a whole sector may differ from its share of the dish
@@ -189,12 +188,12 @@ def lay_grid(
         lattice = Lattice(x0, y0, (x1 - x0) / columns, (y1 - y0) / rows, rows, columns)
         return _clipped(lattice, area, options, unit, None)
     side = default_side(area.area, n) if options.side is None else side_in(options.side, unit)
-    if side * (1 - _SLACK) >= max(x1 - x0, y1 - y0):
+    columns, rows = (max(1, math.ceil(span / side - _SLACK)) for span in (x1 - x0, y1 - y0))
+    if rows * columns == 1:
         raise GridWrong(
-            f"A quadrat of {side:g} {unit} is larger than the study area"
+            f"A quadrat of {side:g} {unit} covers the whole study area"
             f" ({x1 - x0:.4g} x {y1 - y0:.4g} {unit}); give a smaller --quadrat."
         )
-    columns, rows = (max(1, math.ceil(span / side - _SLACK)) for span in (x1 - x0, y1 - y0))
     if rows * columns > MOST_QUADRATS:
         raise GridWrong(
             f"Quadrats of {side:g} {unit} would make {rows * columns:,} of them,"
