@@ -136,6 +136,8 @@ class Pattern:
         ------
         AreaWrong
             If the area is unusable.
+        ValueError
+            If a point is not finite.
 
         Examples
         --------
@@ -147,6 +149,8 @@ class Pattern:
         region = area if isinstance(area, BaseGeometry) else rectangle([float(v) for v in area])
         xy = np.asarray(points, dtype=np.float64).reshape(-1, 2)
         check_area(region)
+        if not np.isfinite(xy).all():
+            raise ValueError("a point is not finite")
         shapely.prepare(region)
         inside = np.asarray(shapely.intersects_xy(region, xy[:, 0], xy[:, 1]))
         outside = int((~inside).sum())

@@ -11,7 +11,10 @@ from pathlib import Path
 
 from analyse.errors import TableWrong
 
-_WHOLE = re.compile(r"\+?\d+(?:\.0*)?")
+_WHOLE = re.compile(r"\+?[0-9]+(?:\.0*)?")
+_REAL = re.compile(
+    r"[-+]?(?:[0-9]+\.?[0-9]*|\.[0-9]+)(?:e[-+]?[0-9]+)?|[-+]?inf(?:inity)?|nan", re.I
+)
 MOST_COUNTED = 10**12  # a count above this is a slip, and would not fit the arithmetic
 
 
@@ -63,12 +66,11 @@ def read_rows(path: Path) -> list[Row]:
 def real_in(row: Row, column: int, name: str) -> float:
     """Return a cell's finite number, or complain with its row, column and value."""
     text = _cell(row, column, name)
-    try:
-        value = float(text)
-    except ValueError:
+    if not _REAL.fullmatch(text):
         raise TableWrong(
             f"{row.where}, column {name}: {text!r} is not a number; write it with a dot for decimals."
-        ) from None
+        )
+    value = float(text)
     if not math.isfinite(value):
         raise TableWrong(
             f"{row.where}, column {name}: {text!r} is not finite; correct it or remove the row."

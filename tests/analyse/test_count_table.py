@@ -1,0 +1,70 @@
+"""Tables of counts: a column, or a rectangle of contiguous quadrats."""
+
+from __future__ import annotations
+
+from pathlib import Path
+
+import numpy as np
+import pytest
+
+from analyse.count_table import CountTable, read_counts
+from analyse.errors import TableWrong
+from detect.lengths import Length
+from tests.analyse import published
+
+
+def table(tmp_path: Path, text: str) -> Path:
+    """Write a table and return its path."""
+    path = tmp_path / "bed.csv"
+    path.write_text(text, encoding="utf-8")
+    return path
+
+
+def test_a_column_of_counts(tmp_path: Path) -> None:
+    read = read_counts(table(tmp_path, "plot,Count,note\na,3,\nb,0,x\nc,5,\n"))
+    assert (read.name, read.counts.tolist(), read.rows, read.columns) == (
+        "bed.csv", [3, 0, 5], None, None,
+    )  # fmt: skip
+
+
+def test_a_rectangle_of_counts(tmp_path: Path) -> None:
+    read = read_counts(table(tmp_path, "1,2,3\n4,5,6\n"), side=Length(5, "cm"))
+    assert (read.counts.tolist(), read.rows, read.columns) == ([1, 2, 3, 4, 5, 6], 2, 3)
+    assert read.side == Length(5, "cm")
+
+
+def test_student_map(tmp_path: Path) -> None:
+    """ "Student" (1907), Table I: 20 x 20 squares, 1872 cells."""
+    read = read_counts(published.DATA / "student_grid.csv")
+    assert (read.rows, read.columns, read.counts.sum()) == (20, 20, 1872)
+
+
+@pytest.mark.parametrize(
+    ("text", "message"),
+    [
+        ("plot,number\na,3\n", r"no column 'count' \(its columns: plot, number\); name the column"),
+        ("count\n3\n1.5\n", r"bed.csv, row 3, column count: '1.5' is not a count"),
+        ("count\n3\n-2\n", r"bed.csv, row 3, column count: '-2' is not a count"),
+        ("count\nthree\n", r"bed.csv, row 2, column count: 'three' is not a count"),
+        ("1,2\n3,x\n", r"bed.csv, row 2, column 2: 'x' is not a count"),
+        ("1,0.5\n3,4\n", r"bed.csv, row 1, column 2: '0.5' is not a count"),
+        ("1,2\n3,\n", r"bed.csv, row 2, column 2, is empty"),
+        ("1,2\n3\n", r"bed.csv, row 2 holds 1 counts, but row 1 holds 2; .* rows of one length"),
+        ("1,2\n3,4,5\n", r"bed.csv, row 2 holds 3 counts, but row 1 holds 2"),
+        ("count\n", r"bed.csv holds 0 quadrats; dispersion needs counts of at least 2"),
+        ("count\n7\n", r"bed.csv holds 1 quadrat; dispersion needs"),
+        ("7\n", r"bed.csv holds 1 quadrat; dispersion needs"),
+    ],
+)
+def test_what_is_no_table_of_counts_is_refused(tmp_path: Path, text: str, message: str) -> None:
+    with pytest.raises(TableWrong, match=message):
+        read_counts(table(tmp_path, text))
+
+
+def test_a_table_checks_itself() -> None:
+    with pytest.raises(ValueError, match="a count is negative"):
+        CountTable("t", np.array([1, -1]))
+    with pytest.raises(ValueError, match="2 x 2 quadrats cannot hold 3 counts"):
+        CountTable("t", np.array([1, 1, 1]), 2, 2)
+    with pytest.raises(ValueError, match="read-only"):
+        CountTable("t", np.array([1, 1])).counts[0] = 3
