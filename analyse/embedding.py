@@ -3,13 +3,13 @@
 from __future__ import annotations
 
 import base64
-import io
 import re
 from typing import TYPE_CHECKING
 
 import cv2
 import numpy as np
 
+from analyse.figures import svg_text
 from detect.photograph import Photograph
 
 if TYPE_CHECKING:
@@ -37,10 +37,7 @@ def svg_bytes(figure: Figure) -> bytes:
         Without date, program name and document type; coordinates to a hundredth of a point; text
         stays text and is set in the reader's own system font.
     """
-    buffer = io.StringIO()
-    nothing = dict.fromkeys(("Date", "Creator", "Format", "Type"))
-    figure.savefig(buffer, format="svg", metadata=nothing, transparent=True, dpi=150)
-    text = re.sub(r"<!DOCTYPE.*?>\n?|<!--.*?-->\n?", "", buffer.getvalue(), flags=re.DOTALL)
+    text = re.sub(r"<!DOCTYPE.*?>\n?|<!--.*?-->\n?", "", svg_text(figure), flags=re.DOTALL)
     text = re.sub(r'(?<= d=")[^"]*', lambda path: _rounded(path[0]), text)
     text = re.sub(r"'DejaVu Sans'(?:, [^;\"]*)?(?=[;\"])", _FONTS, text)
     return text.encode("utf-8")

@@ -1,14 +1,9 @@
-"""Pictures of a finished result: they draw what the findings hold and compute nothing.
-
-The look: white lines with a dark halo on photographs; blue and orange, which every kind of colour
-vision tells apart, for fewer and more than expected; and beside each colour a second sign: a
-shape, a number or an outline.
-"""
+"""Pictures of a finished result: they draw what the findings hold and compute nothing."""
 
 from __future__ import annotations
 
+import io
 from collections.abc import Callable, Sequence
-from dataclasses import dataclass
 from typing import TYPE_CHECKING, Any
 
 import matplotlib as mpl
@@ -24,6 +19,29 @@ from matplotlib.ticker import MaxNLocator
 from numpy.typing import NDArray
 from shapely.geometry.base import BaseGeometry
 
+from analyse.drawn import DrawnFrequencies, DrawnPicture, DrawnResiduals
+from analyse.look import (
+    COUNTED,
+    DOUBTFUL_COLOUR,
+    EXPECTED,
+    HALO,
+    INK,
+    MOST_BOXES,
+    MOST_NUMBERS,
+    MOST_SINGLE_COUNTS,
+    MOST_VECTOR_SPOTS,
+    NOTABLE,
+    OBSERVED,
+    PLACED,
+    RESIDUAL_LIMIT,
+    RESIDUAL_STEPS,
+    RULE,
+    SMALLEST_MARK,
+    SOFT,
+    STRUCK,
+    STYLE,
+    UNKNOWN,
+)
 from analyse.marks import (
     CIRCLE,
     CROSS,
@@ -48,70 +66,9 @@ if TYPE_CHECKING:
 
 Mapped = Callable[[Points], Points]
 
-INK, SOFT, RULE, HALO = "#1b2429", "#55616a", "#c9d1d5", "#10181c"
-COUNTED, DOUBTFUL_COLOUR, PLACED, STRUCK = "#00d6c4", "#ffb020", "#c484ff", "#d6d6d6"
-OBSERVED, EXPECTED = "#8fbcbb", "#8a3b0a"
-RESIDUAL_LIMIT = 4.0  # the colours of the map end here, on every photograph alike
-NOTABLE = 2.0  # quadrats whose residual is beyond this are outlined
-MOST_SINGLE_COUNTS = 41  # beyond counts of 0 to 40 the picture of frequencies pools
-MOST_BOXES = 600  # beyond this many quadrats their counts stand without a dark ground
-MOST_VECTOR_SPOTS = 3000  # beyond this many spots they are drawn as pixels
-MOST_NUMBERS = 150  # with this many quadrats or more the map shows signs instead of numbers
-RESIDUAL_COLOURS = LinearSegmentedColormap.from_list(
-    "fewer_more", ["#174a7c", "#5e93c4", "#c3d9ec", "#fafafa", "#f6d3b4", "#dc8a44", "#8a3b0a"]
-).with_extremes(bad="#e9edee")
-STYLE: Any = {
-    "font.family": "DejaVu Sans",
-    "font.size": 9.0,
-    "svg.fonttype": "none",
-    "svg.hashsalt": "strewn",
-    "axes.edgecolor": SOFT,
-    "axes.labelcolor": INK,
-    "axes.linewidth": 0.8,
-    "axes.spines.top": False,
-    "axes.spines.right": False,
-    "text.color": INK,
-    "xtick.color": SOFT,
-    "ytick.color": SOFT,
-    "hatch.linewidth": 0.6,
-}
-
-
-@dataclass(frozen=True, slots=True, eq=False)
-class DrawnPicture:
-    """What a picture of spots and quadrats shows, in the coordinates of its axes.
-
-    Parameters
-    ----------
-    spots : dict of str to ndarray of shape (n, 2)
-        Centres drawn as "counted", "doubtful", "placed" and "struck".
-    quadrats : tuple of ndarray of shape (m, 2)
-        Outlines of the quadrats, in the order of the grid.
-    labels : tuple of (float, float, str)
-        Where each quadrat's count stands, and the count.
-    """
-
-    spots: dict[str, Points]
-    quadrats: tuple[Points, ...]
-    labels: tuple[tuple[float, float, str], ...]
-
-
-@dataclass(frozen=True, slots=True, eq=False)
-class DrawnResiduals:
-    """What a map of residuals shows: the value behind each colour, and the texts or signs."""
-
-    values: NDArray[np.float64]
-    outlined: NDArray[np.bool_]
-    labels: tuple[tuple[float, float, str], ...]
-
-
-@dataclass(frozen=True, slots=True, eq=False)
-class DrawnFrequencies:
-    """What a picture of frequencies shows: heights of bars and of the expected marks."""
-
-    classes: tuple[str, ...]
-    observed: NDArray[np.float64]
-    expected: NDArray[np.float64]
+RESIDUAL_COLOURS = LinearSegmentedColormap.from_list("fewer_more", RESIDUAL_STEPS).with_extremes(
+    bad=UNKNOWN
+)
 
 
 def photograph_figure(findings: Findings, sheet: Sheet) -> Figure:
@@ -138,6 +95,14 @@ def plain_figure(
         figure = Figure((width, height), layout="constrained")
         draw(figure.subplots(), findings)
     return figure
+
+
+def svg_text(figure: Figure) -> str:
+    """Return a figure as SVG under our style, without its date and the like."""
+    text, nothing = io.StringIO(), dict.fromkeys(("Date", "Creator", "Format", "Type"))
+    with mpl.rc_context(STYLE):
+        figure.savefig(text, format="svg", metadata=nothing, transparent=True, dpi=110)
+    return text.getvalue()
 
 
 def draw_photograph(
@@ -309,7 +274,7 @@ def _draw_grid(
         axes.add_collection(
             LineCollection(rings(quadrats), colors=RULE, linewidths=0.8), autolim=False
         )
-    per_unit = 72.0 / axes.figure.dpi * axes.bbox.width / abs(np.diff(axes.get_xlim())[0])
+    per_unit = _points_per_unit(axes)
     sizes = np.clip(0.2 * np.sqrt([cell.area for cell in quadrats]) * per_unit, 4.5, 9.5)
     labels = []
     for cell, count, size in zip(quadrats, findings.counts.counts, sizes, strict=True):
@@ -329,6 +294,7 @@ def _draw_grid(
 def _draw_spots(axes: Axes, sheet: Sheet) -> dict[str, Points]:
     """Draw every spot with the sign of its standing, origin and doubt."""
     spots = sheet.spots
+    radii = np.maximum(spots.radius, SMALLEST_MARK / _points_per_unit(axes))
     doubtful = spots.counted & spots.found & (spots.doubt > DOUBTFUL)
     kinds = {
         "counted": (spots.counted & spots.found & ~doubtful, COUNTED, CIRCLE),
@@ -340,14 +306,20 @@ def _draw_spots(axes: Axes, sheet: Sheet) -> dict[str, Points]:
     for name, (chosen, colour, shape) in kinds.items():
         drawn[name] = spots.centres[chosen]
         if chosen.any():
-            path = Outline(*stamped(shape, spots.centres[chosen], spots.radius[chosen]))
+            path = Outline(*stamped(shape, spots.centres[chosen], radii[chosen]))
             halo = withStroke(linewidth=3.0, foreground=HALO, alpha=0.55)
             patch = PathPatch(path, fc="none", ec=colour, lw=1.4, path_effects=[halo], label=name)
             patch.set_rasterized(int(chosen.sum()) > MOST_VECTOR_SPOTS)
             axes.add_patch(patch)
-    beside = drawn["doubtful"] + (spots.radius[doubtful] * 0.85)[:, None] * [1.0, -1.0]
+    beside = drawn["doubtful"] + (radii[doubtful] * 0.85)[:, None] * [1.0, -1.0]
     axes.plot(*beside.T, "s", ms=4.5, mfc=DOUBTFUL_COLOUR, mec=HALO, mew=0.8)
     return drawn
+
+
+def _points_per_unit(axes: Axes) -> float:
+    """Return the points of the figure that one unit of the x axis takes."""
+    start, end = axes.get_xlim()
+    return float(72.0 / axes.figure.dpi * axes.bbox.width / abs(end - start))
 
 
 def _draw_values(
