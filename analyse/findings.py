@@ -32,6 +32,21 @@ SEED = 1
 
 
 @dataclass(frozen=True, slots=True, eq=False)
+class _Subject:
+    """What is known of a photograph or table before any test."""
+
+    name: str
+    unit: Unit | None
+    area: float | None
+    pattern: Pattern | None
+    counts: QuadratCounts
+    density: Limits | None
+    flags: tuple[str, ...]
+    flag_values: dict[str, Any]
+    settings: dict[str, Any]
+
+
+@dataclass(frozen=True, slots=True, eq=False)
 class Findings:
     """What was found for one photograph or table.
 
@@ -116,7 +131,7 @@ class Findings:
         """What the verdict rests on, in words."""
         return (
             f"simulated two-sided p of X2 over all {len(self.counts)} quadrats,"
-            f" expected counts by area, given {self.n} points"
+            " expected counts by area, given the total"
         )
 
 
@@ -221,16 +236,22 @@ def analyse_pattern(
         "join_below": options.join_below,
         "joined": grid.joined,
     }
-    area = float(pattern.area.area)
-    density = None
+    area, density = float(pattern.area.area), None
     if pattern.unit == "mm":
         density = density_per_cm2(len(pattern), area, pattern.relative_uncertainty)
-    extra = {"outside": pattern.outside, "duplicates": pattern.duplicates}
-    extra["doubtful"] = pattern.doubtful
-    return _judged(
-        pattern.name, pattern.unit, area, pattern, counts, density, pattern.flags, extra,
-        seed, simulations, settings,
-    )  # fmt: skip
+    values = {name: getattr(pattern, name) for name in ("outside", "duplicates", "doubtful")}
+    subject = _Subject(
+        pattern.name,
+        pattern.unit,
+        area,
+        pattern,
+        counts,
+        density,
+        pattern.flags,
+        values,
+        settings,
+    )
+    return _judged(subject, seed, simulations)
 
 
 def analyse_counts(
@@ -264,18 +285,10 @@ def analyse_counts(
     >>> analyse_counts(CountTable("bed", np.array([0, 9, 0, 0, 8, 1, 0, 7, 0, 0]))).verdict
     'clumped'
     """
-    q = table.counts.size
-    side = None
-    if table.side is not None:
-        if table.side.in_pixels:
-            raise GridWrong(
-                f"--quadrat {table.side} is in pixels; give the side of a counted quadrat in mm."
-            )
-        side = table.side.to_mm()
-    places = np.arange(q)
-    row, column = (None, None) if table.columns is None else np.divmod(places, table.columns)
+    q, side = table.counts.size, _counted_side(table)
+    row, column = (None, None) if table.columns is None else np.divmod(np.arange(q), table.columns)
     areas = None if side is None else np.full(q, side * side)
-    counts = QuadratCounts(table.counts, areas, np.ones(q, dtype=bool), None, row, column)
+    area = None if side is None else q * side * side
     n = int(table.counts.sum())
     settings: dict[str, Any] = {
         "quadrats": "counted" if table.rows is None else "square",
@@ -286,13 +299,18 @@ def analyse_counts(
         "columns": table.columns,
         "joined": 0,
     }
-    area = None if side is None else q * side * side
-    density = None if area is None else density_per_cm2(n, area, 0.0)
-    flags = ("no_area",) if side is None else ()
-    return _judged(
-        table.name, None if side is None else "mm", area, None, counts, density, flags, {},
-        seed, simulations, settings,
-    )  # fmt: skip
+    subject = _Subject(
+        table.name,
+        None if side is None else "mm",
+        area,
+        None,
+        QuadratCounts(table.counts, areas, np.ones(q, dtype=bool), None, row, column),
+        None if area is None else density_per_cm2(n, area, 0.0),
+        ("no_area",) if side is None else (),
+        {},
+        settings,
+    )
+    return _judged(subject, seed, simulations)
 
 
 def stream(seed: int, name: str) -> np.random.Generator:
@@ -319,58 +337,54 @@ def stream(seed: int, name: str) -> np.random.Generator:
     return np.random.default_rng([seed, zlib.crc32(name.encode("utf-8"))])
 
 
-def _judged(
-    name: str,
-    unit: Unit | None,
-    area: float | None,
-    pattern: Pattern | None,
-    counts: QuadratCounts,
-    density: Limits | None,
-    flags: tuple[str, ...],
-    flag_values: dict[str, Any],
-    seed: int,
-    simulations: int,
-    settings: dict[str, Any],
-) -> Findings:
+def _counted_side(table: CountTable) -> float | None:
+    """Return the side of a counted quadrat in millimetres, where it is known."""
+    if table.side is not None and table.side.in_pixels:
+        raise GridWrong(
+            f"--quadrat {table.side} is in pixels; give the side of a counted quadrat in mm."
+        )
+    return None if table.side is None else table.side.to_mm()
+
+
+def _judged(subject: _Subject, seed: int, simulations: int) -> Findings:
     """Test counts and put the findings together."""
-    x, areas = counts.counts, counts.area
+    x, areas, is_whole = subject.counts.counts, subject.counts.area, subject.counts.whole
     expected = expected_counts(x, areas)
     everything = dispersion(x) if areas is None else clipped_dispersion(x, areas)
-    whole = dispersion(x[counts.whole]) if counts.whole.sum() >= 2 else None
+    whole = dispersion(x[is_whole]) if is_whole.sum() >= 2 else None
     weights = np.ones(x.size) if areas is None else areas
-    rng = stream(seed, name)
+    rng = stream(seed, subject.name)
     simulated = simulated_p(x, weights, simulations=simulations, rng=rng)
     verdict = decide(everything.n, everything.q, simulated)
-    values = flag_values | {
+    values = subject.flag_values | {
         "n": everything.n,
         "q": everything.q,
-        "whole": int(counts.whole.sum()),
+        "whole": int(is_whole.sum()),
         "mean_expected": everything.mean,
-        "clipped_percent": 100 * counts.clipped_share,
+        "clipped_percent": 100 * subject.counts.clipped_share,
     }
-    if verdict != "too few to tell":
-        flags += count_flags(values)
+    of_counts = () if verdict == "too few to tell" else count_flags(values)
     return Findings(
-        name=name,
+        name=subject.name,
         n=everything.n,
-        unit=unit,
-        area=area,
-        pattern=pattern,
-        counts=counts,
+        unit=subject.unit,
+        area=subject.area,
+        pattern=subject.pattern,
+        counts=subject.counts,
         expected=expected,
         residuals=residuals(x, expected),
         dispersion_whole=whole,
         dispersion_all=everything,
         simulated=simulated,
-        density=density,
-        poisson=_frequencies(x[counts.whole]),
+        density=subject.density,
+        poisson=_frequencies(x[is_whole]),
         verdict=verdict,
         sentence=sentence(verdict, everything, whole, simulated),
         detectable=detectable(everything.df),
-        flags=flags,
+        flags=subject.flags + of_counts,
         flag_values=values,
         seed=seed,
-        settings=settings | {"simulations": simulations, "level": LEVEL},
+        settings=subject.settings | {"simulations": simulations, "level": LEVEL},
     )
 
 

@@ -1,0 +1,61 @@
+"""Flags: each has a sentence that can be filled in, and is raised where it should be."""
+
+from __future__ import annotations
+
+import string
+
+import pytest
+
+from analyse.flags import FLAGS, count_flags, flag_sentences
+
+VALUES = {
+    "n": 60,
+    "q": 32,
+    "whole": 16,
+    "mean_expected": 1.875,
+    "clipped_percent": 38.0,
+    "doubtful": 4,
+    "outside": 3,
+    "duplicates": 2,
+}
+
+
+@pytest.mark.parametrize("flag", FLAGS)
+def test_every_flag_says_a_sentence_with_its_numbers(flag: str) -> None:
+    (said,) = flag_sentences([flag], VALUES)
+    assert said.endswith(".")
+    assert "{" not in said
+    for _, name, _, _ in string.Formatter().parse(FLAGS[flag]):
+        assert name is None or name in VALUES
+
+
+def test_flags_in_words() -> None:
+    assert flag_sentences(["doubtful", "clipped_large", "low_expected"], VALUES) == (
+        "Counted spots that are more likely false than real: 4 of 60; check them.",
+        "Of the study area, 38 % lies in clipped quadrats; the verdict takes their areas into"
+        " account, the VMR of whole quadrats leaves them out.",
+        "A quadrat expects only 1.9 points on average: the chi-square p is rough there;"
+        " the simulated p holds.",
+    )
+
+
+@pytest.mark.parametrize(
+    ("changes", "flags"),
+    [
+        ({}, ()),
+        ({"q": 10, "whole": 10}, ()),
+        ({"q": 9, "whole": 9}, ("few_quadrats",)),
+        ({"mean_expected": 0.99}, ("low_expected",)),
+        ({"mean_expected": 1.0}, ()),
+        ({"whole": 5}, ("few_whole",)),
+        ({"whole": 6}, ()),
+        ({"clipped_percent": 50.0}, ()),
+        ({"clipped_percent": 51.0}, ("clipped_large",)),
+        (
+            {"q": 6, "whole": 0, "clipped_percent": 100.0},
+            ("few_quadrats", "few_whole", "clipped_large"),
+        ),
+    ],
+)
+def test_flags_of_counts(changes: dict[str, float], flags: tuple[str, ...]) -> None:
+    assert count_flags(VALUES | changes) == flags
