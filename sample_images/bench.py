@@ -53,7 +53,7 @@ def _cloth(x_mm: Layer, y_mm: Layer, sun: Sun, px_per_mm: float, rng: np.random.
     lit = lambert(fold.astype(np.float32), sun) / np.float32(sun.towards[2])
     fluff = 1 + 0.06 * grain(shape, rng, sigma=0.9)
     return np.asarray(
-        (0.55 + 0.62 * thread) * slubs * (0.35 + 0.65 * lit) * fluff, dtype=np.float32
+        (0.70 + 0.42 * thread) * slubs * (0.35 + 0.65 * lit) * fluff, dtype=np.float32
     )
 
 
@@ -81,15 +81,15 @@ def _worn(shape: tuple[int, ...], px_per_mm: float, rng: np.random.Generator) ->
 
 def _wood(x_mm: Layer, y_mm: Layer, px_per_mm: float, rng: np.random.Generator) -> Layer:
     shape = (x_mm.shape[0], x_mm.shape[1])
-    bend = 5.0 * cloud(shape, rng, size=70 * px_per_mm, slope=3.0)
+    bend = 1.6 * cloud(shape, rng, size=110 * px_per_mm, slope=3.0)
     across = y_mm + bend + 0.03 * x_mm
     streaks = np.zeros(shape, np.float32)
-    for pitch, weight in ((9.0, 0.5), (3.1, 0.35), (1.1, 0.25)):
+    for pitch, weight in ((7.0, 0.35), (2.3, 0.45), (0.8, 0.4), (0.3, 0.3)):
         knots = rng.standard_normal(4096).astype(np.float32)
         at = (
             across / np.float32(pitch)
             + 2000
-            + 0.15 * cloud(shape, rng, size=30 * px_per_mm, slope=2.4)
+            + 0.35 * cloud(shape, rng, size=60 * px_per_mm, slope=2.6)
         )
         k = np.floor(at).astype(int) % 4095
         f = at - np.floor(at)
@@ -97,4 +97,4 @@ def _wood(x_mm: Layer, y_mm: Layer, px_per_mm: float, rng: np.random.Generator) 
         streaks += np.float32(weight) * (knots[k] * (1 - f) + knots[k + 1] * f)
     noise = rng.standard_normal((shape[0], max(8, shape[1] // 24))).astype(np.float32)
     pores = resized(np.ascontiguousarray(noise), shape)
-    return np.asarray(np.exp(0.16 * streaks - 0.10 * step(0.9, 2.2, pores)), dtype=np.float32)
+    return np.asarray(np.exp(0.20 * streaks - 0.16 * step(0.9, 2.2, pores)), dtype=np.float32)

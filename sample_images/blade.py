@@ -28,6 +28,7 @@ class Leaf:
     holes: int = 3
     green: tuple[float, float, float] = (0.070, 0.155, 0.032)
     yellowing: float = 0.3
+    taper: tuple[float, float] = (0.72, 0.98)
 
     def __post_init__(self) -> None:
         if self.length <= 2 * self.half_width * 0.6:
@@ -45,8 +46,9 @@ def half_width(leaf: Leaf, s: Points, side: int) -> Points:
     """Give the half width in mm at the shares `s` of the length, on one side (-1 or 1) of the midrib."""
     rng = np.random.default_rng([leaf.seed, 31 + side])
     s = np.clip(s, 0, 1)
-    shape = s**0.58 * (1 - s) ** 0.95
-    shape = shape / (0.379**0.58 * 0.621**0.95)
+    low, high = leaf.taper
+    top = low / (low + high)
+    shape = s**low * (1 - s) ** high / (top**low * (1 - top) ** high)
     wave = np.zeros_like(s)
     for k in (3, 5, 8, 11):
         wave += rng.normal(0, 1 / math.sqrt(k)) * np.sin(
@@ -143,7 +145,7 @@ def draw_veins(leaf: Leaf, camera: Camera, rng: np.random.Generator) -> Veins:
             _side_vein(side, leaf, camera, start, direction, rng)
     net = cells(camera.shape, rng, spacing=3.0 * scale, warp=0.8 * scale, shrink=2.0)
     fine = cells(camera.shape, rng, spacing=1.15 * scale, warp=0.35 * scale, shrink=2.0)
-    mesh = 0.75 * step(0.22 * scale, 0.02 * scale, net) + 0.35 * step(0.14 * scale, 0.0, fine)
+    mesh = 0.8 * step(0.24 * scale, 0.03 * scale, net) + 0.4 * step(0.15 * scale, 0.0, fine)
     return Veins(rib=rib, side=side, net=np.clip(mesh, 0, 1).astype(np.float32))
 
 
@@ -151,7 +153,7 @@ def _side_vein(
     layer: Layer, leaf: Leaf, camera: Camera, start: float, direction: int, rng: np.random.Generator
 ) -> None:
     run = np.linspace(0, 1, 50)
-    reach = float(half_width(leaf, np.array([min(start + 0.14, 0.97)]), direction)[0]) * 0.94
+    reach = float(half_width(leaf, np.array([min(start + 0.14, 0.97)]), direction)[0]) * 0.985
     forward = reach / leaf.length * (0.75 + 0.25 * rng.random()) * (0.7 + 0.6 * start)
     s = start + forward * (0.62 * run + 0.48 * run**2.6)
     across = direction * reach * (run - 0.10 * run**3) + 0.35 * np.sin(run * 9 + rng.uniform(0, 6))
@@ -162,12 +164,14 @@ def _side_vein(
     line = camera.to_pixels(to_scene(leaf, s[:last], across[:last]))
     stroke(layer, line, (0.72 * (1 - run[:last]) + 0.2) * scale, 0.95)
     for at in (18, 27, 35, 41):
-        if at >= last - 3 or rng.random() < 0.25:
+        if at >= last - 3 or rng.random() < 0.6:
             continue
         length = rng.uniform(4, 9) * (1 - 0.4 * run[at])
         lift = np.linspace(0, 1, 16)
         ahead = 1 if at % 2 else -1
-        fs = s[at] + (0.9 if ahead > 0 else -0.25) * length / leaf.length * lift
+        fs = s[at] + (0.9 if ahead > 0 else -0.25) * length / leaf.length * lift * (
+            0.6 + 0.4 * lift
+        )
         fa = across[at] + direction * length * (0.55 * lift if ahead > 0 else 0.85 * lift)
         nodes = to_scene(leaf, fs, fa)
         ok = inside(leaf, nodes, margin=0.5)
@@ -206,7 +210,7 @@ def draw_blade(
     stroke(stalk, line, np.linspace(2.0, 3.0, len(line)) * scale, 1.0)
     eaten, brown = _eaten(leaf, x, y, scale)
     cover = np.maximum(cover * (1 - eaten), stalk * (s < 0.03))
-    mottle = 0.10 * cloud(shape, rng, size=26 * scale, slope=2.2) + 0.05 * cloud(
+    mottle = 0.12 * cloud(shape, rng, size=30 * scale, slope=2.2) + 0.06 * cloud(
         shape, rng, size=2.2 * scale, slope=1.5
     )
     green = np.asarray(leaf.green, np.float32) * np.exp(mottle)[..., None]
@@ -224,7 +228,7 @@ def draw_blade(
     )
     pale = np.array([0.185, 0.255, 0.085], np.float32)
     for order, weight in (
-        (veins.net, 0.13),
+        (veins.net, 0.42),
         (veins.side, 0.55),
         (veins.rib, 0.82),
         (stalk * (s < 0.05), 0.85),
@@ -237,10 +241,11 @@ def draw_blade(
     bulge = (
         -1.0 * soft(veins.side, 0.75 * scale)
         - 1.5 * soft(veins.rib, 1.0 * scale)
-        - 0.10 * soft(veins.net, 0.15 * scale)
+        - 0.9 * soft(veins.side, 1.7 * scale)
+        - 0.035 * soft(veins.net, 0.16 * scale)
     )
     bulge += 0.55 * soft(veins.rib, 0.3 * scale) + 0.22 * soft(veins.side, 0.14 * scale)
-    height = scale * (bulge + 0.35 * cloud(shape, rng, size=13 * scale, slope=2.6))
+    height = scale * (bulge + 0.34 * cloud(shape, rng, size=10 * scale, slope=3.7))
     fold = -np.abs(across) * np.float32(0.16) * (1 - np.exp(-np.abs(across) / 5)) + 1.0 * cloud(
         shape, rng, size=60 * scale, slope=3.2
     )

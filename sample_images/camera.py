@@ -105,7 +105,7 @@ class Camera:
 
     def to_mm(self, points_px: Points, *, z_mm: float = 0.0) -> Points:
         """Map (n, 2) pixels to (n, 2) millimetres on the plane at `z_mm`."""
-        return apply(np.linalg.inv(self.plane(z_mm)), points_px)
+        return apply(np.asarray(np.linalg.inv(self.plane(z_mm)), dtype=np.float64), points_px)
 
     def grid(self, z_mm: float = 0.0) -> tuple[Layer, Layer]:
         """Give for every pixel the x and y, in mm, of the plane at `z_mm` it looks at."""

@@ -23,11 +23,20 @@ class Sort:
     dome: float
     wavy: float
     raised: float = 0.0
+    edge: float = 0.72
 
 
 SORTS = (
-    Sort(colour=(0.54, 0.47, 0.30), opaque=0.93, shine=0.75, dome=0.24, wavy=0.010),
-    Sort(colour=(0.58, 0.53, 0.41), opaque=0.86, shine=0.30, dome=0.17, wavy=0.022, raised=0.6),
+    Sort(colour=(0.54, 0.47, 0.30), opaque=0.93, shine=0.75, dome=0.21, wavy=0.012),
+    Sort(
+        colour=(0.58, 0.53, 0.41),
+        opaque=0.86,
+        shine=0.30,
+        dome=0.13,
+        wavy=0.026,
+        raised=0.8,
+        edge=0.55,
+    ),
     Sort(colour=(0.56, 0.37, 0.075), opaque=0.96, shine=0.80, dome=0.28, wavy=0.008),
     Sort(colour=(0.50, 0.20, 0.15), opaque=0.92, shine=0.6, dome=0.24, wavy=0.012),
     Sort(colour=(0.56, 0.22, 0.05), opaque=0.95, shine=0.7, dome=0.26, wavy=0.010),
@@ -64,7 +73,7 @@ def outline(rng: np.random.Generator, wavy: float) -> tuple[Points, Points, floa
     """Draw amplitudes and phases of a wavy outline, and the radius that keeps its area at pi."""
     orders = np.arange(2, 9)
     amplitude = (
-        wavy * rng.standard_normal(len(orders)) * np.array([1.4, 1.0, 0.8, 0.7, 0.6, 0.5, 0.5])
+        wavy * rng.standard_normal(len(orders)) * np.array([1.7, 1.1, 0.7, 0.45, 0.3, 0.25, 0.2])
     )
     phase = rng.uniform(0, 2 * np.pi, len(orders))
     return amplitude, phase, float(1 / np.sqrt(1 + 0.5 * (amplitude**2).sum()))
@@ -103,19 +112,19 @@ def layers(colonies: Colonies, camera: Camera, x_mm: Layer, y_mm: Layer, *, z_mm
         rho = radial(dx, dy, amplitude, phase, base)
         dome, raised = sort.dome * rng.uniform(0.8, 1.2), sort.raised * rng.uniform(0.3, 1.3)
         flat = np.clip(1 - rho**2, 0, None)
-        profile = flat**0.75 * (1 - 0.4 * raised) + 0.35 * raised * np.exp(-((rho / 0.38) ** 2)) * (
-            flat > 0
-        )
+        steep = rng.uniform(0.62, 0.9) if sort.raised == 0 else 0.5
+        mound = np.exp(-((rho / 0.42) ** 2)) * np.minimum(1, 3 * flat)
+        profile = flat**steep * (1 - 0.55 * raised) + 0.5 * raised * mound
         rise = (dome * radius * scale) * profile
         edge = max(0.07, 0.9 / (radius * scale))
         seen = step(1 + edge, 1 - edge, rho) * np.float32(sort.opaque * rng.uniform(0.94, 1.0))
-        seen *= 0.66 + 0.34 * step(1.0, 0.68, rho)
+        seen *= sort.edge + (1 - sort.edge) * step(1.0, 0.62, rho)
         wins = (rise > height[box]) | ((height[box] <= 0) & (seen > cover[box]))
         hue = (
             np.asarray(sort.colour) * rng.uniform(0.86, 1.08) * (1 + 0.018 * rng.standard_normal(3))
         )
         ring = 1 - 0.10 * np.exp(-(((rho - rng.uniform(0.5, 0.8)) / 0.14) ** 2)) * raised
-        depth = (0.90 + 0.14 * step(1.0, 0.2, rho) + 0.02 * mottle[box]) * ring
+        depth = (0.93 + 0.08 * step(0.9, 0.1, rho) + 0.03 * mottle[box]) * ring
         colour[box][wins] = (depth[..., None] * hue.astype(np.float32))[wins]
         shine[box][wins] = sort.shine * rng.uniform(0.6, 1.3)
         height[box] = np.where(wins, np.maximum(rise, height[box]), height[box])
@@ -135,16 +144,18 @@ def paint(
     deep = soft(
         moved(layered.cover, throw_x * 2.4 * px_per_mm, throw_y * 2.4 * px_per_mm), 0.5 * px_per_mm
     )
-    ground = agar * (1 - 0.34 * near[..., None]) * (1 - 0.20 * deep[..., None])
+    ground = agar * (1 - 0.30 * near[..., None]) * (1 - 0.20 * deep[..., None])
     rough = grain(layered.height.shape, rng, sigma=1.6) * 0.035 * step(0.0, 1.0, layered.height)
     height = soft(layered.height, 0.05 * px_per_mm) + rough.astype(np.float32)
-    level = sun.towards[2]
-    lit = 0.58 + 0.44 * lambert(height, sun) / np.float32(level)
-    spark = (
-        gloss(height, sun, power=160) * layered.shine * 1.1
-        + gloss(height, sun, power=14) * layered.shine * 0.05
-    )
+    level = np.float32(sun.towards[2])
+    within = soft(lambert(height, sun) * layered.cover, 0.10 * px_per_mm)
+    within /= soft(layered.cover, 0.10 * px_per_mm) + 0.02
+    lit = 0.70 + 0.20 * lambert(height, sun) / level + 0.14 * within / level
+    ceiling = Sun(from_deg=sun.from_deg + 130, elevation_deg=74)
+    spark = step(0.35, 0.75, gloss(height, sun, power=260)) * layered.shine * 0.75
+    spark += step(0.4, 0.9, gloss(height, ceiling, power=500)) * layered.shine * 0.16
+    spark += gloss(height, sun, power=16) * layered.shine * 0.045
     spark *= layered.cover > 0.4
-    body = layered.colour * lit[..., None] + soft(spark.astype(np.float32), 0.7)[..., None]
+    body = layered.colour * lit[..., None] + soft(spark.astype(np.float32), 0.6)[..., None]
     weight = layered.cover[..., None]
     return np.asarray(ground * (1 - weight) + body * weight, dtype=np.float32)

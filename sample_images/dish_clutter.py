@@ -52,7 +52,8 @@ def pen(clutter: Clutter, camera: Camera, rng: np.random.Generator) -> Layer:
         nodes = np.array([(-1.0, 0.0), (-0.3, 0.01), (0.4, -0.01), (1.0, 0.0)]) * 42.5
         bent = np.column_stack([nodes[:, 0], nodes[:, 1] + rng.normal(0, 0.5, 4)])
         spin = np.array([[np.cos(a), np.sin(a)], [-np.sin(a), np.cos(a)]])
-        lines.append((smooth_line(bent @ spin, samples=80), np.ones(80)))
+        swell = 1 + 0.05 * np.cumsum(rng.normal(0, 0.4, 80))
+        lines.append((smooth_line(bent @ spin, samples=80), np.clip(swell, 0.8, 1.4)))
     for line, width in lines:
         stroke(ink, camera.to_pixels(line, z_mm=0.0), width * 0.75 * camera.px_per_mm, 1.0)
     patchy = 0.86 + 0.07 * cloud(camera.shape, rng, size=1.2 * camera.px_per_mm, slope=1.4)
@@ -66,7 +67,7 @@ def glare(
     shape = (x_mm.shape[0], x_mm.shape[1])
     if clutter.glare == "none":
         return np.zeros(shape, np.float32)
-    bend = [0.5 * cloud(shape, rng, size=25 * px_per_mm, slope=2.8) for _ in range(2)]
+    bend = [0.22 * cloud(shape, rng, size=30 * px_per_mm, slope=2.8) for _ in range(2)]
     turn = np.float32(rng.uniform(-0.5, 0.5))
     dx, dy = (
         x_mm - np.float32(clutter.glare_at[0]) + bend[0],
@@ -75,15 +76,23 @@ def glare(
     u, v = dx * np.cos(turn) + dy * np.sin(turn), dy * np.cos(turn) - dx * np.sin(turn)
     v = v - np.float32(0.12) * u  # seen askew
     if clutter.glare == "window":
-        pane = step(7.6, 6.7, np.abs(u)) * step(10.4, 9.4, np.abs(v))
+        pane = step(7.7, 6.7, np.abs(u)) * step(10.6, 9.2, np.abs(v))
         bars = 1 - 0.85 * (
             step(0.75, 0.3, np.abs(u + 0.5)) + step(0.7, 0.25, np.abs(v - 2.4))
         ).clip(0, 1)
-        sky = 0.75 + 0.03 * v + 0.1 * cloud(shape, rng, size=9 * px_per_mm, slope=2.2)
+        trees = step(
+            -0.3, 0.5, v * 0.16 - 0.62 + 0.4 * cloud(shape, rng, size=5 * px_per_mm, slope=1.7)
+        )
+        sky = (0.95 + 0.03 * v + 0.06 * cloud(shape, rng, size=9 * px_per_mm, slope=2.2)) * (
+            1 - 0.6 * trees
+        )
         return np.asarray((pane * bars * sky).clip(0, 1.2), dtype=np.float32)
     if clutter.glare == "tubes":
-        both = step(1.9, 1.0, np.abs(u - 3.2)) + step(1.9, 1.0, np.abs(u + 3.2))
-        return np.asarray(both * step(19, 16, np.abs(v)) * 0.9, dtype=np.float32)
+        tubes = np.zeros(shape, np.float32)
+        for at, wide in ((-3.4, 1.5), (3.0, 1.35)):
+            tubes += np.exp(-(((u - np.float32(at)) / np.float32(wide)) ** 4))
+            tubes += 0.16 * np.exp(-np.abs(u - np.float32(at)) / 2.6)
+        return np.asarray(tubes * step(20, 14.5, np.abs(v - 0.3 * u)), dtype=np.float32)
     r = np.hypot(u * 1.15, v)
     return np.asarray(1.3 * step(4.4, 2.9, r) + 0.35 * np.exp(-((r / 7) ** 2)), dtype=np.float32)
 

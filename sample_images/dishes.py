@@ -98,10 +98,12 @@ def _shadow(bench: Layer, dish: Dish, x: Layer, y: Layer) -> Layer:
     return np.asarray(bench * soft(dim.astype(np.float32), 1.5)[..., None], dtype=np.float32)
 
 
-def _agar(bench: Layer, ink: Layer, dish: Dish, r: Layer, rng: np.random.Generator) -> Layer:
+def _agar(
+    bench: Layer, ink: Layer, dish: Dish, at: tuple[Layer, Layer], rng: np.random.Generator
+) -> Layer:
     """Lay agar over bench and writing: it tints, blurs and scatters, unevenly, darker at its edge."""
     scale = dish.camera.px_per_mm
-    shape = dish.camera.shape
+    shape, r = dish.camera.shape, np.hypot(*at)
     under = soft(bench, 0.16 * scale)
     inked = (
         under * (1 - 0.93 * ink[..., None])
@@ -118,6 +120,14 @@ def _agar(bench: Layer, ink: Layer, dish: Dish, r: Layer, rng: np.random.Generat
     specks = step(3.0, 4.2, grain(shape, rng, sigma=1.0))
     out = inked * np.asarray(dish.clear, np.float32) / np.maximum(thick, 0.4)[..., None] + milk
     inward = np.clip(np.float32(INNER_MM) - r, 0, None)
+    x, y, _ = dish.sun.towards
+    across = (at[0] * np.float32(-x) + at[1] * np.float32(-y)) / np.float32(INNER_MM)
+    out = (
+        out
+        * (1 + 0.10 * across + 0.22 * np.clip(across, 0, None) ** 2 * np.exp(-inward / 7))[
+            ..., None
+        ]
+    )
     edge = 1 - 0.36 * np.exp(-((inward / 0.55) ** 2)) - 0.12 * np.exp(-inward / 2.6)
     return np.asarray(out * (edge * (1 - 0.12 * specks))[..., None], dtype=np.float32)
 
@@ -196,7 +206,7 @@ def draw(dish: Dish, *, shrink: float = 1.0) -> Picture:
     bench = _shadow(draw_bench(dish.bench, x0, y0, dish.sun, scale, rng), dish, x0, y0)
     x, y = camera.grid(AGAR_MM)
     r, angle = np.hypot(x, y), np.arctan2(y, x)
-    out = _agar(bench, pen(dish.clutter, camera, rng), dish, r, rng)
+    out = _agar(bench, pen(dish.clutter, camera, rng), dish, (x, y), rng)
     bubbles(out, dish.clutter.bubbles, camera, AGAR_MM, dish.sun, rng)
     layered = layers(colonies_of(dish), camera, x, y, z_mm=AGAR_MM)
     out = paint(out, layered, dish.sun, px_per_mm=scale, rng=rng)
@@ -205,7 +215,7 @@ def draw(dish: Dish, *, shrink: float = 1.0) -> Picture:
         mirror = (
             mirror * (1 - 0.8 * step(0.2, 0.7, layered.cover)) * step(INNER_MM, INNER_MM - 0.6, r)
         )
-    out = out + (dish.clutter.glare_level * soft(mirror, 0.08 * scale))[..., None] * np.array(
+    out = out + (dish.clutter.glare_level * soft(mirror, 0.12 * scale))[..., None] * np.array(
         [0.95, 1.0, 1.06], np.float32
     )
     rim = np.exp(-(((r - INNER_MM + 0.8) / 0.22) ** 2)) * _lobes(

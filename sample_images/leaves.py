@@ -123,7 +123,12 @@ def _bar(picture: Layer, shot: LeafShot, x: Layer, y: Layer, rng: np.random.Gene
         (np.minimum(32.5 - np.abs(u + 0.4), 6.4 - np.abs(v - 0.5 - 0.006 * u))) * scale + 0.5, 0, 1
     )
     fallen = soft(
-        moved(card, shot.sun.throw[0] * 0.7 * scale, shot.sun.throw[1] * 0.7 * scale), 0.22 * scale
+        moved(
+            card.astype(np.float32),
+            shot.sun.throw[0] * 0.7 * scale,
+            shot.sun.throw[1] * 0.7 * scale,
+        ),
+        0.22 * scale,
     )
     picture *= (1 - 0.38 * fallen * (1 - card))[..., None]
     rag = 0.12 * grain(shot.camera.shape, rng, sigma=1.2)
@@ -135,7 +140,7 @@ def _bar(picture: Layer, shot: LeafShot, x: Layer, y: Layer, rng: np.random.Gene
     tall = np.clip((BAR_TALL_MM / 2 - np.abs(v)) * scale + 0.5 + rag, 0, 1)
     frame = np.exp(-(((np.abs(v) - BAR_TALL_MM / 2 + 0.12) / 0.1) ** 2)) * beyond
     ink = np.maximum(ink * beyond * tall, 0.85 * frame)
-    patchy = 0.93 + 0.04 * cloud(shot.camera.shape, rng, size=1.5 * scale, slope=1.3)
+    patchy = 0.97 + 0.012 * cloud(shot.camera.shape, rng, size=1.5 * scale, slope=1.3)
     white = (
         np.array([0.68, 0.68, 0.66], np.float32)
         * (1 + 0.01 * grain(shot.camera.shape, rng, sigma=1.0))[..., None]
@@ -247,7 +252,7 @@ def draw(shot: LeafShot, *, shrink: float = 1.0) -> Picture:
     height = (
         blade.height
         - marks.sunk * scale
-        + 0.05 * scale * grain(camera.shape, rng, sigma=0.12 * scale) * (1 + marks.dead)
+        + 0.012 * scale * grain(camera.shape, rng, sigma=0.12 * scale) * (1 + 2.5 * marks.dead)
     )
     height = height.astype(np.float32)
     lit = (
@@ -255,13 +260,13 @@ def draw(shot: LeafShot, *, shrink: float = 1.0) -> Picture:
         / np.float32(sun.towards[2])
         * (0.55 + 0.45 * cast_shadow(height, sun, reach=5 * scale, penumbra=0.4 * scale))
     )
-    tone = 0.40 + 0.68 * lit
+    tone = 0.36 + 0.70 * lit
     wax = (
-        gloss(soft(height, 0.12 * scale), sun, power=22)
+        gloss(soft(height, 0.12 * scale), sun, power=26)
         * (1 - 0.85 * marks.dead)
         * (1 - 0.5 * veins.rib)
     )
-    body = colour * tone[..., None] + (0.085 * wax)[..., None] * np.array(
+    body = colour * tone[..., None] + (0.085 * wax * (1 - 0.35 * veins.net))[..., None] * np.array(
         [0.92, 1.0, 1.05], np.float32
     )
     body = body * (1 + 0.25 * np.exp(-(((blade.cover - 0.5) / 0.3) ** 2)))[..., None]

@@ -29,7 +29,7 @@ class Marks:
     sunk: Layer
 
 
-TAN = np.array([0.235, 0.150, 0.078], np.float32)
+TAN = np.array([0.31, 0.215, 0.125], np.float32)
 BROWN = np.array([0.098, 0.048, 0.021], np.float32)
 DARK = np.array([0.036, 0.017, 0.010], np.float32)
 
@@ -55,9 +55,9 @@ def draw_lesions(lesions: Lesions, camera: Camera, x: Layer, y: Layer) -> Marks:
             (x[box] - np.float32(cx)) / np.float32(radius),
             (y[box] - np.float32(cy)) / np.float32(radius),
         )
-        rho = radial(dx, dy, amplitude, phase, base) + 0.025 * rag[box]
-        old = float(np.clip((radius - 0.8) / 1.2 + rng.normal(0, 0.25), 0, 1))
-        aa = max(0.05, 0.9 / (radius * scale))
+        rho = radial(dx, dy, amplitude, phase, base) + 0.035 * rag[box]
+        old = float(np.clip((radius - 0.75) / 0.9 + rng.normal(0, 0.35), 0, 1))
+        aa = max(rng.uniform(0.06, 0.16), 0.9 / (radius * scale))
         here = step(1 + aa, 1 - aa, rho)
         spread = rng.uniform(0.45, 1.1)
         yellow = np.exp(-((np.clip(rho - 0.9, 0, None) / spread) ** 1.7)) * rng.uniform(0.7, 1.0)
@@ -78,7 +78,11 @@ def _tissue(rho: Layer, old: float, rag: Layer, fine: Layer, rng: np.random.Gene
     middle = step(rng.uniform(0.62, 0.78), rng.uniform(0.3, 0.45), rho + 0.05 * rag) * old
     rim = np.exp(-(((rho - rng.uniform(0.84, 0.92)) / rng.uniform(0.11, 0.17)) ** 2))
     tone = BROWN * np.exp(0.10 * rag + 0.05 * fine)[..., None] * rng.uniform(0.8, 1.25)
-    tone = tone + (TAN * (1 + 0.10 * rag)[..., None] - tone) * (0.9 * middle)[..., None]
+    tone = (
+        tone
+        + (TAN * rng.uniform(0.7, 1.2) * (1 + 0.12 * rag)[..., None] - tone)
+        * (0.9 * middle)[..., None]
+    )
     ring = 1 - 0.16 * old * np.cos(2 * np.pi * (rho * rng.uniform(3.0, 4.5))) * (rho < 0.8)
     specks = step(1.5, 2.3, fine) * middle
     tone = tone * (ring * (1 - 0.55 * specks))[..., None]

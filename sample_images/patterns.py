@@ -84,6 +84,12 @@ def _candidates(plan: Plan, ground: Ground, rng: np.random.Generator) -> Callabl
     return near_a_parent
 
 
+def _to_nearest(points: Points) -> Points:
+    """Give each point's distance to its nearest neighbour, (n,)."""
+    distance, _ = cKDTree(points).query(points, k=2)
+    return np.asarray(distance, dtype=np.float64)[:, 1]
+
+
 def _spread(n: int, plan: Plan, ground: Ground, rng: np.random.Generator) -> Points:
     points = ground.scatter(n, rng)
     probe = ground.scatter(250 * n, rng)
@@ -94,7 +100,7 @@ def _spread(n: int, plan: Plan, ground: Ground, rng: np.random.Generator) -> Poi
             [np.bincount(owner, probe[:, k], minlength=n) / total for k in (0, 1)]
         )
         points = np.where(ground.inside(centre)[:, None], centre, points)
-    gap = float(np.median(cKDTree(points).query(points, k=2)[0][:, 1]))
+    gap = float(np.median(_to_nearest(points)))
     shaken = points + rng.normal(0, plan.shake * gap, points.shape)
     return np.asarray(np.where(ground.inside(shaken)[:, None], shaken, points))
 
@@ -111,7 +117,7 @@ def place(plan: Plan, ground: Ground, rng: np.random.Generator) -> Points:
     for k in np.argsort(-radii, kind="stable"):
         for _ in range(500):
             point = draw()
-            apart = np.hypot(*(placed[done] - point).T) / np.maximum(radii[done], radii[k])
+            apart = np.linalg.norm(placed[done] - point, axis=1) / np.maximum(radii[done], radii[k])
             if not done.any() or apart.min() >= plan.nearest:
                 break
         else:
@@ -166,9 +172,7 @@ def _clear(points: Points, plan: Plan, ground: Ground) -> bool:
             if plan.kind == "even" and even > 2e-4:
                 return False
     if plan.kind == "random":  # neighbours too should lie as far as chance has them
-        near = (
-            cKDTree(points).query(points, k=2)[0][:, 1].mean() * 2 * math.sqrt(len(points) / area)
-        )
+        near = float(_to_nearest(points).mean()) * 2 * math.sqrt(len(points) / area)
         return bool(abs(near - 1.03) < 0.06)
     return True
 

@@ -33,6 +33,7 @@ class Plot:
     litter: Litter
     leaves: tuple[int, int] = (2, 5)
     outside: int = 7
+    sky: float = 0.36
     weed: bool = True
 
 
@@ -174,7 +175,7 @@ def draw_flat(plot: Plot, scale: float) -> tuple[Layer, Points]:
     at = (xy - origin) * scale
     for (u, v), plant in zip(at, plants, strict=True):
         shade_ground(dim, plant, u, v, scale, plot.sun)
-    picture = light_bed(bed, plot.sun, scale, dim)
+    picture = light_bed(bed, plot.sun, scale, dim, sky=plot.sky)
     paint_litter(picture, pieces, shade, scale, plot.sun, rng)
     _plates(picture, dim, origin, scale, plot.sun, rng)
     for k in np.argsort([p.radius_mm for p in plants], kind="stable"):

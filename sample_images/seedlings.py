@@ -71,7 +71,7 @@ def grow(rng: np.random.Generator, radius_mm: float, leaves: int) -> Seedling:
                 round_tip=rng.uniform(0.36, 0.46),
                 teeth=0.0,
                 bend=rng.normal(0, 0.06),
-                lift=0.25,
+                lift=rng.uniform(0.45, 0.65),
                 droop=rng.uniform(0.1, 0.3),
                 colour=_colour(rng, plant, 0.05),
             )
@@ -82,13 +82,13 @@ def grow(rng: np.random.Generator, radius_mm: float, leaves: int) -> Seedling:
         blades.append(
             Blade(
                 angle=pairs + (k % 2) * np.pi + (k // 2) * 1.15 + rng.normal(0, 0.22),
-                length=(0.5 + 0.75 * age * (0.5 + leaves / 8)) * rng.uniform(0.85, 1.12),
+                length=(0.5 + 0.75 * age * (0.5 + leaves / 7)) * rng.uniform(0.8, 1.15),
                 half_width=(0.17 + 0.14 * age) * rng.uniform(0.85, 1.15),
                 stalk=rng.uniform(0.2, 0.32),
                 round_tip=rng.uniform(0.52, 0.66),
-                teeth=rng.uniform(0.05, 0.13),
+                teeth=rng.uniform(0.08, 0.2),
                 bend=rng.normal(0, 0.12),
-                lift=0.35 + 0.25 * (1 - age),
+                lift=rng.uniform(0.6, 0.9) + 0.2 * (1 - age),
                 droop=rng.uniform(0.15, 0.5),
                 colour=_colour(rng, plant, 0.65 * (1 - age)),
             )
@@ -120,7 +120,7 @@ def _scaled(blade: Blade, factor: float) -> Blade:
 def leaf_cover(blade: Blade, x: Layer, y: Layer, px_per_unit: float) -> tuple[Layer, Layer, Layer]:
     """Give a leaf's cover (0 to 1), the way along it (0 to 1) and across it (-1 to 1)."""
     c, s = np.float32(math.cos(blade.angle)), np.float32(math.sin(blade.angle))
-    along = (x * c + y * s) / np.float32(blade.length)
+    along = np.asarray((x * c + y * s) / np.float32(blade.length), dtype=np.float32)
     across = (y * c - x * s) - np.float32(blade.bend * blade.length) * along**2
     q = np.clip((along - np.float32(blade.stalk)) / np.float32(1 - blade.stalk), 1e-4, 1 - 1e-4)
     peak = blade.round_tip
@@ -193,10 +193,10 @@ def shade_ground(dim: Layer, plant: Seedling, u: float, v: float, scale: float, 
         cover = leaf_cover(
             blade, x - np.float32(throw[0] * high), y - np.float32(throw[1] * high), scale
         )[0]
-        dark = np.maximum(dark, soft(cover, 0.5 + 0.09 * high * scale) * 0.9)
+        dark = np.maximum(dark, soft(cover, 0.45 + 0.06 * high * scale))
         under = leaf_cover(blade, x, y, scale)[0]
         dark = np.maximum(dark, 0.5 * soft(under, 0.12 * longest * scale))
-    dim[box] *= 1 - 0.66 * dark
+    dim[box] *= 1 - 0.86 * dark
 
 
 def paint_seedling(

@@ -65,7 +65,7 @@ def _strew_lumps(
         top = base + (dome[part] * rng.uniform(0.35, 0.75) - rng.uniform(0.05, 0.3)) * radius
         wins = mask[part] & (top > height[box])
         height[box][wins] = top[wins]
-        tone[box][wins] = np.exp(rng.normal(0, 0.35 if stones else 0.13))
+        tone[box][wins] = np.exp(rng.normal(0, 0.24 if stones else 0.16))
         where[box][wins] = rng.uniform(0.35, 1.0) if stones else 1.0
     return where
 
@@ -91,23 +91,24 @@ def draw_bed(soil: Soil, shape: tuple[int, int], scale: float, rng: np.random.Ge
     tone = np.ones(shape, np.float32)
     clods = _sizes(
         rng,
-        int(area * (0.006 + 0.012 * soil.cloddy)),
-        1.6 * scale,
-        (7 + 15 * soil.cloddy) * scale,
+        int(area * (0.012 + 0.014 * soil.cloddy)),
+        1.3 * scale,
+        (8 + 18 * soil.cloddy) * scale,
         2.3,
     )
     _strew_lumps(height, tone, rng, clods, stones=False)
     stones = _sizes(rng, int(area * 0.0011 * soil.stony), 1.8 * scale, 15 * scale, 1.9)
     stony = _strew_lumps(height, tone, rng, stones, stones=True)
     crumbs = np.maximum(grain(shape, rng, sigma=0.55 * scale), -0.6) * 0.42 * scale
-    crumbs += np.abs(grain(shape, rng, sigma=1.1 * scale)) * 0.55 * scale
+    crumbs += np.maximum(grain(shape, rng, sigma=1.3 * scale), -0.3) * 0.5 * scale
     crumbs += 0.2 * scale * grain(shape, rng, sigma=0.3 * scale)
     fresh = step(-0.9, 0.9, cloud(shape, rng, size=90 * scale, slope=2.2))
     height += crumbs * (0.45 + 0.75 * fresh) * (1 - 0.88 * (stony > 0))
     height += 0.08 * scale * grain(shape, rng, sigma=0.9) * (stony > 0)
     if soil.cracked:
-        wall = cells(shape, rng, spacing=95 * scale, warp=13 * scale, shrink=3.0)
-        wide = (1.5 + 1.1 * cloud(shape, rng, size=70 * scale, slope=2.2)) * scale * soil.cracked
+        wall = cells(shape, rng, spacing=105 * scale, warp=9 * scale, shrink=2.0)
+        wall += 0.25 * scale * cloud(shape, rng, size=6 * scale, slope=1.5)
+        wide = (1.25 + 0.75 * cloud(shape, rng, size=120 * scale, slope=2.4)) * scale * soil.cracked
         gap = step(1.0, 0.25, wall / np.maximum(wide, 0.05)) * (wide > 0.35 * scale)
         height -= gap * 7 * scale * (1 - 0.7 * (stony > 0.0))
         tone *= 1 - 0.35 * gap
@@ -146,8 +147,8 @@ def _colour(
     return np.asarray(earth, dtype=np.float32)
 
 
-def light_bed(bed: Bed, sun: Sun, scale: float, shade: Layer) -> Layer:
-    """Light a bed: sun with cast shadows (and `shade`, 1 = full sun), sky dimmed in hollows."""
+def light_bed(bed: Bed, sun: Sun, scale: float, shade: Layer, *, sky: float) -> Layer:
+    """Light a bed: sun with cast shadows (and `shade`, 1 = full sun), the sky's share dimmed in hollows."""
     height = soft(bed.height, 0.35)
     lit = lambert(height, sun) / np.float32(sun.towards[2])
     open_sun = cast_shadow(height, sun, reach=26 * scale, penumbra=0.5 * scale) * shade
@@ -155,7 +156,7 @@ def light_bed(bed: Bed, sun: Sun, scale: float, shade: Layer) -> Layer:
     for size, weight in ((1.5, 0.5), (5.0, 0.3), (14.0, 0.2)):
         below = (soft(height, size * scale) - height) / np.float32(size * scale)
         hollow += np.float32(weight) * np.clip(below * 1.5, -0.5, 1.0)
-    sky = np.clip(0.42 * (1 - 0.85 * hollow), 0.08, 0.8)
-    sun_part = (0.72 * lit * open_sun)[..., None] * np.array([1.04, 1.0, 0.93], np.float32)
-    sky_part = sky[..., None] * np.array([0.93, 1.0, 1.13], np.float32)
+    diffuse = np.clip(sky * (1 - 0.85 * hollow), 0.2 * sky, 2 * sky)
+    sun_part = ((1.12 - sky) * lit * open_sun)[..., None] * np.array([1.04, 1.0, 0.93], np.float32)
+    sky_part = diffuse[..., None] * np.array([0.93, 1.0, 1.13], np.float32)
     return np.asarray(bed.colour * (sun_part + sky_part), dtype=np.float32)

@@ -69,7 +69,7 @@ def _cover(piece: Piece, x: Layer, y: Layer, scale: float) -> tuple[Layer, Layer
     if piece.leaf:
         return leaf_cover(blade, x, y, scale)
     c, s = np.float32(math.cos(blade.angle)), np.float32(math.sin(blade.angle))
-    along = (x * c + y * s) / np.float32(blade.length)
+    along = np.asarray((x * c + y * s) / np.float32(blade.length), dtype=np.float32)
     across = y * c - x * s - np.float32(blade.bend * blade.length) * (along - 0.5) ** 2 * 4
     ragged = 0.06 * np.sin(across * 5 / np.float32(blade.half_width) + np.float32(blade.length))
     ends = np.clip(
@@ -165,16 +165,18 @@ def weed_shade(shape: tuple[int, int], scale: float, sun: Sun, rng: np.random.Ge
     y, x = np.mgrid[0 : small[0], 0 : small[1]].astype(np.float32) * np.float32(coarse / scale)
     side = np.array([shape[1], shape[0]]) / scale
     tx, ty, _ = sun.towards
-    root = side / 2 + np.array([tx * side[0] * 0.62, ty * side[1] * 0.62])
-    heart = root - np.array([tx, ty]) * 40
-    lean: Points = np.array([-tx, -ty])
+    flat = math.hypot(tx, ty)
+    heart = side / 2 + np.array([tx, ty]) / flat * min(
+        0.5 * side[0] * flat / abs(tx), 0.5 * side[1] * flat / abs(ty)
+    )
+    lean: Points = np.array([-tx, -ty]) / flat
     dark = np.zeros(small, np.float32)
-    for k in range(9):
-        base = heart + lean * 14 * k + rng.normal(0, 9, 2)
+    for k in range(13):
+        base = heart + lean * 17 * (k - 3) + rng.normal(0, 12, 2)
         blade = Blade(
             angle=float(np.arctan2(lean[1], lean[0]) + rng.normal(0, 0.9)),
-            length=rng.uniform(60, 130),
-            half_width=rng.uniform(12, 24),
+            length=rng.uniform(70, 140),
+            half_width=rng.uniform(11, 20),
             stalk=0.2,
             round_tip=0.6,
             teeth=0.1,
@@ -186,5 +188,5 @@ def weed_shade(shape: tuple[int, int], scale: float, sun: Sun, rng: np.random.Ge
         cover = leaf_cover(blade, x - np.float32(base[0]), y - np.float32(base[1]), scale / coarse)[
             0
         ]
-        dark = np.maximum(dark, soft(cover, (3.0 + 0.5 * k) * scale / coarse))
+        dark = np.maximum(dark, soft(cover, (1.6 + 0.45 * k) * scale / coarse))
     return np.asarray(1 - 0.72 * np.clip(resized(dark, shape), 0, 1), dtype=np.float32)

@@ -134,7 +134,8 @@ def cells(
     bend = warp / shrink
     x = x + bend * cloud((rows, columns), rng, size=step_px, slope=1.8)
     y = y + bend * cloud((rows, columns), rng, size=step_px, slope=1.8)
-    near, _ = cKDTree(seeds * step_px).query(np.column_stack([x.ravel(), y.ravel()]), k=2)
+    found, _ = cKDTree(seeds * step_px).query(np.column_stack([x.ravel(), y.ravel()]), k=2)
+    near = np.asarray(found, dtype=np.float64)
     wall = ((near[:, 1] - near[:, 0]) * 0.5 * shrink).reshape(rows, columns).astype(np.float32)
     return resized(wall, shape)
 
