@@ -298,11 +298,8 @@ def _assembled(
         raise GridWrong(
             "The grid leaves only 1 quadrat in the study area; choose smaller quadrats."
         )
-    members = (
-        [np.flatnonzero(home == k) for k in names]
-        if len(names) < (home >= 0).sum()
-        else [np.array([k]) for k in names]
-    )
+    order = np.argsort(home, kind="stable")
+    members = np.split(order, np.searchsorted(home[order], names))[1:]
     polygons = tuple(shapes[m[0]] if len(m) == 1 else shapely.union_all(shapes[m]) for m in members)
     alone = np.array([len(m) == 1 for m in members])
     centres = cells.centres()[names]
