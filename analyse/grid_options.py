@@ -76,7 +76,8 @@ def default_side(area: float, n: int) -> float:
     Returns
     -------
     float
-        The nearest, in ratio, of 1, 1.2, 1.5, 2, 2.5, 3, 4, 5, 6 and 8 times a power of ten.
+        The nearest, in ratio, of 1, 1.2, 1.5, 2, 2.5, 3, 4, 5, 6 and 8 times a power of ten; the
+        smaller of two that are as near.
 
     Notes
     -----
@@ -91,7 +92,8 @@ def default_side(area: float, n: int) -> float:
     wished = math.sqrt(2 * area / max(n, FEWEST_POINTS))
     power = math.floor(math.log10(wished))
     figures = [s * 10.0**p for p in (power - 1, power, power + 1) for s in SENSIBLE]
-    return float(f"{min(figures, key=lambda side: abs(math.log(side / wished))):.12g}")
+    nearest = min(figures, key=lambda side: (round(abs(math.log(side / wished)), 9), side))
+    return float(f"{nearest:.12g}")
 
 
 def side_in(side: Length, unit: Unit) -> float:

@@ -95,6 +95,9 @@ def test_published_counts_of_cells_and_redwood() -> None:
         (100.0, 0, 5.0),
         (100.0, 8, 5.0),
         (100.0, 9, 5.0),
+        (1e4, 10, 40.0),  # sqrt(2000) lies as near to 40 as to 50
+        (1e2, 10, 4.0),
+        (1e-5, 10**6, 4e-6),
     ],
 )
 def test_default_side(area: float, n: int, side: float) -> None:
