@@ -132,7 +132,7 @@ def draw_photograph(
         axes.imshow(pixels, extent=extent, interpolation="antialiased")
     axes.set(xlim=(-0.5, width - 0.5), ylim=(height - 0.5, -0.5), aspect="equal")
     axes.set_axis_off()
-    to_px: Mapped = _unchanged if sheet.scale is None else sheet.scale.to_px
+    to_px = None if sheet.scale is None else sheet.scale.to_px
     discs = np.column_stack([sheet.spots.centres, sheet.spots.radius])
     quadrats, labels = _draw_grid(axes, findings, to_px, discs, on_photograph=True)
     _draw_lines(axes, rings([sheet.area.polygon]), 1.6, dashes=(5, 3))
@@ -164,7 +164,7 @@ def draw_points(axes: Axes, findings: Findings) -> DrawnPicture:
         raise ValueError(f"{findings.name} has no points to draw")
     _frame(axes, pattern.area.bounds, pattern.unit)
     discs = np.column_stack([pattern.points, np.zeros(len(pattern))])
-    quadrats, labels = _draw_grid(axes, findings, _unchanged, discs, on_photograph=False)
+    quadrats, labels = _draw_grid(axes, findings, None, discs, on_photograph=False)
     axes.add_collection(
         LineCollection(rings([pattern.area]), colors=INK, linewidths=1.4), autolim=False
     )
@@ -261,13 +261,13 @@ def draw_frequencies(axes: Axes, findings: Findings) -> DrawnFrequencies:
 
 
 def _draw_grid(
-    axes: Axes, findings: Findings, mapped: Mapped, discs: Points, *, on_photograph: bool
+    axes: Axes, findings: Findings, mapped: Mapped | None, discs: Points, *, on_photograph: bool
 ) -> tuple[tuple[Points, ...], tuple[tuple[float, float, str], ...]]:
     """Draw the outlines of the quadrats and their counts, clear of the spots where they can be."""
     grid = findings.counts.grid
     if grid is None:
         return (), ()
-    quadrats = [shapely.transform(polygon, mapped) for polygon in grid.polygons]
+    quadrats = [shapely.transform(cell, mapped) if mapped else cell for cell in grid.polygons]
     if on_photograph:
         _draw_lines(axes, rings(quadrats), 0.7)
     else:
@@ -327,18 +327,15 @@ def _draw_values(
 ) -> tuple[tuple[float, float, str], ...]:
     """Write the residuals into the cells, or signs into the notable ones where cells are many."""
     few = len(polygons) < MOST_NUMBERS
+    size = float(np.clip(60.0 / np.sqrt(len(polygons)), 5.0, 8.0)) if few else 6.5
     labels = []
-    for polygon, value, beyond in zip(polygons, values, outlined, strict=True):
-        if not (np.isfinite(value) and (few or beyond)):
-            continue
-        x, y = middle(polygon)
-        text = signed(value) if few else signed(value)[0]
-        pale = abs(value) < 0.72 * RESIDUAL_LIMIT
-        size = float(np.clip(60.0 / np.sqrt(len(polygons)), 5.0, 8.0)) if few else 6.5
+    for k in np.flatnonzero(np.isfinite(values) if few else outlined).tolist():
+        (x, y), text = middle(polygons[k]), signed(values[k])[: None if few else 1]
+        colour = INK if abs(values[k]) < 0.72 * RESIDUAL_LIMIT else "white"
+        weight = "bold" if outlined[k] else "normal"
         axes.text(
-            x, y, text, size=size, ha="center", va="center_baseline",
-            color=INK if pale else "white", weight="bold" if beyond else "normal",
-        )  # fmt: skip
+            x, y, text, size=size, color=colour, weight=weight, ha="center", va="center_baseline"
+        )
         labels.append((x, y, text))
     return tuple(labels)
 
@@ -382,8 +379,3 @@ def _outline(polygon: BaseGeometry) -> Outline:
     """Return a polygon, holes included, as a path that can be filled."""
     parts = [Outline(ring, closed=True) for ring in rings([polygon])]
     return Outline.make_compound_path(*parts)
-
-
-def _unchanged(points: Points) -> Points:
-    """Return points as they are."""
-    return points
