@@ -20,6 +20,7 @@ from analyse.verdict import POWER
 from detect.files import Cell, csv_text
 
 DIGITS = 9
+NORMAL_ABOVE = 30  # degrees of freedom from which the normal approximation serves (common practice)
 QUADRAT_COLUMNS = [
     "photograph",
     "quadrat",
@@ -250,10 +251,11 @@ def _all_rows(each: Findings) -> Iterator[list[Cell]]:
     note = f"df {seen.df}; all quadrats"
     yield ["vmr_by_area", seen.vmr, None, None, None, "X2 / df", seen.q, note]
     yield from _sides("chi2", seen.chi2, seen, _BY_AREA, seen.q, note)
-    d = normal_deviate(seen.chi2, seen.df)
-    p = 2 * float(special.ndtr(-abs(d))) if math.isfinite(d) else math.nan
-    method = "sqrt(2 X2) - sqrt(2 df - 1), two-sided normal p (Fisher 1925)"
-    yield ["normal_deviate", d, None, None, p, method, seen.q, note]
+    if seen.df > NORMAL_ABOVE and math.isfinite(seen.chi2):
+        d = normal_deviate(seen.chi2, seen.df)
+        p = 2 * float(special.ndtr(-abs(d)))
+        method = "sqrt(2 X2) - sqrt(2 df - 1), two-sided normal p (Fisher 1925)"
+        yield ["normal_deviate", d, None, None, p, method, seen.q, note]
     low, high = each.detectable
     method = "VMR at or beyond which a departure would have been seen (scaled chi-square)"
     note = f"with {100 * POWER:.0f} % power, two-sided at {100 * each.settings['level']:g} %"

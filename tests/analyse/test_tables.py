@@ -127,6 +127,13 @@ def test_statistics_of_a_published_series() -> None:
     assert rows["poisson_fit"]["notes"].startswith("df 11; classes 0, 1, 2,")
 
 
+def test_the_normal_approximation_waits_for_many_quadrats() -> None:
+    for q, there in ((31, False), (32, True)):
+        found = [analyse_counts(CountTable("bed", np.arange(q)))]
+        rows = {row["statistic"] for row in rows_of(tables.tests_csv(found))}
+        assert ("normal_deviate" in rows) == there
+
+
 def test_nothing_counted_leaves_cells_empty_not_wrong() -> None:
     found = [analyse_points([], DISH, name="empty.jpg")]
     line = rows_of(tables.summary_csv(found))[0]
