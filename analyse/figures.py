@@ -19,29 +19,8 @@ from matplotlib.ticker import MaxNLocator
 from numpy.typing import NDArray
 from shapely.geometry.base import BaseGeometry
 
+from analyse import look
 from analyse.drawn import DrawnFrequencies, DrawnPicture, DrawnResiduals
-from analyse.look import (
-    COUNTED,
-    DOUBTFUL_COLOUR,
-    EXPECTED,
-    HALO,
-    INK,
-    MOST_BOXES,
-    MOST_NUMBERS,
-    MOST_SINGLE_COUNTS,
-    MOST_VECTOR_SPOTS,
-    NOTABLE,
-    OBSERVED,
-    PLACED,
-    RESIDUAL_LIMIT,
-    RESIDUAL_STEPS,
-    RULE,
-    SMALLEST_MARK,
-    SOFT,
-    STRUCK,
-    STYLE,
-    UNKNOWN,
-)
 from analyse.marks import (
     CIRCLE,
     CROSS,
@@ -66,15 +45,15 @@ if TYPE_CHECKING:
 
 Mapped = Callable[[Points], Points]
 
-RESIDUAL_COLOURS = LinearSegmentedColormap.from_list("fewer_more", RESIDUAL_STEPS).with_extremes(
-    bad=UNKNOWN
-)
+RESIDUAL_COLOURS = LinearSegmentedColormap.from_list(
+    "fewer_more", look.RESIDUAL_STEPS
+).with_extremes(bad=look.UNKNOWN)
 
 
 def photograph_figure(findings: Findings, sheet: Sheet) -> Figure:
     """Return what lies over a photograph in a report, on a transparent ground of its shape."""
     width, height = sheet.photograph.width, sheet.photograph.height
-    with mpl.rc_context(STYLE):
+    with mpl.rc_context(look.STYLE):
         figure = Figure(photograph_inches(width, height))
         draw_photograph(figure.add_axes((0, 0, 1, 1)), findings, sheet)
     return figure
@@ -91,7 +70,7 @@ def plain_figure(
     draw: Callable[[Axes, Findings], object], findings: Findings, *, width: float, height: float
 ) -> Figure:
     """Return a figure, in inches, with one of the drawings that need no photograph."""
-    with mpl.rc_context(STYLE):
+    with mpl.rc_context(look.STYLE):
         figure = Figure((width, height), layout="constrained")
         draw(figure.subplots(), findings)
     return figure
@@ -100,7 +79,7 @@ def plain_figure(
 def svg_text(figure: Figure) -> str:
     """Return a figure as SVG under our style, without its date and the like."""
     text, nothing = io.StringIO(), dict.fromkeys(("Date", "Creator", "Format", "Type"))
-    with mpl.rc_context(STYLE):
+    with mpl.rc_context(look.STYLE):
         figure.savefig(text, format="svg", metadata=nothing, transparent=True, dpi=110)
     return text.getvalue()
 
@@ -166,7 +145,7 @@ def draw_points(axes: Axes, findings: Findings) -> DrawnPicture:
     discs = np.column_stack([pattern.points, np.zeros(len(pattern))])
     quadrats, labels = _draw_grid(axes, findings, None, discs, on_photograph=False)
     axes.add_collection(
-        LineCollection(rings([pattern.area]), colors=INK, linewidths=1.4), autolim=False
+        LineCollection(rings([pattern.area]), colors=look.INK, linewidths=1.4), autolim=False
     )
     size = float(np.clip(6.0 - len(pattern) / 400.0, 2.0, 6.0))
     axes.plot(*pattern.points.T, "o", ms=size, mfc="#1f8a80", mec="white", mew=0.5)
@@ -196,15 +175,15 @@ def draw_residuals(axes: Axes, findings: Findings) -> DrawnResiduals:
     values = np.asarray(findings.residuals, dtype=np.float64)
     polygons = cells(findings)
     paths = [_outline(polygon) for polygon in polygons]
-    norm = Normalize(-RESIDUAL_LIMIT, RESIDUAL_LIMIT)
+    norm = Normalize(-look.RESIDUAL_LIMIT, look.RESIDUAL_LIMIT)
     filled = PathCollection(
-        paths, cmap=RESIDUAL_COLOURS, norm=norm, edgecolors=RULE, linewidths=0.6
+        paths, cmap=RESIDUAL_COLOURS, norm=norm, edgecolors=look.RULE, linewidths=0.6
     )
     filled.set_array(np.ma.masked_invalid(values))
     axes.add_collection(filled, autolim=False)
-    outlined = np.abs(np.nan_to_num(values)) >= NOTABLE
+    outlined = np.abs(np.nan_to_num(values)) >= look.NOTABLE
     notable = [path for path, beyond in zip(paths, outlined, strict=True) if beyond]
-    rim = PathCollection(notable, facecolors="none", edgecolors=INK, linewidths=1.5, zorder=2)
+    rim = PathCollection(notable, facecolors="none", edgecolors=look.INK, linewidths=1.5, zorder=2)
     axes.add_collection(rim, autolim=False)
     _frame(axes, shapely.GeometryCollection(polygons).bounds, findings.unit)
     axes.set_anchor("S")
@@ -235,13 +214,15 @@ def draw_frequencies(axes: Axes, findings: Findings) -> DrawnFrequencies:
     fit = findings.poisson
     if fit is None:
         raise ValueError(f"{findings.name} has no frequencies to draw")
-    single = len(fit.frequencies) <= MOST_SINGLE_COUNTS
+    single = len(fit.frequencies) <= look.MOST_SINGLE_COUNTS
     labels = tuple(map(str, range(len(fit.frequencies)))) if single else fit.labels
     observed = np.asarray(fit.frequencies if single else fit.observed, dtype=np.float64)
     expected = np.asarray(fit.poisson if single else fit.expected, dtype=np.float64)
     at = np.arange(len(labels))
-    bars = axes.bar(at, observed, width=0.8, color=OBSERVED, edgecolor=INK, lw=0.6, label="seen")
-    line = axes.plot(at, expected, "-", color=EXPECTED, lw=1.4, marker="o", ms=4.5, mfc="white",
+    bars = axes.bar(
+        at, observed, width=0.8, color=look.OBSERVED, edgecolor=look.INK, lw=0.6, label="seen"
+    )
+    line = axes.plot(at, expected, "-", color=look.EXPECTED, lw=1.4, marker="o", ms=4.5, mfc="white",
               mew=1.3, label="expected at random")  # fmt: skip
     every = int(np.ceil(len(labels) / 12))
     axes.set_xticks(at[::every], labels[::every])
@@ -272,7 +253,7 @@ def _draw_grid(
         _draw_lines(axes, rings(quadrats), 0.7)
     else:
         axes.add_collection(
-            LineCollection(rings(quadrats), colors=RULE, linewidths=0.8), autolim=False
+            LineCollection(rings(quadrats), colors=look.RULE, linewidths=0.8), autolim=False
         )
     per_unit = _points_per_unit(axes)
     sizes = np.clip(0.2 * np.sqrt([cell.area for cell in quadrats]) * per_unit, 4.5, 9.5)
@@ -282,11 +263,11 @@ def _draw_grid(
         em = float(size / per_unit)
         x, y = label_place(cell, (0.66 * len(text) + 0.4) * em, 1.3 * em, spots=discs)
         labels.append((x, y, text))
-        ground = {"boxstyle": "square,pad=0.16", "fc": HALO, "alpha": 0.66, "lw": 0}
+        ground = {"boxstyle": "square,pad=0.16", "fc": look.HALO, "alpha": 0.66, "lw": 0}
         axes.text(
             x, y, text, size=size, ha="center", va="center_baseline",
-            color="white" if on_photograph else SOFT,
-            bbox=ground if on_photograph and len(quadrats) <= MOST_BOXES else None,
+            color="white" if on_photograph else look.SOFT,
+            bbox=ground if on_photograph and len(quadrats) <= look.MOST_BOXES else None,
         )  # fmt: skip
     return tuple(shapely.get_coordinates(cell) for cell in quadrats), tuple(labels)
 
@@ -294,25 +275,26 @@ def _draw_grid(
 def _draw_spots(axes: Axes, sheet: Sheet) -> dict[str, Points]:
     """Draw every spot with the sign of its standing, origin and doubt."""
     spots = sheet.spots
-    radii = np.maximum(spots.radius, SMALLEST_MARK / _points_per_unit(axes))
+    radii = np.maximum(spots.radius, look.SMALLEST_MARK / _points_per_unit(axes))
     doubtful = spots.counted & spots.found & (spots.doubt > DOUBTFUL)
     kinds = {
-        "counted": (spots.counted & spots.found & ~doubtful, COUNTED, CIRCLE),
-        "doubtful": (doubtful, DOUBTFUL_COLOUR, CIRCLE),
-        "placed": (spots.counted & ~spots.found, PLACED, DIAMOND),
-        "struck": (~spots.counted, STRUCK, CROSS),
+        "counted": (spots.counted & spots.found & ~doubtful, look.COUNTED, CIRCLE),
+        "doubtful": (doubtful, look.DOUBTFUL_COLOUR, CIRCLE),
+        "placed": (spots.counted & ~spots.found, look.PLACED, DIAMOND),
+        "struck": (~spots.counted, look.STRUCK, CROSS),
     }
     drawn = {}
     for name, (chosen, colour, shape) in kinds.items():
         drawn[name] = spots.centres[chosen]
         if chosen.any():
             path = Outline(*stamped(shape, spots.centres[chosen], radii[chosen]))
-            halo = withStroke(linewidth=3.0, foreground=HALO, alpha=0.55)
-            patch = PathPatch(path, fc="none", ec=colour, lw=1.4, path_effects=[halo], label=name)
-            patch.set_rasterized(int(chosen.sum()) > MOST_VECTOR_SPOTS)
+            few = int(chosen.sum()) <= look.MOST_VECTOR_SPOTS
+            halo = [withStroke(linewidth=3.0, foreground=look.HALO, alpha=0.55)] if few else None
+            patch = PathPatch(path, fc="none", ec=colour, lw=1.4, path_effects=halo, label=name)
+            patch.set_rasterized(not few)
             axes.add_patch(patch)
     beside = drawn["doubtful"] + (radii[doubtful] * 0.85)[:, None] * [1.0, -1.0]
-    axes.plot(*beside.T, "s", ms=4.5, mfc=DOUBTFUL_COLOUR, mec=HALO, mew=0.8)
+    axes.plot(*beside.T, "s", ms=4.5, mfc=look.DOUBTFUL_COLOUR, mec=look.HALO, mew=0.8)
     return drawn
 
 
@@ -326,12 +308,12 @@ def _draw_values(
     axes: Axes, polygons: Sequence[BaseGeometry], values: Points, outlined: NDArray[np.bool_]
 ) -> tuple[tuple[float, float, str], ...]:
     """Write the residuals into the cells, or signs into the notable ones where cells are many."""
-    few = len(polygons) < MOST_NUMBERS
+    few = len(polygons) < look.MOST_NUMBERS
     size = float(np.clip(60.0 / np.sqrt(len(polygons)), 5.0, 8.0)) if few else 6.5
     labels = []
     for k in np.flatnonzero(np.isfinite(values) if few else outlined).tolist():
         (x, y), text = middle(polygons[k]), signed(values[k])[: None if few else 1]
-        colour = INK if abs(values[k]) < 0.72 * RESIDUAL_LIMIT else "white"
+        colour = look.INK if abs(values[k]) < 0.72 * look.RESIDUAL_LIMIT else "white"
         weight = "bold" if outlined[k] else "normal"
         axes.text(
             x, y, text, size=size, color=colour, weight=weight, ha="center", va="center_baseline"
@@ -356,7 +338,7 @@ def _draw_lines(
     """Draw white lines with a dark halo, to be seen on any photograph."""
     style: Any = (0, dashes) if dashes else "solid"
     axes.add_collection(
-        LineCollection(lines, colors=HALO, linewidths=width + 1.3, alpha=0.5), autolim=False
+        LineCollection(lines, colors=look.HALO, linewidths=width + 1.3, alpha=0.5), autolim=False
     )
     axes.add_collection(
         LineCollection(lines, colors="white", linewidths=width, linestyles=[style], alpha=0.9),

@@ -316,7 +316,7 @@ def test_thousands_of_spots_stay_small():
     spots = sheet.spots
     sheet = replace(sheet, spots=replace(spots, radius=np.full(len(spots), 1.0)))
     findings = findings_of(sheet, side="60px")
-    assert len(svg_bytes(photograph_figure(findings, sheet))) < 1_800_000
+    assert len(svg_bytes(photograph_figure(findings, sheet))) < 1_300_000
 
 
 def test_sectors_of_a_dish_are_drawn():
