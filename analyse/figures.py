@@ -61,9 +61,20 @@ def photograph_figure(findings: Findings, sheet: Sheet) -> Figure:
 
 def residual_figure(findings: Findings) -> Figure:
     """Return the map of residuals as a figure of its own, as tall as the map needs."""
-    x0, y0, x1, y1 = shapely.total_bounds(cells(findings))
-    height = float(np.clip(4.0 * (y1 - y0) / (x1 - x0), 1.6, 4.4)) + 1.2
+    height = _height_of(findings, 4.0, (1.6, 4.4)) + 1.2
     return plain_figure(draw_residuals, findings, width=4.8, height=height)
+
+
+def points_figure(findings: Findings) -> Figure:
+    """Return the map of points as a figure of its own, as tall as the map needs."""
+    height = _height_of(findings, 6.8, (2.0, 6.2)) + 0.6
+    return plain_figure(draw_points, findings, width=7.6, height=height)
+
+
+def _height_of(findings: Findings, width: float, limits: tuple[float, float]) -> float:
+    """Return how tall a map of the quadrats is at a width."""
+    x0, y0, x1, y1 = shapely.total_bounds(cells(findings))
+    return float(np.clip(width * (y1 - y0) / (x1 - x0), *limits))
 
 
 def plain_figure(

@@ -15,9 +15,9 @@ from markupsafe import Markup
 from analyse.embedding import data_uri, photograph_jpeg, svg_bytes
 from analyse.figures import (
     draw_frequencies,
-    draw_points,
     photograph_figure,
     plain_figure,
+    points_figure,
     residual_figure,
 )
 from analyse.findings import Findings
@@ -98,7 +98,7 @@ def page_figures(page: ReportPage) -> dict[str, bytes]:
         figures["photograph"] = photograph_jpeg(photograph)
         figures["marks"] = svg_bytes(photograph_figure(findings, sheet))
     elif findings.pattern is not None:
-        figures["points"] = svg_bytes(plain_figure(draw_points, findings, width=7.6, height=6.2))
+        figures["points"] = svg_bytes(points_figure(findings))
     if findings.n > 0 and (findings.counts.grid is not None or findings.counts.row is not None):
         figures["residuals"] = svg_bytes(residual_figure(findings))
     if findings.n > 0 and findings.poisson is not None:

@@ -236,8 +236,10 @@ def poisson_words(findings: Findings) -> str:
     fit = findings.poisson
     if fit is None or not math.isfinite(fit.p):
         return "Too few classes to test the fit of the Poisson law."
+    few = len(fit.labels) <= _CLASSES_READ
+    classes = f"the classes {', '.join(fit.labels)}" if few else f"{len(fit.labels)} classes"
     return (
-        f"Fit of the Poisson law on the classes {', '.join(fit.labels)}: chi-square"
+        f"Fit of the Poisson law on {classes}: chi-square"
         f" {number(fit.chi2)}, {several(fit.df, 'degree')} of freedom, {p_text(fit.p)}."
     )
 

@@ -410,6 +410,11 @@ def test_words_for_what_is_missing():
         r"Frequencies of counts in \d+ classes, seen and expected at random\.",
         frequencies_alt(many),
     )
+    fit = many.poisson
+    assert fit is not None
+    assert poisson_words(many).startswith(
+        f"Fit of the Poisson law on {len(fit.classes)} classes: chi-square {number(fit.chi2)}, "
+    )
 
 
 def test_sparse_spots_are_given_per_square_metre_too():
