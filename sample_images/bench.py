@@ -48,7 +48,7 @@ def _cloth(x_mm: Layer, y_mm: Layer, sun: Sun, px_per_mm: float, rng: np.random.
     warp = np.sqrt(np.clip(1 - (fu * 2) ** 2, 0, 1)) * (0.6 + 0.4 * np.cos(np.pi * fv))
     weft = np.sqrt(np.clip(1 - (fv * 2) ** 2, 0, 1)) * (0.6 + 0.4 * np.cos(np.pi * fu))
     thread = np.where(over == 1, warp, weft).astype(np.float32)
-    slubs = np.exp(0.14 * cloud(shape, rng, size=3 * px_per_mm, slope=1.3))
+    slubs = np.exp(0.07 * cloud(shape, rng, size=3 * px_per_mm, slope=1.3))
     fold = 14 * px_per_mm * 0.06 * cloud(shape, rng, size=50 * px_per_mm, slope=3.0)
     lit = lambert(fold.astype(np.float32), sun) / np.float32(sun.towards[2])
     fluff = 1 + 0.06 * grain(shape, rng, sigma=0.9)

@@ -37,9 +37,11 @@ def _dish_camera(
     )  # fmt: skip
 
 
-def _plot_camera(tilt: float, towards: float, roll: float, aim: tuple[float, float]) -> Camera:
+def _plot_camera(
+    tilt: float, towards: float, roll: float, aim: tuple[float, float], *, scale: float = 1.5
+) -> Camera:
     return Camera(
-        width=1720, height=1320, px_per_mm=1.5, distance_mm=1900, tilt_deg=tilt, towards_deg=towards, roll_deg=roll,
+        width=1720, height=1320, px_per_mm=scale, distance_mm=1900, tilt_deg=tilt, towards_deg=towards, roll_deg=roll,
         aim_x=aim[0], aim_y=aim[1],
     )  # fmt: skip
 
@@ -71,7 +73,7 @@ def dishes() -> dict[str, Dish]:
             sun=Sun(from_deg=250, elevation_deg=52), exposure=Exposure(gain=1.12, tint=(1.0, 1.0, 1.02)),
             clutter=Clutter(label="A5", second="14/6", glare="tubes", glare_at=(10, 8), glare_level=0.24, drops=60),
             plan=Plan(kind="few", radii_mm=sizes(3, 10, median=1.7, spread=0.3, least=0.9, most=2.5)),
-            agar=(0.085, 0.052, 0.018), clear=(0.44, 0.31, 0.12),
+            agar=(0.095, 0.052, 0.014), clear=(0.62, 0.37, 0.10),
         ),
         "dish_04": Dish(
             seed=104, bench="green mat", camera=_dish_camera(3.0, 310, -2, (-12, 3)),
@@ -110,7 +112,7 @@ def plots() -> dict[str, Plot]:
                       radii_mm=sizes(21, 92, median=9.5, spread=0.22, least=6.5, most=15)),
         ),
         "plot_02": Plot(
-            seed=202, camera=_plot_camera(5, 250, -3, (0, 0)), sun=Sun(from_deg=310, elevation_deg=50),
+            seed=202, camera=_plot_camera(5, 250, -3, (0, 0), scale=1.46), sun=Sun(from_deg=310, elevation_deg=50),
             exposure=Exposure(gain=1.7, slant_deg=300, tint=(0.98, 1.0, 1.03)),
             soil=Soil(colour=(0.105, 0.078, 0.056), cloddy=0.9, stony=0.5, damp=0.7), litter=Litter(straws=25),
             plan=Plan(kind="random", nearest=1.3, radii_mm=sizes(22, 66, median=11, spread=0.24, least=7, most=17)),
@@ -124,7 +126,7 @@ def plots() -> dict[str, Plot]:
             plan=Plan(kind="even", radii_mm=sizes(23, 78, median=10.5, spread=0.2, least=7, most=15)),
         ),
         "plot_04": Plot(
-            seed=204, camera=_plot_camera(3, 10, 5, (0, 0)), sun=Sun(from_deg=260, elevation_deg=56),
+            seed=204, camera=_plot_camera(3, 10, 4, (0, 0), scale=1.44), sun=Sun(from_deg=260, elevation_deg=56),
             exposure=Exposure(gain=1.6), soil=Soil(cloddy=0.35, damp=0.5, mossy=0.5),
             litter=Litter(straws=260, long_mm=60),
             plan=Plan(kind="random", nearest=1.3, radii_mm=sizes(24, 116, median=8.2, spread=0.2, least=6, most=12)),
