@@ -42,7 +42,8 @@ class Failure:
     @classmethod
     def of(cls, name: str, trouble: Exception) -> Failure:
         """Return the failure that a trouble means; what is no `PhotographFailed` is the request."""
-        return cls(name, str(trouble), not isinstance(trouble, PhotographFailed))
+        reason = str(trouble).removeprefix(f"{name}: ")
+        return cls(name, reason, not isinstance(trouble, PhotographFailed))
 
 
 @dataclass(frozen=True, slots=True)
@@ -74,8 +75,10 @@ class Each(Generic[Item, Result]):
             return Failure(self.name(item), sentence)
 
 
-def default_workers(n_photographs: int) -> int:
-    """Return how many processes suit this computer: its cores, 8 at most, no idle ones."""
+def workers_for(n_photographs: int, wanted: int | None = None) -> int:
+    """Return the processes wanted, or what suits this computer: its cores, 8 at most, none idle."""
+    if wanted is not None:
+        return wanted
     allowed = getattr(os, "sched_getaffinity", None)
     cores = len(allowed(0)) if allowed else (os.cpu_count() or 1)
     return max(1, min(cores, n_photographs, _MOST_WORKERS))
@@ -85,7 +88,7 @@ def do_each(
     each: Each[Item, Result],
     items: Sequence[Item],
     *,
-    workers: int | None = None,
+    workers: int = 1,
     progress: Progress | None = None,
 ) -> list[Result | Failure]:
     """Do each photograph, on several cores if asked.
@@ -96,8 +99,9 @@ def do_each(
         What to do with one.
     items : sequence
         What describes each photograph; sent to other processes.
-    workers : int, optional
-        Number of processes, at least 1; by default as many as suit this computer.
+    workers : int
+        Number of processes, at least 1; with more than one, the program that calls must be
+        importable (its own start behind ``if __name__ == "__main__"``).
     progress : callable, optional
         Called with (done, total) whenever one is done.
 
@@ -111,11 +115,10 @@ def do_each(
     RequestWrong
         If `workers` is less than 1, or the system ended a process (mostly for want of memory).
     """
-    if workers is not None and workers < 1:
+    if workers < 1:
         raise RequestWrong(f"--workers must be 1 or more, not {workers}.")
-    workers = min(workers or default_workers(len(items)), max(1, len(items)))
-    if workers > 1:
-        return _on_many(each, items, workers, progress)
+    if workers > 1 and len(items) > 1:
+        return _on_many(each, items, min(workers, len(items)), progress)
     results: list[Result | Failure] = []
     for item in items:
         results.append(each(item))
@@ -146,7 +149,7 @@ def _on_many(
 def _begin(workers: int) -> None:
     """Make a fresh process share the cores, and leave an interruption to its parent."""
     signal.signal(signal.SIGINT, signal.SIG_IGN)
-    cv2.setNumThreads(max(1, default_workers(_MOST_WORKERS) // workers))
+    cv2.setNumThreads(max(1, workers_for(_MOST_WORKERS) // workers))
 
 
 def _tell(progress: Progress | None, done: int, total: int) -> None:

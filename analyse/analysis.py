@@ -1,0 +1,138 @@
+"""One sheet or table analysed and its page drawn; and the files that come of many of them."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass, field
+from pathlib import Path
+
+from analyse.count_table import CountTable
+from analyse.findings import Findings, analyse_counts, analyse_pattern
+from analyse.grid_options import GridOptions
+from analyse.pattern import Pattern, pattern_from_sheet
+from analyse.plan import Trial
+from analyse.report import RenderedPage, render_page, write_report
+from analyse.tables import quadrats_csv, summary_csv, tests_csv
+from detect.amendments import Amendment
+from detect.batch import Failure
+from detect.files import write_text_atomically
+from detect.photograph import Photograph
+from detect.sheet import Sheet, current_state
+
+
+@dataclass(frozen=True, slots=True)
+class Analysed:
+    """What one photograph or table gave.
+
+    Parameters
+    ----------
+    findings : Findings
+        The numbers.
+    page : RenderedPage
+        Its part of the report, drawn.
+    factors : dict of str
+        Treatment, block, dilution.
+    """
+
+    findings: Findings
+    page: RenderedPage
+    factors: dict[str, str] = field(default_factory=dict)
+
+
+def analyse_sheet(
+    sheet: Sheet,
+    amendments: Sequence[Amendment],
+    photograph: Photograph | None,
+    *,
+    grid: GridOptions,
+    trial: Trial,
+    factors: dict[str, str] | None = None,
+) -> Analysed:
+    """Analyse the spots of a sheet as people left them, and draw its page.
+
+    Parameters
+    ----------
+    sheet : Sheet
+        As found.
+    amendments : sequence of Amendment
+        Hand edits.
+    photograph : Photograph or None
+        For the pictures; None where it is not at hand.
+    grid : GridOptions
+        How to lay the quadrats.
+    trial : Trial
+        Seed and number of simulations.
+    factors : dict of str, optional
+        Treatment, block, dilution.
+
+    Returns
+    -------
+    Analysed
+    """
+    pattern = pattern_from_sheet(sheet, amendments)
+    findings = analyse_pattern(pattern, grid, seed=trial.seed, simulations=trial.simulations)
+    state = current_state(sheet, amendments)
+    return Analysed(
+        findings, render_page(findings, state, photograph, factors=factors), factors or {}
+    )
+
+
+def analyse_table(table: Pattern | CountTable, *, grid: GridOptions, trial: Trial) -> Analysed:
+    """Analyse a table of points or of counts, and draw its page.
+
+    Parameters
+    ----------
+    table : Pattern or CountTable
+        Points in their area, or counts.
+    grid : GridOptions
+        How to lay the quadrats over points.
+    trial : Trial
+        Seed and number of simulations.
+
+    Returns
+    -------
+    Analysed
+    """
+    chance = {"seed": trial.seed, "simulations": trial.simulations}
+    if isinstance(table, CountTable):
+        findings = analyse_counts(table, **chance)
+    else:
+        findings = analyse_pattern(table, grid, **chance)
+    return Analysed(findings, render_page(findings))
+
+
+def write_results(
+    results: Sequence[Analysed], failures: Sequence[Failure], folder: Path, trial: Trial
+) -> Path:
+    """Write quadrats.csv, summary.csv, tests.csv and report.html.
+
+    Parameters
+    ----------
+    results : sequence of Analysed
+        One per photograph or table, in order.
+    failures : sequence of Failure
+        Photographs that could not be done, which the report lists.
+    folder : Path
+        Where to; it exists.
+    trial : Trial
+        Title and seed.
+
+    Returns
+    -------
+    Path
+        The report.
+    """
+    findings = [result.findings for result in results]
+    factors = {result.findings.name: result.factors for result in results}
+    write_text_atomically(folder / "quadrats.csv", quadrats_csv(findings))
+    write_text_atomically(folder / "summary.csv", summary_csv(findings, factors=factors))
+    write_text_atomically(folder / "tests.csv", tests_csv(findings))
+    report = folder / "report.html"
+    write_report(
+        [result.page for result in results],
+        report,
+        title=trial.title,
+        failures=[(failure.name, failure.reason) for failure in failures],
+        seed=trial.seed,
+    )
+    return report

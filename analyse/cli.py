@@ -1,0 +1,359 @@
+"""The one command line: `strewn detect`, `analyse`, `survey` and `score`."""
+
+from __future__ import annotations
+
+import errno
+import sys
+from pathlib import Path
+from typing import TYPE_CHECKING, Annotated, Any
+
+import typer
+from typer.core import TyperGroup
+
+from analyse.errors import AnalyseError
+from analyse.plan import RECIPE_NAME, Plan, Trial, grid_from, plan_from
+from detect import commands
+from detect.batch import Failure, do_each, workers_for
+from detect.command_options import (
+    OUT,
+    AreaOption,
+    ColourOption,
+    CornersOption,
+    DiameterOption,
+    DishOption,
+    HighestDoubtOption,
+    InsetOption,
+    KeepOption,
+    KindOption,
+    LineLengthOption,
+    LineOption,
+    MmPerPixelOption,
+    OutOption,
+    PlotOption,
+    PolarityOption,
+    WorkersOption,
+    spelled,
+    with_units,
+)
+from detect.errors import DetectError, OptionWrong, PhotographFailed, RequestWrong
+from detect.files import make_folder
+from detect.gather import gather_photographs
+from detect.requests import tool_version
+from detect.terminal import exit_if_failed, progress_on_terminal, show_failures, show_path
+
+if TYPE_CHECKING:
+    from collections.abc import Sequence
+
+    from analyse.analysis import Analysed
+    from analyse.recipe import Recipe
+
+GRID, CHANCE, TABLES, RECIPE = "Quadrats", "Simulation", "Tables", "Recipe"
+
+
+class PlainGroup(TyperGroup):
+    """Commands whose troubles are told in a sentence; only a bug keeps its traceback."""
+
+    def invoke(self, ctx: Any) -> Any:
+        """Run a command, and end with 2 for a wrong request, 1 for a failed photograph."""
+        try:
+            return super().invoke(ctx)
+        except PhotographFailed as trouble:
+            _end(str(trouble), 1)
+        except (DetectError, AnalyseError) as trouble:
+            _end(str(trouble), 2)
+        except MemoryError:
+            _end("This does not fit into memory; use fewer --workers or smaller photographs.", 1)
+        except OSError as trouble:
+            if trouble.errno != errno.ENOSPC:
+                raise
+            _end("The disk is full; make room, or name another folder for --out.", 2)
+        except KeyboardInterrupt:
+            _end("Interrupted. What was finished is kept.", 130)
+
+
+def _end(sentence: str, code: int) -> None:
+    """Say what is wrong and end the command."""
+    typer.echo(f"Error: {sentence}" if code != 130 else sentence, err=True)
+    raise typer.Exit(code)
+
+
+app = typer.Typer(
+    cls=PlainGroup,
+    no_args_is_help=True,
+    add_completion=False,
+    pretty_exceptions_enable=False,
+    help="From photographs of dishes, plots and leaves to checked counts and a verdict on whether"
+    " the spots lie at random.",
+)
+app.command("detect")(commands.detect)
+
+
+def _show_version(wanted: bool) -> None:
+    """Print the version and end."""
+    if wanted:
+        typer.echo(f"strewn {tool_version()}")
+        raise typer.Exit
+
+
+@app.callback()
+def _whole(
+    version: Annotated[
+        bool,
+        typer.Option("--version", help="Show the version.", callback=_show_version, is_eager=True),
+    ] = False,
+) -> None:
+    """Take the options that stand before a command."""
+
+
+QuadratOption = Annotated[
+    str | None,
+    typer.Option(
+        "--quadrat",
+        help="Side of square quadrats, such as 10mm; by rule, about 2 spots in each.",
+        metavar="LENGTH",
+        show_default=False,
+        rich_help_panel=GRID,
+    ),
+]
+GridOption = Annotated[
+    str | None,
+    typer.Option(
+        "--grid",
+        help="Divide the area's bounding box into rows x columns, such as 5x5.",
+        metavar="RxC",
+        show_default=False,
+        rich_help_panel=GRID,
+    ),
+]
+RingsOption = Annotated[
+    str | None,
+    typer.Option(
+        "--rings",
+        help="Divide a dish into rings x sectors of equal area, such as 3x8.",
+        metavar="RxS",
+        show_default=False,
+        rich_help_panel=GRID,
+    ),
+]
+SeedOption = Annotated[
+    int | None,
+    typer.Option(
+        "--seed",
+        help="Seed of the simulations: the same seed gives the same results."
+        f" Default: {Trial().seed}, or the recipe's.",
+        metavar="N",
+        min=0,
+        show_default=False,
+        rich_help_panel=CHANCE,
+    ),
+]
+SimulationsOption = Annotated[
+    int | None,
+    typer.Option(
+        "--simulations",
+        help="Random patterns that each photograph is compared with."
+        f" Default: {Trial().simulations}, or the recipe's.",
+        metavar="N",
+        min=1,
+        show_default=False,
+        rich_help_panel=CHANCE,
+    ),
+]
+
+
+@app.command("analyse")
+def analyse(
+    inputs: Annotated[
+        list[Path] | None,
+        typer.Argument(
+            help="Sheets, folders of sheets, or tables of points with the columns x and y.",
+            metavar="SHEET|DIR|CSV...",
+            show_default=False,
+        ),
+    ] = None,
+    counts: Annotated[
+        list[Path] | None,
+        typer.Option(
+            "--counts",
+            help="A table of counts: a column count, or a bare rectangle of whole numbers.",
+            metavar="CSV",
+            show_default=False,
+            rich_help_panel=TABLES,
+        ),
+    ] = None,
+    area: Annotated[
+        str | None,
+        typer.Option(
+            "--area",
+            help="Study area of the tables of points: a rectangle, or a GeoJSON file.",
+            metavar="X0,Y0,X1,Y1|FILE",
+            show_default=False,
+            rich_help_panel=TABLES,
+        ),
+    ] = None,
+    unit: Annotated[
+        str | None,
+        typer.Option(
+            "--unit",
+            help="Unit of the tables of points and of --area. Default: mm.",
+            metavar="mm|cm|m",
+            show_default=False,
+            rich_help_panel=TABLES,
+        ),
+    ] = None,
+    quadrat: QuadratOption = None,
+    grid: GridOption = None,
+    rings: RingsOption = None,
+    seed: SeedOption = None,
+    simulations: SimulationsOption = None,
+    out: OutOption = OUT,
+) -> None:
+    """Test whether spots lie at random, clumped or evenly, in quadrats."""
+    from analyse.inputs import ANALYSE, Given, gather_inputs
+
+    laid = grid_from({"quadrat": quadrat, "grid": grid, "rings": rings}, named=spelled)
+    trial = _with_chance(Trial(), seed, simulations)
+    tasks = gather_inputs(Given(inputs or [], counts or [], area, unit, laid, trial))
+    make_folder(out)
+    with progress_on_terminal("Analysing", len(tasks)) as progress:
+        results = do_each(ANALYSE, tasks, progress=progress)
+    _finish(results, out, trial)
+
+
+@app.command("survey")
+def survey(
+    folder: Annotated[
+        Path,
+        typer.Argument(help="Folder of photographs.", metavar="FOLDER", show_default=False),
+    ],
+    recipe: Annotated[
+        Path | None,
+        typer.Option(
+            "--recipe",
+            help="How each photograph is treated, instead of the options below."
+            f" Default: {RECIPE_NAME} in the folder, if there is one.",
+            metavar="FILE",
+            show_default=False,
+            rich_help_panel=RECIPE,
+        ),
+    ] = None,
+    kind: KindOption = None,
+    diameter: DiameterOption = None,
+    colour: ColourOption = None,
+    polarity: PolarityOption = None,
+    highest_doubt: HighestDoubtOption = None,
+    mm_per_pixel: MmPerPixelOption = None,
+    dish_mm: DishOption = None,
+    line: LineOption = None,
+    line_mm: LineLengthOption = None,
+    corners: CornersOption = None,
+    plot: PlotOption = None,
+    area: AreaOption = None,
+    inset: InsetOption = None,
+    quadrat: QuadratOption = None,
+    grid: GridOption = None,
+    rings: RingsOption = None,
+    seed: SeedOption = None,
+    simulations: SimulationsOption = None,
+    out: OutOption = OUT,
+    keep_amendments: KeepOption = False,
+    workers: WorkersOption = None,
+) -> None:
+    """Detect and test all photographs of a folder, by its recipe or by one set of options."""
+    from analyse.survey import survey as survey_photographs
+
+    typed = {
+        "kind": kind,
+        "diameter": diameter,
+        "colour": colour,
+        "polarity": polarity,
+        "highest_doubt": highest_doubt,
+        "mm_per_pixel": mm_per_pixel,
+        "dish": dish_mm,
+        "line": line,
+        "line_length": line_mm,
+        "corners": corners,
+        "plot": plot,
+        "area": area,
+        "inset": inset,
+        "quadrat": quadrat,
+        "grid": grid,
+        "rings": rings,
+    }
+    if not folder.is_dir():
+        raise RequestWrong(f"There is no folder {folder}; check the path.")
+    paths = gather_photographs([folder])
+    read = _recipe(folder, recipe, typed)
+    if read is None:
+        plan = plan_from(with_units(typed), named=spelled)
+        plans: dict[str, Plan | Failure] = {path.name: plan for path in paths}
+    else:
+        plans = read.plans(path.name for path in paths)
+    trial = _with_chance(Trial() if read is None else read.trial, seed, simulations)
+    make_folder(out)
+    with progress_on_terminal("Surveying", len(paths)) as progress:
+        results = survey_photographs(
+            paths,
+            plans,
+            out,
+            trial=trial,
+            keep_amendments=keep_amendments,
+            workers=workers_for(len(paths), workers),
+            progress=progress,
+        )
+    _finish(results, out, trial)
+
+
+app.command("score")(commands.score)
+
+
+def _recipe(folder: Path, recipe: Path | None, typed: dict[str, str | None]) -> Recipe | None:
+    """Read the recipe that was named, or else the one in the folder, if any."""
+    from analyse.recipe import read_recipe
+
+    path = recipe
+    if path is None and (folder / RECIPE_NAME).is_file():
+        path = folder / RECIPE_NAME
+    if path is None:
+        return None
+    given = [spelled(key) for key, value in typed.items() if value is not None]
+    if given:
+        raise OptionWrong(
+            f"{given[0]} cannot apply beside the recipe {path}, which says how photographs are"
+            " treated; write it there."
+        )
+    return read_recipe(path)
+
+
+def _with_chance(trial: Trial, seed: int | None, simulations: int | None) -> Trial:
+    """Let the command line's seed and number of simulations win."""
+    return Trial(
+        trial.title,
+        trial.seed if seed is None else seed,
+        trial.simulations if simulations is None else simulations,
+    )
+
+
+def _finish(results: Sequence[Analysed | Failure], out: Path, trial: Trial) -> None:
+    """Write the files, show the table and the troubles, and end with the right code."""
+    from analyse.analysis import write_results
+    from analyse.lines import show_findings
+
+    done = [result for result in results if not isinstance(result, Failure)]
+    failures = [result for result in results if isinstance(result, Failure)]
+    if done:
+        report = write_results(done, failures, out, trial)
+        show_findings([result.findings for result in done])
+        show_path("Tables", out)
+        show_path("Report", report)
+    show_failures(failures)
+    exit_if_failed(failures, len(results))
+
+
+def main() -> None:
+    """Run the command line."""
+    for stream in (sys.stdout, sys.stderr):
+        # A file name may hold what the terminal cannot show; that is no reason to stop.
+        if hasattr(stream, "reconfigure"):
+            stream.reconfigure(errors="backslashreplace")
+    app()

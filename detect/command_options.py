@@ -1,0 +1,164 @@
+"""The options that several commands share, each written down once."""
+
+from __future__ import annotations
+
+from pathlib import Path
+from typing import Annotated, Any, get_args
+
+import typer
+
+from detect.contrast import Colour, Polarity
+from detect.lengths import parse_length
+from detect.readers import AreaWord
+from detect.wanted import DetectOptions, Kind
+
+WHAT, SCALE, AREA, OUTPUT = "What to find", "Scale", "Study area", "Output"
+OUT = Path("strewn-out")
+_DEFAULTS = DetectOptions()
+_SPELLED = {"dish": "--dish-mm", "line_length": "--line-mm"}
+
+
+def _option(name: str, panel: str, text: str, metavar: str, default: Any = None) -> Any:
+    """Return an option that is None unless given; `default` is what the help says."""
+    text = text if default is None else f"{text} Default: {default}."
+    return typer.Option(name, help=text, metavar=metavar, show_default=False, rich_help_panel=panel)
+
+
+def _words(choices: Any) -> str:
+    """Return the choices of an option as a phrase."""
+    *most, last = get_args(choices)
+    return f"{', '.join(most)} or {last}"
+
+
+KindOption = Annotated[
+    str | None,
+    _option("--kind", WHAT, f"What the objects are: {_words(Kind)}.", "KIND", _DEFAULTS.kind),
+]
+DiameterOption = Annotated[
+    str | None,
+    _option(
+        "--diameter",
+        WHAT,
+        "Smallest and largest diameter with a unit, such as 1-6mm or 12-80px.",
+        "MIN-MAX",
+        "by kind, or learned",
+    ),
+]
+ColourOption = Annotated[
+    str | None,
+    _option("--colour", WHAT, f"Their colour: {_words(Colour)}.", "COLOUR", _DEFAULTS.colour),
+]
+PolarityOption = Annotated[
+    str | None,
+    _option(
+        "--polarity",
+        WHAT,
+        f"Whether they are darker or brighter than the ground: {_words(Polarity)}.",
+        "SIDE",
+        _DEFAULTS.polarity,
+    ),
+]
+HighestDoubtOption = Annotated[
+    str | None,
+    _option(
+        "--highest-doubt",
+        WHAT,
+        "Leave out what is more doubtful than this.",
+        "0..1",
+        _DEFAULTS.highest_doubt,
+    ),
+]
+MmPerPixelOption = Annotated[
+    str | None, _option("--mm-per-pixel", SCALE, "Millimetres per pixel.", "NUMBER")
+]
+DishOption = Annotated[
+    str | None,
+    _option("--dish-mm", SCALE, "Inner diameter of the dish in the picture, in mm.", "NUMBER"),
+]
+LineOption = Annotated[
+    str | None,
+    _option("--line", SCALE, "Both ends of a known length, in pixels.", "X1,Y1,X2,Y2"),
+]
+LineLengthOption = Annotated[
+    str | None, _option("--line-mm", SCALE, "True length of that line, in mm.", "NUMBER")
+]
+CornersOption = Annotated[
+    str | None,
+    _option(
+        "--corners",
+        SCALE,
+        "Corners of a known rectangle in pixels: top left, top right, bottom right, bottom left.",
+        "X1,Y1,...,X4,Y4",
+    ),
+]
+PlotOption = Annotated[
+    str | None,
+    _option("--plot", SCALE, "Width and height of that rectangle, such as 1000x750mm.", "WxH"),
+]
+AreaOption = Annotated[
+    str | None,
+    _option(
+        "--area",
+        AREA,
+        f"Where objects count: {_words(AreaWord)}, or a GeoJSON file with a polygon in pixels.",
+        "WHERE",
+        "dish with --dish-mm, plot with --corners, else frame",
+    ),
+]
+InsetOption = Annotated[
+    str | None,
+    _option("--inset", AREA, "Step in from the edge of the area, such as 1mm or 20px.", "LENGTH"),
+]
+OutOption = Annotated[
+    Path,
+    typer.Option(
+        "--out",
+        help=f"Folder for the results. Default: {OUT}.",
+        metavar="DIR",
+        show_default=False,
+        rich_help_panel=OUTPUT,
+    ),
+]
+WorkersOption = Annotated[
+    int | None,
+    _option("--workers", OUTPUT, "Photographs done at a time.", "N", "one per core, 8 at most"),
+]
+KeepOption = Annotated[
+    bool,
+    typer.Option(
+        "--keep-amendments",
+        help="Carry hand edits over to the new detection instead of refusing it.",
+        rich_help_panel=OUTPUT,
+    ),
+]
+
+
+def spelled(key: str) -> str:
+    """Return the option that a recipe's key is called on the command line."""
+    return _SPELLED.get(key, f"--{key.replace('_', '-')}")
+
+
+def with_units(values: dict[str, str | None]) -> dict[str, Any]:
+    """Read the options whose unit their name says, by the keys of a recipe.
+
+    Parameters
+    ----------
+    values : dict
+        Texts of the options by the keys of a recipe; None where not given.
+
+    Returns
+    -------
+    dict
+        The same, with the dish and the line as lengths in millimetres.
+
+    Raises
+    ------
+    OptionWrong
+        If one of them is no positive length.
+    """
+    read: dict[str, Any] = dict(values)
+    for key in ("dish", "line_length"):
+        text = values.get(key)
+        if text is not None:
+            read[key] = parse_length(text, name=spelled(key), unit="mm")
+    return read

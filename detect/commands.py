@@ -1,0 +1,253 @@
+"""The commands of this half: find spots, and measure how well they are found."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+from pathlib import Path
+from typing import Annotated
+
+import typer
+
+from detect.accuracy import Accuracy, pooled, read_truth, score_csv, score_sheet
+from detect.amendments import read_amendments
+from detect.batch import Each, Failure, do_each, workers_for
+from detect.command_options import (
+    OUT,
+    OUTPUT,
+    AreaOption,
+    ColourOption,
+    CornersOption,
+    DiameterOption,
+    DishOption,
+    HighestDoubtOption,
+    InsetOption,
+    KeepOption,
+    KindOption,
+    LineLengthOption,
+    LineOption,
+    MmPerPixelOption,
+    OutOption,
+    PlotOption,
+    PolarityOption,
+    WorkersOption,
+    spelled,
+    with_units,
+)
+from detect.errors import RequestWrong
+from detect.files import make_folder, write_text_atomically
+from detect.gather import gather_photographs, gather_sheets
+from detect.outcome import write_detection
+from detect.overlay import DOUBTFUL
+from detect.requests import DetectRequest, detect_photograph, parse_request
+from detect.sheet import Sheet, current_state, read_sheet
+from detect.terminal import (
+    exit_if_failed,
+    number_text,
+    progress_on_terminal,
+    show_failures,
+    show_path,
+    show_table,
+)
+
+
+def detect(
+    photographs: Annotated[
+        list[Path],
+        typer.Argument(
+            help="Photographs, or folders of them.", metavar="PHOTO...", show_default=False
+        ),
+    ],
+    kind: KindOption = None,
+    diameter: DiameterOption = None,
+    colour: ColourOption = None,
+    polarity: PolarityOption = None,
+    highest_doubt: HighestDoubtOption = None,
+    mm_per_pixel: MmPerPixelOption = None,
+    dish_mm: DishOption = None,
+    line: LineOption = None,
+    line_mm: LineLengthOption = None,
+    corners: CornersOption = None,
+    plot: PlotOption = None,
+    area: AreaOption = None,
+    inset: InsetOption = None,
+    out: OutOption = OUT,
+    keep_amendments: KeepOption = False,
+    workers: WorkersOption = None,
+) -> None:
+    """Find the spots of photographs: colonies, seedlings, lesions."""
+    request = parse_request(
+        with_units(
+            {
+                "kind": kind,
+                "diameter": diameter,
+                "colour": colour,
+                "polarity": polarity,
+                "highest_doubt": highest_doubt,
+                "mm_per_pixel": mm_per_pixel,
+                "dish": dish_mm,
+                "line": line,
+                "line_length": line_mm,
+                "corners": corners,
+                "plot": plot,
+                "area": area,
+                "inset": inset,
+            }
+        ),
+        named=spelled,
+    )
+    paths = gather_photographs(photographs)
+    make_folder(out)
+    tasks = [DetectTask(path, request, out, keep_amendments) for path in paths]
+    with progress_on_terminal("Detecting", len(tasks)) as progress:
+        processes = workers_for(len(tasks), workers)
+        results = do_each(DETECT, tasks, workers=processes, progress=progress)
+    done = [result for result in results if not isinstance(result, Failure)]
+    failures = [result for result in results if isinstance(result, Failure)]
+    show_table(("photograph", "spots", "doubtful", "scale"), [line.cells() for line in done])
+    if done:
+        show_path("Sheets, points and overlays", out)
+    show_failures(failures)
+    exit_if_failed(failures, len(results))
+
+
+def score(
+    sheets: Annotated[
+        list[Path],
+        typer.Argument(
+            help="Sheets, or folders of them.", metavar="SHEET|DIR...", show_default=False
+        ),
+    ],
+    truth: Annotated[
+        Path,
+        typer.Option(
+            "--truth",
+            help="Folder with a table for each photograph: x, y and r in pixels, in STEM.csv.",
+            metavar="DIR",
+            show_default=False,
+        ),
+    ],
+    out: Annotated[
+        Path | None,
+        typer.Option(
+            "--out",
+            help="Folder for score.csv.",
+            metavar="DIR",
+            show_default=False,
+            rich_help_panel=OUTPUT,
+        ),
+    ] = None,
+) -> None:
+    """Measure the counted spots of sheets, hand edits included, against hand-marked objects."""
+    paths = gather_sheets(sheets)
+    if not truth.is_dir():
+        raise RequestWrong(f"There is no folder {truth}; --truth names a folder of CSV tables.")
+    if out is not None:
+        make_folder(out)
+    tasks = [ScoreTask(path, truth) for path in paths]
+    results = do_each(SCORE, tasks)
+    scores = [result for result in results if not isinstance(result, Failure)]
+    failures = [result for result in results if isinstance(result, Failure)]
+    if scores:
+        show_scores(scores)
+    if out is not None and scores:
+        write_text_atomically(out / "score.csv", score_csv(scores))
+        show_path("Scores", out / "score.csv")
+    show_failures(failures)
+    exit_if_failed(failures, len(results))
+
+
+def show_scores(scores: Sequence[Accuracy]) -> None:
+    """Print scores, and those of all photographs together."""
+    rows = [*scores, pooled(scores)] if len(scores) > 1 else scores
+    show_table(
+        ("photograph", "truth", "found", "precision", "recall", "F1", "count error", "RMSE px"),
+        [
+            (
+                row.name,
+                str(row.truth),
+                str(row.found),
+                number_text(row.precision),
+                number_text(row.recall),
+                number_text(row.f1),
+                f"{row.count_error:+d}",
+                number_text(row.rmse_px),
+            )
+            for row in rows
+        ],
+    )
+
+
+@dataclass(frozen=True, slots=True)
+class DetectTask:
+    """One photograph to be detected, and where its results go."""
+
+    path: Path
+    request: DetectRequest
+    folder: Path
+    keep_amendments: bool
+
+
+@dataclass(frozen=True, slots=True)
+class DetectLine:
+    """What the table says about one photograph."""
+
+    name: str
+    spots: int
+    doubtful: int
+    scale: str
+
+    @classmethod
+    def of(cls, state: Sheet) -> DetectLine:
+        """Return the line of a sheet with its hand edits applied."""
+        counted = state.spots.where(state.spots.counted)
+        doubtful = int((counted.doubt > DOUBTFUL).sum())
+        return cls(state.photograph.name, len(counted), doubtful, scale_text(state))
+
+    def cells(self) -> tuple[str, str, str, str]:
+        """Return the cells of its line."""
+        return self.name, str(self.spots), str(self.doubtful), self.scale
+
+
+def scale_text(sheet: Sheet) -> str:
+    """Return the scale in the middle of a sheet's area, and its source, for a table."""
+    if sheet.scale is None:
+        return "none: in pixels only"
+    middle = sheet.area.polygon.centroid
+    mm_per_px = float(sheet.scale.mm_per_px([[middle.x, middle.y]])[0])
+    return f"{mm_per_px:.4g} mm per pixel ({sheet.scale.source})"
+
+
+@dataclass(frozen=True, slots=True)
+class ScoreTask:
+    """One sheet to be scored, and where its truth lies."""
+
+    path: Path
+    truth: Path
+
+
+def _detect_one(task: DetectTask) -> DetectLine:
+    """Detect one photograph and write its results."""
+    photograph, sheet = detect_photograph(task.path, task.request)
+    outcome = write_detection(photograph, sheet, task.folder, keep_amendments=task.keep_amendments)
+    return DetectLine.of(outcome.state)
+
+
+def _score_one(task: ScoreTask) -> Accuracy:
+    """Score one sheet."""
+    state = current_state(read_sheet(task.path), read_amendments(task.path))
+    table = task.truth / f"{state.stem}.csv"
+    if not table.is_file():
+        raise RequestWrong(
+            f"There is no {table.name} in {task.truth}; add it, or leave the sheet out."
+        )
+    return score_sheet(state, read_truth(table))
+
+
+def _name_of(task: DetectTask | ScoreTask) -> str:
+    """Return the file name that a failure is listed under."""
+    return task.path.name
+
+
+DETECT = Each(_detect_one, _name_of)
+SCORE = Each(_score_one, _name_of)

@@ -1,0 +1,306 @@
+"""What is asked of a photograph, as typed on the command line or in a recipe, and its carrying out."""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Mapping
+from dataclasses import dataclass, field, fields
+from functools import cache
+from hashlib import sha256
+from importlib.metadata import version
+from pathlib import Path
+from typing import Any
+
+import numpy as np
+
+from detect.area import (
+    StudyArea,
+    dish_area,
+    frame_area,
+    leaf_area,
+    plot_area,
+    polygon_area,
+)
+from detect.dish import Dish, find_dish
+from detect.errors import OptionWrong
+from detect.find import find_spots
+from detect.lengths import Length
+from detect.photograph import Photograph, read_photograph
+from detect.readers import READERS, AreaWord, Corners, Four
+from detect.scale import Scale, scale_from_corners, scale_from_dish, scale_from_line
+from detect.sheet import SCHEMA, PhotographIdentity, Sheet
+from detect.wanted import DetectOptions
+
+_SOURCES = ("mm_per_pixel", "dish", "line", "corners")
+
+
+@dataclass(frozen=True, slots=True)
+class ScaleRequest:
+    """What is known about lengths; nothing means that everything stays in pixels.
+
+    Parameters
+    ----------
+    mm_per_pixel : float or None
+        Millimetres per pixel.
+    dish : Length or None
+        Inner diameter of the dish.
+    line, line_length : tuple of four floats, Length, or None
+        Both ends of a line (x1, y1, x2, y2 in pixels) and its true length.
+    corners, plot : tuple of four points, two Lengths, or None
+        The corners of a rectangle (top left, top right, bottom right, bottom left, in pixels)
+        and its width and height.
+
+    Raises
+    ------
+    OptionWrong
+        If two sources are given, or one half of a source without the other.
+    """
+
+    mm_per_pixel: float | None = None
+    dish: Length | None = None
+    line: Four | None = None
+    line_length: Length | None = None
+    corners: Corners | None = None
+    plot: tuple[Length, Length] | None = None
+
+    def __post_init__(self) -> None:
+        given = [name for name in _SOURCES if getattr(self, name) is not None]
+        if len(given) > 1:
+            raise OptionWrong(
+                f"Two sources of the scale are given ({given[0]} and {given[1]}); keep one."
+            )
+        _need_both("line", self.line, "line length", self.line_length)
+        _need_both("corners", self.corners, "plot size", self.plot)
+        for length in (self.dish, self.line_length, *(self.plot or ())):
+            if length is not None:
+                length.to_mm()
+
+    def resolve(self, dish: Dish | None) -> Scale | None:
+        """Return the scale of a photograph in which `dish` was found if it was needed."""
+        if self.mm_per_pixel is not None:
+            return Scale.from_mm_per_pixel(self.mm_per_pixel)
+        if self.dish is not None and dish is not None:
+            return scale_from_dish(dish, self.dish.to_mm())
+        if self.line is not None and self.line_length is not None:
+            return scale_from_line(self.line[:2], self.line[2:], self.line_length.to_mm())
+        if self.corners is not None and self.plot is not None:
+            width, height = self.plot
+            return scale_from_corners(np.array(self.corners), width.to_mm(), height.to_mm())
+        return None
+
+
+@dataclass(frozen=True, slots=True)
+class AreaRequest:
+    """Where spots count.
+
+    Parameters
+    ----------
+    where : {"dish", "frame", "plot", "leaf"}, Path or None
+        A word, a file with a polygon in pixels, or None for what goes with the scale: the dish
+        with a dish, the plot with corners, else the whole frame.
+    inset : Length or None
+        How far the area's edge steps inwards.
+    """
+
+    where: AreaWord | Path | None = None
+    inset: Length | None = None
+
+
+@dataclass(frozen=True, slots=True)
+class DetectRequest:
+    """All that is asked of a photograph: what to find, at which scale, and where.
+
+    Parameters
+    ----------
+    options : DetectOptions
+        What to find.
+    scale : ScaleRequest
+        What is known about lengths.
+    area : AreaRequest
+        Where spots count.
+
+    Raises
+    ------
+    OptionWrong
+        If the plot is the area and its corners are missing, or an inset has no area to act on.
+    """
+
+    options: DetectOptions = field(default_factory=DetectOptions)
+    scale: ScaleRequest = field(default_factory=ScaleRequest)
+    area: AreaRequest = field(default_factory=AreaRequest)
+
+    def __post_init__(self) -> None:
+        if self.where == "plot" and self.scale.corners is None:
+            raise OptionWrong(
+                "The area plot needs the positions of its corners and its size;"
+                " give corners and plot."
+            )
+        if self.area.inset is not None and self.area.where is None and self.where == "frame":
+            raise OptionWrong(
+                f"The inset {self.area.inset} has no edge to step in from; give an area as well."
+            )
+
+    @property
+    def where(self) -> AreaWord | Path:
+        """Where spots count: as asked, or what goes with the scale."""
+        if self.area.where is not None:
+            return self.area.where
+        if self.scale.dish is not None:
+            return "dish"
+        return "frame" if self.scale.corners is None else "plot"
+
+    def as_dict(self) -> dict[str, Any]:
+        """Return what was asked as plain values for a file, in the words of a recipe."""
+        asked: dict[str, Any] = {}
+        for part in (self.options, self.scale, self.area):
+            asked |= {entry.name: _plain(getattr(part, entry.name)) for entry in fields(part)}
+        asked.pop("where")
+        asked["area"] = _plain(self.where)
+        if isinstance(self.where, Path) and self.where.is_file():
+            asked["area_sha256"] = sha256(self.where.read_bytes()).hexdigest()
+        return {name: value for name, value in asked.items() if value is not None}
+
+
+def detect_photograph(path: Path, request: DetectRequest) -> tuple[Photograph, Sheet]:
+    """Find the spots of one photograph.
+
+    Parameters
+    ----------
+    path : Path
+        The photograph.
+    request : DetectRequest
+        What to find, at which scale, and where.
+
+    Returns
+    -------
+    tuple of Photograph and Sheet
+
+    Raises
+    ------
+    PhotographFailed
+        If this photograph cannot be done.
+    RequestWrong
+        If what is asked does not fit it.
+    """
+    photograph = read_photograph(path)
+    dish_needed = request.where == "dish" or request.scale.dish is not None
+    dish = find_dish(photograph) if dish_needed else None
+    scale = request.scale.resolve(dish)
+    area = _study_area(photograph, request, scale, dish)
+    found = find_spots(photograph, area, request.options, scale=scale)
+    settings = {
+        "request": request.as_dict(),
+        "detector": found.settings,
+        "notes": list(photograph.notes),
+    }
+    identity = PhotographIdentity.of(photograph)
+    return photograph, Sheet(SCHEMA, tool_version(), identity, scale, area, settings, found.spots)
+
+
+@cache
+def tool_version() -> str:
+    """Return the version of this program."""
+    return version("strewn")
+
+
+def _study_area(
+    photograph: Photograph, request: DetectRequest, scale: Scale | None, dish: Dish | None
+) -> StudyArea:
+    """Find where spots count, then step in from the edge, at the scale of the area's middle."""
+    inset = request.area.inset
+    if inset is None:
+        return _whole_area(photograph, request, dish, 0.0)
+    mm_per_px: float | None = None
+    if scale is not None:
+        middle = _whole_area(photograph, request, dish, 0.0).polygon.centroid
+        mm_per_px = float(scale.mm_per_px([[middle.x, middle.y]])[0])
+    return _whole_area(photograph, request, dish, inset.to_px(mm_per_px))
+
+
+def _whole_area(
+    photograph: Photograph, request: DetectRequest, dish: Dish | None, inset_px: float
+) -> StudyArea:
+    """Return the area asked for, `inset_px` pixels inwards."""
+    where = request.where
+    if isinstance(where, Path):
+        return polygon_area(where, photograph.width, photograph.height, inset_px=inset_px)
+    if where == "dish" and dish is not None:
+        return dish_area(dish, inset_px=inset_px)
+    if where == "plot" and request.scale.corners is not None:
+        return plot_area(np.array(request.scale.corners), inset_px=inset_px)
+    if where == "leaf":
+        return leaf_area(photograph, inset_px=inset_px)
+    return frame_area(photograph.width, photograph.height, inset_px=inset_px)
+
+
+def parse_request(
+    values: Mapping[str, Any], *, named: Callable[[str], str] = str, folder: Path | None = None
+) -> DetectRequest:
+    """Read what is asked from texts and numbers.
+
+    Parameters
+    ----------
+    values : mapping of str to object
+        The keys of a recipe: kind, diameter, colour, polarity, highest_doubt, mm_per_pixel, dish,
+        line, line_length, corners, plot, area, inset. None counts as not given.
+    named : callable
+        Turns a key into the name the reader knows it by, for messages.
+    folder : Path, optional
+        Where the file of an area lies if its path is relative.
+
+    Returns
+    -------
+    DetectRequest
+
+    Raises
+    ------
+    OptionWrong
+        If a value is impossible or does not apply, or a key is unknown.
+    """
+    given = {key: value for key, value in values.items() if value is not None}
+    read: dict[str, Any] = {}
+    for key, value in given.items():
+        if key not in READERS:
+            raise OptionWrong(f"{named(key)} is not known; use one of {', '.join(READERS)}.")
+        read[key] = READERS[key](value, named(key))
+    if "area" in read:
+        read["where"] = _existing(read.pop("area"), named("area"), folder)
+    return DetectRequest(
+        DetectOptions(**_fitting(DetectOptions, read)),
+        ScaleRequest(**_fitting(ScaleRequest, read)),
+        AreaRequest(**_fitting(AreaRequest, read)),
+    )
+
+
+def _fitting(record: type, read: dict[str, Any]) -> dict[str, Any]:
+    """Choose the values that a record has fields for."""
+    return {entry.name: read[entry.name] for entry in fields(record) if entry.name in read}
+
+
+def _existing(where: AreaWord | Path, name: str, folder: Path | None) -> AreaWord | Path:
+    """Return an area's file where it lies, or its word."""
+    if not isinstance(where, Path):
+        return where
+    path = where if folder is None else folder / where
+    if not path.is_file():
+        raise OptionWrong(f"{name} names the file {path}, which does not exist; check its path.")
+    return path
+
+
+def _plain(value: Any) -> Any:
+    """Turn a field into what JSON can hold."""
+    if isinstance(value, Length):
+        return str(value)
+    if isinstance(value, Path):
+        return value.name
+    if isinstance(value, tuple):
+        return [_plain(entry) for entry in value]
+    return value
+
+
+def _need_both(first: str, value: object, second: str, other: object) -> None:
+    """Refuse one half of a pair of options without the other."""
+    if (value is None) != (other is None):
+        given = first if other is None else second
+        raise OptionWrong(
+            f"The {first} and the {second} go together, but only the {given} is given; give both."
+        )

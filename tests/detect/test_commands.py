@@ -1,0 +1,363 @@
+"""The commands of the first half, as a person runs them."""
+
+from __future__ import annotations
+
+import csv
+import json
+from pathlib import Path
+
+import cv2
+import numpy as np
+import pytest
+from typer.testing import CliRunner, Result
+
+from analyse.cli import app
+from detect.sheet import Amendment, amendments_path, append_amendment, read_sheet
+from tests.discs import DIAMETER, scattered, write_discs, write_truth
+
+SAMPLES = Path(__file__).parents[2] / "sample_images"
+PLACES = scattered(24, seed=4)
+
+
+def run(*arguments: object) -> Result:
+    result = CliRunner().invoke(app, [str(argument) for argument in arguments])
+    if result.exception is not None and not isinstance(result.exception, SystemExit):
+        raise result.exception
+    return result
+
+
+def detect(*arguments: object, out: Path) -> Result:
+    return run("detect", *arguments, "--diameter", DIAMETER, "--out", out, "--workers", 1)
+
+
+def no_parts(folder: Path) -> bool:
+    return not [path for path in folder.rglob("*") if path.name.endswith(".part")]
+
+
+@pytest.fixture
+def photo(tmp_path: Path) -> Path:
+    return write_discs(tmp_path / "bed_1.png", PLACES)
+
+
+def test_one_photograph_gives_a_line_and_three_files(photo: Path, tmp_path: Path) -> None:
+    out = tmp_path / "out"
+    result = detect(photo, "--mm-per-pixel", "0.25", out=out)
+    assert result.exit_code == 0
+    assert result.stdout == (
+        "photograph  spots  doubtful  scale\n"
+        "bed_1.png      24         0  0.25 mm per pixel (mm-per-pixel)\n"
+        f"Sheets, points and overlays: {out}\n"
+    )
+    assert result.stderr == ""
+    names = sorted(path.name for path in out.iterdir())
+    assert names == ["bed_1.overlay.jpg", "bed_1.points.csv", "bed_1.sheet.json"]
+    rows = list(csv.DictReader((out / "bed_1.points.csv").read_text(encoding="utf-8").splitlines()))
+    xy = np.array([[float(row["x_px"]), float(row["y_px"])] for row in rows])
+    nearest = [np.hypot(*(xy - place).T).min() for place in PLACES]
+    assert max(nearest) < 1.0
+    assert float(rows[0]["x_mm"]) == pytest.approx(0.25 * float(rows[0]["x_px"]))
+    overlay = cv2.imread(str(out / "bed_1.overlay.jpg"))
+    assert overlay is not None
+    assert overlay.shape == (320, 420, 3)
+
+
+def test_without_a_scale_it_works_in_pixels_and_says_so(photo: Path, tmp_path: Path) -> None:
+    result = detect(photo, out=tmp_path / "out")
+    assert result.exit_code == 0
+    assert "bed_1.png      24         0  none: in pixels only\n" in result.stdout
+    row = (tmp_path / "out" / "bed_1.points.csv").read_text().splitlines()[1].split(",")
+    assert row[3:5] == ["", ""]
+    assert row[6:8] == ["", ""]
+
+
+def test_a_folder_is_done_in_natural_order(tmp_path: Path) -> None:
+    for name in ("bed_10.png", "bed_9.png"):
+        write_discs(tmp_path / name, PLACES)
+    result = detect(tmp_path, out=tmp_path / "out")
+    lines = result.stdout.splitlines()
+    assert [line.split()[0] for line in lines[1:3]] == ["bed_9.png", "bed_10.png"]
+
+
+def test_the_sample_dish_is_found_by_its_diameter(tmp_path: Path) -> None:
+    options = ("--kind", "colonies", "--dish-mm", "86", "--inset", "1mm", "--diameter", "1.2-6mm")
+    out = tmp_path / "out"
+    result = run("detect", SAMPLES / "dish_03.jpg", *options, "--out", out)
+    assert result.exit_code == 0, result.stderr
+    sheet = read_sheet(out / "dish_03.sheet.json")
+    assert sheet.area.kind == "dish"
+    assert sheet.scale is not None
+    assert sheet.scale.source == "dish"
+    truth = run("score", out, "--truth", SAMPLES / "truth")
+    assert truth.exit_code == 0
+    recall = float(truth.stdout.splitlines()[1].split()[4])
+    assert recall >= 0.9
+
+
+# Photographs that cannot be done: each is listed with its reason, the others are done.
+
+
+def a_jpeg(path: Path) -> bytes:
+    write_discs(path.with_suffix(".png"), PLACES)
+    picture = cv2.imread(str(path.with_suffix(".png")))
+    path.with_suffix(".png").unlink()
+    assert picture is not None
+    return cv2.imencode(".jpg", picture)[1].tobytes()
+
+
+def a_huge_header(path: Path) -> bytes:
+    data = bytearray(a_jpeg(path))
+    at = data.index(b"\xff\xc0")
+    data[at + 5 : at + 9] = (0xFFFF).to_bytes(2, "big") * 2
+    return bytes(data)
+
+
+def a_huge_png(path: Path) -> bytes:
+    import struct
+    import zlib
+
+    header = struct.pack(">II5B", 100_000, 100_000, 8, 2, 0, 0, 0)
+    chunk = b"IHDR" + header
+    start = b"\x89PNG\r\n\x1a\n" + struct.pack(">I", len(header)) + chunk
+    end = struct.pack(">I", 0) + b"IEND" + struct.pack(">I", zlib.crc32(b"IEND"))
+    return start + struct.pack(">I", zlib.crc32(chunk)) + end
+
+
+BAD = {
+    "text": lambda path: b"This is a letter.\n",
+    "cut short": lambda path: a_jpeg(path)[:2000],
+    "empty": lambda path: b"",
+    "one pixel": lambda path: cv2.imencode(".png", np.zeros((1, 1, 3), np.uint8))[1].tobytes(),
+    "huge header": a_huge_header,
+    "huge picture": a_huge_png,
+}
+
+
+@pytest.mark.parametrize("kind", BAD)
+def test_a_bad_photograph_is_listed_and_the_others_are_done(kind: str, tmp_path: Path) -> None:
+    folder, out = tmp_path / "in", tmp_path / "out"
+    folder.mkdir()
+    write_discs(folder / "bed_1.png", PLACES)
+    (folder / "bed_2.jpg").write_bytes(BAD[kind](folder / "bed_2.jpg"))
+    result = detect(folder, out=out)
+    assert result.exit_code == 1
+    assert "bed_1.png      24" in result.stdout
+    (line,) = result.stderr.splitlines()
+    assert line.startswith("bed_2.jpg: ")
+    assert line.count("bed_2.jpg") == 1
+    assert line.endswith(".")
+    assert not list(out.glob("bed_2*"))
+    assert no_parts(tmp_path)
+
+
+@pytest.mark.parametrize("kind", BAD)
+def test_a_bad_photograph_alone_fails_with_1(kind: str, tmp_path: Path) -> None:
+    path = tmp_path / "bed_2.jpg"
+    path.write_bytes(BAD[kind](path))
+    result = detect(path, out=tmp_path / "out")
+    assert result.exit_code == 1
+    assert result.stdout == ""
+    assert result.stderr.startswith("bed_2.jpg: ")
+    assert list((tmp_path / "out").iterdir()) == []
+
+
+def test_no_dish_in_the_picture_fails_the_photograph(photo: Path, tmp_path: Path) -> None:
+    result = detect(photo, "--dish-mm", "86", out=tmp_path / "out")
+    assert result.exit_code == 1
+    assert result.stderr.startswith("bed_1.png: ")
+    assert "dish" in result.stderr
+
+
+# Requests that are wrong: one sentence, exit code 2, nothing begun.
+
+
+@pytest.mark.parametrize(
+    ("options", "message"),
+    [
+        (["--dish-mm", "-86"], "--dish-mm must be positive and finite, not '-86'."),
+        (["--dish-mm", "nan"], "--dish-mm must be positive and finite, not 'nan'."),
+        (["--dish-mm", "big"], "--dish-mm must be a length such as 10mm, not 'big'."),
+        (["--mm-per-pixel", "0"], "--mm-per-pixel must be a positive number, not '0'."),
+        (["--line", "1,2,3"], "--line must be 4 numbers with commas between, not '1,2,3'."),
+        (
+            ["--line", "1,2,3,4"],
+            "The line and the line length go together, but only the line is given; give both.",
+        ),
+        (
+            ["--corners", "1,2,3,4,5,6,7,8"],
+            "The corners and the plot size go together, but only the corners is given; give both.",
+        ),
+        (
+            ["--dish-mm", "86", "--mm-per-pixel", "1"],
+            "Two sources of the scale are given (mm_per_pixel and dish); keep one.",
+        ),
+        (
+            ["--kind", "stars"],
+            "--kind must be one of colonies, seedlings, lesions, spots, not 'stars'.",
+        ),
+        (["--highest-doubt", "2"], "--highest-doubt must be a number from 0 to 1, not '2'."),
+        (["--inset", "2px"], "The inset 2px has no edge to step in from; give an area as well."),
+        (
+            ["--area", "gone.geojson"],
+            "--area names the file gone.geojson, which does not exist; check its path.",
+        ),
+        (["--workers", "0"], "--workers must be 1 or more, not 0."),
+    ],
+)
+def test_a_wrong_option_ends_with_one_sentence(
+    photo: Path, tmp_path: Path, options: list[str], message: str
+) -> None:
+    out = tmp_path / "out"
+    result = run("detect", photo, *options, "--out", out)
+    assert result.exit_code == 2
+    assert result.stdout == ""
+    assert result.stderr == f"Error: {message}\n"
+    assert not out.exists() or list(out.iterdir()) == []
+
+
+def test_a_request_that_fits_no_photograph_ends_with_2(photo: Path, tmp_path: Path) -> None:
+    result = run("detect", photo, "--diameter", "2-6mm", "--out", tmp_path / "out")
+    assert result.exit_code == 2
+    assert result.stderr.startswith("bed_1.png: 2mm")
+    assert "no scale is known" in result.stderr
+
+
+@pytest.mark.parametrize(
+    ("geometry", "message"),
+    [
+        ([[0, 0], [200, 300], [200, 0], [0, 300], [0, 0]], "bed_1.png: "),
+        ([[1000, 1000], [1200, 1000], [1200, 1200], [1000, 1000]], "bed_1.png: "),
+    ],
+)
+def test_an_unusable_polygon_ends_with_2(
+    photo: Path, tmp_path: Path, geometry: list[list[int]], message: str
+) -> None:
+    polygon = tmp_path / "area.geojson"
+    polygon.write_text(json.dumps({"type": "Polygon", "coordinates": [geometry]}))
+    result = detect(photo, "--area", polygon, out=tmp_path / "out")
+    assert result.exit_code == 2
+    assert result.stderr.startswith(message)
+    assert result.stderr.count("\n") == 1
+
+
+def test_a_missing_photograph_ends_with_2(tmp_path: Path) -> None:
+    result = detect(tmp_path / "none.jpg", out=tmp_path / "out")
+    assert (result.exit_code, result.stdout) == (2, "")
+    assert result.stderr == f"Error: {tmp_path / 'none.jpg'} does not exist; check the path.\n"
+    assert not (tmp_path / "out").exists()
+
+
+def test_a_folder_without_photographs_ends_with_2(tmp_path: Path) -> None:
+    (tmp_path / "in").mkdir()
+    result = detect(tmp_path / "in", out=tmp_path / "out")
+    assert result.exit_code == 2
+    assert "holds no photograph" in result.stderr
+
+
+def test_a_file_in_the_place_of_the_folder_ends_with_2(photo: Path, tmp_path: Path) -> None:
+    (tmp_path / "out").write_text("mine")
+    result = detect(photo, out=tmp_path / "out")
+    assert result.exit_code == 2
+    assert result.stderr == (
+        f"Error: {tmp_path / 'out'} is a file, not a folder; name another folder for --out.\n"
+    )
+    assert (tmp_path / "out").read_text() == "mine"
+
+
+def test_an_unknown_option_ends_with_2(photo: Path) -> None:
+    result = run("detect", photo, "--moon")
+    assert result.exit_code == 2
+    assert "--moon" in result.stderr
+
+
+# Hand edits.
+
+
+def strike(sheet: Path, spot: str) -> None:
+    edit = Amendment("e1", "2026-01-02T10:00:00Z", "me", "strike", spot)
+    append_amendment(amendments_path(sheet), edit)
+
+
+def test_hand_edits_are_not_overwritten(photo: Path, tmp_path: Path) -> None:
+    out = tmp_path / "out"
+    detect(photo, out=out)
+    strike(out / "bed_1.sheet.json", "3")
+    before = {path.name: path.read_bytes() for path in out.iterdir()}
+    result = detect(photo, out=out)
+    assert result.exit_code == 1
+    assert result.stderr.startswith("bed_1.png: bed_1.amendments.jsonl in ")
+    assert "--keep-amendments" in result.stderr
+    assert {path.name: path.read_bytes() for path in out.iterdir()} == before
+
+
+def test_hand_edits_are_kept_on_request(photo: Path, tmp_path: Path) -> None:
+    out = tmp_path / "out"
+    detect(photo, out=out)
+    strike(out / "bed_1.sheet.json", "3")
+    result = detect(photo, "--keep-amendments", out=out)
+    assert result.exit_code == 0
+    assert "bed_1.png      23" in result.stdout
+    assert (out / "bed_1.points.csv").read_text().count(",struck") == 1
+
+
+# Score.
+
+
+def test_scores_are_printed_and_written(tmp_path: Path) -> None:
+    truth, out = tmp_path / "truth", tmp_path / "out"
+    truth.mkdir()
+    for name in ("bed_1.png", "bed_2.png"):
+        write_discs(tmp_path / name, PLACES)
+        write_truth(truth / name.replace("png", "csv"), PLACES)
+    detect(tmp_path, out=out)
+    strike(out / "bed_2.sheet.json", "3")
+    result = run("score", out, "--truth", truth, "--out", tmp_path / "scores")
+    assert result.exit_code == 0
+    lines = [line.split() for line in result.stdout.splitlines()]
+    assert lines[0][:6] == ["photograph", "truth", "found", "precision", "recall", "F1"]
+    assert lines[1][:7] == ["bed_1.png", "24", "24", "1", "1", "1", "+0"]
+    assert lines[2][:5] == ["bed_2.png", "24", "23", "1", "0.958"]
+    assert lines[2][6] == "-1"
+    assert lines[3][:3] == ["all", "48", "47"]
+    assert result.stdout.splitlines()[4] == f"Scores: {tmp_path / 'scores' / 'score.csv'}"
+    rows = list(
+        csv.DictReader((tmp_path / "scores" / "score.csv").read_text(encoding="utf-8").splitlines())
+    )
+    assert [row["photograph"] for row in rows] == ["bed_1.png", "bed_2.png", "all"]
+    assert rows[2]["matched"] == "47"
+
+
+def test_a_sheet_without_truth_is_listed(tmp_path: Path) -> None:
+    truth, out = tmp_path / "truth", tmp_path / "out"
+    truth.mkdir()
+    for name in ("bed_1.png", "bed_2.png"):
+        write_discs(tmp_path / name, PLACES)
+    write_truth(truth / "bed_1.csv", PLACES)
+    detect(tmp_path, out=out)
+    result = run("score", out, "--truth", truth)
+    assert result.exit_code == 1
+    assert result.stderr == (
+        f"bed_2.sheet.json: There is no bed_2.csv in {truth}; add it, or leave the sheet out.\n"
+    )
+    assert "bed_1.png" in result.stdout
+    (truth / "bed_1.csv").write_text("x,y\n1,2\n")
+    result = run("score", out, "--truth", truth)
+    assert result.exit_code == 2
+    assert result.stdout == ""
+
+
+def test_truth_that_is_no_folder_ends_with_2(photo: Path, tmp_path: Path) -> None:
+    out = tmp_path / "out"
+    detect(photo, out=out)
+    result = run("score", out, "--truth", tmp_path / "gone")
+    assert result.exit_code == 2
+    assert result.stderr.startswith(f"Error: There is no folder {tmp_path / 'gone'}")
+
+
+def test_a_damaged_sheet_is_listed(photo: Path, tmp_path: Path) -> None:
+    out = tmp_path / "out"
+    detect(photo, out=out)
+    (out / "bed_1.sheet.json").write_text("{")
+    result = run("score", out, "--truth", tmp_path)
+    assert result.exit_code == 1
+    assert result.stderr.startswith("bed_1.sheet.json: ")
+    assert "is damaged" in result.stderr

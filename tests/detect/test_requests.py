@@ -1,0 +1,211 @@
+"""What is asked of a photograph: typed values, and what becomes of them in a picture."""
+
+from __future__ import annotations
+
+import json
+from pathlib import Path
+from typing import Any
+
+import numpy as np
+import pytest
+
+from detect.errors import AreaNotFound, AreaWrong, OptionWrong
+from detect.lengths import Length
+from detect.requests import DetectRequest, detect_photograph, parse_request, tool_version
+from detect.wanted import DetectOptions
+from tests.discs import DIAMETER, HEIGHT, WIDTH, scattered, write_discs
+
+CORNERS = [[20, 20], [400, 25], [395, 300], [25, 295]]
+
+
+def test_nothing_asked_means_the_defaults() -> None:
+    assert parse_request({}) == DetectRequest()
+    assert parse_request({"kind": None, "dish": None}) == DetectRequest()
+    assert DetectRequest().options == DetectOptions()
+    assert DetectRequest().where == "frame"
+
+
+def test_texts_and_numbers_are_read() -> None:
+    request = parse_request(
+        {
+            "kind": "seedlings",
+            "diameter": "12-36mm",
+            "colour": "green",
+            "highest_doubt": 0.3,
+            "corners": CORNERS,
+            "plot": "1000x750mm",
+            "inset": "5px",
+        }
+    )
+    assert request.options.kind == "seedlings"
+    assert request.options.diameter == (Length(12, "mm"), Length(36, "mm"))
+    assert request.scale.plot == (Length(1000, "mm"), Length(750, "mm"))
+    assert request.scale.corners == ((20, 20), (400, 25), (395, 300), (25, 295))
+    assert request.area.inset == Length(5, "px")
+    assert request.where == "plot"
+
+
+def test_the_command_line_spells_the_same_request() -> None:
+    typed = {"corners": "20,20,400,25, 395,300,25,295", "plot": "100x75cm", "highest_doubt": "0.3"}
+    recipe = {"corners": CORNERS, "plot": "100x75cm", "highest_doubt": 0.3}
+    assert parse_request(typed) == parse_request(recipe)
+
+
+@pytest.mark.parametrize(
+    ("values", "where"),
+    [
+        ({"dish": "86mm"}, "dish"),
+        ({"corners": CORNERS, "plot": "10x7cm"}, "plot"),
+        ({"dish": "86mm", "area": "frame"}, "frame"),
+        ({"line": [0, 0, 10, 0], "line_length": "1cm"}, "frame"),
+        ({"area": "leaf", "mm_per_pixel": 0.1}, "leaf"),
+    ],
+)
+def test_the_area_goes_with_the_scale_unless_named(values: dict[str, Any], where: str) -> None:
+    assert parse_request(values).where == where
+
+
+@pytest.mark.parametrize(
+    ("values", "message"),
+    [
+        ({"kind": "stars"}, "KIND must be one of colonies, seedlings, lesions, spots, not 'stars'"),
+        ({"colour": "pink"}, r"COLOUR must be one of auto, grey, .*, not 'pink'"),
+        ({"polarity": 1}, "POLARITY must be one of auto, dark, bright, not 1"),
+        ({"diameter": "6-2mm"}, "DIAMETER must run from small to large"),
+        ({"diameter": "nan-2mm"}, "DIAMETER must be positive and finite"),
+        ({"diameter": 5}, "DIAMETER must be two lengths with a unit such as 2-6mm, not '5'"),
+        ({"highest_doubt": "1.5"}, "HIGHEST_DOUBT must be a number from 0 to 1, not '1.5'"),
+        ({"highest_doubt": "nan"}, "HIGHEST_DOUBT must be a number from 0 to 1"),
+        ({"mm_per_pixel": "-0.1"}, "MM_PER_PIXEL must be a positive number, not '-0.1'"),
+        ({"mm_per_pixel": "nan"}, "MM_PER_PIXEL must be a positive number, not 'nan'"),
+        ({"mm_per_pixel": "inf"}, "MM_PER_PIXEL must be a positive number, not 'inf'"),
+        ({"mm_per_pixel": True}, "MM_PER_PIXEL must be a positive number, not True"),
+        ({"dish": 86}, "DISH needs a unit"),
+        ({"dish": "86px"}, "86px is in pixels, but millimetres are needed"),
+        ({"dish": "-86mm"}, "DISH must be positive and finite"),
+        ({"line": "1,2,3"}, "LINE must be 4 numbers with commas between, not '1,2,3'"),
+        ({"line": "1,2,3,nan"}, "LINE must be 4 numbers with commas between"),
+        ({"line": 5}, "LINE must be 4 numbers with commas between, not 5"),
+        ({"corners": [[1, 2], [3, 4]]}, r"CORNERS must be 8 numbers with commas between, not \[\["),
+        ({"plot": "1000mm"}, "PLOT must be two lengths with a unit such as 1000x750mm"),
+        ({"area": "moon"}, "AREA must be one of dish, frame, plot, leaf or a GeoJSON file"),
+        ({"area": "moon.geojson"}, r"AREA names the file moon\.geojson, which does not exist"),
+        ({"inset": "0mm"}, "INSET must be positive and finite"),
+        ({"moons": 1}, "MOONS is not known; use one of kind, diameter"),
+        (
+            {"dish": "86mm", "mm_per_pixel": 1},
+            r"Two sources .* \(mm_per_pixel and dish\); keep one",
+        ),
+        (
+            {"line": "1,2,3,4"},
+            "The line and the line length go together, but only the line is given; give",
+        ),
+        ({"line_length": "5mm"}, "but only the line length is given; give both"),
+        (
+            {"corners": CORNERS},
+            "corners and the plot size go together, but only the corners is given",
+        ),
+        ({"plot": "10x7cm"}, "but only the plot size is given"),
+        ({"area": "plot"}, "The area plot needs the positions of its corners and its size"),
+        ({"inset": "5px"}, "The inset 5px has no edge to step in from; give an area as well"),
+        ({"inset": "1mm", "mm_per_pixel": 0.1}, "The inset 1mm has no edge to step in from"),
+    ],
+)
+def test_what_cannot_be_or_apply_is_refused(values: dict[str, Any], message: str) -> None:
+    with pytest.raises(OptionWrong, match=message):
+        parse_request(values, named=str.upper)
+
+
+def test_a_request_is_remembered_in_plain_words(tmp_path: Path) -> None:
+    (tmp_path / "a.geojson").write_text("{}")
+    request = parse_request(
+        {"diameter": "12-36mm", "line": [1, 2, 3, 4], "line_length": "5cm", "area": "a.geojson"},
+        folder=tmp_path,
+    )
+    asked = request.as_dict()
+    assert asked["diameter"] == ["12mm", "36mm"]
+    assert asked["line"] == [1, 2, 3, 4]
+    assert asked["line_length"] == "5cm"
+    assert asked["area"] == "a.geojson"
+    assert len(asked["area_sha256"]) == 64
+    assert "dish" not in asked
+    assert json.loads(json.dumps(asked)) == asked
+
+
+def test_another_polygon_in_the_same_file_is_another_request(tmp_path: Path) -> None:
+    file = tmp_path / "a.geojson"
+    file.write_text("{}")
+    request = parse_request({"area": str(file)})
+    first = request.as_dict()
+    file.write_text("{ }")
+    assert request.as_dict() != first
+
+
+def test_spots_are_found_and_put_on_a_sheet(tmp_path: Path) -> None:
+    places = scattered(30, seed=1)
+    path = write_discs(tmp_path / "a.png", places)
+    photograph, sheet = detect_photograph(
+        path, parse_request({"diameter": DIAMETER, "mm_per_pixel": 0.2})
+    )
+    assert len(sheet.spots) == 30
+    order = [int(np.argmin(np.hypot(*(sheet.spots.centres - place).T))) for place in places]
+    assert sorted(order) == list(range(30))
+    assert np.abs(sheet.spots.centres[order] - places).max() < 1.0
+    assert sheet.photograph.sha256 == photograph.sha256
+    assert (sheet.photograph.width, sheet.photograph.height) == (WIDTH, HEIGHT)
+    assert sheet.area.kind == "frame"
+    assert sheet.area.polygon.area == WIDTH * HEIGHT
+    assert sheet.scale is not None
+    assert sheet.scale.mm_per_px([[5, 5]])[0] == pytest.approx(0.2)
+    assert sheet.settings["request"] == {
+        "kind": "spots", "diameter": ["10px", "24px"], "colour": "auto", "polarity": "auto",
+        "highest_doubt": DetectOptions().highest_doubt, "mm_per_pixel": 0.2, "area": "frame",
+    }  # fmt: skip
+    assert sheet.tool_version == tool_version()
+    json.dumps(sheet.settings, allow_nan=False)
+
+
+def test_an_inset_steps_in_by_the_scale_of_the_picture(tmp_path: Path) -> None:
+    path = write_discs(tmp_path / "a.png", scattered(30, seed=1))
+    values = {"diameter": DIAMETER, "area": "frame", "inset": "4mm", "mm_per_pixel": 0.2}
+    _, sheet = detect_photograph(path, parse_request(values))
+    assert sheet.area.polygon.bounds == pytest.approx((19.5, 19.5, WIDTH - 20.5, HEIGHT - 20.5))
+    with pytest.raises(
+        OptionWrong, match="4mm cannot be turned into pixels, for no scale is known"
+    ):
+        detect_photograph(path, parse_request(values | {"mm_per_pixel": None}))
+
+
+def test_a_line_and_corners_give_the_scale(tmp_path: Path) -> None:
+    path = write_discs(tmp_path / "a.png", scattered(30, seed=1))
+    line = {"diameter": DIAMETER, "line": "10,10,210,10", "line_length": "5cm"}
+    _, by_line = detect_photograph(path, parse_request(line))
+    assert by_line.scale is not None
+    assert by_line.scale.mm_per_px([[0, 0]])[0] == pytest.approx(0.25)
+    corners = {"diameter": DIAMETER, "corners": "20,20,400,20,400,300,20,300", "plot": "190x140mm"}
+    _, by_corners = detect_photograph(path, parse_request(corners))
+    assert by_corners.scale is not None
+    assert by_corners.scale.to_mm([[400, 300]]) == pytest.approx(np.array([[190, 140]]))
+    assert by_corners.area.kind == "plot"
+    assert by_corners.area.polygon.area == pytest.approx(380 * 280)
+
+
+def test_a_polygon_says_where_spots_count(tmp_path: Path) -> None:
+    places = scattered(30, seed=1)
+    path = write_discs(tmp_path / "a.png", places)
+    ring = [[0, 0], [200, 0], [200, 300], [0, 300], [0, 0]]
+    (tmp_path / "a.geojson").write_text(json.dumps({"type": "Polygon", "coordinates": [ring]}))
+    values = {"diameter": DIAMETER, "area": "a.geojson"}
+    _, sheet = detect_photograph(path, parse_request(values, folder=tmp_path))
+    inside = (places[:, 0] <= 200) & (places[:, 1] <= 300)
+    assert len(sheet.spots) == inside.sum()
+    crossing = [[0, 0], [200, 300], [200, 0], [0, 300], [0, 0]]
+    (tmp_path / "a.geojson").write_text(json.dumps({"type": "Polygon", "coordinates": [crossing]}))
+    with pytest.raises(AreaWrong):
+        detect_photograph(path, parse_request(values, folder=tmp_path))
+
+
+def test_no_dish_in_the_picture_fails_the_photograph(tmp_path: Path) -> None:
+    path = write_discs(tmp_path / "a.png", scattered(30, seed=1))
+    with pytest.raises(AreaNotFound):
+        detect_photograph(path, parse_request({"dish": "86mm", "diameter": DIAMETER}))
