@@ -2,10 +2,12 @@
 
 from __future__ import annotations
 
+import os
 import subprocess
 import sys
 import xml.etree.ElementTree as ElementTree
 from dataclasses import replace
+from pathlib import Path
 
 import cv2
 import numpy as np
@@ -272,7 +274,7 @@ def test_svg_is_the_same_from_another_process():
     runs = [
         subprocess.run(
             [sys.executable, "-c", script], capture_output=True, text=True, check=True,
-            env={"PYTHONHASHSEED": seed, "PATH": ""},
+            cwd=Path(__file__).parents[2], env=os.environ | {"PYTHONHASHSEED": seed},
         ).stdout
         for seed in ("1", "2")
     ]  # fmt: skip
