@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Sequence
 
 import typer
@@ -11,6 +12,8 @@ from analyse.verdict import p_text
 from detect.terminal import number_text, show_table
 
 _HEADER = ("photograph", "count", "per cm2", "VMR", "X2/df", "p", "verdict")
+
+_MOST_NOTES = 6
 
 
 def show_findings(findings: Sequence[Findings]) -> None:
@@ -40,18 +43,33 @@ def _line(each: Findings) -> tuple[str, ...]:
         number_text(each.density.value) if each.density is not None else density,
         number_text(None if whole is None else whole.vmr),
         number_text(each.dispersion_all.vmr),
-        p_text(each.simulated.p_two_sided).removeprefix("p ").removeprefix("= "),
+        _p(each.simulated.p_two_sided),
         each.verdict,
     )
 
 
+def _p(value: float) -> str:
+    """Return a p for a table, a dash for none."""
+    if math.isnan(value):
+        return number_text(None)
+    return p_text(value).removeprefix("p ").removeprefix("= ")
+
+
 def _notes(findings: Sequence[Findings]) -> list[str]:
-    """Return reasons for care, each sentence once with the photographs it is about."""
+    """Return reasons for care: those of all once, those of a few by name, else where they are."""
     about: dict[str, list[str]] = {}
     for each in findings:
         for sentence in each.flag_sentences:
             about.setdefault(sentence, []).append(each.name)
-    return [
-        sentence if len(names) == len(findings) else f"{', '.join(names)}: {sentence}"
+    common = [sentence for sentence, names in about.items() if len(names) == len(findings)]
+    single = [
+        f"{', '.join(names)}: {sentence}"
         for sentence, names in about.items()
+        if sentence not in common
     ]
+    if len(single) > _MOST_NOTES:
+        names = {
+            name for sentence, names in about.items() if sentence not in common for name in names
+        }
+        single = [f"There are reasons for care with {len(names)} of them; the report names each."]
+    return common + single

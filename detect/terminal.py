@@ -91,4 +91,4 @@ def number_text(value: float | None, digits: int = 3) -> str:
 
 def _is_number(cell: str) -> bool:
     """Tell whether a cell is a number or stands for none."""
-    return cell in ("", "-") or cell.lstrip("+-<").replace(".", "", 1).replace("e-", "").isdigit()
+    return cell in ("", "-") or cell.lstrip("+-< ").replace(".", "", 1).replace("e-", "").isdigit()
