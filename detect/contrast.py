@@ -74,6 +74,8 @@ def contrast_map(
     colour: Colour = "auto",
     polarity: Polarity = "auto",
     flipped: bool = False,
+    calming: float = 0.5,
+    many_colours: bool = False,
 ) -> Contrast:
     """Measure how far each pixel stands out from the local background.
 
@@ -92,6 +94,11 @@ def contrast_map(
         named colour has its own direction.
     flipped : bool
         Take the side that "auto" would not have taken.
+    calming : float
+        Power of a channel's spread on the ground by which it is divided before a direction is
+        learned: 0 gives plain principal axes, 1 has no say for channels in which the ground varies.
+    many_colours : bool
+        Objects of several colours are looked for: departures across the direction count as well.
 
     Returns
     -------
@@ -106,7 +113,7 @@ def contrast_map(
     """
     background = _background(lab, inside, smallest_px, largest_px)
     signed, direction, sureness = _project(
-        lab - background, inside, colour, polarity, largest_px, flipped
+        lab - background, inside, colour, polarity, largest_px, flipped, calming
     )
     noise, threshold = _noise_and_threshold(signed[inside])
     ground = inside & (signed < 0.5 * threshold)
@@ -117,6 +124,9 @@ def contrast_map(
         signed = np.asarray((lab - background) @ direction.astype(np.float32))
         if colour == "green":
             signed = _only_hued(signed, lab - background, direction)
+        noise, threshold = _noise_and_threshold(signed[inside])
+    if many_colours and colour == "auto":
+        signed = _with_other_colours(signed, lab - background, direction, ground)
         noise, threshold = _noise_and_threshold(signed[inside])
     signed[~inside] = 0.0
     return Contrast(np.ascontiguousarray(signed), noise, threshold, direction, sureness)
@@ -208,6 +218,7 @@ def _project(
     polarity: Polarity,
     largest_px: float,
     flipped: bool,
+    calming: float,
 ) -> tuple[Map, NDArray[np.float64], float]:
     """Deviation along the wanted direction, the direction from ground to object, and sureness."""
     if colour in _DIRECTIONS:
@@ -220,7 +231,7 @@ def _project(
     if colour == "grey":
         direction = np.array([1.0, 0.0, 0.0])
     else:
-        direction = _principal_axis(_thin(deviation[inside]))
+        direction = _principal_axis(_thin(deviation[inside]), calming)
     signed = deviation @ direction.astype(np.float32)
     if polarity == "auto":
         evidence = _evidence(signed, inside, largest_px) * (-1.0 if flipped else 1.0)
@@ -230,14 +241,35 @@ def _project(
     return signed * np.float32(side), direction * side, abs(float(evidence))
 
 
+def _with_other_colours(
+    signed: Map, deviation: Map, direction: NDArray[np.float64], ground: Mask
+) -> Map:
+    """Contrast raised where the colour departs across the direction, further than the ground does.
+
+    An orange colony among cream ones hardly stands out along the axis of cream.
+    """
+    across2 = (deviation**2).sum(axis=2) - (deviation @ direction.astype(np.float32)) ** 2
+    across = np.sqrt(np.maximum(across2, 0.0))
+    usual = ground if ground.any() else np.ones_like(ground)
+    extra = np.maximum(across - float(np.percentile(_thin(across[usual]), 99)), 0.0)
+    raised = np.where(signed > -0.5 * extra, signed + extra, signed)
+    return np.asarray(raised, dtype=np.float32)
+
+
 def _only_hued(signed: Map, deviation: Map, direction: NDArray[np.float64]) -> Map:
     """Contrast of a named colour where the hue itself departs; elsewhere none above zero."""
     hue = deviation[..., 1:] @ direction[1:].astype(np.float32)
     return np.where(hue > 2.0, signed, np.minimum(signed, 0.0)).astype(np.float32)
 
 
-def _principal_axis(sample: Map) -> NDArray[np.float64]:
-    """First principal axis about zero of the clear deviations, lengths capped at their median."""
+def _principal_axis(sample: Map, calming: float) -> NDArray[np.float64]:
+    """First principal axis about zero of the clear deviations, lengths capped at their median.
+
+    Channels in which the ground itself varies much have less say.
+    """
+    spread = 1.4826 * np.median(np.abs(sample), axis=0) + 0.5
+    metric = (spread / spread.max()) ** -calming
+    sample = sample * metric
     length = np.linalg.norm(sample, axis=1)
     clear = sample[length > 3.0 * np.percentile(length, 30)]
     if len(clear) < 20:
@@ -245,7 +277,8 @@ def _principal_axis(sample: Map) -> NDArray[np.float64]:
     length = np.maximum(np.linalg.norm(clear, axis=1), 1e-6)
     capped = (clear * np.minimum(1.0, np.median(length) / length)[:, None]).astype(np.float64)
     _, vectors = np.linalg.eigh(capped.T @ capped)
-    return np.asarray(vectors[:, -1])
+    axis = vectors[:, -1] * metric
+    return np.asarray(axis / np.linalg.norm(axis))
 
 
 def _evidence(signed: Map, inside: Mask, largest_px: float) -> float:

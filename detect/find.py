@@ -10,16 +10,16 @@ from numpy.typing import NDArray
 
 from detect.area import StudyArea
 from detect.choice import choose
-from detect.doubt import GENERAL, DoubtModel
+from detect.doubt import MODELS, DoubtModel
 from detect.errors import OptionWrong
 from detect.judge import Judgement, judged
-from detect.wanted import DetectOptions, Kind
 from detect.outline import settle_outlines
 from detect.photograph import Photograph
 from detect.scale import Scale
 from detect.sizes import learn_diameters
 from detect.spots import Spots
 from detect.view import View, view_of
+from detect.wanted import DetectOptions, Kind
 
 # Diameters looked for when none are given but a scale is known, in millimetres (common practice).
 _USUAL_MM: dict[Kind, tuple[float, float]] = {
@@ -45,7 +45,7 @@ def find_spots(
     options: DetectOptions,
     *,
     scale: Scale | None = None,
-    model: DoubtModel = GENERAL,
+    model: DoubtModel | None = None,
 ) -> Found:
     """Find the objects of a photograph within its study area.
 
@@ -57,8 +57,8 @@ def find_spots(
     options : DetectOptions
     scale : Scale or None
         Needed when diameters are given in millimetres.
-    model : DoubtModel
-        Weights of the doubt.
+    model : DoubtModel or None
+        Weights of the doubt; None takes those of the kind.
 
     Returns
     -------
@@ -70,6 +70,7 @@ def find_spots(
     OptionWrong
         If diameters are in millimetres and no scale is known, or exceed the area.
     """
+    model = model or MODELS[options.kind]
     smallest, largest = _diameters(photograph, area, options, scale, model)
     view = view_of(photograph, area, shrink=min(1.0, _WORKING_PX / smallest))
     small, large = smallest * view.shrink, largest * view.shrink

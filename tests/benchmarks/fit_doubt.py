@@ -1,16 +1,18 @@
 """Fit the weights of the doubt model on hand-marked photographs, and say what they are worth.
 
-    python tests/benchmarks/fit_doubt.py
+    python tests/benchmarks/fit_doubt.py [FOLDER OF DRAWN SCENES ...]
 
 For every set the weights are fitted on the other sets and scored on it (leave one set out); the
-weights printed last are fitted on all of them. A candidate is right when its centre lies within
+weights printed are fitted on all of them. Folders drawn by `own_scenes.py` give the kinds' weights. A candidate is right when its centre lies within
 half a radius (at least 3 px) of a mark, its size within a factor 1.5 of the mark's where that is
 known, and no second mark lies well inside it. Each set has the same say.
 """
 
 from __future__ import annotations
 
+import csv
 import sys
+from dataclasses import dataclass, replace
 from pathlib import Path
 
 import numpy as np
@@ -26,13 +28,17 @@ from detect.area import StudyArea
 from detect.choice import choose
 from detect.doubt import FEATURES, GENERAL, DoubtModel, doubt_of, features
 from detect.judge import judged
-from detect.lengths import Length
-from detect.wanted import DetectOptions
-from detect.photograph import read_photograph
+from detect.lengths import Length, parse_pair
+from detect.photograph import Photograph, read_photograph
+from detect.regions import Candidates
 from detect.view import view_of
+from detect.wanted import DetectOptions, Kind
 from tests.benchmarks.hand_marked import SETS, MarkedSet
 
-RIDGE = 1000.0  # against standardised weights; each set weighs 5,000
+RIDGE = 100.0  # against standardised weights; each set weighs 5,000
+KIND_RIDGE = 20.0
+CARRIED = ("size", "faint", "slope", "rough", "texture")
+DIAMETERS: dict[Kind, str] = {"colonies": "1.2-6mm", "seedlings": "12-36mm", "lesions": "1.4-5mm"}
 
 
 def right(
@@ -53,101 +59,204 @@ def right(
     return good & (within <= 1)
 
 
-def collect(marked: MarkedSet) -> list[dict[str, object]]:
-    low, high = marked.diameter
-    options = DetectOptions(
-        diameter=(Length(low, "px"), Length(high, "px")),
-        colour=marked.colour,  # type: ignore[arg-type]
+@dataclass(frozen=True)
+class Scene:
+    """Candidates of one photograph, what was measured, and which of them are right."""
+
+    candidates: Candidates
+    xy: NDArray[np.float64]
+    measured: NDArray[np.float64]
+    good: NDArray[np.bool_]
+    edge: NDArray[np.bool_]
+    truth: NDArray[np.float64]
+    radius: NDArray[np.float64]
+
+    @property
+    def use(self) -> NDArray[np.bool_]:
+        return self.good | ~self.edge
+
+
+def scene(
+    photograph: Photograph,
+    area: StudyArea,
+    options: DetectOptions,
+    truth: NDArray[np.float64],
+    radius: NDArray[np.float64],
+    *,
+    mm_per_px: float | None = None,
+    usual: float = 6.0,
+    match_size: bool = True,
+) -> Scene:
+    low, high = (length.to_px(mm_per_px) for length in options.diameter)
+    view = view_of(photograph, area, shrink=min(1.0, 8.0 / low))
+    small, large = low * view.shrink, high * view.shrink
+    found = judged(view, small, large, options, GENERAL)
+    xy = np.column_stack(view.to_photograph(found.candidates.x, found.candidates.y))
+    measured = features(
+        found.candidates, noise=found.contrast.noise, smallest_px=small, largest_px=large
     )
-    rows = []
+    size = radius if match_size else np.full_like(radius, np.nan)
+    good = right(xy, found.candidates.diameter / view.shrink, truth, size, usual)
+    return Scene(found.candidates, xy, measured, good, ~area.contains(xy), truth, radius)
+
+
+def marked_scenes(marked: MarkedSet) -> list[Scene]:
+    options = DetectOptions(
+        diameter=tuple(Length(v, "px") for v in marked.diameter), colour=marked.colour
+    )
+    scenes = []
     for path in marked.images:
         photograph = read_photograph(path)
-        area = StudyArea(
-            shapely.box(-0.5, -0.5, photograph.width - 0.5, photograph.height - 0.5), "frame", ""
-        )
-        view = view_of(photograph, area, shrink=min(1.0, 8.0 / low))
-        found = judged(view, low * view.shrink, high * view.shrink, options, GENERAL)
-        x, y = view.to_photograph(found.candidates.x, found.candidates.y)
-        xy = np.column_stack([x, y])
+        whole = shapely.box(-0.5, -0.5, photograph.width - 0.5, photograph.height - 0.5)
         truth, radius = marked.truth(path.stem)
-        measured = features(
-            found.candidates, smallest_px=low * view.shrink, largest_px=high * view.shrink
+        made = scene(
+            photograph,
+            StudyArea(whole, "frame", ""),
+            options,
+            truth,
+            radius,
+            usual=marked.usual_radius,
         )
-        good = right(
-            xy, found.candidates.diameter / view.shrink, truth, radius, marked.usual_radius
+        inner = shapely.box(
+            marked.margin,
+            marked.margin,
+            photograph.width - 1 - marked.margin,
+            photograph.height - 1 - marked.margin,
         )
-        m = marked.margin
-        edge = (xy < m).any(axis=1) | (xy > [photograph.width - 1 - m, photograph.height - 1 - m]).any(axis=1)
-        rows.append(
-            {
-                "candidates": found.candidates,
-                "xy": xy,
-                "X": measured,
-                "good": good,
-                "use": good | ~edge,
-                "edge": edge,
-                "truth": truth,
-                "radius": radius,
-            }
+        edge = ~shapely.intersects_xy(inner, made.xy[:, 0], made.xy[:, 1])
+        scenes.append(
+            replace(made, edge=edge, radius=np.where(np.isnan(radius), marked.usual_radius, radius))
         )
-    return rows
+    return scenes
 
 
-def fit(rows: list[list[dict[str, object]]]) -> DoubtModel:
-    blocks, labels, weights = [], [], []
-    for photographs in rows:
-        x = np.vstack([r["X"][r["use"]] for r in photographs])
-        y = np.concatenate([r["good"][r["use"]] for r in photographs])
-        blocks.append(x)
-        labels.append(y)
-        weights.append(np.full(len(y), 5000 / len(y)))
-    x = np.vstack(blocks)
-    y = np.concatenate(labels).astype(float)
-    w = np.concatenate(weights)
+def drawn_scenes(folder: Path, kind: Kind) -> list[Scene]:
+    """Scenes of one kind that `own_scenes.py` drew, with their true areas."""
+    with (folder / "truth" / "trial.csv").open(newline="") as file:
+        rows = [row for row in csv.DictReader(file) if row["kind"] == kind]
+    options = DetectOptions(
+        kind=kind, diameter=parse_pair(DIAMETERS[kind], name="d", separator="-")
+    )
+    scenes = []
+    for row in rows:
+        stem = Path(row["photograph"]).stem
+        photograph = read_photograph(folder / f"{stem}.jpg")
+        area = true_area(row, folder, photograph)
+        with (folder / "truth" / f"{stem}.csv").open(newline="") as file:
+            marks = np.array(
+                [[float(r[c]) for c in ("x", "y", "r")] for r in csv.DictReader(file)]
+            ).reshape(-1, 3)
+        marks = marks[area.contains(marks[:, :2])]
+        mm_per_px = float(row["mm_per_px"])
+        scenes.append(
+            scene(
+                photograph, area, options, marks[:, :2], marks[:, 2],
+                mm_per_px=mm_per_px, usual=7.0 / mm_per_px, match_size=kind != "seedlings",
+            )
+        )  # fmt: skip
+    return scenes
+
+
+def true_area(row: dict[str, str], folder: Path, photograph: Photograph) -> StudyArea:
+    if row["kind"] == "colonies":
+        inset = 1.0 / float(row["mm_per_px"])
+        a, b = float(row["semi_a"]) - inset, float(row["semi_b"]) - inset
+        turn, t = np.radians(float(row["angle_deg"])), np.linspace(0, 2 * np.pi, 361)[:-1]
+        u, v = a * np.cos(t), b * np.sin(t)
+        x = float(row["cx"]) + u * np.cos(turn) - v * np.sin(turn)
+        y = float(row["cy"]) + u * np.sin(turn) + v * np.cos(turn)
+        return StudyArea(shapely.Polygon(np.column_stack([x, y])), "dish", "true")
+    if row["kind"] == "seedlings":
+        corners = [(float(row[f"x{k}"]), float(row[f"y{k}"])) for k in (1, 2, 3, 4)]
+        return StudyArea(shapely.Polygon(corners), "plot", "true")
+    with (folder / "truth" / "outlines" / f"{Path(row['photograph']).stem}.csv").open(
+        newline=""
+    ) as file:
+        line = [(float(r["x"]), float(r["y"])) for r in csv.DictReader(file)]
+    return StudyArea(shapely.Polygon(line).buffer(0), "leaf", "true")
+
+
+def fit(
+    groups: list[list[Scene]], *, around: DoubtModel | None = None, ridge: float = RIDGE
+) -> DoubtModel:
+    """Logistic regression with a ridge around a model (zero unless given); each group weighs 5,000.
+
+    Around nothing, only five features are fitted: the others do not carry over from one subject to
+    the next (leave one set out).
+    """
+    chosen = CARRIED if around is None else FEATURES
+    columns = [FEATURES.index(name) for name in chosen]
+    x = np.vstack([s.measured[s.use][:, columns] for group in groups for s in group])
+    y = np.concatenate([s.good[s.use] for group in groups for s in group]).astype(float)
+    sizes = [sum(int(s.use.sum()) for s in group) for group in groups]
+    w = np.concatenate([np.full(n, 5000 / n) for n in sizes])
     spread = x.std(axis=0)
     z = np.column_stack([np.ones(len(x)), x / spread])
+    centre = np.zeros(z.shape[1])
+    if around is not None:
+        centre = np.r_[around.intercept, around.weights * spread]
 
     def loss(beta: NDArray[np.float64]) -> tuple[float, NDArray[np.float64]]:
         eta = z @ beta
-        ridge = RIDGE * np.r_[0.0, beta[1:]]
-        value = (w * (np.logaddexp(0, eta) - y * eta)).sum() + 0.5 * ridge @ beta
-        return float(value), z.T @ (w * (1 / (1 + np.exp(-eta)) - y)) + ridge
+        pull = ridge * np.r_[0.0, (beta - centre)[1:]]
+        value = (w * (np.logaddexp(0, eta) - y * eta)).sum() + 0.5 * pull @ (beta - centre)
+        return float(value), z.T @ (w * (1 / (1 + np.exp(-eta)) - y)) + pull
 
-    beta = minimize(loss, np.zeros(z.shape[1]), jac=True, method="L-BFGS-B").x
-    values = [float(v) for v in np.r_[beta[0], beta[1:] / spread]]
-    return DoubtModel(*values)
+    beta = minimize(loss, centre, jac=True, method="L-BFGS-B").x
+    weights = dict.fromkeys(FEATURES, 0.0)
+    weights |= {name: float(v) for name, v in zip(chosen, beta[1:] / spread, strict=True)}
+    return DoubtModel(intercept=float(beta[0]), **weights)
 
 
-def score(marked: MarkedSet, photographs: list[dict[str, object]], model: DoubtModel, cut: float) -> tuple[float, float]:
+def score(scenes: list[Scene], model: DoubtModel) -> tuple[float, float]:
+    """F1 and count error at the doubt the tool keeps."""
     hits = spots = marks = 0
-    for r in photographs:
-        doubt = doubt_of(r["X"], model)
-        rows = choose(r["candidates"], doubt, highest_doubt=cut)
-        radius = np.where(np.isnan(r["radius"]), marked.usual_radius, r["radius"])
-        match = match_spots(r["xy"][rows], r["truth"], radius)
+    for s in scenes:
+        doubt = doubt_of(s.measured, model)
+        rows = choose(s.candidates, doubt, highest_doubt=DetectOptions().highest_doubt)
+        match = match_spots(s.xy[rows], s.truth, s.radius)
         missed = np.ones(len(rows), dtype=bool)
         missed[match.found] = False
         hits += len(match)
-        spots += len(rows) - int((missed & r["edge"][rows]).sum())
-        marks += len(r["truth"])
-    return 2 * hits / max(1, spots + marks), spots / marks - 1
+        spots += len(rows) - int((missed & s.edge[rows]).sum())
+        marks += len(s.truth)
+    return 2 * hits / max(1, spots + marks), spots / max(1, marks) - 1
+
+
+def show(name: str, model: DoubtModel) -> None:
+    print(f"{name} = DoubtModel(")
+    for weight in ("intercept", *FEATURES):
+        print(f"    {weight}={getattr(model, weight):.3f},")
+    print(")")
 
 
 def main() -> None:
-    data = {marked.name: collect(marked) for marked in SETS}
-    fitted = [marked.name for marked in SETS if marked.name != "coins"]
+    data = {marked.name: marked_scenes(marked) for marked in SETS}
+    fitted = [name for name in data if name != "coins"]
     scores = []
-    for marked in SETS:
-        model = fit([data[name] for name in fitted if name != marked.name])
-        f1, error = score(marked, data[marked.name], model, 0.5)
+    for name, scenes in data.items():
+        f1, error = score(scenes, fit([data[other] for other in fitted if other != name]))
         scores.append(f1)
-        print(f"{marked.name:10s} left out: F1 {f1:.3f}, count error {100 * error:+.0f} %")
+        print(f"{name:10s} left out: F1 {f1:.3f}, count error {100 * error:+.0f} %")
     print(f"mean without coins {np.mean(scores[:5]):.4f}")
-    model = fit([data[name] for name in fitted])
-    inside = [score(m, data[m.name], model, 0.5)[0] for m in SETS]
-    print("fitted on all:", " ".join(f"{m.name} {f:.3f}" for m, f in zip(SETS, inside, strict=True)))
-    for name in ("intercept", *FEATURES):
-        print(f"    {name}={getattr(model, name):.3f},")
+    general = fit([data[name] for name in fitted])
+    print("fitted on all:", " ".join(f"{n} {score(s, general)[0]:.3f}" for n, s in data.items()))
+    show("GENERAL", general)
+    for folder in map(Path, sys.argv[1:]):
+        for kind in DIAMETERS:
+            scenes = drawn_scenes(folder, kind)
+            if not scenes:
+                continue
+            left = [
+                score([s], fit([scenes[:k] + scenes[k + 1 :]], around=general, ridge=KIND_RIDGE))
+                for k, s in enumerate(scenes)
+            ]
+            weight = [len(s.truth) for s in scenes]
+            before = score(scenes, general)[0]
+            print(
+                f"{kind}: F1 with GENERAL {before:.3f}, left out {np.average([f for f, _ in left], weights=weight):.3f}"
+            )
+            show(kind.upper(), fit([scenes], around=general, ridge=KIND_RIDGE))
 
 
 if __name__ == "__main__":
