@@ -160,9 +160,9 @@ def _settings(findings: Findings, sheet: Sheet | None) -> list[tuple[str, str]]:
     ]
     if sheet is not None:
         listed += [
-            (_ASKED.get(name, name.replace("_", " ").capitalize()), plain(value))
-            for name, value in sheet.settings.items()
-            if value
+            (title, plain(sheet.settings[name]))
+            for name, title in _ASKED.items()
+            if sheet.settings.get(name)
         ]
         listed.append(("Detected with version", sheet.tool_version))
     return listed

@@ -141,16 +141,17 @@ def method_words(findings: Findings) -> list[str]:
         joined = settings["joined"]
         cut = f"{several(clipped, 'quadrat')} {'is' if clipped == 1 else 'are'} not whole"
         also = (
-            f"; {several(joined, 'cell')} with less than {percent(settings['join_below'])} of its area"
-            " inside was joined to a neighbour, so that no spot is lost"
-            if joined == 1
-            else f"; {several(joined, 'cell')} with less than {percent(settings['join_below'])} of their"
-            " area inside were joined to neighbours, so that no spot is lost"
+            f"; cells joined to a neighbour, because less than {percent(settings['join_below'])} of"
+            f" them lies inside: {joined:,}"
         )
         text.append(f"{cut}{also if joined else ''}. Expected counts go by area.")
     if findings.n:
+        few = findings.verdict == "too few to tell"
+        rests = (
+            "No verdict rests on the p values; they are those of" if few else "The verdict rests on"
+        )
         text.append(
-            f"The verdict rests on X\u00b2 = \u03a3 (x \u2212 E)\u00b2 / E over all quadrats, compared with"
+            f"{rests} X\u00b2 = \u03a3 (x \u2212 E)\u00b2 / E over all quadrats, compared with"
             f" {findings.simulated.simulations:,} sets of {n} placed at random in the same quadrats"
             f" (seed {findings.seed}); two-sided at {percent(settings['level'])}."
         )
@@ -179,6 +180,7 @@ def number_rows(findings: Findings) -> list[tuple[str, list[str], bool]]:
     )
     one = whole is not None and whole.q == everything.q
     columns: list[Dispersion | None] = [everything] if one else [whole, everything]
+    judgeable = findings.verdict != "too few to tell"
     ratio = "VMR" if one else "VMR; X\u00b2/df for all"
 
     def row(name: str, value: Any) -> tuple[str, list[str], bool]:
@@ -198,7 +200,7 @@ def number_rows(findings: Findings) -> list[tuple[str, list[str], bool]]:
         row("p, chi-square, two-sided", lambda d: p_words(d.p_two_sided)),
         row("p, chi-square, clumped side", lambda d: p_words(d.p_clumped)),
         row("p, chi-square, even side", lambda d: p_words(d.p_even)),
-        judged("p, simulated, two-sided", simulated.p_two_sided, rests=findings.n > 0),
+        judged("p, simulated, two-sided", simulated.p_two_sided, rests=judgeable),
         judged("p, simulated, clumped side", simulated.p_clumped),
         judged("p, simulated, even side", simulated.p_even),
     ]

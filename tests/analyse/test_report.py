@@ -175,6 +175,12 @@ def test_the_settings_lead_back_to_the_photograph(rendered):
         assert said in text
 
 
+def test_the_report_does_not_tell_where_files_lie():
+    sheet = sheet_of(scattered(30))
+    sheet = replace(sheet, settings=sheet.settings | {"photograph_at": "../secret/bed.png"})
+    assert "secret" not in _html(render_page(findings_of(sheet), sheet, photograph()))
+
+
 def test_names_factors_titles_and_reasons_are_escaped():
     nasty = "<script>alert('&amp;')</script>\"><img src=x onerror=y>.png"
     sheet = sheet_of(scattered(30), name=nasty)
@@ -264,6 +270,8 @@ def test_few_or_no_spots_make_a_page_without_nan(n, matrix):
     page = _Page(_html(render_page(findings, sheet, photograph())))
     assert findings.sentence in page.text
     assert "too few to tell" in page.text
+    assert "the verdict rests on this" not in page.text
+    assert ("No verdict rests on the p values" in page.text) == (n > 0)
     for wrong in ("nan", "None", "inf "):
         assert wrong not in page.text
     assert f"Count {several(n, 'spot')}" in page.text
@@ -429,3 +437,13 @@ def test_sparse_spots_are_given_per_square_metre_too():
     )  # Garwood 1936: 28.577 and 54.469 for a count of 40
     side = findings.settings["side"]
     assert f"squares of {side:g} mm, a side that follows" in quadrats_words(findings)
+
+
+def test_the_method_tells_of_clipped_and_joined_quadrats():
+    findings = findings_of(sheet_of(scattered(61), matrix=TILT))
+    clipped, joined = int((~findings.counts.whole).sum()), findings.settings["joined"]
+    assert clipped > 1
+    assert joined > 0
+    said = " ".join(method_words(findings)).replace("\u00a0", " ")
+    assert f"{clipped} quadrats are not whole; cells joined to a neighbour" in said
+    assert f"less than 25 % of them lies inside: {joined}. Expected counts go by area." in said
