@@ -2,16 +2,23 @@
 
 from __future__ import annotations
 
+import json
 from dataclasses import dataclass
-from typing import Any, Literal
+from pathlib import Path
+from typing import TYPE_CHECKING, Any, Literal
 
 import numpy as np
 import shapely
 from numpy.typing import ArrayLike, NDArray
-from shapely.geometry import mapping, shape
+from shapely.geometry import Polygon, box, mapping, shape
 from shapely.geometry.base import BaseGeometry
 
 from detect.errors import AreaWrong
+from detect.leaf import find_leaf
+
+if TYPE_CHECKING:
+    from detect.dish import Dish
+    from detect.photograph import Photograph
 
 AreaKind = Literal["dish", "plot", "leaf", "frame", "polygon"]
 
@@ -68,3 +75,159 @@ class StudyArea:
     def from_dict(cls, values: dict[str, Any]) -> StudyArea:
         """Return the area a file holds."""
         return cls(shape(values["geometry"]), values["kind"], str(values["note"]))
+
+
+def dish_area(dish: Dish, *, inset_px: float = 0.0) -> StudyArea:
+    """Return the inside of a dish, its edge stepped inwards by `inset_px` pixels.
+
+    Raises
+    ------
+    AreaWrong
+        If the inset is negative or swallows the dish.
+    """
+    inner = dish.inner
+    seen = f"dish found ({100 * dish.quality:.0f} % of its edge seen)"
+    return _stepped_in(Polygon(inner.outline(720)), "dish", seen, inset_px)
+
+
+def plot_area(corners_px: ArrayLike, *, inset_px: float = 0.0) -> StudyArea:
+    """Return the plot between four corners (4, 2), its edge stepped inwards by `inset_px` pixels.
+
+    Raises
+    ------
+    AreaWrong
+        If the corners cross, or the inset is negative or swallows the plot.
+    """
+    outline = Polygon(np.asarray(corners_px, dtype=np.float64).reshape(-1, 2))
+    return _stepped_in(outline, "plot", "plot between its corners", inset_px)
+
+
+def leaf_area(photograph: Photograph, *, inset_px: float = 0.0) -> StudyArea:
+    """Find the leaf of a photograph and return it, its edge stepped inwards by `inset_px` pixels.
+
+    Raises
+    ------
+    AreaNotFound
+        If no leaf is seen.
+    AreaWrong
+        If the inset is negative or swallows the leaf.
+    """
+    outline = find_leaf(photograph)
+    holes = len(outline.interiors)
+    note = "leaf found" if not holes else f"leaf found, without its {holes} hole{'s'[: holes - 1]}"
+    return _stepped_in(outline, "leaf", note, inset_px)
+
+
+def frame_area(width: int, height: int, *, inset_px: float = 0.0) -> StudyArea:
+    """Return the whole picture, pixel edge to pixel edge, stepped inwards by `inset_px` pixels.
+
+    Raises
+    ------
+    AreaWrong
+        If the inset is negative or swallows the picture.
+    """
+    return _stepped_in(box(-0.5, -0.5, width - 0.5, height - 0.5), "frame", "whole frame", inset_px)
+
+
+def polygon_area(path: Path, width: int, height: int, *, inset_px: float = 0.0) -> StudyArea:
+    """Read a study area drawn by hand.
+
+    Parameters
+    ----------
+    path : Path
+        A GeoJSON file with one Polygon or MultiPolygon (alone, as a Feature, or as the only one of
+        a FeatureCollection) in pixel coordinates, x right and y down.
+    width, height : int
+        Size of the picture, in which the outline must lie.
+    inset_px : float
+        How far the edge steps inwards.
+
+    Returns
+    -------
+    StudyArea
+
+    Raises
+    ------
+    AreaWrong
+        If the file cannot be read, holds no such outline, the outline crosses itself or leaves
+        the picture, or the inset is negative or swallows it.
+
+    References
+    ----------
+    RFC 7946, "The GeoJSON format" (2016), section 3.
+    """
+    outline = _one_polygon(_json_of(path), path.name)
+    area = StudyArea(outline, "polygon", f"polygon from {path.name}")
+    frame = box(-0.5, -0.5, width - 0.5, height - 0.5)
+    if not frame.buffer(1e-6).covers(outline):
+        seen = ", ".join(f"{bound:g}" for bound in outline.bounds)
+        raise AreaWrong(
+            f"The polygon in {path.name} reaches from x, y to x, y of {seen}, out of the picture of"
+            f" {width} x {height} pixels; draw it in pixels of this picture."
+        )
+    return _stepped_in(area.polygon, "polygon", area.note, inset_px)
+
+
+def _stepped_in(outline: BaseGeometry, kind: AreaKind, note: str, inset_px: float) -> StudyArea:
+    """Step an outline inwards and say so in the note."""
+    if not (np.isfinite(inset_px) and inset_px >= 0):
+        raise AreaWrong(f"The inset must be 0 or a positive length, not {inset_px:g} pixels.")
+    whole = StudyArea(outline, kind, note)
+    if inset_px == 0:
+        return whole
+    inner = outline.buffer(-inset_px)
+    if inner.is_empty:
+        raise AreaWrong(
+            f"The inset of {inset_px:g} pixels leaves nothing of the {kind}; give a smaller one."
+        )
+    return StudyArea(inner, kind, f"{note}, inset by {inset_px:.1f} pixels")
+
+
+def _json_of(path: Path) -> Any:
+    """Read a JSON file; every way this can fail becomes one sentence."""
+    try:
+        return json.loads(path.read_text(encoding="utf-8"))
+    except FileNotFoundError as error:
+        raise AreaWrong(f"There is no polygon file {path}; check the path.") from error
+    except OSError as error:
+        reason = (error.strerror or "unknown reason").lower()
+        raise AreaWrong(f"The polygon file {path} cannot be opened ({reason}).") from error
+    except ValueError as error:
+        raise AreaWrong(
+            f"The polygon file {path.name} is no JSON text; save the outline as GeoJSON."
+        ) from error
+
+
+def _one_polygon(values: Any, name: str) -> BaseGeometry:
+    """Return the one polygon of a GeoJSON value."""
+    kind = values.get("type") if isinstance(values, dict) else type(values).__name__
+    if kind == "FeatureCollection":
+        features = values.get("features")
+        if not isinstance(features, list) or len(features) != 1:
+            n = len(features) if isinstance(features, list) else 0
+            raise AreaWrong(
+                f"The polygon file {name} holds {n} features; keep the one that is the study area."
+            )
+        return _one_polygon(features[0], name)
+    if kind == "Feature":
+        return _one_polygon(values.get("geometry"), name)
+    if kind not in ("Polygon", "MultiPolygon"):
+        raise AreaWrong(
+            f"The polygon file {name} holds a {kind}, not a Polygon or MultiPolygon;"
+            " save a closed outline as GeoJSON."
+        )
+    try:
+        outline = shape(values)
+        finite = bool(np.isfinite(shapely.get_coordinates(outline)).all())
+    except (KeyError, TypeError, ValueError, IndexError, shapely.errors.ShapelyError) as error:
+        raise _bad_positions(name) from error
+    if not finite or outline.is_empty:
+        raise _bad_positions(name)
+    return shapely.force_2d(outline)
+
+
+def _bad_positions(name: str) -> AreaWrong:
+    return AreaWrong(
+        f"The polygon file {name} has positions that are no pairs of numbers;"
+        " give rings of at least four x, y positions, the last equal to the first."
+    )

@@ -5,16 +5,23 @@ Coordinates are x right, y down, with pixel centres at whole numbers; points are
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass
-from typing import Any, Literal
+from typing import TYPE_CHECKING, Any, Literal
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
 from detect.errors import OptionWrong
 
+if TYPE_CHECKING:
+    from detect.dish import Dish
+
 ScaleSource = Literal["mm-per-pixel", "line", "dish", "corners"]
 Points = NDArray[np.float64]
+
+DISH_UNCERTAINTY = 0.002  # of a diameter: how well the agar's edge is told from its shading
+_EIGHTH = math.pi / 4
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -98,6 +105,204 @@ class Scale:
             float(values["relative_uncertainty"]),
             str(values["note"]),
         )
+
+
+def scale_from_line(
+    p: ArrayLike, q: ArrayLike, length_mm: float, *, end_uncertainty_px: float = 1.0
+) -> Scale:
+    """Take the scale from a line of known length.
+
+    Parameters
+    ----------
+    p, q : array_like of shape (2,)
+        Its ends in pixels, x and y.
+    length_mm : float
+        Its true length in millimetres.
+    end_uncertainty_px : float
+        Standard uncertainty of each end along the line, in pixels.
+
+    Returns
+    -------
+    Scale
+        The same number of millimetres per pixel everywhere.
+
+    Raises
+    ------
+    OptionWrong
+        If an end is not finite, both ends are the same, or the length is not positive.
+
+    Notes
+    -----
+    With u for each end and L pixels between them, the relative standard uncertainty is
+    sqrt(2) u / L: the two ends are read independently.
+
+    References
+    ----------
+    JCGM 100:2008, "Guide to the expression of uncertainty in measurement", section 5.1.2.
+
+    Examples
+    --------
+    >>> scale_from_line((10, 20), (410, 320), 50.0).to_mm([[10, 0]]).tolist()
+    [[1.0, 0.0]]
+    """
+    ends = _positions((p, q), 2, "The line's ends")
+    length_mm = _length_mm(length_mm, "The line's length")
+    length_px = float(np.hypot(*(ends[1] - ends[0])))
+    if length_px < 1.0:
+        raise OptionWrong(
+            f"The line's ends are {length_px:.2g} pixels apart; mark two ends that lie far apart."
+        )
+    mm_per_px = length_mm / length_px
+    return Scale(
+        np.diag([mm_per_px, mm_per_px, 1.0]),
+        "line",
+        math.sqrt(2) * end_uncertainty_px / length_px,
+        f"a line of {length_mm:g} mm, {length_px:.1f} pixels long",
+    )
+
+
+def scale_from_dish(dish: Dish, diameter_mm: float) -> Scale:
+    """Take the scale from a dish whose inner diameter is known.
+
+    Parameters
+    ----------
+    dish : Dish
+        The dish as found.
+    diameter_mm : float
+        Its inner diameter, where the agar meets the wall.
+
+    Returns
+    -------
+    Scale
+        The map that makes the inner ellipse a circle of that diameter: it stretches along the
+        ellipse's axes and turns nothing, so x stays right and y stays down.
+
+    Raises
+    ------
+    OptionWrong
+        If the diameter is not positive.
+
+    Notes
+    -----
+    With the scatter s of the edge about the ellipse of mean radius r, the relative standard
+    uncertainty is sqrt(0.002^2 + (s / r)^2). The scatter is not divided by the number of edge
+    points, for neighbouring ones err together; 0.2 % is what shading at the edge leaves open even
+    where it is smooth (our own measurements on drawn dishes).
+    """
+    diameter_mm = _length_mm(diameter_mm, "The dish's inner diameter")
+    inner = dish.inner
+    stretch = np.diag([0.5 * diameter_mm / inner.semi_a, 0.5 * diameter_mm / inner.semi_b])
+    matrix = np.eye(3)
+    matrix[:2, :2] = inner.axes @ stretch @ inner.axes.T
+    relative = math.hypot(DISH_UNCERTAINTY, dish.scatter_px / inner.mean_radius)
+    across = f"{2 * inner.semi_a:.1f} by {2 * inner.semi_b:.1f} pixels"
+    return Scale(
+        matrix, "dish", relative, f"the dish's inner diameter of {diameter_mm:g} mm, {across}"
+    )
+
+
+def scale_from_corners(
+    corners_px: ArrayLike, width_mm: float, height_mm: float, *, end_uncertainty_px: float = 1.0
+) -> Scale:
+    """Take the scale from the four corners of a rectangle of known sides.
+
+    Parameters
+    ----------
+    corners_px : array_like of shape (4, 2)
+        Top left, top right, bottom right, bottom left, as they are seen, in pixels.
+    width_mm, height_mm : float
+        True length of the top and of the left side.
+    end_uncertainty_px : float
+        Standard uncertainty of each corner along a side, in pixels.
+
+    Returns
+    -------
+    Scale
+        The homography of the rectangle's plane, with millimetres counted from the top left corner.
+
+    Raises
+    ------
+    OptionWrong
+        If a corner is not finite, the corners do not make an outline that bulges everywhere, are
+        in another order, or a side is not positive.
+
+    Notes
+    -----
+    The relative standard uncertainty is that of the shortest side, sqrt(2) u / L, as for a line.
+
+    References
+    ----------
+    R. Hartley and A. Zisserman, "Multiple view geometry in computer vision", 2nd ed. (2004),
+    section 4.1: a homography from four points.
+    """
+    corners = _positions(corners_px, 4, "The corners")
+    width_mm = _length_mm(width_mm, "The plot's width")
+    height_mm = _length_mm(height_mm, "The plot's height")
+    _check_corners(corners)
+    true = np.array([[0, 0], [width_mm, 0], [width_mm, height_mm], [0, height_mm]])
+    sides = np.hypot(*(np.roll(corners, -1, axis=0) - corners).T)
+    return Scale(
+        _homography(corners, true),
+        "corners",
+        float(math.sqrt(2) * end_uncertainty_px / sides.min()),
+        f"four corners of a rectangle of {width_mm:g} x {height_mm:g} mm",
+    )
+
+
+def _positions(values: Any, n: int, name: str) -> Points:
+    """Check that there are `n` finite positions."""
+    points = np.asarray(values, dtype=np.float64)
+    if points.shape != (n, 2):
+        raise OptionWrong(
+            f"{name} must be {n} positions of x and y, not {points.size} numbers; give them in pixels."
+        )
+    if not np.isfinite(points).all():
+        raise OptionWrong(f"{name} must be finite numbers, not {points.tolist()}; give pixels.")
+    return points
+
+
+def _length_mm(value: float, name: str) -> float:
+    """Check that a known length is positive and finite."""
+    if not (math.isfinite(value) and value > 0):
+        raise OptionWrong(f"{name} must be a positive number of millimetres, not {value:g}.")
+    return float(value)
+
+
+def _check_corners(corners: Points) -> None:
+    """Refuse corners on a line, crossing sides, and any order but top left, right, bottom, left."""
+    sides = np.roll(corners, -1, axis=0) - corners
+    after = np.roll(sides, -1, axis=0)
+    turns = sides[:, 0] * after[:, 1] - sides[:, 1] * after[:, 0]
+    flat = np.abs(turns) < 1e-3 * np.hypot(*sides.T) * np.hypot(*after.T) + 1e-9
+    if flat.any():
+        raise OptionWrong(
+            "Three of the corners lie on one line or coincide; mark the four corners of the plot."
+        )
+    if not (turns > 0).all() and not (turns < 0).all():
+        raise OptionWrong(
+            "The corners make an outline that crosses itself or is dented;"
+            " give top left, top right, bottom right, bottom left."
+        )
+    across = corners[1] + corners[2] - corners[0] - corners[3]
+    if (turns < 0).any() or not abs(math.atan2(across[1], across[0])) <= _EIGHTH:
+        raise OptionWrong(
+            "The corners are in another order than top left, top right, bottom right, bottom left"
+            f" as seen in the picture: {corners.tolist()}; put them in that order."
+        )
+
+
+def _homography(seen: Points, true: Points) -> NDArray[np.float64]:
+    """Solve for the map of four points, about their centre so that the numbers stay of one size."""
+    middle, size = seen.mean(axis=0), np.ptp(seen)
+    rows, values = [], []
+    for (x, y), (u, v) in zip((seen - middle) / size, true, strict=True):
+        rows += [[x, y, 1, 0, 0, 0, -u * x, -u * y], [0, 0, 0, x, y, 1, -v * x, -v * y]]
+        values += [u, v]
+    solved = np.append(np.linalg.solve(np.array(rows), np.array(values)), 1.0).reshape(3, 3)
+    centred = np.array(
+        [[1 / size, 0, -middle[0] / size], [0, 1 / size, -middle[1] / size], [0, 0, 1]]
+    )
+    return np.asarray(solved @ centred)
 
 
 def _apply(matrix: NDArray[Any], points: ArrayLike) -> Points:

@@ -1,0 +1,167 @@
+"""Named synthetic photographs with known truth."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from pathlib import Path
+
+import cv2
+import numpy as np
+from numpy.typing import NDArray
+
+from detect.photograph import Photograph
+
+Rgb = tuple[float, float, float]
+Layer = NDArray[np.float32]
+
+
+def photograph_of(image: NDArray[np.generic], *, name: str = "scene.png") -> Photograph:
+    """Wrap (height, width[, 3]) values, 0..1 or uint8, as a photograph."""
+    array = np.asarray(image)
+    if array.dtype != np.uint8:
+        array = np.round(np.clip(array, 0, 1) * 255).astype(np.uint8)
+    if array.ndim == 2:
+        array = np.dstack([array] * 3)
+    return Photograph(Path(name), "0" * 64, np.ascontiguousarray(array))
+
+
+def cloud(shape: tuple[int, int], rng: np.random.Generator, *, size: float) -> Layer:
+    """Smooth random unevenness of standard deviation 1 and about `size` pixels."""
+    small = (max(3, int(shape[0] / size) + 2), max(3, int(shape[1] / size) + 2))
+    noise = rng.normal(size=small).astype(np.float32)
+    grown = cv2.resize(noise, shape[::-1], interpolation=cv2.INTER_CUBIC)
+    return np.asarray((grown - grown.mean()) / (grown.std() + 1e-9), dtype=np.float32)
+
+
+def cover(distance: Layer) -> Layer:
+    """Antialiased cover of a shape from the signed distance (pixels) to its outline, inside < 0."""
+    return np.clip(0.5 - distance, 0, 1).astype(np.float32)
+
+
+def lay(image: Layer, colour: Rgb | Layer, alpha: Layer) -> None:
+    """Blend a colour over an image, in place."""
+    image += (np.asarray(colour, dtype=np.float32) - image) * alpha[..., None]
+
+
+def developed(image: Layer, rng: np.random.Generator, *, blur: float, noise: float) -> Photograph:
+    """Blur, add sensor noise and wrap."""
+    image = cv2.GaussianBlur(image, (0, 0), blur)
+    image = image + noise * rng.normal(size=image.shape).astype(np.float32)
+    return photograph_of(image)
+
+
+@dataclass(frozen=True, kw_only=True)
+class DishScene:
+    """A round dish from above, its rim higher than its agar, as a drawing with known truth."""
+
+    width: int = 1200
+    height: int = 1000
+    cx: float = 610.3
+    cy: float = 489.6
+    radius: float = 400.0  # inner edge
+    ratio: float = 1.0  # short over long axis
+    angle_deg: float = 0.0  # of the long axis
+    wall: float = 0.04  # its width as a fraction of the radius
+    lean: tuple[float, float] = (0.0, 0.0)  # shift of the rim against the agar, pixels
+    bench: Rgb = (0.13, 0.12, 0.12)
+    agar: Rgb = (0.72, 0.66, 0.48)
+    rim: Rgb = (0.5, 0.5, 0.5)
+    highlights: float = 0.5
+    shadow: float = 0.3
+    n_colonies: int = 60
+    to_edge: bool = False  # colonies only near the edge
+    glare: bool = False
+    light: float = 0.12  # unevenness
+    noise: float = 0.012
+    blur: float = 0.9
+    seed: int = 1
+
+    def normalised(self, shift: tuple[float, float] = (0.0, 0.0)) -> Layer:
+        """Distance from the centre over that of the inner ellipse in the same direction."""
+        y, x = np.mgrid[: self.height, : self.width].astype(np.float32)
+        turn = np.radians(self.angle_deg)
+        dx, dy = x - self.cx - shift[0], y - self.cy - shift[1]
+        u = (dx * np.cos(turn) + dy * np.sin(turn)) / self.radius
+        v = (-dx * np.sin(turn) + dy * np.cos(turn)) / (self.radius * self.ratio)
+        return np.hypot(u, v).astype(np.float32)
+
+    def draw(self) -> Photograph:
+        """Draw the scene."""
+        rng = np.random.default_rng(self.seed)
+        shape = (self.height, self.width)
+        y, x = np.mgrid[: self.height, : self.width].astype(np.float32)
+        image = np.ones((*shape, 3), np.float32) * np.asarray(self.bench, np.float32)
+        image *= (1 + 0.05 * cloud(shape, rng, size=60))[..., None]
+        inner, outer = self.normalised(), self.normalised(self.lean) / (1 + self.wall)
+        shaded = self.normalised((self.lean[0] + 0.03 * self.radius, self.lean[1] + 12))
+        image *= (1 - self.shadow * np.clip(1.2 - 8 * np.abs(shaded - 1.0), 0, 1))[..., None]
+        theta = np.arctan2(y - self.cy, x - self.cx)
+        shine = np.exp(-(((theta + 2.0) / 0.5) ** 2)) + 0.7 * np.exp(-(((theta - 1.1) / 0.3) ** 2))
+        rim = np.asarray(self.rim, np.float32) * (1 + self.highlights * (shine - 0.3))[..., None]
+        lay(image, rim, cover((outer - 1) * self.radius * (1 + self.wall)))
+        agar = np.asarray(self.agar, np.float32) * (1 + 0.04 * cloud(shape, rng, size=150))[..., None]
+        agar = agar * (1 - 0.15 * np.exp(-np.clip(1 - inner, 0, None) / 0.015))[..., None]
+        lay(image, agar, cover((inner - 1) * self.radius))
+        self._colonies(image, x, y, rng)
+        if self.glare:
+            patch = cover(np.maximum(np.abs(x - self.cx + 150) - 60, np.abs(y - self.cy + 90) - 90))
+            lay(image, (0.95, 0.96, 1.0), 0.8 * cv2.GaussianBlur(patch, (0, 0), 3))
+        image *= (1 + self.light * (x / self.width - y / self.height))[..., None]
+        return developed(image, rng, blur=self.blur, noise=self.noise)
+
+    def _colonies(self, image: Layer, x: Layer, y: Layer, rng: np.random.Generator) -> None:
+        for _ in range(self.n_colonies):
+            r = rng.uniform(0.012, 0.03) * self.radius
+            reach = 1 - 1.05 * r / (self.radius * self.ratio)
+            low = 0.85 if self.to_edge else 0.0
+            s, t = np.sqrt(rng.uniform((low * reach) ** 2, reach**2)), rng.uniform(0, 2 * np.pi)
+            turn = np.radians(self.angle_deg)
+            u, v = s * self.radius * np.cos(t), s * self.radius * self.ratio * np.sin(t)
+            px = self.cx + u * np.cos(turn) - v * np.sin(turn)
+            py = self.cy + u * np.sin(turn) + v * np.cos(turn)
+            distance = np.hypot(x - px, y - py) - r
+            lay(image, (0.93, 0.9, 0.78), cover(distance))
+
+
+DISHES: dict[str, DishScene] = {
+    "dark bench": DishScene(),
+    "light bench": DishScene(bench=(0.78, 0.78, 0.76), rim=(0.6, 0.6, 0.6), seed=2),
+    "clear agar": DishScene(
+        bench=(0.60, 0.58, 0.55), agar=(0.62, 0.60, 0.56), rim=(0.66, 0.65, 0.63), seed=3
+    ),
+    "crowded to the edge": DishScene(n_colonies=160, to_edge=True, seed=4),
+    "off centre and small": DishScene(cx=420.2, cy=560.8, radius=270.0, seed=5),
+    "fills the frame": DishScene(cx=598.0, cy=501.0, radius=470.0, wall=0.03, seed=6),
+    "tilted": DishScene(ratio=0.96, angle_deg=35.0, lean=(6.0, -9.0), glare=True, seed=7),
+    "glare and empty": DishScene(n_colonies=0, glare=True, highlights=1.0, seed=8),
+    "red agar on white": DishScene(
+        bench=(0.9, 0.9, 0.88), agar=(0.55, 0.12, 0.1), rim=(0.8, 0.75, 0.74), seed=9
+    ),
+    "noisy and dim": DishScene(
+        bench=(0.05, 0.05, 0.05), agar=(0.2, 0.18, 0.12), rim=(0.16,) * 3, noise=0.03, seed=10
+    ),
+}
+
+
+def soil(seed: int = 1) -> Photograph:
+    """Bare crumbly ground: edges everywhere, no outline."""
+    rng = np.random.default_rng(seed)
+    shape = (900, 1200)
+    layers = sum(cloud(shape, rng, size=s) * w for s, w in ((4, 0.5), (15, 0.6), (60, 0.5)))
+    brown = np.array([0.36, 0.27, 0.19], np.float32) * (1 + 0.3 * np.asarray(layers))[..., None]
+    return developed(brown.astype(np.float32), rng, blur=0.7, noise=0.01)
+
+
+def text_page(seed: int = 1) -> Photograph:
+    """A page of lettering."""
+    rng = np.random.default_rng(seed)
+    page = np.full((1000, 800, 3), 235, np.uint8)
+    for line in range(60, 960, 34):
+        words = "".join(rng.choice(list("abcdefghij klmnop qrst")) for _ in range(38))
+        cv2.putText(page, words, (50, line), cv2.FONT_HERSHEY_SIMPLEX, 0.8, (30, 30, 30), 2)
+    return photograph_of(page)
+
+
+def plain_noise(seed: int = 1) -> Photograph:
+    """Nothing but noise."""
+    return photograph_of(0.5 + 0.1 * np.random.default_rng(seed).normal(size=(700, 900)))
