@@ -217,7 +217,8 @@ def _one_polygon(values: Any, name: str) -> BaseGeometry:
             " save a closed outline as GeoJSON."
         )
     try:
-        outline = shape(values)
+        with np.errstate(invalid="ignore"):  # positions that are not finite are told below
+            outline = shape(values)
         finite = bool(np.isfinite(shapely.get_coordinates(outline)).all())
     except (KeyError, TypeError, ValueError, IndexError, shapely.errors.ShapelyError) as error:
         raise _bad_positions(name) from error

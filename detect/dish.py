@@ -27,6 +27,7 @@ from detect.rings import (
 
 LEAST_SEEN = 0.45  # of a rough circle's line; text, soil and tissue stay below 0.35
 LEAST_RING_SEEN = 0.6
+LEAST_PLACED = 0.6  # of the inner edge at last; chance alone gives half
 MOST_OUTSIDE = 0.02  # of the inner edge beyond the frame
 _MIDDLE_SIDE, _FINE_SIDE = 1100, 3000
 _MOST_RINGS = 7
@@ -144,13 +145,12 @@ def find_dish(photograph: Photograph) -> Dish:
     frame = _main_frame(middle, rough, factor)
     rings, rays, distances = _all_rings(middle, frame)
     if not rings:
-        raise AreaNotFound(
-            f"No dish is seen in {photograph.name}: the circle found there has no closed edge;"
-            " photograph one dish wholly in the frame, or choose another area."
-        )
+        raise _no_edge(photograph)
     inner = _inner_of(rings, rays, distances)
     fine, fine_factor = shrunk(photograph, _FINE_SIDE)
     placed, seen, scatter = _placed(fine, frame, inner, fine_factor / factor)
+    if seen < LEAST_PLACED:
+        raise _no_edge(photograph)
     inner_ellipse = _ellipse(placed, 1 / fine_factor)
     _check_in_frame(inner_ellipse, photograph)
     outer = rings[-1]
@@ -158,6 +158,13 @@ def find_dish(photograph: Photograph) -> Dish:
     if outer is not inner:
         outer_ellipse = _ellipse(_reframed(frame, outer), 1 / factor)
     return Dish(inner_ellipse, outer_ellipse, seen, scatter / fine_factor)
+
+
+def _no_edge(photograph: Photograph) -> AreaNotFound:
+    return AreaNotFound(
+        f"No dish is seen in {photograph.name}: the circle found there has no clear closed edge;"
+        " photograph one dish wholly in the frame, or choose another area."
+    )
 
 
 def _main_frame(middle: NDArray[Any], rough: RoughCircle, factor: float) -> Frame:

@@ -126,9 +126,9 @@ def _blade(mask: Array) -> Array:
         return np.zeros(mask.shape, np.uint8)
     piece = (labels == 1 + int(sizes[1:, cv2.CC_STAT_AREA].argmax())).astype(np.uint8)
     closed = cv2.morphologyEx(piece, cv2.MORPH_CLOSE, _disc(1))
-    radius = max(1, round(0.02 * float(np.sqrt(closed.sum()))))
+    radius = max(1, round(0.03 * float(np.sqrt(closed.sum()))))
     core = cv2.morphologyEx(_filled(closed), cv2.MORPH_OPEN, _disc(radius))
-    near = cv2.dilate(core, _disc(round(1.5 * radius)))
+    near = cv2.dilate(core, _disc(round(1.3 * radius)))
     return np.asarray(closed & near)
 
 

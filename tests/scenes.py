@@ -99,7 +99,9 @@ class DishScene:
         shine = np.exp(-(((theta + 2.0) / 0.5) ** 2)) + 0.7 * np.exp(-(((theta - 1.1) / 0.3) ** 2))
         rim = np.asarray(self.rim, np.float32) * (1 + self.highlights * (shine - 0.3))[..., None]
         lay(image, rim, cover((outer - 1) * self.radius * (1 + self.wall)))
-        agar = np.asarray(self.agar, np.float32) * (1 + 0.04 * cloud(shape, rng, size=150))[..., None]
+        agar = (
+            np.asarray(self.agar, np.float32) * (1 + 0.04 * cloud(shape, rng, size=150))[..., None]
+        )
         agar = agar * (1 - 0.15 * np.exp(-np.clip(1 - inner, 0, None) / 0.015))[..., None]
         lay(image, agar, cover((inner - 1) * self.radius))
         self._colonies(image, x, y, rng)
@@ -119,8 +121,11 @@ class DishScene:
             u, v = s * self.radius * np.cos(t), s * self.radius * self.ratio * np.sin(t)
             px = self.cx + u * np.cos(turn) - v * np.sin(turn)
             py = self.cy + u * np.sin(turn) + v * np.cos(turn)
-            distance = np.hypot(x - px, y - py) - r
-            lay(image, (0.93, 0.9, 0.78), cover(distance))
+            rows = slice(max(int(py - r - 2), 0), int(py + r + 3))
+            columns = slice(max(int(px - r - 2), 0), int(px + r + 3))
+            window = (rows, columns)
+            distance = np.hypot(x[window] - px, y[window] - py) - r
+            lay(image[window], (0.93, 0.9, 0.78), cover(distance))
 
 
 DISHES: dict[str, DishScene] = {
@@ -140,6 +145,90 @@ DISHES: dict[str, DishScene] = {
     "noisy and dim": DishScene(
         bench=(0.05, 0.05, 0.05), agar=(0.2, 0.18, 0.12), rim=(0.16,) * 3, noise=0.03, seed=10
     ),
+}
+
+
+@dataclass(frozen=True, kw_only=True)
+class LeafScene:
+    """One leaf on a plain background, with lesions, holes, a shadow, a ruler and a stalk."""
+
+    width: int = 1200
+    height: int = 900
+    half_length: float = 430.0
+    half_width: float = 240.0
+    angle_deg: float = 12.0
+    background: Rgb = (0.86, 0.86, 0.84)
+    green: Rgb = (0.25, 0.42, 0.16)
+    n_lesions: int = 25
+    n_holes: int = 3
+    shadow: float = 0.35
+    stalk: bool = True
+    light: float = 0.12
+    noise: float = 0.012
+    seed: int = 1
+
+    def _distance(self, shift: float = 0.0) -> tuple[Layer, Layer, Layer]:
+        """Rough signed distance to the blade's outline, and the place along and across it."""
+        y, x = np.mgrid[: self.height, : self.width].astype(np.float32)
+        turn = np.radians(self.angle_deg)
+        dx, dy = x - self.width / 2 - shift, y - self.height / 2 - shift
+        u = (dx * np.cos(turn) + dy * np.sin(turn)) / self.half_length
+        v = (-dx * np.sin(turn) + dy * np.cos(turn)) / self.half_width
+        reach = np.clip(1 - u * u, 0, None) * (1 - 0.35 * u) + 0.02 * np.sin(40 * u)
+        return np.where(np.abs(u) < 1, (np.abs(v) - reach) * self.half_width, 99.0), u, v
+
+    def _places(self, n: int, rng: np.random.Generator) -> NDArray[np.float64]:
+        """Spread places well within the blade, as u and v."""
+        u = rng.uniform(-0.7, 0.7, n)
+        return np.column_stack([u, rng.uniform(-0.8, 0.8, n) * (1 - u * u) * (1 - 0.35 * u)])
+
+    def draw(self) -> tuple[Photograph, NDArray[np.bool_]]:
+        """Draw the scene; return it with the true mask of the blade without its holes."""
+        rng = np.random.default_rng(self.seed)
+        shape = (self.height, self.width)
+        distance, u, v = self._distance()
+        image = np.ones((*shape, 3), np.float32) * np.asarray(self.background, np.float32)
+        image *= (1 + 0.01 * cloud(shape, rng, size=80))[..., None]
+        shade = cv2.GaussianBlur(cover(self._distance(shift=9.0)[0]), (0, 0), 5)
+        image *= (1 - self.shadow * shade)[..., None]
+        ground = image.copy()
+        green = (
+            np.asarray(self.green, np.float32) * (1 + 0.15 * cloud(shape, rng, size=40))[..., None]
+        )
+        stalk = np.maximum(np.abs(v * self.half_width) - 7, (u + 0.9) * self.half_length)
+        if self.stalk:
+            lay(image, green, cover(stalk.astype(np.float32)))
+        blade = cover(distance.astype(np.float32))
+        lay(image, green, blade)
+        for place in self._places(self.n_lesions, rng):
+            r = rng.uniform(5, 16)
+            away = np.hypot((u - place[0]) * self.half_length, (v - place[1]) * self.half_width)
+            lay(image, (0.62, 0.56, 0.2), cover((away - 1.5 * r).astype(np.float32)) * blade)
+            lay(image, (0.36, 0.24, 0.16), cover((away - r).astype(np.float32)) * blade)
+        truth = distance <= 0
+        for place in self._places(self.n_holes, rng):
+            away = np.hypot((u - place[0]) * self.half_length, (v - place[1]) * self.half_width)
+            hole = (away - 17).astype(np.float32)
+            lay(image, ground, cover(hole))
+            truth &= hole > 0
+        cv2.rectangle(image, (60, self.height - 70), (420, self.height - 25), (0.95,) * 3, -1)
+        for i in (0, 2, 4):
+            left = 90 + 60 * i
+            cv2.rectangle(
+                image, (left, self.height - 60), (left + 60, self.height - 40), (0.1,) * 3, -1
+            )
+        ramp = np.linspace(-0.5, 0.5, self.width, dtype=np.float32)
+        image *= (1 + self.light * ramp)[None, :, None]
+        return developed(image, rng, blur=0.8, noise=self.noise), truth
+
+
+LEAVES: dict[str, LeafScene] = {
+    "white paper": LeafScene(),
+    "grey board": LeafScene(background=(0.5, 0.5, 0.52), seed=2, angle_deg=-20.0),
+    "black cloth": LeafScene(background=(0.07, 0.07, 0.08), shadow=0.1, seed=3),
+    "yellowing leaf": LeafScene(green=(0.55, 0.52, 0.2), seed=4),
+    "no stalk, many lesions": LeafScene(stalk=False, n_lesions=90, n_holes=0, seed=5),
+    "small leaf": LeafScene(half_length=230.0, half_width=110.0, n_holes=2, seed=6),
 }
 
 
