@@ -126,7 +126,7 @@ def contrast_map(
             signed = _only_hued(signed, lab - background, direction)
         noise, threshold = _noise_and_threshold(signed[inside])
     if many_colours and colour == "auto":
-        signed = _with_other_colours(signed, lab - background, direction, ground)
+        signed = _with_other_colours(signed, lab - background, direction, inside)
         noise, threshold = _noise_and_threshold(signed[inside])
     signed[~inside] = 0.0
     return Contrast(np.ascontiguousarray(signed), noise, threshold, direction, sureness)
@@ -242,18 +242,19 @@ def _project(
 
 
 def _with_other_colours(
-    signed: Map, deviation: Map, direction: NDArray[np.float64], ground: Mask
+    signed: Map, deviation: Map, direction: NDArray[np.float64], inside: Mask
 ) -> Map:
-    """Contrast raised where the colour departs across the direction, further than the ground does.
+    """Contrast raised where the colour departs across the direction, four times further than is usual.
 
     An orange colony among cream ones hardly stands out along the axis of cream.
     """
     across2 = (deviation**2).sum(axis=2) - (deviation @ direction.astype(np.float32)) ** 2
     across = np.sqrt(np.maximum(across2, 0.0))
-    usual = ground if ground.any() else np.ones_like(ground)
-    extra = np.maximum(across - float(np.percentile(_thin(across[usual]), 99)), 0.0)
-    raised = np.where(signed > -0.5 * extra, signed + extra, signed)
-    return np.asarray(raised, dtype=np.float32)
+    extra = np.maximum(across - 4.0 * float(np.median(_thin(across[inside]))), 0.0)
+    # What lies on the other side in lightness (ink, shadow, where objects are light) stays out.
+    same_side = np.sign(direction[0]).astype(np.float32) * deviation[..., 0] > -0.5 * extra
+    raised = np.where(same_side, np.maximum(signed, 0.0) + extra, signed)
+    return np.asarray(np.where(extra > 0, raised, signed), dtype=np.float32)
 
 
 def _only_hued(signed: Map, deviation: Map, direction: NDArray[np.float64]) -> Map:

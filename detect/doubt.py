@@ -10,7 +10,7 @@ from numpy.typing import NDArray
 from detect.regions import Candidates
 from detect.wanted import Kind
 
-FEATURES = ("size", "open", "faint", "slope", "rough", "texture", "long", "clear")
+FEATURES = ("size", "open", "faint", "slope", "rough", "texture", "long", "clear", "star", "around")
 
 
 @dataclass(frozen=True, slots=True)
@@ -36,6 +36,8 @@ class DoubtModel:
         Weight of the log of long over short axis.
     clear : float
         Weight of the log of the edge step in units of the ground's noise.
+    star, around : float
+        Weights of how leaves radiate from the centre and how far around it; plants only.
 
     References
     ----------
@@ -51,6 +53,8 @@ class DoubtModel:
     texture: float
     long: float = 0.0
     clear: float = 0.0
+    star: float = 0.0
+    around: float = 0.0
 
     @property
     def weights(self) -> NDArray[np.float64]:
@@ -70,39 +74,47 @@ GENERAL = DoubtModel(
     texture=-1.456,
     long=0.000,
     clear=0.000,
+    star=0.000,
+    around=0.000,
 )
 COLONIES = DoubtModel(
-    intercept=2.517,
-    size=-0.836,
-    open=2.299,
-    faint=-0.224,
-    slope=2.202,
-    rough=-16.662,
-    texture=-4.037,
-    long=-8.306,
-    clear=0.197,
-)
-LESIONS = DoubtModel(
-    intercept=1.131,
-    size=-2.730,
-    open=1.193,
-    faint=-0.143,
-    slope=-1.263,
-    rough=-21.225,
-    texture=-5.485,
-    long=-2.642,
-    clear=1.760,
+    intercept=2.464,
+    size=-0.993,
+    open=1.459,
+    faint=-0.252,
+    slope=2.762,
+    rough=-12.330,
+    texture=-3.303,
+    long=-8.478,
+    clear=0.153,
+    star=0.000,
+    around=0.000,
 )
 SEEDLINGS = DoubtModel(
-    intercept=5.688,
-    size=-0.281,
-    open=0.282,
-    faint=-0.125,
-    slope=2.596,
-    rough=-28.539,
-    texture=-7.000,
-    long=-3.109,
-    clear=-0.742,
+    intercept=6.330,
+    size=-0.459,
+    open=0.939,
+    faint=-0.014,
+    slope=4.242,
+    rough=-15.361,
+    texture=-11.138,
+    long=-1.306,
+    clear=-0.330,
+    star=9.789,
+    around=-4.130,
+)
+LESIONS = DoubtModel(
+    intercept=1.364,
+    size=-2.585,
+    open=1.168,
+    faint=-0.256,
+    slope=-1.184,
+    rough=-17.199,
+    texture=-5.391,
+    long=-3.095,
+    clear=1.667,
+    star=0.000,
+    around=0.000,
 )
 MODELS: dict[Kind, DoubtModel] = {
     "spots": GENERAL,
@@ -129,7 +141,7 @@ def features(
     Returns
     -------
     ndarray of shape (n, 8)
-        Columns in the order of `FEATURES`.
+        Columns in the order of `FEATURES`, without the last two.
     """
     middle = 0.5 * np.log(smallest_px * largest_px)
     half = 0.5 * np.log(largest_px / smallest_px) + 0.2
@@ -163,8 +175,8 @@ def doubt_of(measured: NDArray[np.float64], model: DoubtModel) -> NDArray[np.flo
 
     Parameters
     ----------
-    measured : ndarray of shape (n, 8)
-        As `features` returns it.
+    measured : ndarray of shape (n, k)
+        The first k of `FEATURES`; those left out count as 0.
     model : DoubtModel
         Weights.
 
@@ -173,5 +185,5 @@ def doubt_of(measured: NDArray[np.float64], model: DoubtModel) -> NDArray[np.flo
     ndarray of shape (n,)
         Doubt, 0..1.
     """
-    logit = model.intercept + measured @ model.weights
+    logit = model.intercept + measured @ model.weights[: measured.shape[1]]
     return np.asarray(1.0 / (1.0 + np.exp(np.clip(logit, -50.0, 50.0))))

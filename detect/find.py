@@ -15,6 +15,7 @@ from detect.errors import OptionWrong
 from detect.judge import Judgement, judged
 from detect.outline import settle_outlines
 from detect.photograph import Photograph
+from detect.plants import settle_plants
 from detect.scale import Scale
 from detect.sizes import learn_diameters
 from detect.spots import Spots
@@ -27,8 +28,8 @@ _USUAL_MM: dict[Kind, tuple[float, float]] = {
     "seedlings": (8.0, 60.0),
     "lesions": (0.8, 8.0),
 }
-# The working map is reduced until the smallest object measures this many pixels.
-_WORKING_PX = 8.0
+# The working map is reduced until the smallest object measures this many pixels; leaves need more.
+_WORKING_PX, _WORKING_PX_PLANTS = 8.0, 16.0
 
 
 @dataclass(frozen=True, slots=True)
@@ -72,12 +73,14 @@ def find_spots(
     """
     model = model or MODELS[options.kind]
     smallest, largest = _diameters(photograph, area, options, scale, model)
-    view = view_of(photograph, area, shrink=min(1.0, _WORKING_PX / smallest))
+    plants = options.kind == "seedlings"
+    working = _WORKING_PX_PLANTS if plants else _WORKING_PX
+    view = view_of(photograph, area, shrink=min(1.0, working / smallest))
     small, large = smallest * view.shrink, largest * view.shrink
     judgement = judged(view, small, large, options, model)
     contrast = judgement.contrast
     rows = choose(judgement.candidates, judgement.doubt, highest_doubt=options.highest_doubt)
-    spots = _spots(view, judgement, rows)
+    spots = _spots(view, judgement, rows, plants=plants)
     spots = spots.where(area.contains(spots.centres))
     order = np.lexsort((spots.x, spots.y))
     spots = spots.where(order).renumbered()
@@ -124,16 +127,19 @@ def _diameters(
     return max(smallest, 2.0), largest
 
 
-def _spots(view: View, judgement: Judgement, rows: NDArray[np.intp]) -> Spots:
+def _spots(view: View, judgement: Judgement, rows: NDArray[np.intp], *, plants: bool) -> Spots:
     """Turn chosen regions into spots in photograph pixels."""
     contrast, chosen = judgement.contrast, judgement.candidates.where(rows)
-    grown = settle_outlines(chosen, contrast.map)
-    x, y = view.to_photograph(chosen.x, chosen.y)
-    radius = np.sqrt(chosen.area / np.pi) * grown / view.shrink
+    if plants:
+        centres, radius = settle_plants(chosen, contrast.map, contrast.threshold)
+    else:
+        centres = np.column_stack([chosen.x, chosen.y])
+        radius = np.sqrt(chosen.area / np.pi) * settle_outlines(chosen, contrast.map)
+    x, y = view.to_photograph(centres[:, 0], centres[:, 1])
     return Spots.found_at(
         x,
         y,
-        radius,
+        radius / view.shrink,
         contrast=chosen.contrast / contrast.noise,
         fill=chosen.fill,
         doubt=judgement.doubt[rows],

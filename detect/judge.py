@@ -2,9 +2,8 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass, replace
+from dataclasses import dataclass
 
-import cv2
 import numpy as np
 from numpy.typing import NDArray
 
@@ -12,6 +11,7 @@ from detect.candidates import find_candidates
 from detect.choice import choose
 from detect.contrast import Colour, Contrast, contrast_map
 from detect.doubt import DoubtModel, doubt_of, features
+from detect.plants import fused, leaf_axes, rosette_features
 from detect.regions import Candidates
 from detect.view import View
 from detect.wanted import DetectOptions, Kind
@@ -19,19 +19,27 @@ from detect.wanted import DetectOptions, Kind
 _USUAL_COLOUR: dict[Kind, Colour] = {"seedlings": "green"}
 # A leaf's gloss and veins vary in lightness: lesions are told by hue rather.
 _CALMING: dict[Kind, float] = {"lesions": 1.0}
-# Leaves of one plant are fused by a blur of this share of the smallest diameter, after the
-# contrast is cut at this multiple of the threshold so that a bright leaf does not outweigh the rest.
-_FUSING_BLUR, _FUSING_CUT = 0.55, 2.0
 # Below this evidence for one side, both are tried.
 _SURE = 0.6
 
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Judgement:
-    """Candidates of one view with their doubt, a probability per row."""
+    """Candidates of one view with their doubt, a probability per row.
+
+    Parameters
+    ----------
+    contrast : Contrast
+        The map as it is, before leaves are fused to plants.
+    candidates : Candidates
+    measured : ndarray of shape (n, 8) or (n, 10)
+        Features of the doubt model; for plants also how the leaves are arranged.
+    doubt : ndarray of shape (n,)
+    """
 
     contrast: Contrast
     candidates: Candidates
+    measured: NDArray[np.float64]
     doubt: NDArray[np.float64]
 
 
@@ -84,21 +92,18 @@ def _judge(
         calming=_CALMING.get(options.kind, 0.5),
         many_colours=options.kind == "colonies",
     )
-    if options.kind == "seedlings":
-        contrast = _fused(contrast, smallest_px)
+    plants = options.kind == "seedlings"
+    looked_at = fused(contrast, smallest_px) if plants else contrast
     candidates = find_candidates(
-        contrast, view.inside, smallest_px=0.7 * smallest_px, largest_px=1.4 * largest_px
+        looked_at, view.inside, smallest_px=0.7 * smallest_px, largest_px=1.4 * largest_px
     )
     measured = features(
         candidates, noise=contrast.noise, smallest_px=smallest_px, largest_px=largest_px
     )
-    return Judgement(contrast, candidates, doubt_of(measured, model))
-
-
-def _fused(contrast: Contrast, smallest_px: float) -> Contrast:
-    """Let the leaves of one plant run together, so that it is one object."""
-    cut = np.minimum(contrast.map, np.float32(_FUSING_CUT * contrast.threshold))
-    return replace(contrast, map=cv2.GaussianBlur(cut, (0, 0), _FUSING_BLUR * smallest_px))
+    if plants:
+        rosettes = rosette_features(candidates, leaf_axes(contrast, smallest_px))
+        measured = np.column_stack([measured, rosettes])
+    return Judgement(contrast, candidates, measured, doubt_of(measured, model))
 
 
 def _worth(judgement: Judgement) -> float:

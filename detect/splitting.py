@@ -121,16 +121,30 @@ def _power_pieces(
         seeds = by_owner[seed_starts[region] : seed_starts[region + 1]]
         y, x = np.divmod(at[rows], width)
         points = np.column_stack([x, y]).astype(np.float64)
-        piece[rows] = seeds[_nearest_by_power(points, seed[seeds], radius[seeds])] + 1
+        piece[rows] = seeds[nearest_by_power(points, seed[seeds], radius[seeds])] + 1
     out = np.zeros(labels.size, dtype=np.int32)
     out[at] = piece
     return out.reshape(labels.shape), len(seed) + 1
 
 
-def _nearest_by_power(
+def nearest_by_power(
     points: NDArray[np.float64], seed: NDArray[np.float64], radius: Column
 ) -> NDArray[np.intp]:
-    """Index of the seed with least (distance^2 - radius^2); a tree of lifted seeds when many."""
+    """Index of the seed with least (distance^2 - radius^2); a tree of lifted seeds when many.
+
+    Parameters
+    ----------
+    points : ndarray of shape (n, 2)
+        Positions, as x, y.
+    seed : ndarray of shape (k, 2)
+        Seeds, k at least 1.
+    radius : ndarray of shape (k,)
+        Radius of each seed, in the unit of the positions.
+
+    Returns
+    -------
+    ndarray of int, shape (n,)
+    """
     if len(seed) <= 8:
         power = ((points[:, None, :] - seed[None]) ** 2).sum(axis=2) - radius**2
         return np.asarray(power.argmin(axis=1))

@@ -26,7 +26,7 @@ sys.path.insert(0, str(Path(__file__).resolve().parents[2]))
 from detect.accuracy import match_spots
 from detect.area import StudyArea
 from detect.choice import choose
-from detect.doubt import FEATURES, GENERAL, DoubtModel, doubt_of, features
+from detect.doubt import FEATURES, GENERAL, DoubtModel, doubt_of
 from detect.judge import judged
 from detect.lengths import Length, parse_pair
 from detect.photograph import Photograph, read_photograph
@@ -88,16 +88,14 @@ def scene(
     match_size: bool = True,
 ) -> Scene:
     low, high = (length.to_px(mm_per_px) for length in options.diameter)
-    view = view_of(photograph, area, shrink=min(1.0, 8.0 / low))
+    working = 16.0 if options.kind == "seedlings" else 8.0
+    view = view_of(photograph, area, shrink=min(1.0, working / low))
     small, large = low * view.shrink, high * view.shrink
     found = judged(view, small, large, options, GENERAL)
     xy = np.column_stack(view.to_photograph(found.candidates.x, found.candidates.y))
-    measured = features(
-        found.candidates, noise=found.contrast.noise, smallest_px=small, largest_px=large
-    )
     size = radius if match_size else np.full_like(radius, np.nan)
     good = right(xy, found.candidates.diameter / view.shrink, truth, size, usual)
-    return Scene(found.candidates, xy, measured, good, ~area.contains(xy), truth, radius)
+    return Scene(found.candidates, xy, found.measured, good, ~area.contains(xy), truth, radius)
 
 
 def marked_scenes(marked: MarkedSet) -> list[Scene]:
@@ -151,7 +149,7 @@ def drawn_scenes(folder: Path, kind: Kind) -> list[Scene]:
         scenes.append(
             scene(
                 photograph, area, options, marks[:, :2], marks[:, 2],
-                mm_per_px=mm_per_px, usual=7.0 / mm_per_px, match_size=kind != "seedlings",
+                mm_per_px=mm_per_px, usual=9.0 / mm_per_px, match_size=kind != "seedlings",
             )
         )  # fmt: skip
     return scenes
@@ -184,7 +182,7 @@ def fit(
     Around nothing, only five features are fitted: the others do not carry over from one subject to
     the next (leave one set out).
     """
-    chosen = CARRIED if around is None else FEATURES
+    chosen = CARRIED if around is None else FEATURES[: groups[0][0].measured.shape[1]]
     columns = [FEATURES.index(name) for name in chosen]
     x = np.vstack([s.measured[s.use][:, columns] for group in groups for s in group])
     y = np.concatenate([s.good[s.use] for group in groups for s in group]).astype(float)
@@ -194,7 +192,7 @@ def fit(
     z = np.column_stack([np.ones(len(x)), x / spread])
     centre = np.zeros(z.shape[1])
     if around is not None:
-        centre = np.r_[around.intercept, around.weights * spread]
+        centre = np.r_[around.intercept, around.weights[columns] * spread]
 
     def loss(beta: NDArray[np.float64]) -> tuple[float, NDArray[np.float64]]:
         eta = z @ beta
