@@ -89,7 +89,7 @@ def test_only_pictures_import_matplotlib(room: Path) -> None:
 @pytest.mark.parametrize("room", ROOMS, ids=lambda room: room.relative_to(ROOT).as_posix())
 def test_rooms_are_small_and_finished(room: Path) -> None:
     text = room.read_text(encoding="utf-8")
-    assert len(text.splitlines()) <= 380
+    assert len(text.splitlines()) <= 400
     for word in ("TO" + "DO", "FIX" + "ME", "NotImplemented" + "Error"):
         assert word not in text
     assert room.stem != "utils"
