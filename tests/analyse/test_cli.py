@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import csv
 import errno
+import json
 import os
 import subprocess
 import sys
@@ -324,7 +325,10 @@ def test_tables_lack_nothing_silently(points: Path, tmp_path: Path) -> None:
 
 
 def test_an_unusable_area_is_refused(points: Path, tmp_path: Path) -> None:
-    for text in ("0,0,0,0", "0,0,nan,1", "gone.geojson"):
+    crossing = [[0, 0], [20, 30], [20, 0], [0, 30], [0, 0]]
+    drawn = tmp_path / "drawn.geojson"
+    drawn.write_text(json.dumps({"type": "Polygon", "coordinates": [crossing]}))
+    for text in ("0,0,0,0", "0,0,nan,1", "gone.geojson", drawn):
         result = run("analyse", points, "--area", text, "--out", tmp_path / "out")
         assert (result.exit_code, result.stdout) == (2, "")
         assert result.stderr.startswith("Error: ")
@@ -448,6 +452,17 @@ def test_a_folder_of_nothing_is_refused(tmp_path: Path, folder: str) -> None:
     assert (result.exit_code, result.stdout) == (2, "")
     assert result.stderr.startswith("Error: The")
     assert not (tmp_path / "out").exists()
+
+
+def test_a_file_in_the_place_of_the_folder_is_refused(
+    beds: Path, points: Path, tmp_path: Path
+) -> None:
+    out = tmp_path / "out"
+    out.write_text("mine")
+    message = f"{out} is a file, not a folder; name another folder for --out."
+    assert refused(survey(beds, "--out", out), message)
+    assert refused(run("analyse", points, "--area", "0,0,9,9", "--out", out), message)
+    assert out.read_text() == "mine"
 
 
 # What is no one's fault, and what is ours.
