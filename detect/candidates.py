@@ -44,10 +44,15 @@ def find_candidates(
     parts: list[Candidates] = []
     for level in _levels(contrast, inside, levels):
         mask = _clean((smooth > level) & inside, largest_px)
-        for labels, count in _whole_and_split(mask, crest, smallest_px, largest_px):
+        for labels, count, neck in _whole_and_split(mask, crest, smallest_px, largest_px):
             parts.append(
                 measure_regions(
-                    labels, count, contrast.map, smallest_px=smallest_px, largest_px=largest_px
+                    labels,
+                    count,
+                    contrast.map,
+                    neck=neck,
+                    smallest_px=smallest_px,
+                    largest_px=largest_px,
                 )
             )
     return join(parts)
@@ -121,7 +126,7 @@ def _without_giants(mask: NDArray[np.uint8], largest_px: float) -> NDArray[np.ui
 
 def _whole_and_split(
     mask: NDArray[np.uint8], crest: Map, smallest_px: float, largest_px: float
-) -> Iterator[tuple[Labels, int]]:
+) -> Iterator[tuple[Labels, int, Column]]:
     """Labels of the connected regions, then of their pieces by shape, then by shape and contrast."""
     count, labels, stats, _ = cv2.connectedComponentsWithStats(mask, connectivity=4)
     area = stats[:, cv2.CC_STAT_AREA]
@@ -132,7 +137,7 @@ def _whole_and_split(
     new = np.where(usable, np.cumsum(usable), 0).astype(np.int32)
     labels = new[labels]
     count = int(new.max()) + 1
-    yield labels, count
+    yield labels, count, np.zeros(count)
     distance = cv2.distanceTransform((labels > 0).astype(np.uint8), cv2.DIST_L2, 5)
     distance = cv2.GaussianBlur(distance, (0, 0), max(0.12 * smallest_px, 0.3))
     for relief in (distance, distance * crest):

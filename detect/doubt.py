@@ -10,7 +10,19 @@ from numpy.typing import NDArray
 from detect.regions import Candidates
 from detect.wanted import Kind
 
-FEATURES = ("size", "open", "faint", "slope", "rough", "texture", "long", "clear", "star", "around")
+FEATURES = (
+    "size",
+    "open",
+    "faint",
+    "slope",
+    "rough",
+    "texture",
+    "long",
+    "clear",
+    "neck",
+    "star",
+    "around",
+)
 
 
 @dataclass(frozen=True, slots=True)
@@ -36,6 +48,8 @@ class DoubtModel:
         Weight of the log of long over short axis.
     clear : float
         Weight of the log of the edge step in units of the ground's noise.
+    neck : float
+        Weight of the width of the neck to the nearest kin over the own width.
     star, around : float
         Weights of how leaves radiate from the centre and how far around it; plants only.
 
@@ -53,6 +67,7 @@ class DoubtModel:
     texture: float
     long: float = 0.0
     clear: float = 0.0
+    neck: float = 0.0
     star: float = 0.0
     around: float = 0.0
 
@@ -65,54 +80,58 @@ class DoubtModel:
 # Fitted by tests/benchmarks/fit_doubt.py: GENERAL on hand-marked photographs of five subjects, the
 # kinds on drawn scenes of their own (seeds 1000-1099), held near GENERAL by a ridge.
 GENERAL = DoubtModel(
-    intercept=1.634,
-    size=-1.080,
+    intercept=2.236,
+    size=-1.201,
     open=0.000,
-    faint=-0.163,
-    slope=1.648,
-    rough=-10.659,
-    texture=-1.456,
+    faint=-0.183,
+    slope=1.350,
+    rough=-11.540,
+    texture=-1.289,
     long=0.000,
     clear=0.000,
+    neck=-0.546,
     star=0.000,
     around=0.000,
 )
 COLONIES = DoubtModel(
-    intercept=2.464,
-    size=-0.993,
-    open=1.459,
-    faint=-0.252,
-    slope=2.762,
-    rough=-12.330,
-    texture=-3.303,
-    long=-8.478,
-    clear=0.153,
+    intercept=0.329,
+    size=-1.105,
+    open=1.981,
+    faint=-0.065,
+    slope=1.358,
+    rough=-22.316,
+    texture=-3.468,
+    long=-5.413,
+    clear=1.083,
+    neck=-0.123,
     star=0.000,
     around=0.000,
 )
 SEEDLINGS = DoubtModel(
-    intercept=6.330,
-    size=-0.459,
-    open=0.939,
-    faint=-0.014,
-    slope=4.242,
-    rough=-15.361,
-    texture=-11.138,
-    long=-1.306,
-    clear=-0.330,
-    star=9.789,
-    around=-4.130,
+    intercept=8.304,
+    size=-1.496,
+    open=0.350,
+    faint=-0.049,
+    slope=-1.030,
+    rough=-17.051,
+    texture=1.226,
+    long=-2.451,
+    clear=0.021,
+    neck=-4.706,
+    star=10.065,
+    around=-2.474,
 )
 LESIONS = DoubtModel(
-    intercept=1.364,
-    size=-2.585,
-    open=1.168,
-    faint=-0.256,
-    slope=-1.184,
-    rough=-17.199,
-    texture=-5.391,
-    long=-3.095,
-    clear=1.667,
+    intercept=-0.429,
+    size=-1.996,
+    open=1.112,
+    faint=-0.175,
+    slope=-0.454,
+    rough=-17.445,
+    texture=-3.806,
+    long=-1.733,
+    clear=1.789,
+    neck=-0.790,
     star=0.000,
     around=0.000,
 )
@@ -140,7 +159,7 @@ def features(
 
     Returns
     -------
-    ndarray of shape (n, 8)
+    ndarray of shape (n, 9)
         Columns in the order of `FEATURES`, without the last two.
     """
     middle = 0.5 * np.log(smallest_px * largest_px)
@@ -157,6 +176,7 @@ def features(
             np.minimum(candidates.texture, 1.5),
             np.minimum(np.log(candidates.elongation), 1.5),
             np.clip(np.log(np.maximum(candidates.step, 1e-3) / noise), -1.0, 5.0),
+            np.minimum(candidates.neck, 1.0),
         ]
     )
 

@@ -30,6 +30,8 @@ _USUAL_MM: dict[Kind, tuple[float, float]] = {
 }
 # The working map is reduced until the smallest object measures this many pixels; leaves need more.
 _WORKING_PX, _WORKING_PX_PLANTS = 8.0, 16.0
+# A colony, seedling or lesion this many times larger than asked for is something else (a glare).
+_AT_MOST = 1.2
 
 
 @dataclass(frozen=True, slots=True)
@@ -82,6 +84,8 @@ def find_spots(
     rows = choose(judgement.candidates, judgement.doubt, highest_doubt=options.highest_doubt)
     spots = _spots(view, judgement, rows, plants=plants)
     spots = spots.where(area.contains(spots.centres))
+    if options.kind != "spots":
+        spots = spots.where(2 * spots.radius <= _AT_MOST * largest)
     order = np.lexsort((spots.x, spots.y))
     spots = spots.where(order).renumbered()
     settings = {

@@ -61,14 +61,14 @@ def judged(
     -------
     Judgement
     """
-    first = _judge(view, smallest_px, largest_px, options, model, flipped=False)
+    first = judge_side(view, smallest_px, largest_px, options, model, flipped=False)
     if first.contrast.sureness > _SURE:
         return first
-    other = _judge(view, smallest_px, largest_px, options, model, flipped=True)
+    other = judge_side(view, smallest_px, largest_px, options, model, flipped=True)
     return max(first, other, key=_worth)
 
 
-def _judge(
+def judge_side(
     view: View,
     smallest_px: float,
     largest_px: float,
@@ -77,7 +77,22 @@ def _judge(
     *,
     flipped: bool,
 ) -> Judgement:
-    """Contrast, candidates and their doubt for one side."""
+    """Contrast, candidates and their doubt for one side.
+
+    Parameters
+    ----------
+    view : View
+    smallest_px, largest_px : float
+        Expected diameters in working pixels.
+    options : DetectOptions
+    model : DoubtModel
+    flipped : bool
+        Look at the side that the picture speaks against.
+
+    Returns
+    -------
+    Judgement
+    """
     colour = options.colour
     if colour == "auto":
         colour = _USUAL_COLOUR.get(options.kind, "auto")

@@ -37,6 +37,8 @@ class Candidates:
         Spread of the boundary about the ellipse of equal second moments, as a share of its size.
     texture : ndarray of shape (n,)
         Standard deviation of contrast inside, as a share of its mean.
+    neck : ndarray of shape (n,)
+        Width of the neck to the nearest kin over the region's own width; 0 for whole regions.
     """
 
     x: Column
@@ -51,6 +53,7 @@ class Candidates:
     slope: Column
     rough: Column
     texture: Column
+    neck: Column
 
     def __len__(self) -> int:
         return int(self.x.size)
@@ -91,7 +94,13 @@ def join(parts: list[Candidates]) -> Candidates:
 
 
 def measure_regions(
-    labels: Labels, count: int, contrast: Map, *, smallest_px: float, largest_px: float
+    labels: Labels,
+    count: int,
+    contrast: Map,
+    *,
+    neck: Column,
+    smallest_px: float,
+    largest_px: float,
 ) -> Candidates:
     """Measure every region of a label map, by sums over its pixels.
 
@@ -103,6 +112,8 @@ def measure_regions(
         One more than the highest label.
     contrast : ndarray of shape (height, width), float32
         The signed contrast map.
+    neck : ndarray of shape (count,)
+        Width of each label's neck over its own width.
     smallest_px, largest_px : float
         Regions under half the smallest or over 1.7 times the largest diameter are left out.
 
@@ -128,7 +139,7 @@ def measure_regions(
     edge = _boundary(labels, label, x, y)
     outside = _outside(edge, mx, my, diameter, mean, sxx, syy, sxy, contrast, count)
     keep = (diameter >= 0.5 * smallest_px) & (diameter <= 1.7 * largest_px) & (area > 0)
-    columns = (mx, my, area, sxx, syy, sxy, mean, *outside, texture)
+    columns = (mx, my, area, sxx, syy, sxy, mean, *outside, texture, neck)
     return Candidates(*(column[keep] for column in columns))
 
 

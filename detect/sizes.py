@@ -9,9 +9,9 @@ from detect.area import StudyArea
 from detect.choice import choose
 from detect.doubt import DoubtModel
 from detect.judge import judged
-from detect.wanted import DetectOptions
 from detect.photograph import Photograph
 from detect.view import view_of
+from detect.wanted import DetectOptions
 
 # Octaves of diameter start here, in photograph pixels, or at this share of the area's short side.
 _SMALLEST_PX, _SMALLEST_SHARE = 5.0, 1 / 400

@@ -18,7 +18,7 @@ _TOGETHER = 0.95
 
 def split_regions(
     labels: Labels, count: int, *, distance: Map, relief: Map, smallest_px: float, largest_px: float
-) -> tuple[Labels, int] | None:
+) -> tuple[Labels, int, Column] | None:
     """Cut each region between the peaks of a relief.
 
     Parameters
@@ -36,8 +36,9 @@ def split_regions(
 
     Returns
     -------
-    (labels, count) or None
-        The pieces of the regions that fall apart; None when none does.
+    (labels, count, neck) or None
+        The pieces of the regions that fall apart, and for each label the width of the neck that
+        joins it to its nearest kin over its own width; None when no region falls apart.
 
     Notes
     -----
@@ -52,7 +53,12 @@ def split_regions(
     if not several.any():
         return None
     radius = distance[y.astype(np.intp), x.astype(np.intp)].astype(np.float64)
-    return _power_pieces(labels, count, several, np.column_stack([x, y]), radius, owner)
+    i, j, width = _saddles(x, y, owner, distance, 1.2 * largest_px)
+    neck = np.zeros(x.size + 1)
+    share = width / np.maximum(np.minimum(radius[i], radius[j]), 1e-6)
+    np.maximum.at(neck, np.r_[i, j] + 1, np.r_[share, share])
+    pieces = _power_pieces(labels, count, several, np.column_stack([x, y]), radius, owner)
+    return *pieces, neck
 
 
 def _peaks(
@@ -74,21 +80,24 @@ def _joined(
 ) -> NDArray[np.intp]:
     """Group peaks of one region between which the relief hardly dips."""
     n = x.size
-    group = np.arange(n)
-    if n < 2:
-        return group
-    pairs = cKDTree(np.column_stack([x, y])).query_pairs(reach, output_type="ndarray")
-    pairs = pairs[owner[pairs[:, 0]] == owner[pairs[:, 1]]]
-    if not len(pairs):
-        return group
-    i, j = pairs.T
-    t = np.linspace(0.0, 1.0, 13)[1:-1]
-    xs = np.rint(x[i][:, None] * (1 - t) + x[j][:, None] * t).astype(np.intp)
-    ys = np.rint(y[i][:, None] * (1 - t) + y[j][:, None] * t).astype(np.intp)
-    saddle = relief[ys, xs].min(axis=1)
+    i, j, saddle = _saddles(x, y, owner, relief, reach)
     together = saddle > _TOGETHER * np.minimum(peak[i], peak[j])
     links = coo_array((np.ones(together.sum()), (i[together], j[together])), shape=(n, n))
     return np.asarray(connected_components(links, directed=False)[1])
+
+
+def _saddles(
+    x: Column, y: Column, owner: NDArray[np.intp], relief: Map, reach: float
+) -> tuple[NDArray[np.intp], NDArray[np.intp], Column]:
+    """Pairs of peaks of one region, and the lowest relief on the straight line between them."""
+    if x.size < 2:
+        return np.zeros(0, np.intp), np.zeros(0, np.intp), np.zeros(0)
+    pairs = cKDTree(np.column_stack([x, y])).query_pairs(reach, output_type="ndarray")
+    i, j = pairs[owner[pairs[:, 0]] == owner[pairs[:, 1]]].T
+    t = np.linspace(0.0, 1.0, 13)[1:-1]
+    xs = np.rint(x[i][:, None] * (1 - t) + x[j][:, None] * t).astype(np.intp)
+    ys = np.rint(y[i][:, None] * (1 - t) + y[j][:, None] * t).astype(np.intp)
+    return i, j, relief[ys, xs].min(axis=1, initial=np.inf).astype(np.float64)
 
 
 def _highest_of_each(group: NDArray[np.intp], peak: Column) -> NDArray[np.intp]:

@@ -40,7 +40,7 @@ class DetectOptions:
     diameter: tuple[Length, Length] | None = None
     colour: Colour = "auto"
     polarity: Polarity = "auto"
-    highest_doubt: float = 0.45
+    highest_doubt: float = 0.43
 
     def __post_init__(self) -> None:
         for name, known in (("kind", Kind), ("colour", Colour), ("polarity", Polarity)):

@@ -77,7 +77,14 @@ def plot(seed: int) -> object:
     if kind == "even":
         n = min(n, 85)
     sizes = radii(rng, n, float(rng.uniform(8, 11)), 0.22, 6, 16)
-    plan = replace(base.plan, kind=kind, radii_mm=sizes, clumps=9, clump_mm=62, nearest=1.3)
+    plan = replace(
+        base.plan,
+        kind=kind,
+        radii_mm=sizes,
+        clumps=9,
+        clump_mm=62,
+        nearest=float(rng.uniform(1.4, 2.4)),
+    )
     camera = replace(
         base.camera, tilt_deg=float(rng.uniform(1, 10)), towards_deg=float(rng.uniform(60, 110))
     )
