@@ -72,7 +72,7 @@ def dishes() -> dict[str, Dish]:
             seed=103, bench="pale cloth", camera=_dish_camera(5.5, 95, 2, (8, -4)),
             sun=Sun(from_deg=250, elevation_deg=52), exposure=Exposure(gain=1.12, tint=(1.0, 1.0, 1.02)),
             clutter=Clutter(label="A5", second="14/6", glare="tubes", glare_at=(10, 8), glare_level=0.24, drops=60),
-            plan=Plan(kind="few", radii_mm=sizes(3, 10, median=1.7, spread=0.3, least=0.9, most=2.5)),
+            plan=Plan(kind="few", radii_mm=sizes(3, 9, median=1.7, spread=0.3, least=0.9, most=2.5)),
             agar=(0.095, 0.052, 0.014), clear=(0.62, 0.37, 0.10),
         ),
         "dish_04": Dish(
@@ -108,14 +108,14 @@ def plots() -> dict[str, Plot]:
         "plot_01": Plot(
             seed=201, camera=_plot_camera(9, 70, 2, (0, 14)), sun=Sun(from_deg=235, elevation_deg=40),
             exposure=Exposure(gain=1.75), soil=Soil(mossy=0.8, cloddy=0.6), sky=0.28, litter=Litter(straws=70),
-            plan=Plan(kind="clumped", clumps=9, clump_mm=62, nearest=1.45,
+            plan=Plan(kind="clumped", clumps=9, clump_mm=62, nearest=2.1,
                       radii_mm=sizes(21, 92, median=9.5, spread=0.22, least=6.5, most=15)),
         ),
         "plot_02": Plot(
             seed=202, camera=_plot_camera(5, 250, -3, (0, 0), scale=1.46), sun=Sun(from_deg=310, elevation_deg=50),
             exposure=Exposure(gain=1.7, slant_deg=300, tint=(0.98, 1.0, 1.03)),
             soil=Soil(colour=(0.105, 0.078, 0.056), cloddy=0.9, stony=0.5, damp=0.7), litter=Litter(straws=25),
-            plan=Plan(kind="random", nearest=1.3, radii_mm=sizes(22, 66, median=11, spread=0.24, least=7, most=17)),
+            plan=Plan(kind="random", nearest=2.0, radii_mm=sizes(22, 66, median=11, spread=0.24, least=7, most=17)),
             leaves=(2, 6), sky=0.5,
         ),
         "plot_03": Plot(
@@ -129,7 +129,7 @@ def plots() -> dict[str, Plot]:
             seed=204, camera=_plot_camera(3, 10, 4, (0, 0), scale=1.44), sun=Sun(from_deg=260, elevation_deg=56),
             exposure=Exposure(gain=1.6), soil=Soil(cloddy=0.35, damp=0.5, mossy=0.5),
             litter=Litter(straws=260, long_mm=60),
-            plan=Plan(kind="random", nearest=1.3, radii_mm=sizes(24, 116, median=8.2, spread=0.2, least=6, most=12)),
+            plan=Plan(kind="random", nearest=2.0, radii_mm=sizes(24, 116, median=8.2, spread=0.2, least=6, most=12)),
             leaves=(2, 4), weed=False,
         ),
     }  # fmt: skip
@@ -139,7 +139,7 @@ def leaves() -> dict[str, LeafShot]:
     """Give the three leaves by name."""
     return {
         "leaf_01": LeafShot(
-            seed=301, camera=_leaf_camera(3, 70, 1), sun=Sun(from_deg=225, elevation_deg=48),
+            seed=311, camera=_leaf_camera(3, 70, 1), sun=Sun(from_deg=225, elevation_deg=48),
             exposure=Exposure(gain=1.25), leaf=Leaf(seed=4, turn_deg=7),
             plan=Plan(kind="random", radii_mm=sizes(31, 64, median=1.25, spread=0.3, least=0.75, most=2.4)),
         ),
