@@ -253,25 +253,25 @@ def main() -> None:
     general = fit([data[name] for name in fitted])
     print("fitted on all:", " ".join(f"{n} {score(s, general)[0]:.3f}" for n, s in data.items()))
     show("GENERAL", general)
-    for folder in map(Path, sys.argv[1:]):
-        for kind in DIAMETERS:
-            scenes = drawn_scenes(folder, kind)
-            if not scenes:
-                continue
-            false = counter_examples(folder, kind) if kind == "colonies" else []
-            left = [
-                score(
-                    [s],
-                    fit([scenes[:k] + scenes[k + 1 :] + false], around=general, ridge=KIND_RIDGE),
-                )
-                for k, s in enumerate(scenes)
-            ]
-            weight = [len(s.truth) for s in scenes]
-            before = score(scenes, general)[0]
-            print(
-                f"{kind}: F1 with GENERAL {before:.3f}, left out {np.average([f for f, _ in left], weights=weight):.3f}"
-            )
-            show(kind.upper(), fit([scenes + false], around=general, ridge=KIND_RIDGE))
+    folders = [Path(name) for name in sys.argv[1:]]
+    for kind in DIAMETERS if folders else ():
+        fit_kind(kind, folders, general)
+
+
+def fit_kind(kind: Kind, folders: list[Path], general: DoubtModel) -> None:
+    """Fit one kind on drawn scenes, near the general weights; leave one photograph out to score."""
+    scenes = [s for folder in folders for s in drawn_scenes(folder, kind)]
+    false = []
+    if kind == "colonies":
+        false = [s for folder in folders for s in counter_examples(folder, kind)]
+    left = [
+        score([s], fit([scenes[:k] + scenes[k + 1 :] + false], around=general, ridge=KIND_RIDGE))
+        for k, s in enumerate(scenes)
+    ]
+    weight = [len(s.truth) for s in scenes]
+    before, after = score(scenes, general)[0], np.average([f for f, _ in left], weights=weight)
+    print(f"{kind}: {len(scenes)} photographs, F1 with GENERAL {before:.3f}, left out {after:.3f}")
+    show(kind.upper(), fit([scenes + false], around=general, ridge=KIND_RIDGE))
 
 
 if __name__ == "__main__":
