@@ -12,13 +12,15 @@ from detect.choice import choose
 from detect.contrast import Colour, Contrast, contrast_map
 from detect.doubt import DoubtModel, doubt_of, features
 from detect.plants import fused, leaf_axes, rosette_features
-from detect.regions import Candidates
+from detect.regions import Candidates, join
 from detect.view import View
 from detect.wanted import DetectOptions, Kind
 
 _USUAL_COLOUR: dict[Kind, Colour] = {"seedlings": "green"}
 # A leaf's gloss and veins vary in lightness: lesions are told by hue rather.
 _CALMING: dict[Kind, float] = {"lesions": 1.0}
+# Candidates are looked for a little beyond the range: too small a range costs more than too wide.
+_BELOW, _ABOVE = 0.7, 1.4
 # Below this evidence for one side, both are tried.
 _SURE = 0.6
 
@@ -108,9 +110,17 @@ def judge_side(
         many_colours=options.kind == "colonies",
     )
     plants = options.kind == "seedlings"
-    looked_at = fused(contrast, smallest_px) if plants else contrast
-    candidates = find_candidates(
-        looked_at, view.inside, smallest_px=0.7 * smallest_px, largest_px=1.4 * largest_px
+    maps = fused(contrast, smallest_px) if plants else (contrast,)
+    candidates = join(
+        [
+            find_candidates(
+                looked_at,
+                view.inside,
+                smallest_px=_BELOW * smallest_px,
+                largest_px=_ABOVE * largest_px,
+            )
+            for looked_at in maps
+        ]
     )
     measured = features(
         candidates, noise=contrast.noise, smallest_px=smallest_px, largest_px=largest_px

@@ -13,9 +13,9 @@ from detect.contrast import Contrast, Map
 from detect.regions import Candidates
 from detect.splitting import nearest_by_power
 
-# Leaves of one plant are fused by a blur of this share of the smallest diameter, after the
+# Leaves of one plant are fused by blurs of these shares of the smallest diameter, after the
 # contrast is cut at this multiple of the threshold so that a bright leaf does not outweigh the rest.
-_FUSING_BLUR, _FUSING_CUT = 0.4, 1.5
+_FUSING_BLURS, _FUSING_CUT = (0.35, 0.5), 1.5
 # Scales of the leaf directions, as shares of the smallest diameter.
 _EDGE_BLUR, _LEAF_BLUR = 0.06, 0.15
 _RAYS, _STEPS = 24, np.arange(0.2, 1.5, 0.1)
@@ -40,8 +40,8 @@ class Leaves:
     sine: Map
 
 
-def fused(contrast: Contrast, smallest_px: float) -> Contrast:
-    """Return a contrast map on which the leaves of a plant run together.
+def fused(contrast: Contrast, smallest_px: float) -> tuple[Contrast, ...]:
+    """Return contrast maps on which the leaves of a plant run together, more and more so.
 
     Parameters
     ----------
@@ -51,10 +51,13 @@ def fused(contrast: Contrast, smallest_px: float) -> Contrast:
 
     Returns
     -------
-    Contrast
+    tuple of Contrast
     """
     cut = np.minimum(contrast.map, np.float32(_FUSING_CUT * contrast.threshold))
-    return replace(contrast, map=cv2.GaussianBlur(cut, (0, 0), _FUSING_BLUR * smallest_px))
+    return tuple(
+        replace(contrast, map=cv2.GaussianBlur(cut, (0, 0), blur * smallest_px))
+        for blur in _FUSING_BLURS
+    )
 
 
 def leaf_axes(contrast: Contrast, smallest_px: float) -> Leaves:
