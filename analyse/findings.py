@@ -11,6 +11,7 @@ import numpy as np
 from numpy.typing import ArrayLike, NDArray
 from shapely.geometry.base import BaseGeometry
 
+from analyse.chance import SEED, SIMULATIONS
 from analyse.density import Limits, density_per_cm2
 from analyse.dispersion import (
     Dispersion,
@@ -22,13 +23,11 @@ from analyse.dispersion import (
 from analyse.errors import GridWrong
 from analyse.flags import count_flags, flag_sentences
 from analyse.models import LARGEST_COUNT, PoissonFit, poisson_frequencies
-from analyse.nulls import SIMULATIONS, SimulatedTest, simulated_p
+from analyse.nulls import SimulatedTest, simulated_p
 from analyse.pattern import CountTable, Pattern, Unit
 from analyse.quadrats import GridOptions, QuadratCounts, count_in_quadrats, lay_grid
 from analyse.verdict import LEVEL, Verdict, decide, detectable, sentence
 from detect.errors import OptionWrong
-
-SEED = 1
 
 
 @dataclass(frozen=True, slots=True, eq=False)

@@ -11,12 +11,10 @@ import shapely
 from numpy.typing import ArrayLike, NDArray
 from shapely.geometry.base import BaseGeometry
 
+from analyse.chance import FEWEST_SIMULATIONS, MOST_SIMULATIONS, SIMULATIONS
 from analyse.dispersion import checked_areas, clipped_dispersion
 from detect.errors import OptionWrong
 
-SIMULATIONS = 999
-FEWEST_SIMULATIONS = 99
-MOST_SIMULATIONS = 1_000_000
 _TIE = 1e-9  # statistics closer than this share of themselves count as equal
 _CELLS_AT_ONCE = 2_000_000
 _POINTS_AT_ONCE = 1_000_000

@@ -8,10 +8,9 @@ from dataclasses import dataclass, field
 from pathlib import Path
 from typing import Any
 
+from analyse.chance import SEED, SIMULATIONS
 from analyse.errors import GridWrong
-from analyse.findings import SEED
 from analyse.grid_options import GridOptions
-from analyse.nulls import SIMULATIONS
 from detect.lengths import Length, parse_length
 from detect.requests import DetectRequest, parse_request
 

@@ -22,7 +22,6 @@ from detect.area import (
 )
 from detect.dish import Dish, find_dish
 from detect.errors import OptionWrong
-from detect.find import find_spots
 from detect.lengths import Length
 from detect.photograph import Photograph, read_photograph
 from detect.readers import READERS, AreaWord, Corners, Four
@@ -181,6 +180,8 @@ def detect_photograph(path: Path, request: DetectRequest) -> tuple[Photograph, S
     RequestWrong
         If what is asked does not fit it.
     """
+    from detect.find import find_spots  # loads scipy, which help can do without
+
     photograph = read_photograph(path)
     dish_needed = request.where == "dish" or request.scale.dish is not None
     dish = find_dish(photograph) if dish_needed else None
