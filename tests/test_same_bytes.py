@@ -49,7 +49,7 @@ def everything(folder: Path) -> dict[str, bytes]:
 @pytest.fixture(scope="module")
 def beds(tmp_path_factory: pytest.TempPathFactory) -> Path:
     folder = tmp_path_factory.mktemp("beds")
-    for k, n in enumerate((40, 25, 31), start=1):
+    for k, n in enumerate((40, 25), start=1):
         write_discs(folder / f"bed_{k}.png", scattered(n, seed=k))
     (folder / "survey.toml").write_text(RECIPE, encoding="utf-8")
     return folder
@@ -60,7 +60,7 @@ def test_two_runs_write_the_same_bytes(beds: Path, tmp_path: Path) -> None:
     survey(beds, tmp_path / "two", workers=2, hashes=2, threads=2, seed=5)
     one, two = everything(tmp_path / "one"), everything(tmp_path / "two")
     tables = {"summary.csv", "quadrats.csv", "tests.csv"}
-    assert tables | {f"bed_{k}.points.csv" for k in (1, 2, 3)} <= set(one)
+    assert tables | {f"bed_{k}.points.csv" for k in (1, 2)} <= set(one)
     assert one == two
     # Another seed is seen, so this comparison could have failed; places found rest on none.
     survey(beds, tmp_path / "three", workers=2, hashes=1, threads=1, seed=6)
