@@ -65,7 +65,7 @@ HighestDoubtOption = Annotated[
         WHAT,
         "Leave out what is more doubtful than this.",
         "0..1",
-        _DEFAULTS.highest_doubt,
+        "by kind",
     ),
 ]
 MmPerPixelOption = Annotated[

@@ -30,8 +30,9 @@ _USUAL_MM: dict[Kind, tuple[float, float]] = {
 }
 # The working map is reduced until the smallest object measures this many pixels; leaves need more.
 _WORKING_PX, _WORKING_PX_PLANTS = 8.0, 16.0
-# A colony, seedling or lesion this many times larger than asked for is something else (a glare).
-_AT_MOST = 1.2
+# A colony, seedling or lesion is no smaller or larger than these multiples of the range asked for:
+# what is larger is a glare, what is smaller a torn leaf or a speck.
+_AT_LEAST, _AT_MOST = 0.6, 1.2
 
 
 @dataclass(frozen=True, slots=True)
@@ -81,11 +82,12 @@ def find_spots(
     small, large = smallest * view.shrink, largest * view.shrink
     judgement = judged(view, small, large, options, model)
     contrast = judgement.contrast
-    rows = choose(judgement.candidates, judgement.doubt, highest_doubt=options.highest_doubt)
+    rows = choose(judgement.candidates, judgement.doubt, highest_doubt=options.most_doubt)
     spots = _spots(view, judgement, rows, plants=plants)
     spots = spots.where(area.contains(spots.centres))
     if options.kind != "spots":
-        spots = spots.where(2 * spots.radius <= _AT_MOST * largest)
+        diameter = 2 * spots.radius
+        spots = spots.where((diameter >= _AT_LEAST * smallest) & (diameter <= _AT_MOST * largest))
     order = np.lexsort((spots.x, spots.y))
     spots = spots.where(order).renumbered()
     settings = {
@@ -95,7 +97,7 @@ def find_spots(
         "direction_lab": [round(float(v), 4) for v in contrast.direction],
         "noise_lab": round(contrast.noise, 4),
         "working_px_per_px": round(view.shrink, 6),
-        "highest_doubt": options.highest_doubt,
+        "highest_doubt": options.most_doubt,
     }
     return Found(spots, settings)
 

@@ -129,7 +129,7 @@ def plots() -> dict[str, Plot]:
             seed=204, camera=_plot_camera(3, 10, 4, (0, 0), scale=1.44), sun=Sun(from_deg=260, elevation_deg=56),
             exposure=Exposure(gain=1.6), soil=Soil(cloddy=0.35, damp=0.5, mossy=0.5),
             litter=Litter(straws=260, long_mm=60),
-            plan=Plan(kind="random", nearest=2.0, radii_mm=sizes(24, 116, median=8.2, spread=0.2, least=6, most=12)),
+            plan=Plan(kind="random", nearest=2.3, radii_mm=sizes(24, 116, median=8.2, spread=0.2, least=6, most=12)),
             leaves=(2, 4), weed=False,
         ),
     }  # fmt: skip

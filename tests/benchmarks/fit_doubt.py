@@ -224,7 +224,7 @@ def score(scenes: list[Scene], model: DoubtModel) -> tuple[float, float]:
     hits = spots = marks = 0
     for s in scenes:
         doubt = doubt_of(s.measured, model)
-        rows = choose(s.candidates, doubt, highest_doubt=DetectOptions().highest_doubt)
+        rows = choose(s.candidates, doubt, highest_doubt=DetectOptions().most_doubt)
         match = match_spots(s.xy[rows], s.truth, s.radius)
         missed = np.ones(len(rows), dtype=bool)
         missed[match.found] = False

@@ -159,7 +159,7 @@ def test_spots_are_found_and_put_on_a_sheet(tmp_path: Path) -> None:
     assert sheet.scale.mm_per_px([[5, 5]])[0] == pytest.approx(0.2)
     assert sheet.settings["request"] == {
         "kind": "spots", "diameter": ["10px", "24px"], "colour": "auto", "polarity": "auto",
-        "highest_doubt": DetectOptions().highest_doubt, "mm_per_pixel": 0.2, "area": "frame",
+        "mm_per_pixel": 0.2, "area": "frame",
     }  # fmt: skip
     assert sheet.tool_version == tool_version()
     json.dumps(sheet.settings, allow_nan=False)
