@@ -10,7 +10,7 @@ import shapely
 from numpy.typing import NDArray
 
 from detect.area import StudyArea
-from detect.photograph import Photograph
+from detect.photograph import Photograph, StoredPixels
 from detect.spots import Spots
 
 Picture = NDArray[np.uint8]
@@ -58,8 +58,7 @@ def draw_overlay(
         Red, green and blue.
     """
     shrink = min(1.0, longest_side / max(photograph.width, photograph.height))
-    pixels = photograph.pixels(shrink=shrink)
-    picture = np.ascontiguousarray(np.round(pixels * 255.0), dtype=np.uint8)
+    picture = _in_8_bits(photograph.reduced(shrink=shrink))
     stroke = max(1, round(max(picture.shape[:2]) / 1000))
     _draw(picture, _dashes(area, shrink, 9.0 * stroke), _OUTLINE, stroke, closed=False)
     # Pixel centres are at whole numbers, so the picture's corner is at -0.5 and stays there.
@@ -83,10 +82,17 @@ def overlay_jpeg(
     """Draw every spot and the study area as `draw_overlay` does, and return a JPEG file's bytes."""
     picture = draw_overlay(photograph, area, spots, longest_side=longest_side)
     quality = [cv2.IMWRITE_JPEG_QUALITY, _JPEG_QUALITY]
-    done, data = cv2.imencode(".jpg", np.ascontiguousarray(picture[:, :, ::-1]), quality)
+    done, data = cv2.imencode(".jpg", cv2.cvtColor(picture, cv2.COLOR_RGB2BGR), quality)
     if not done:
         raise RuntimeError("the overlay could not be encoded as JPEG")
     return data.tobytes()
+
+
+def _in_8_bits(stored: StoredPixels) -> Picture:
+    """Copy pixels of any depth to be drawn on."""
+    if stored.dtype == np.uint8:
+        return np.array(stored, dtype=np.uint8)
+    return np.round(stored * np.float32(255.0 / np.iinfo(stored.dtype).max)).astype(np.uint8)
 
 
 def _draw(

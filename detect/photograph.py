@@ -93,13 +93,32 @@ class Photograph:
         -------
         ndarray of shape (round(height * shrink), round(width * shrink), 3), float32
         """
+        array = self.reduced(shrink=shrink, box=box)
+        return array.astype(np.float32) * np.float32(1.0 / np.iinfo(array.dtype).max)
+
+    def reduced(
+        self, *, shrink: float = 1.0, box: tuple[int, int, int, int] | None = None
+    ) -> StoredPixels:
+        """Return what `pixels` returns, as whole numbers of the depth that the file holds.
+
+        Parameters
+        ----------
+        shrink : float
+            Factor from 0 (excluded) to 1 by which width and height are multiplied.
+        box : tuple of int or None
+            Left, top, right, bottom of the part wanted (right and bottom excluded); None for all.
+
+        Returns
+        -------
+        ndarray of shape (round(height * shrink), round(width * shrink), 3), uint8 or uint16
+        """
         left, top, right, bottom = box or (0, 0, self.width, self.height)
-        array = self.stored[top:bottom, left:right]
+        array: StoredPixels = self.stored[top:bottom, left:right]
         if shrink < 1.0:
             height, width = array.shape[:2]
             size = (max(1, round(width * shrink)), max(1, round(height * shrink)))
             array = cv2.resize(array, size, interpolation=cv2.INTER_AREA)
-        return array.astype(np.float32) * np.float32(1.0 / np.iinfo(array.dtype).max)
+        return array
 
 
 def read_photograph(path: Path) -> Photograph:

@@ -87,6 +87,7 @@ def peak_bytes() -> int:
 
 def memory(photo: Path, *, idle: bool) -> dict[str, int]:
     """Peak memory of the step, or of its imports alone."""
+    import detect.find
     import detect.outcome
     import detect.requests  # noqa: F401
 

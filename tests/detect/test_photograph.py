@@ -288,6 +288,22 @@ def test_shrunk_pixels_are_averages(tmp_path: Path) -> None:
     np.testing.assert_allclose(photograph.pixels(shrink=0.5), means, atol=0.51 / 255)
 
 
+@pytest.mark.parametrize("depth", [np.uint8, np.uint16])
+def test_reduced_pixels_are_the_same_in_the_depth_of_the_file(depth: type, tmp_path: Path) -> None:
+    most = np.iinfo(depth).max
+    stored = np.ascontiguousarray(COLOUR.astype(depth) * (most // 255))
+    photograph = Photograph(tmp_path / "a.png", "0" * 64, stored)
+    for choices in (
+        {},
+        {"shrink": 0.4},
+        {"box": (3, 2, 30, 17)},
+        {"shrink": 0.7, "box": (0, 5, 9, 24)},
+    ):
+        reduced = photograph.reduced(**choices)
+        assert reduced.dtype == depth
+        np.testing.assert_allclose(reduced / most, photograph.pixels(**choices), atol=1e-6)
+
+
 # ---- files that are wrong -----------------------------------------------------------------------
 
 
