@@ -198,7 +198,7 @@ def test_a_study_area_checks_itself() -> None:
         StudyArea(Polygon(), "polygon", "")
 
 
-@given(st.floats(1, 500), st.floats(1, 500), st.floats(0, 0.4))
+@given(st.floats(1, 500), st.floats(1, 500), st.floats(0.001, 0.4))
 def test_an_area_survives_its_file(width: float, height: float, inset: float) -> None:
     outline = MultiPolygon([box(0, 0, width, height), box(width + 1, 0, width + 2, height)])
     area = StudyArea(outline.buffer(-inset), "polygon", "drawn")
