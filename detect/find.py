@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Any
 
 import numpy as np
@@ -78,7 +78,8 @@ def find_spots(
     smallest, largest = _diameters(photograph, area, options, scale, model)
     plants = options.kind == "seedlings"
     working = _WORKING_PX_PLANTS if plants else _WORKING_PX
-    view = view_of(photograph, area, shrink=min(1.0, working / smallest))
+    looked_at = _with_its_surroundings(area, largest)
+    view = view_of(photograph, looked_at, shrink=min(1.0, working / smallest))
     small, large = smallest * view.shrink, largest * view.shrink
     judgement = judged(view, small, large, options, model)
     contrast = judgement.contrast
@@ -100,6 +101,17 @@ def find_spots(
         "highest_doubt": options.most_doubt,
     }
     return Found(spots, settings)
+
+
+def _with_its_surroundings(area: StudyArea, largest_px: float) -> StudyArea:
+    """Return the part to look at: a plot and a little more, since its ground goes on beyond.
+
+    An object across the edge of a plot is then measured whole, and counts if its own centre lies
+    within. Beyond a dish or a leaf lies something else.
+    """
+    if area.kind != "plot":
+        return area
+    return replace(area, polygon=area.polygon.buffer(largest_px))
 
 
 def _diameters(
