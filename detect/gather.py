@@ -2,13 +2,13 @@
 
 from __future__ import annotations
 
-import re
 from collections.abc import Callable, Sequence
 from pathlib import Path
 
 from detect.amendments import SHEET_SUFFIX
 from detect.errors import RequestWrong
 from detect.photograph import find_photographs
+from detect.photograph import natural_order as natural_order
 
 
 def gather_photographs(paths: Sequence[Path]) -> list[Path]:
@@ -79,12 +79,6 @@ def _find_sheets(folder: Path) -> list[Path]:
             f"The folder {folder} holds no sheets (*{SHEET_SUFFIX}); run strewn detect first."
         )
     return sorted(sheets, key=lambda file: (natural_order(file.name), file.name))
-
-
-def natural_order(name: str) -> list[tuple[int, int, str]]:
-    """Return a key that puts dish_2 before dish_10."""
-    parts = re.split(r"(\d+)", name.casefold())
-    return [(1, int(part), "") if part.isdecimal() else (0, 0, part) for part in parts]
 
 
 def _check_names(paths: Sequence[Path]) -> None:

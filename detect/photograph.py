@@ -182,13 +182,19 @@ def find_photographs(folder: Path) -> list[Path]:
         raise RequestWrong(
             f"The folder {folder} holds no photograph ({known}); give the folder they lie in."
         )
-    return sorted(found, key=lambda f: (_natural(f.name), f.name))
+    return sorted(found, key=lambda f: (natural_order(f.name), f.name))
 
 
-def _natural(name: str) -> list[tuple[int, int, str]]:
-    """Order numbers within names by value."""
-    parts = re.split(r"(\d+)", name.lower())
-    return [(1, int(p), "") if p.isdecimal() else (0, 0, p) for p in parts]
+def natural_order(name: str) -> list[tuple[int, int, str]]:
+    """Return a key that puts dish_2 before dish_10.
+
+    Examples
+    --------
+    >>> sorted(["dish_10.jpg", "Dish_2.jpg"], key=natural_order)
+    ['Dish_2.jpg', 'dish_10.jpg']
+    """
+    parts = re.split(r"(\d+)", name.casefold())
+    return [(1, int(part), "") if part.isdecimal() else (0, 0, part) for part in parts]
 
 
 def _bytes_of(path: Path) -> bytes:
