@@ -10,6 +10,13 @@ from typing import TYPE_CHECKING, Annotated, Any
 import typer
 from typer.core import TyperGroup
 
+from analyse.command_options import (
+    GridOption,
+    QuadratOption,
+    RingsOption,
+    SeedOption,
+    SimulationsOption,
+)
 from analyse.errors import AnalyseError
 from analyse.plan import RECIPE_NAME, Plan, Trial, grid_from, plan_from
 from detect import commands
@@ -47,7 +54,7 @@ if TYPE_CHECKING:
     from analyse.analysis import Analysed
     from analyse.recipe import Recipe
 
-GRID, CHANCE, TABLES, RECIPE = "Quadrats", "Simulation", "Tables", "Recipe"
+TABLES, RECIPE = "Tables", "Recipe"
 
 
 class PlainGroup(TyperGroup):
@@ -103,62 +110,6 @@ def _whole(
     ] = False,
 ) -> None:
     """Take the options that stand before a command."""
-
-
-QuadratOption = Annotated[
-    str | None,
-    typer.Option(
-        "--quadrat",
-        help="Side of square quadrats, such as 10mm; by rule, about 2 spots in each.",
-        metavar="LENGTH",
-        show_default=False,
-        rich_help_panel=GRID,
-    ),
-]
-GridOption = Annotated[
-    str | None,
-    typer.Option(
-        "--grid",
-        help="Divide the area's bounding box into rows x columns, such as 5x5.",
-        metavar="RxC",
-        show_default=False,
-        rich_help_panel=GRID,
-    ),
-]
-RingsOption = Annotated[
-    str | None,
-    typer.Option(
-        "--rings",
-        help="Divide a dish into rings x sectors of equal area, such as 3x8.",
-        metavar="RxS",
-        show_default=False,
-        rich_help_panel=GRID,
-    ),
-]
-SeedOption = Annotated[
-    int | None,
-    typer.Option(
-        "--seed",
-        help="Seed of the simulations: the same seed gives the same results."
-        f" Default: {Trial().seed}, or the recipe's.",
-        metavar="N",
-        min=0,
-        show_default=False,
-        rich_help_panel=CHANCE,
-    ),
-]
-SimulationsOption = Annotated[
-    int | None,
-    typer.Option(
-        "--simulations",
-        help="Random patterns that each photograph is compared with."
-        f" Default: {Trial().simulations}, or the recipe's.",
-        metavar="N",
-        min=1,
-        show_default=False,
-        rich_help_panel=CHANCE,
-    ),
-]
 
 
 @app.command("analyse")

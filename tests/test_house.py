@@ -14,7 +14,7 @@ ROOT = Path(__file__).parent.parent
 ROOMS = sorted([*(ROOT / "detect").rglob("*.py"), *(ROOT / "analyse").rglob("*.py")])
 DRAWING = {"analyse/figures.py", "detect/overlay.py"}
 # Also drawing, one question each: how a mark looks, and how a figure becomes part of a page.
-DRAWING |= {"analyse/marks.py", "analyse/embedding.py"}
+DRAWING |= {"analyse/charts.py", "analyse/marks.py", "analyse/embedding.py"}
 
 
 def imports(source: str) -> Iterator[tuple[str, bool]]:

@@ -1,0 +1,107 @@
+"""The record of everything that is said about one photograph or table."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+from analyse.density import Limits
+from analyse.dispersion import Dispersion
+from analyse.flags import flag_sentences
+from analyse.models import PoissonFit
+from analyse.nulls import SimulatedTest
+from analyse.pattern import Pattern, Unit
+from analyse.quadrats import QuadratCounts
+from analyse.verdict import Verdict
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Findings:
+    """What was found for one photograph or table.
+
+    Parameters
+    ----------
+    name : str
+        File name of the photograph or table.
+    n : int
+        Points counted.
+    unit : {"mm", "px"} or None
+        Unit of lengths; None for a table of counts without a side.
+    area : float or None
+        Study area in the square of `unit`.
+    pattern : Pattern or None
+        The points; None for a table of counts.
+    counts : QuadratCounts
+        Counts and, for points, the grid.
+    expected, residuals : ndarray of shape (q,)
+        Counts expected at random given n, and standardised residuals (NaN without points).
+    dispersion_whole : Dispersion or None
+        Over whole quadrats; None where there are fewer than 2.
+    dispersion_all : Dispersion
+        Over all quadrats, expected counts by area.
+    simulated : SimulatedTest
+        X2 over all quadrats judged by simulation given n: what the verdict rests on.
+    density : Limits or None
+        Points per square centimetre with 95 % limits; None where no millimetres are known.
+    poisson : PoissonFit or None
+        Frequencies in whole quadrats; None without 2 whole ones or with counts above 10,000.
+    verdict : str
+        The verdict.
+    sentence : str
+        The verdict as a sentence.
+    detectable : (low, high)
+        VMR that would have been seen with 80 % power, on the even and the clumped side.
+    flags : tuple of str
+        Reasons for care, names in `analyse.flags.FLAGS`.
+    flag_values : dict
+        Numbers that the flags' sentences quote.
+    seed : int
+        Seed of the simulations.
+    settings : dict
+        How the quadrats were laid and the test was done; plain values.
+    """
+
+    name: str
+    n: int
+    unit: Unit | None
+    area: float | None
+    pattern: Pattern | None
+    counts: QuadratCounts
+    expected: NDArray[np.float64]
+    residuals: NDArray[np.float64]
+    dispersion_whole: Dispersion | None
+    dispersion_all: Dispersion
+    simulated: SimulatedTest
+    density: Limits | None
+    poisson: PoissonFit | None
+    verdict: Verdict
+    sentence: str
+    detectable: tuple[float, float]
+    flags: tuple[str, ...]
+    flag_values: dict[str, Any]
+    seed: int
+    settings: dict[str, Any]
+
+    def __post_init__(self) -> None:
+        for name in ("expected", "residuals"):
+            column = np.array(getattr(self, name), dtype=np.float64)
+            if column.shape != (len(self.counts),):
+                raise ValueError(f"{name} has shape {column.shape} for {len(self.counts)} quadrats")
+            column.setflags(write=False)
+            object.__setattr__(self, name, column)
+
+    @property
+    def flag_sentences(self) -> tuple[str, ...]:
+        """The flags as sentences."""
+        return flag_sentences(self.flags, self.flag_values)
+
+    @property
+    def rests_on(self) -> str:
+        """What the verdict rests on, in words."""
+        return (
+            f"simulated two-sided p of X2 over all {len(self.counts)} quadrats,"
+            " expected counts by area, given the total"
+        )
