@@ -23,6 +23,8 @@ _CALMING: dict[Kind, float] = {"lesions": 1.0}
 _BELOW, _ABOVE = 0.7, 1.4
 # Below this evidence for one side, both are tried.
 _SURE = 0.6
+# A region whose mean contrast is less than this many times the noise is noise.
+LEAST_CONTRAST = 3.5
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -34,7 +36,7 @@ class Judgement:
     contrast : Contrast
         The map as it is, before leaves are fused to plants.
     candidates : Candidates
-    measured : ndarray of shape (n, 8) or (n, 10)
+    measured : ndarray of shape (n, 9) or (n, 11)
         Features of the doubt model; for plants also how the leaves are arranged.
     doubt : ndarray of shape (n,)
     """
@@ -122,6 +124,7 @@ def judge_side(
             for looked_at in maps
         ]
     )
+    candidates = candidates.where(candidates.contrast >= _least_contrast(contrast, colour))
     measured = features(
         candidates, noise=contrast.noise, smallest_px=smallest_px, largest_px=largest_px
     )
@@ -129,6 +132,15 @@ def judge_side(
         rosettes = rosette_features(candidates, leaf_axes(contrast, smallest_px))
         measured = np.column_stack([measured, rosettes])
     return Judgement(contrast, candidates, measured, doubt_of(measured, model))
+
+
+def _least_contrast(contrast: Contrast, colour: Colour) -> float:
+    """Mean contrast below which a region is noise.
+
+    Where a colour is named, the ground's spread is other things of that hue, and grain alone noise.
+    """
+    noise = contrast.noise if colour in ("auto", "grey") else contrast.grain
+    return LEAST_CONTRAST * noise
 
 
 def _worth(judgement: Judgement) -> float:

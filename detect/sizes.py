@@ -42,7 +42,7 @@ def learn_diameters(
     Every octave of diameter is searched on its own; each is worth the sum over its objects of
     (0.6 - doubt) times diameter to the power 1.5, so neither many specks nor one giant wins. The
     range runs between weighted quantiles of the diameters found in the best octave and its
-    neighbours.
+    neighbours. Where no octave holds anything, it is the last one, which is searched soonest.
     """
     x0, y0, x1, y1 = area.polygon.bounds
     short = min(x1 - x0, y1 - y0)
@@ -55,14 +55,14 @@ def learn_diameters(
     worth = np.array([weight.sum() for _, weight in found])
     best = int(np.argmax(worth))
     if not worth[best] > 0:
-        return lowest, lowest * 2.0**count
+        return lowest * 2.0 ** (count - 1), lowest * 2.0**count
     near = found[max(0, best - 1) : best + 2]
     diameter = np.concatenate([d for d, _ in near])
     weight = np.concatenate([w for _, w in near])
     order = np.argsort(diameter)
     share = np.cumsum(weight[order]) / weight.sum()
     low, high = (diameter[order][np.searchsorted(share, q)] for q in (0.1, 0.9))
-    return float(0.75 * low), float(1.3 * high)
+    return float(0.75 * low), max(float(1.3 * high), lowest)
 
 
 def _octave(

@@ -15,11 +15,14 @@ Rgb = tuple[float, float, float]
 Layer = NDArray[np.float32]
 
 
-def photograph_of(image: NDArray[np.generic], *, name: str = "scene.png") -> Photograph:
-    """Wrap (height, width[, 3]) values, 0..1 or uint8, as a photograph."""
+def photograph_of(
+    image: NDArray[np.generic], *, name: str = "scene.png", bits: int = 8
+) -> Photograph:
+    """Wrap (height, width[, 3]) values, 0..1 or as stored, as a photograph."""
     array = np.asarray(image)
-    if array.dtype != np.uint8:
-        array = np.round(np.clip(array, 0, 1) * 255).astype(np.uint8)
+    if array.dtype not in (np.uint8, np.uint16):
+        kind = np.uint8 if bits == 8 else np.uint16
+        array = np.round(np.clip(array, 0, 1) * np.iinfo(kind).max).astype(kind)
     if array.ndim == 2:
         array = np.dstack([array] * 3)
     return Photograph(Path(name), "0" * 64, np.ascontiguousarray(array))
@@ -254,3 +257,91 @@ def text_page(seed: int = 1) -> Photograph:
 def plain_noise(seed: int = 1) -> Photograph:
     """Nothing but noise."""
     return photograph_of(0.5 + 0.1 * np.random.default_rng(seed).normal(size=(700, 900)))
+
+
+def scattered(
+    n: int,
+    *,
+    radius: tuple[float, float],
+    gap: float = 4.0,
+    size: tuple[int, int] = (420, 320),
+    seed: int = 1,
+) -> NDArray[np.float64]:
+    """Discs as rows x, y, r within a frame of (width, height), each `gap` from all others."""
+    rng = np.random.default_rng(seed)
+    discs: list[NDArray[np.float64]] = []
+    for _ in range(100_000):
+        r = rng.uniform(*radius)
+        place = rng.uniform([r + gap, r + gap], [size[0] - r - gap, size[1] - r - gap])
+        if all(np.hypot(*(place - d[:2])) > r + d[2] + gap for d in discs):
+            discs.append(np.array([*place, r]))
+        if len(discs) == n:
+            return np.array(discs)
+    raise RuntimeError(f"{n} discs do not fit")
+
+
+@dataclass(frozen=True, kw_only=True)
+class SpotScene:
+    """Discs, domes or rings on an uneven, noisy ground."""
+
+    discs: NDArray[np.float64]  # rows x, y, r
+    width: int = 420
+    height: int = 320
+    form: str = "disc"  # or "dome" (half height at r) or "ring" (open within 0.4 r)
+    ground: Rgb = (0.62, 0.56, 0.45)
+    colour: Rgb = (0.33, 0.28, 0.2)
+    light: float = 0.12  # from left to right
+    texture: float = 0.01
+    noise: float = 0.012
+    blur: float = 0.7
+    bits: int = 8
+    seed: int = 1
+
+    def alpha(self, x: Layer, y: Layer, disc: NDArray[np.float64]) -> Layer:
+        """How much of the object's colour each pixel takes."""
+        away = np.hypot(x - disc[0], y - disc[1]).astype(np.float32)
+        if self.form == "dome":
+            return np.sqrt(np.clip(1 - 0.75 * (away / disc[2]) ** 2, 0, 1)).astype(np.float32)
+        whole = cover(away - np.float32(disc[2]))
+        if self.form == "ring":
+            whole = whole - 0.7 * cover(away - np.float32(0.4 * disc[2]))
+        return whole
+
+    def draw(self) -> Photograph:
+        """Draw the scene."""
+        rng = np.random.default_rng(self.seed)
+        shape = (self.height, self.width)
+        y, x = np.mgrid[: self.height, : self.width].astype(np.float32)
+        image = np.ones((*shape, 3), np.float32) * np.asarray(self.ground, np.float32)
+        for disc in np.asarray(self.discs).reshape(-1, 3):
+            lay(image, self.colour, self.alpha(x, y, disc))
+        image *= (1 + self.light * (x / self.width - 0.5))[..., None]
+        image *= (1 + self.texture * cloud(shape, rng, size=9))[..., None]
+        image = cv2.GaussianBlur(image, (0, 0), self.blur)
+        image += self.noise * rng.normal(size=image.shape).astype(np.float32)
+        return photograph_of(image, bits=self.bits)
+
+
+def rosette(
+    shape: tuple[int, int],
+    centre: tuple[float, float],
+    radius: float,
+    *,
+    leaves: int,
+    turn: float = 0.0,
+) -> Layer:
+    """Cover of a plant whose oval leaves stand around its centre, the longest tip at `radius`."""
+    y, x = np.mgrid[: shape[0], : shape[1]].astype(np.float32)
+    plant = np.zeros(shape, np.float32)
+    for k in range(leaves):
+        angle = turn + 2 * np.pi * k / leaves
+        dx = x - centre[0] - 0.56 * radius * np.cos(angle)
+        dy = y - centre[1] - 0.56 * radius * np.sin(angle)
+        along = (dx * np.cos(angle) + dy * np.sin(angle)) / (0.44 * radius)
+        across = (-dx * np.sin(angle) + dy * np.cos(angle)) / (0.24 * radius)
+        plant = np.maximum(plant, cover((np.hypot(along, across) - 1) * 0.24 * radius))
+        stalk = (x - centre[0]) * np.cos(angle) + (y - centre[1]) * np.sin(angle)
+        aside = -(x - centre[0]) * np.sin(angle) + (y - centre[1]) * np.cos(angle)
+        reach = np.maximum(np.abs(stalk - 0.1 * radius) - 0.1 * radius, np.abs(aside) - 1.5)
+        plant = np.maximum(plant, cover(reach.astype(np.float32)))
+    return plant
