@@ -56,11 +56,14 @@ def draw_residuals(axes: Axes, findings: Findings) -> DrawnResiduals:
     filled = PathCollection(
         paths, cmap=RESIDUAL_COLOURS, norm=norm, edgecolors=look.RULE, linewidths=0.6
     )
+    many = len(paths) > look.MOST_VECTOR_SPOTS
+    filled.set_rasterized(many)
     filled.set_array(np.ma.masked_invalid(values))
     axes.add_collection(filled, autolim=False)
     outlined = np.abs(np.nan_to_num(values)) >= look.NOTABLE
     notable = [path for path, beyond in zip(paths, outlined, strict=True) if beyond]
     rim = PathCollection(notable, facecolors="none", edgecolors=look.INK, linewidths=1.5, zorder=2)
+    rim.set_rasterized(many)
     axes.add_collection(rim, autolim=False)
     frame(axes, shapely.GeometryCollection(polygons).bounds, findings.unit)
     axes.set_anchor("S")
@@ -132,7 +135,9 @@ def frame(axes: Axes, bounds: tuple[float, ...], unit: str | None) -> None:
 def _draw_values(
     axes: Axes, polygons: Sequence[BaseGeometry], values: Points, outlined: NDArray[np.bool_]
 ) -> tuple[tuple[float, float, str], ...]:
-    """Write the residuals into the cells, or signs into the notable ones where cells are many."""
+    """Write the residuals into the cells, signs into the notable ones of many, none into dots."""
+    if len(polygons) > look.MOST_COUNTS:
+        return ()
     few = len(polygons) < look.MOST_NUMBERS
     size = float(np.clip(60.0 / np.sqrt(len(polygons)), 5.0, 8.0)) if few else 6.5
     labels = []

@@ -36,6 +36,8 @@ from detect.command_options import (
     LineOption,
     MmPerPixelOption,
     OutOption,
+    PlainCommand,
+    PlainHelp,
     PlotOption,
     PolarityOption,
     WorkersOption,
@@ -45,6 +47,7 @@ from detect.command_options import (
 from detect.errors import DetectError, OptionWrong, PhotographFailed, RequestWrong
 from detect.files import make_folder
 from detect.gather import gather_photographs
+from detect.readers import whole
 from detect.requests import tool_version
 from detect.terminal import exit_if_failed, progress_on_terminal, show_failures, show_path
 
@@ -57,7 +60,7 @@ if TYPE_CHECKING:
 TABLES, RECIPE = "Tables", "Recipe"
 
 
-class PlainGroup(TyperGroup):
+class PlainGroup(PlainHelp, TyperGroup):
     """Commands whose troubles are told in a sentence; only a bug keeps its traceback."""
 
     def invoke(self, ctx: Any) -> Any:
@@ -92,7 +95,7 @@ app = typer.Typer(
     help="From photographs of dishes, plots and leaves to checked counts and a verdict on whether"
     " the spots lie at random.",
 )
-app.command("detect")(commands.detect)
+app.command("detect", cls=PlainCommand)(commands.detect)
 
 
 def _show_version(wanted: bool) -> None:
@@ -112,13 +115,14 @@ def _whole(
     """Take the options that stand before a command."""
 
 
-@app.command("analyse")
+@app.command("analyse", cls=PlainCommand)
 def analyse(
     inputs: Annotated[
         list[Path] | None,
         typer.Argument(
-            help="Sheets, folders of sheets, or tables of points with the columns x and y.",
-            metavar="SHEET|DIR|CSV...",
+            help="Sheets (NAME.sheet.json, as detect writes them), folders of sheets, or tables of"
+            " points with the columns x and y.",
+            metavar="SHEET|DIR|CSV",
             show_default=False,
         ),
     ] = None,
@@ -171,7 +175,7 @@ def analyse(
     _finish(results, out, trial)
 
 
-@app.command("survey")
+@app.command("survey", cls=PlainCommand)
 def survey(
     folder: Annotated[
         Path,
@@ -249,13 +253,13 @@ def survey(
             out,
             trial=trial,
             keep_amendments=keep_amendments,
-            workers=workers_for(len(paths), workers),
+            workers=workers_for(len(paths), whole(workers, "--workers")),
             progress=progress,
         )
     _finish(results, out, trial)
 
 
-app.command("score")(commands.score)
+app.command("score", cls=PlainCommand)(commands.score)
 
 
 def _recipe(folder: Path, recipe: Path | None, typed: dict[str, str | None]) -> Recipe | None:
@@ -276,12 +280,13 @@ def _recipe(folder: Path, recipe: Path | None, typed: dict[str, str | None]) -> 
     return read_recipe(path)
 
 
-def _with_chance(trial: Trial, seed: int | None, simulations: int | None) -> Trial:
+def _with_chance(trial: Trial, seed: str | None, simulations: str | None) -> Trial:
     """Let the command line's seed and number of simulations win."""
+    own_seed, own_simulations = whole(seed, "--seed"), whole(simulations, "--simulations")
     return Trial(
         trial.title,
-        trial.seed if seed is None else seed,
-        trial.simulations if simulations is None else simulations,
+        trial.seed if own_seed is None else own_seed,
+        trial.simulations if own_simulations is None else own_simulations,
     )
 
 

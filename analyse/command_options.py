@@ -14,7 +14,7 @@ QuadratOption = Annotated[
     str | None,
     typer.Option(
         "--quadrat",
-        help="Side of square quadrats, such as 10mm; by rule, about 2 spots in each.",
+        help="Side of square quadrats, such as 10mm. Default: by rule, about 2 spots in each.",
         metavar="LENGTH",
         show_default=False,
         rich_help_panel=GRID,
@@ -24,7 +24,7 @@ GridOption = Annotated[
     str | None,
     typer.Option(
         "--grid",
-        help="Divide the area's bounding box into rows x columns, such as 5x5.",
+        help="Divide the rectangle round the area into rows x columns, such as 5x5.",
         metavar="RxC",
         show_default=False,
         rich_help_panel=GRID,
@@ -41,25 +41,23 @@ RingsOption = Annotated[
     ),
 ]
 SeedOption = Annotated[
-    int | None,
+    str | None,
     typer.Option(
         "--seed",
         help="Seed of the simulations: the same seed gives the same results."
         f" Default: {Trial().seed}, or the recipe's.",
         metavar="N",
-        min=0,
         show_default=False,
         rich_help_panel=CHANCE,
     ),
 ]
 SimulationsOption = Annotated[
-    int | None,
+    str | None,
     typer.Option(
         "--simulations",
         help="Random patterns that each photograph is compared with."
         f" Default: {Trial().simulations}, or the recipe's.",
         metavar="N",
-        min=1,
         show_default=False,
         rich_help_panel=CHANCE,
     ),

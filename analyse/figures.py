@@ -153,7 +153,8 @@ def draw_points(axes: Axes, findings: Findings) -> DrawnPicture:
         LineCollection(rings([pattern.area]), colors=look.INK, linewidths=1.4), autolim=False
     )
     size = float(np.clip(6.0 - len(pattern) / 400.0, 2.0, 6.0))
-    axes.plot(*pattern.points.T, "o", ms=size, mfc="#1f8a80", mec="white", mew=0.5)
+    many = len(pattern) > look.MOST_VECTOR_SPOTS
+    axes.plot(*pattern.points.T, "o", ms=size, mfc="#1f8a80", mec="white", mew=0.5, rasterized=many)
     return DrawnPicture({"counted": pattern.points}, quadrats, labels)
 
 
@@ -169,8 +170,17 @@ def _draw_grid(
         _draw_lines(axes, rings(quadrats), 0.7)
     else:
         axes.add_collection(
-            LineCollection(rings(quadrats), colors=look.RULE, linewidths=0.8), autolim=False
+            LineCollection(
+                rings(quadrats),
+                colors=look.RULE,
+                linewidths=0.8,
+                rasterized=len(quadrats) > look.MOST_VECTOR_SPOTS,
+            ),
+            autolim=False,
         )
+    outlines = tuple(shapely.get_coordinates(cell) for cell in quadrats)
+    if len(quadrats) > look.MOST_COUNTS:
+        return outlines, ()
     per_unit = _points_per_unit(axes)
     sizes = np.clip(0.2 * np.sqrt([cell.area for cell in quadrats]) * per_unit, 4.5, 9.5)
     labels = []
@@ -185,7 +195,7 @@ def _draw_grid(
             color="white" if on_photograph else look.SOFT,
             bbox=ground if on_photograph and len(quadrats) <= look.MOST_BOXES else None,
         )  # fmt: skip
-    return tuple(shapely.get_coordinates(cell) for cell in quadrats), tuple(labels)
+    return outlines, tuple(labels)
 
 
 def _draw_spots(axes: Axes, sheet: Sheet) -> dict[str, Points]:

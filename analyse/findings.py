@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 import zlib
 from collections.abc import Sequence
 from dataclasses import dataclass
@@ -14,6 +15,7 @@ from shapely.geometry.base import BaseGeometry
 from analyse.chance import SEED, SIMULATIONS
 from analyse.density import Limits, density_per_cm2
 from analyse.dispersion import (
+    Dispersion,
     clipped_dispersion,
     dispersion,
     expected_counts,
@@ -22,7 +24,7 @@ from analyse.dispersion import (
 from analyse.errors import GridWrong
 from analyse.flags import count_flags
 from analyse.models import LARGEST_COUNT, PoissonFit, poisson_frequencies
-from analyse.nulls import simulated_p
+from analyse.nulls import least_chi2, simulated_p
 from analyse.pattern import CountTable, Pattern, Unit
 from analyse.quadrats import GridOptions, QuadratCounts, count_in_quadrats, lay_grid
 from analyse.said import Findings as Findings
@@ -273,7 +275,7 @@ def _judged(subject: _Subject, seed: int, simulations: int) -> Findings:
         "mean_expected": everything.mean,
         "clipped_percent": 100 * subject.counts.clipped_share,
     }
-    of_counts = () if verdict == "too few to tell" else count_flags(values)
+    seen = _seen(everything, weights)
     return Findings(
         name=subject.name,
         n=everything.n,
@@ -289,13 +291,20 @@ def _judged(subject: _Subject, seed: int, simulations: int) -> Findings:
         density=subject.density,
         poisson=_frequencies(x[is_whole]),
         verdict=verdict,
-        sentence=sentence(verdict, everything, whole, simulated),
-        detectable=detectable(everything.df),
-        flags=subject.flags + of_counts,
+        sentence=sentence(verdict, everything, whole, simulated, seen),
+        detectable=seen,
+        flags=subject.flags + count_flags(values),
         flag_values=values,
         seed=seed,
         settings=subject.settings | {"simulations": simulations, "level": LEVEL},
     )
+
+
+def _seen(everything: Dispersion, areas: NDArray[np.float64]) -> tuple[float, float]:
+    """Return the VMR that would have been seen; NaN for an evenness that n points cannot have."""
+    low, high = detectable(everything.df)
+    possible = low * everything.df >= least_chi2(everything.n, areas)
+    return low if possible else math.nan, high
 
 
 def _frequencies(counts: NDArray[np.int64]) -> PoissonFit | None:

@@ -19,7 +19,7 @@ FLAGS: dict[str, str] = {
     "no_area": "A table of counts tells no study area, so no density is given.",
     "few_quadrats": "With only {q} quadrats, only a strong departure from random could be seen.",
     "low_expected": "A quadrat expects only {mean_expected:.2g} points on average:"
-    " the chi-square p is rough there; the simulated p holds.",
+    " the chi-square p and the stated power are rough there; the simulated p holds.",
     "few_whole": "Whole quadrats: {whole} of {q}. Their VMR says little; the verdict uses all.",
     "clipped_large": "Of the study area, {clipped_percent:.0f} % lies in clipped quadrats;"
     " the verdict takes their areas into account, the VMR of whole quadrats leaves them out.",
@@ -49,12 +49,12 @@ def flag_sentences(flags: Sequence[str], values: Mapping[str, Any]) -> tuple[str
 
 
 def count_flags(values: Mapping[str, Any]) -> tuple[str, ...]:
-    """Return the flags that counts in quadrats give rise to, where they are judged at all.
+    """Return the flags that counts in quadrats give rise to; none without points.
 
     Parameters
     ----------
     values : mapping
-        ``q`` quadrats of which ``whole`` are whole, ``mean_expected`` points in each, and
+        ``n`` points in ``q`` quadrats of which ``whole`` are whole, ``mean_expected`` points in each, and
         ``clipped_percent`` of the study area in the others.
 
     Returns
@@ -68,4 +68,4 @@ def count_flags(values: Mapping[str, Any]) -> tuple[str, ...]:
         "few_whole": values["whole"] < min(FEW_WHOLE, values["q"]),
         "clipped_large": values["clipped_percent"] > 100 * LARGE_CLIPPED,
     }
-    return tuple(name for name, raised in known.items() if raised)
+    return tuple(name for name, raised in known.items() if raised and values["n"] > 0)

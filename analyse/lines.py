@@ -14,6 +14,7 @@ from detect.terminal import number_text, show_table
 _HEADER = ("photograph", "count", "per cm2", "VMR", "X2/df", "p", "verdict")
 
 _MOST_NOTES = 6
+_MOST_NAMES = 4
 
 
 def show_findings(findings: Sequence[Findings]) -> None:
@@ -27,7 +28,8 @@ def show_findings(findings: Sequence[Findings]) -> None:
     show_table(_HEADER, [_line(each) for each in findings])
     typer.echo(
         "VMR is of whole quadrats; X2/df, p (two-sided, simulated) and verdict are of all"
-        " quadrats by area."
+        f" quadrats by area. Seed {findings[0].seed},"
+        f" {findings[0].simulated.simulations:,} simulations."
     )
     for note in _notes(findings):
         typer.echo(f"Note: {note}", err=True)
@@ -56,7 +58,7 @@ def _p(value: float) -> str:
 
 
 def _notes(findings: Sequence[Findings]) -> list[str]:
-    """Return reasons for care: those of all once, those of a few by name, else where they are."""
+    """Return reasons for care: those of all once, the others by name, or flag by flag if many."""
     about: dict[str, list[str]] = {}
     for each in findings:
         for sentence in each.flag_sentences:
@@ -68,8 +70,19 @@ def _notes(findings: Sequence[Findings]) -> list[str]:
         if sentence not in common
     ]
     if len(single) > _MOST_NOTES:
-        names = {
-            name for sentence, names in about.items() if sentence not in common for name in names
-        }
-        single = [f"There are reasons for care with {len(names)} of them; the report names each."]
+        single = _by_flag(findings, common)
     return common + single
+
+
+def _by_flag(findings: Sequence[Findings], common: Sequence[str]) -> list[str]:
+    """Return a note per flag with the first names it is raised for; the report has the sentences."""
+    about: dict[str, list[str]] = {}
+    for each in findings:
+        for flag, sentence in zip(each.flags, each.flag_sentences, strict=True):
+            if sentence not in common:
+                about.setdefault(flag, []).append(each.name)
+    return [
+        f"{flag.replace('_', ' ')}: {', '.join(names[:_MOST_NAMES])}"
+        + (f" and {len(names) - _MOST_NAMES} more" if len(names) > _MOST_NAMES else "")
+        for flag, names in about.items()
+    ]

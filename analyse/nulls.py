@@ -17,6 +17,7 @@ from detect.errors import OptionWrong
 
 _TIE = 1e-9  # statistics closer than this share of themselves count as equal
 _CELLS_AT_ONCE = 2_000_000
+_ENOUGH_EACH = 4  # points a quadrat from which the least X2 is far below any that matters
 _POINTS_AT_ONCE = 1_000_000
 
 
@@ -198,6 +199,40 @@ def simulated_chi2(
     for start in range(0, simulations, batch):
         off = multinomial_counts(n, a, min(batch, simulations - start), rng) - expected
         yield np.asarray((off * off) @ (1 / expected))
+
+
+def least_chi2(n: int, areas: ArrayLike) -> float:
+    """Return the smallest X2 that n points in quadrats of these areas can have at all.
+
+    Parameters
+    ----------
+    n : int
+        Points in all.
+    areas : array_like of shape (q,)
+        Area of each quadrat.
+
+    Returns
+    -------
+    float
+        0.0 with 4 points or more a quadrat, where it is too small to matter, and without points.
+
+    Notes
+    -----
+    X2 = sum x^2 / E - n, and the k-th point of a quadrat adds (2k - 1) / E to the sum; as these
+    steps rise, the n smallest of all steps give the least.
+
+    Examples
+    --------
+    >>> round(least_chi2(12, [1] * 25), 3), round(least_chi2(25, [1] * 25), 3)
+    (13.0, 0.0)
+    """
+    a = checked_areas(areas)
+    if not 0 < n < _ENOUGH_EACH * a.size:
+        return 0.0
+    expected = n * (a / a.sum())
+    most = math.ceil(expected.max() * (1 + a.size / (2 * n))) + 2
+    steps = np.sort(((2 * np.arange(most) + 1)[:, None] / expected).ravel())
+    return max(0.0, float(steps[:n].sum() - n))
 
 
 def check_simulations(simulations: int) -> None:

@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Mapping
 from typing import TYPE_CHECKING, Any
 
+from analyse.look import MOST_COUNTS
 from analyse.marks import photograph_inches
 from analyse.wording import (
     area_words,
@@ -76,6 +77,7 @@ def page_words(
         },
         "facts": _facts(findings, sheet),
         "picture": None if sheet is None else _picture(findings, sheet),
+        "numbered": len(findings.counts) <= MOST_COUNTS,
         "points_alt": _points_alt(findings),
         "residuals_alt": residuals_alt(findings),
         "frequencies_alt": frequencies_alt(findings),

@@ -8,7 +8,7 @@ from dataclasses import dataclass, field
 from pathlib import Path
 from typing import Any
 
-from analyse.chance import SEED, SIMULATIONS
+from analyse.chance import SEED, SIMULATIONS, check_seed, check_simulations
 from analyse.errors import GridWrong
 from analyse.grid_options import GridOptions
 from detect.lengths import Length, parse_length
@@ -28,12 +28,21 @@ class Trial:
     seed : int
         Seed of all simulations, 0 or more.
     simulations : int
-        Simulated patterns per photograph.
+        Simulated patterns per photograph, 99 to a million.
+
+    Raises
+    ------
+    OptionWrong
+        If the seed or the number of simulations is out of range.
     """
 
     title: str = "Dispersion of spots"
     seed: int = SEED
     simulations: int = SIMULATIONS
+
+    def __post_init__(self) -> None:
+        check_seed(self.seed)
+        check_simulations(self.simulations)
 
 
 @dataclass(frozen=True, slots=True)

@@ -9,6 +9,7 @@ from fnmatch import fnmatchcase
 from pathlib import Path
 from typing import Any
 
+from analyse.chance import FEWEST_SIMULATIONS, MOST_SIMULATIONS
 from analyse.errors import GridWrong, RecipeWrong
 from analyse.plan import GRID_READERS, Plan, Trial, plan_from
 from analyse.tables import SUMMARY_COLUMNS
@@ -18,6 +19,7 @@ from detect.readers import READERS
 
 KEYS = (*READERS, *GRID_READERS, "factors")
 _MOST = 2**63 - 1
+_BOUNDS = {"seed": (0, _MOST), "simulations": (FEWEST_SIMULATIONS, MOST_SIMULATIONS)}
 # A photograph's own keys replace those of its set; a new source of the scale, or another way to
 # lay quadrats, replaces the set's as a whole.
 _RIVALS = (
@@ -158,11 +160,12 @@ def _trial(values: dict[str, Any]) -> Trial:
     title = values.get("title", Trial().title)
     if not isinstance(title, str):
         raise RecipeWrong(f"title in [trial] must be a text in quotes, not {title!r}.")
-    for key, least in (("seed", 0), ("simulations", 1)):
+    for key, (least, most) in _BOUNDS.items():
         value = values.get(key, least)
-        if isinstance(value, bool) or not isinstance(value, int) or not least <= value <= _MOST:
+        if isinstance(value, bool) or not isinstance(value, int) or not least <= value <= most:
+            upper = "or more" if most == _MOST else f"to {most:,}"
             raise RecipeWrong(
-                f"{key} in [trial] must be a whole number of {least} or more, not {value!r}."
+                f"{key} in [trial] must be a whole number of {least} {upper}, not {value!r}."
             )
     return Trial(**values)
 

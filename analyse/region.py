@@ -11,6 +11,7 @@ import shapely
 from shapely.geometry.base import BaseGeometry
 
 from detect.errors import AreaWrong, OptionWrong
+from detect.lengths import LONGEST
 
 TableUnit = Literal["mm", "cm", "m"]
 MM_PER_UNIT: dict[TableUnit, float] = {"mm": 1.0, "cm": 10.0, "m": 1000.0}
@@ -70,6 +71,10 @@ def rectangle(numbers: Sequence[float]) -> BaseGeometry:
     if len(numbers) != 4 or not all(math.isfinite(value) for value in numbers):
         raise AreaWrong(
             f"A rectangle needs four finite numbers X0,Y0,X1,Y1, not {list(numbers)}; give all four."
+        )
+    if max(map(abs, numbers)) > LONGEST:
+        raise AreaWrong(
+            f"A rectangle may reach to {LONGEST:g} at most, not {list(numbers)}; check the numbers."
         )
     x0, y0, x1, y1 = numbers
     if not (x1 > x0 and y1 > y0):

@@ -53,7 +53,8 @@ class Findings:
     sentence : str
         The verdict as a sentence.
     detectable : (low, high)
-        VMR that would have been seen with 80 % power, on the even and the clumped side.
+        VMR that would have been seen with about 80 % power, on the even and the clumped side;
+        the first is NaN where so few points cannot lie as evenly as that.
     flags : tuple of str
         Reasons for care, names in `analyse.flags.FLAGS`.
     flag_values : dict

@@ -144,15 +144,21 @@ def tests_csv(findings: Sequence[Findings]) -> str:
     Returns
     -------
     str
-        ``n`` is the number of quadrats behind a statistic, for the density that of points.
+        ``n`` is the number of quadrats behind a statistic, for the density that of points. The
+        flags of a photograph end the notes of each of its rows, since rows travel alone.
     """
     rows = (
-        [each.name, *row]
+        [each.name, *row[:-1], _flagged(row[-1], each)]
         for each in findings
         for part in (_density_rows, _whole_rows, _all_rows, _simulated_rows, _poisson_rows)
         for row in part(each)
     )
     return csv_text(TEST_COLUMNS, rows, digits=DIGITS)
+
+
+def _flagged(note: Cell, each: Findings) -> str:
+    """Return a note with the flags of its photograph."""
+    return f"{note}; flags: {' '.join(each.flags)}" if each.flags else str(note)
 
 
 def _quadrats(each: Findings) -> Iterator[list[Cell]]:
@@ -258,7 +264,7 @@ def _all_rows(each: Findings) -> Iterator[list[Cell]]:
         yield ["normal_deviate", d, None, None, p, method, seen.q, note]
     low, high = each.detectable
     method = "VMR at or beyond which a departure would have been seen (scaled chi-square)"
-    note = f"with {100 * POWER:.0f} % power, two-sided at {100 * each.settings['level']:g} %"
+    note = f"with about {100 * POWER:.0f} % power, two-sided at {100 * each.settings['level']:g} %"
     yield ["vmr_seen", None, low, high, None, method, seen.q, note]
 
 

@@ -26,6 +26,7 @@ from analyse.figures import (
     draw_residuals,
     photograph_figure,
     plain_figure,
+    points_figure,
     residual_figure,
 )
 from analyse.findings import analyse_counts, analyse_pattern, analyse_points
@@ -330,3 +331,16 @@ def test_sectors_of_a_dish_are_drawn():
     drawn = draw_residuals(_axes(), findings)
     assert len(drawn.values) == 12
     assert len(cells(findings)) == 12
+
+
+def test_tens_of_thousands_of_quadrats_stay_small_and_bear_no_unreadable_numbers():
+    points = np.random.default_rng(1).uniform(0, 100, (8000, 2))
+    found = analyse_points(
+        points, (0, 0, 100, 100), grid=GridOptions(shape=(60, 60)), simulations=99
+    )
+    axes = _axes()
+    drawn = draw_points(axes, found)
+    assert (len(drawn.quadrats), drawn.labels) == (3600, ())
+    assert draw_residuals(_axes(), found).labels == ()
+    assert len(svg_bytes(points_figure(found))) < 700_000
+    assert len(svg_bytes(residual_figure(found))) < 400_000

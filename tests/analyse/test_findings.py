@@ -120,6 +120,30 @@ def test_one_point() -> None:
     assert found.counts.counts.sum() == 1
 
 
+def test_too_few_to_tell_keep_the_flags_of_their_p_values() -> None:
+    """The chi-square p of 3 points stands in the tables, so what makes it rough is said."""
+    points = random_points(DISH, 3, np.random.default_rng(1))
+    found = analyse_points(points, DISH, grid=GridOptions(side=Length(15, "mm")))
+    assert found.verdict == "too few to tell"
+    assert "low_expected" in found.flags
+
+
+def test_an_impossible_evenness_is_not_among_what_would_have_been_seen() -> None:
+    """12 points in 25 equal quadrats have a VMR of 13/24 at least; 25 points may have one of 0."""
+    square = GridOptions(shape=(5, 5))
+    few, enough = (
+        analyse_points(
+            random_points(shapely.box(0, 0, 9, 9), n, np.random.default_rng(3)),
+            (0, 0, 9, 9),
+            grid=square,
+        )
+        for n in (12, 25)
+    )
+    assert math.isnan(few.detectable[0])
+    assert few.sentence.endswith("So few spots can hardly show even spacing.")
+    assert enough.detectable == pytest.approx((0.42, 2.18), abs=0.005)
+
+
 def test_all_points_in_one_quadrat() -> None:
     points = 50 + np.random.default_rng(1).uniform(-0.5, 0.5, (50, 2))
     found = analyse_points(points, DISH)

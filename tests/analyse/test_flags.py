@@ -34,8 +34,8 @@ def test_flags_in_words() -> None:
         "Counted spots that are more likely false than real: 4 of 60; check them.",
         "Of the study area, 38 % lies in clipped quadrats; the verdict takes their areas into"
         " account, the VMR of whole quadrats leaves them out.",
-        "A quadrat expects only 1.9 points on average: the chi-square p is rough there;"
-        " the simulated p holds.",
+        "A quadrat expects only 1.9 points on average: the chi-square p and the stated power are"
+        " rough there; the simulated p holds.",
     )
 
 
@@ -47,6 +47,7 @@ def test_flags_in_words() -> None:
         ({"q": 9, "whole": 9}, ("few_quadrats",)),
         ({"mean_expected": 0.99}, ("low_expected",)),
         ({"mean_expected": 1.0}, ()),
+        ({"mean_expected": 0.0, "n": 0, "q": 4, "whole": 4}, ()),
         ({"whole": 5}, ("few_whole",)),
         ({"whole": 6}, ()),
         ({"clipped_percent": 50.0}, ()),

@@ -36,10 +36,15 @@ def test_a_note_on_all_is_said_once_and_a_note_on_one_names_it(
     assert capsys.readouterr().err == f"Note: a.jpg: {sentence}\n"
 
 
-def test_many_notes_are_left_to_the_report(capsys: pytest.CaptureFixture[str]) -> None:
+def test_many_notes_are_told_flag_by_flag(capsys: pytest.CaptureFixture[str]) -> None:
     many = [a_finding(f"{k}.jpg", 200, twice=k) for k in range(8)]
     show_findings(many[:7])
     assert len(capsys.readouterr().err.splitlines()) == 6
     show_findings(many)
     notes = capsys.readouterr().err
-    assert notes == "Note: There are reasons for care with 7 of them; the report names each.\n"
+    assert notes == "Note: duplicates: 1.jpg, 2.jpg, 3.jpg, 4.jpg and 3 more\n"
+
+
+def test_the_seed_is_told(capsys: pytest.CaptureFixture[str]) -> None:
+    show_findings([a_finding("a.jpg", 200)])
+    assert capsys.readouterr().out.endswith("by area. Seed 1, 99 simulations.\n")

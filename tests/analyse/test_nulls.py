@@ -16,6 +16,7 @@ from shapely.geometry.base import BaseGeometry
 from analyse.dispersion import clipped_dispersion
 from analyse.errors import TooFewQuadrats
 from analyse.nulls import (
+    least_chi2,
     multinomial_counts,
     random_points,
     simulated_chi2,
@@ -207,3 +208,15 @@ def test_impossible_random_points_are_refused() -> None:
     with pytest.raises(ValueError, match="the area encloses nothing"):
         random_points(shapely.Polygon(), 5, np.random.default_rng(1))
     assert random_points(RAGGED, 0, np.random.default_rng(1)).shape == (0, 2)
+
+
+@pytest.mark.parametrize("areas", [[1, 1, 1, 1], [1, 2, 3, 4], [0.25, 1, 1, 0.3], [9, 1, 1, 1]])
+@pytest.mark.parametrize("n", [1, 2, 3, 5, 8])
+def test_least_chi2_against_every_way_the_points_can_fall(areas: list[float], n: int) -> None:
+    falls = (f for f in itertools.product(range(n + 1), repeat=len(areas)) if sum(f) == n)
+    least = min(clipped_dispersion(fall, areas).chi2 for fall in falls)
+    assert least_chi2(n, areas) == pytest.approx(least, abs=1e-9)
+
+
+def test_least_chi2_is_left_aside_where_it_cannot_matter() -> None:
+    assert least_chi2(0, [1, 1]) == least_chi2(10**12, [1, 2]) == 0.0

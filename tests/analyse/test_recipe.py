@@ -105,7 +105,7 @@ def test_keys_that_contradict_each_other_fail_their_photograph_alone(tmp_path: P
     plans = a_recipe(tmp_path).plans([*NAMES, "plot_2.jpg"])
     failure = plans["plot_2.jpg"]
     assert isinstance(failure, Failure)
-    assert failure.reason.startswith("The corners and the plot size go together")
+    assert failure.reason.startswith("corners needs plot beside it; give both")
     assert isinstance(plans["plot_1.jpg"], Plan)
 
 
@@ -159,7 +159,10 @@ SET = '[[set]]\nmatch = "*"\n'
         (SET + "[trial]\nseed = -1", r"seed in \[trial\] must be a whole number of 0 or more"),
         (SET + "[trial]\nseed = 1.5", r"seed in \[trial\] must be a whole number"),
         (SET + "[trial]\nseed = true", r"seed in \[trial\] must be a whole number"),
-        (SET + "[trial]\nsimulations = 0", r"simulations in \[trial\] must be a whole number of 1"),
+        (
+            SET + "[trial]\nsimulations = 0",
+            r"simulations in \[trial\] must be a whole number of 99 to 1,000,000",
+        ),
         ('[[set]]\nkind = "spots"', r'\[\[set\]\] 1 needs match = "a pattern" of file names'),
         ("[[set]]\nmatch = 5", r"\[\[set\]\] 1 needs match"),
         (SET + 'colour = "pink"', r"colour in \[\[set\]\] 1 must be one of auto, .*, not 'pink'"),

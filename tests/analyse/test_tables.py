@@ -89,6 +89,16 @@ def test_millimetres_and_pixels_have_their_own_columns() -> None:
     assert (pixels["flags"], student["flags"]) == ("uncalibrated", "no_area")
 
 
+def test_flags_go_with_every_statistic() -> None:
+    """In summary.csv in a column, in tests.csv at the end of the notes of every row."""
+    for each in three():
+        line = rows_of(tables.summary_csv([each]))[0]
+        assert line["flags"] == " ".join(each.flags)
+        for row in rows_of(tables.tests_csv([each])):
+            ending = f"; flags: {line['flags']}"
+            assert row["notes"].endswith(ending) if each.flags else "flags" not in row["notes"]
+
+
 def test_areas_add_up_to_the_study_area() -> None:
     found = three()[:1]
     areas = [float(row["area_mm2"]) for row in rows_of(tables.quadrats_csv(found))]

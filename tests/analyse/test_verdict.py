@@ -7,7 +7,7 @@ import pytest
 from scipy import stats
 
 from analyse.dispersion import dispersion
-from analyse.nulls import SimulatedTest
+from analyse.nulls import SimulatedTest, simulated_chi2
 from analyse.verdict import decide, detectable, p_text, sentence
 
 
@@ -36,7 +36,7 @@ def test_decisions(n: int, q: int, upper: float, lower: float, verdict: str) -> 
 
 def test_sentence_of_clumped_counts() -> None:
     d = dispersion([9, 0, 1, 0, 6, 0, 0, 8, 0, 1])
-    assert sentence("clumped", d, d, judged(0.001, 1.0)) == (
+    assert sentence("clumped", d, d, judged(0.001, 1.0), detectable(d.df)) == (
         "Clumped: the counts vary 5.4 times as much as they would at random"
         " (VMR 5.36, two-sided p = 0.002, simulated)."
     )
@@ -44,22 +44,33 @@ def test_sentence_of_clumped_counts() -> None:
 
 def test_sentence_of_even_counts_in_clipped_quadrats() -> None:
     d, whole = dispersion([4, 4, 5, 4, 4, 5, 4, 4]), dispersion([4, 4, 5])
-    assert sentence("evenly spaced", d, whole, judged(1.0, 0.005)) == (
+    assert sentence("evenly spaced", d, whole, judged(1.0, 0.005), detectable(d.df)) == (
         "Evenly spaced: the counts vary only 0.05 times as much as they would at random"
         " (X2/df 0.05 over all 8 quadrats by area, two-sided p = 0.010, simulated;"
         " VMR 0.08 on the 3 whole ones)."
     )
-    assert "on the" not in sentence("evenly spaced", d, None, judged(1.0, 0.005))
+    assert "on the" not in sentence("evenly spaced", d, None, judged(1.0, 0.005), detectable(d.df))
 
 
 def test_sentence_where_nothing_is_found_never_says_that_it_is_random() -> None:
     d = dispersion([4, 2, 5, 3, 4, 5, 1, 4] * 3 + [3])
-    said = sentence("no departure from random found", d, d, judged(0.7, 0.305))
+    said = sentence("no departure from random found", d, d, judged(0.7, 0.305), detectable(24))
     assert said == (
         "No departure from random found (VMR 0.51, two-sided p = 0.61, simulated). With these 25"
-        " quadrats a VMR of 2.2 or more, or of 0.42 or less, would have been seen with 80 % power."
+        " quadrats a VMR of 2.2 or more, or of 0.42 or less, would have been seen with about 80 % power."
     )
     assert "is random" not in said
+
+
+def test_an_evenness_that_so_few_spots_cannot_have_is_not_said_to_have_been_seen() -> None:
+    """12 points in 25 quadrats: the most even counts of all give a VMR of 13/24, above 0.42."""
+    d = dispersion([1] * 10 + [2] + [0] * 14)
+    seen = (float("nan"), detectable(24)[1])
+    said = sentence("no departure from random found", d, d, judged(0.7, 0.305), seen)
+    assert said.endswith(
+        "With these 25 quadrats a VMR of 2.2 or more would have been seen with about 80 % power."
+        " So few spots can hardly show even spacing."
+    )
 
 
 @pytest.mark.parametrize(
@@ -80,7 +91,7 @@ def test_sentence_where_nothing_is_found_never_says_that_it_is_random() -> None:
 )
 def test_sentence_where_there_is_too_little(counts: list[int], said: str) -> None:
     d = dispersion(counts)
-    assert sentence("too few to tell", d, d, judged(0.5, 0.5)) == said
+    assert sentence("too few to tell", d, d, judged(0.5, 0.5), (0.5, 2.0)) == said
 
 
 @pytest.mark.parametrize(
@@ -122,3 +133,20 @@ def test_more_quadrats_see_smaller_departures() -> None:
     ratios = [detectable(df) for df in (5, 20, 80, 400)]
     assert [low for low, _ in ratios] == sorted(low for low, _ in ratios)
     assert [high for _, high in ratios] == sorted((high for _, high in ratios), reverse=True)
+
+
+@pytest.mark.parametrize(
+    ("mean", "low", "high"), [(1, 0.60, 0.78), (2, 0.70, 0.82), (8, 0.74, 0.86)]
+)
+def test_the_verdicts_own_test_has_about_the_power_it_states(
+    mean: int, low: float, high: float
+) -> None:
+    """Dirichlet-multinomial counts: negative binomial ones of the stated VMR, given their total."""
+    q, rng = 25, np.random.default_rng(11)
+    n, vmr = mean * q, detectable(q - 1)[1]
+    null = np.sort(np.concatenate([*simulated_chi2(n, np.ones(q), 9999, rng)]))
+    shares = rng.dirichlet(np.full(q, (n - vmr) / (vmr - 1) / q), 2000)
+    counts = np.array([rng.multinomial(n, share) for share in shares])
+    chi2 = ((counts - mean) ** 2).sum(axis=1) / mean
+    upper = (1 + null.size - np.searchsorted(null, chi2 - 1e-9)) / (null.size + 1)
+    assert low < np.mean(upper <= 0.025) < high
