@@ -205,6 +205,18 @@ def residuals(counts: ArrayLike, expected: ArrayLike) -> NDArray[np.float64]:
 def normal_deviate(chi2: float, df: int) -> float:
     """Return d = sqrt(2 X2) - sqrt(2 df - 1), near standard normal at random for many quadrats.
 
+    Parameters
+    ----------
+    chi2 : float
+        X2, 0 or more.
+    df : int
+        Degrees of freedom, 1 or more.
+
+    Returns
+    -------
+    float
+        Positive where counts are clumped, negative where they are even.
+
     References
     ----------
     Fisher, R. A. (1925). Statistical Methods for Research Workers. Oliver and Boyd, Edinburgh.
@@ -219,6 +231,21 @@ def normal_deviate(chi2: float, df: int) -> float:
 
 def morisita_index(counts: ArrayLike) -> float:
     """Return Morisita's index, q sum x(x - 1) / (S (S - 1)): 1 at random, q if all are in one.
+
+    Parameters
+    ----------
+    counts : array_like of int, shape (q,)
+        One count per quadrat.
+
+    Returns
+    -------
+    float
+        NaN with fewer than 2 points.
+
+    Raises
+    ------
+    ValueError
+        If a count is negative or no whole number.
 
     References
     ----------
@@ -238,6 +265,23 @@ def morisita_index(counts: ArrayLike) -> float:
 def mean_crowding(counts: ArrayLike) -> float:
     """Return mean crowding, m + VMR - 1: the others in its quadrat that a point meets on average.
 
+    Parameters
+    ----------
+    counts : array_like of int, shape (q,)
+        One count per quadrat.
+
+    Returns
+    -------
+    float
+        NaN without points.
+
+    Raises
+    ------
+    TooFewQuadrats
+        If there are fewer than 2 quadrats.
+    ValueError
+        If a count is negative or no whole number.
+
     References
     ----------
     Lloyd, M. (1967). Mean crowding. Journal of Animal Ecology 36, 1-30.
@@ -254,6 +298,23 @@ def mean_crowding(counts: ArrayLike) -> float:
 def cluster_size_index(counts: ArrayLike) -> float:
     """Return the index of cluster size, VMR - 1: 0 at random.
 
+    Parameters
+    ----------
+    counts : array_like of int, shape (q,)
+        One count per quadrat.
+
+    Returns
+    -------
+    float
+        NaN without points.
+
+    Raises
+    ------
+    TooFewQuadrats
+        If there are fewer than 2 quadrats.
+    ValueError
+        If a count is negative or no whole number.
+
     References
     ----------
     David, F. N. and Moore, P. G. (1954). Notes on contagious distributions in plant populations.
@@ -269,6 +330,23 @@ def cluster_size_index(counts: ArrayLike) -> float:
 
 def greens_index(counts: ArrayLike) -> float:
     """Return Green's index, (VMR - 1) / (S - 1) with S points: 1 if all are in one quadrat.
+
+    Parameters
+    ----------
+    counts : array_like of int, shape (q,)
+        One count per quadrat.
+
+    Returns
+    -------
+    float
+        NaN with fewer than 2 points.
+
+    Raises
+    ------
+    TooFewQuadrats
+        If there are fewer than 2 quadrats.
+    ValueError
+        If a count is negative or no whole number.
 
     References
     ----------

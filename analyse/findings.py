@@ -12,7 +12,7 @@ import numpy as np
 from numpy.typing import ArrayLike, NDArray
 from shapely.geometry.base import BaseGeometry
 
-from analyse.chance import SEED, SIMULATIONS
+from analyse.chance import SEED, SIMULATIONS, check_seed
 from analyse.density import Limits, density_per_cm2
 from analyse.dispersion import (
     Dispersion,
@@ -29,7 +29,6 @@ from analyse.pattern import CountTable, Pattern, Unit
 from analyse.quadrats import GridOptions, QuadratCounts, count_in_quadrats, lay_grid
 from analyse.said import Findings as Findings
 from analyse.verdict import LEVEL, decide, detectable, sentence
-from detect.errors import OptionWrong
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -244,8 +243,7 @@ def stream(seed: int, name: str) -> np.random.Generator:
     OptionWrong
         If the seed is negative.
     """
-    if seed < 0:
-        raise OptionWrong(f"--seed must be a whole number of 0 or more, not {seed}.")
+    check_seed(seed)
     return np.random.default_rng([seed, zlib.crc32(name.encode("utf-8"))])
 
 

@@ -97,13 +97,16 @@ def poisson_frequencies(
     Notes
     -----
     Poisson counts are what random points give in equal quadrats; the converse does not hold, for
-    the frequencies do not know where the quadrats lie.
+    the frequencies do not know where the quadrats lie. The mean is estimated from the counts
+    themselves and not from the classes, so that p is a little too small (Chernoff and Lehmann).
 
     References
     ----------
     "Student" (1907). On the error of counting with a haemacytometer. Biometrika 5, 351-360.
     Cochran, W. G. (1954). Some methods for strengthening the common chi-square tests. Biometrics
     10, 417-451 (expected counts of 1 in the tails).
+    Chernoff, H. and Lehmann, E. L. (1954). The use of maximum likelihood estimates in chi-square
+    tests for goodness of fit. Annals of Mathematical Statistics 25, 579-586.
 
     Examples
     --------
@@ -134,7 +137,24 @@ def poisson_frequencies(
 
 
 def poisson_law(mean: float, values: ArrayLike) -> NDArray[np.float64]:
-    """Return the Poisson probability of each value, also for a mean of 0."""
+    """Return the Poisson probability of each value, also for a mean of 0.
+
+    Parameters
+    ----------
+    mean : float
+        Mean of the law, 0 or more.
+    values : array_like of int, any shape
+        0 or more.
+
+    Returns
+    -------
+    ndarray of the same shape
+
+    Examples
+    --------
+    >>> poisson_law(1.0, [0, 1, 2]).round(3).tolist()
+    [0.368, 0.368, 0.184]
+    """
     k = np.asarray(values, dtype=np.float64)
     return np.asarray(np.exp(special.xlogy(k, mean) - mean - special.gammaln(k + 1)))
 

@@ -11,9 +11,9 @@ import shapely
 from numpy.typing import ArrayLike, NDArray
 from shapely.geometry.base import BaseGeometry
 
-from analyse.chance import FEWEST_SIMULATIONS, MOST_SIMULATIONS, SIMULATIONS
+from analyse.chance import SIMULATIONS
+from analyse.chance import check_simulations as check_simulations
 from analyse.dispersion import checked_areas, clipped_dispersion
-from detect.errors import OptionWrong
 
 _TIE = 1e-9  # statistics closer than this share of themselves count as equal
 _CELLS_AT_ONCE = 2_000_000
@@ -192,7 +192,29 @@ def simulated_p(
 def simulated_chi2(
     n: int, areas: ArrayLike, simulations: int, rng: np.random.Generator
 ) -> Iterator[NDArray[np.float64]]:
-    """Yield X2 of random counts, in batches that bound the memory and do not change the values."""
+    """Yield X2 of random counts, in batches that bound the memory and do not change the values.
+
+    Parameters
+    ----------
+    n : int
+        Points in all, at least 1.
+    areas : array_like of shape (q,)
+        Area of each quadrat.
+    simulations : int
+        How many sets of counts.
+    rng : numpy.random.Generator
+        Source of randomness.
+
+    Yields
+    ------
+    ndarray of shape (k,)
+        X2 of k sets of counts; `simulations` of them in all.
+
+    Examples
+    --------
+    >>> len(next(simulated_chi2(5, [1, 1, 2], 7, np.random.default_rng(1))))
+    7
+    """
     a = checked_areas(areas)
     expected = n * (a / a.sum())
     batch = max(1, _CELLS_AT_ONCE // a.size)
@@ -233,12 +255,3 @@ def least_chi2(n: int, areas: ArrayLike) -> float:
     most = math.ceil(expected.max() * (1 + a.size / (2 * n))) + 2
     steps = np.sort(((2 * np.arange(most) + 1)[:, None] / expected).ravel())
     return max(0.0, float(steps[:n].sum() - n))
-
-
-def check_simulations(simulations: int) -> None:
-    """Refuse a number of simulations that cannot judge at 5 % or would never end."""
-    if not FEWEST_SIMULATIONS <= simulations <= MOST_SIMULATIONS:
-        raise OptionWrong(
-            f"--simulations must lie between {FEWEST_SIMULATIONS} and {MOST_SIMULATIONS:,},"
-            f" not at {simulations}; 999 serves most purposes."
-        )

@@ -102,6 +102,8 @@ class Findings:
     @property
     def rests_on(self) -> str:
         """What the verdict rests on, in words."""
+        if self.verdict == "too few to tell":
+            return "the numbers of points and quadrats alone: too few for a test"
         return (
             f"simulated two-sided p of X2 over all {len(self.counts)} quadrats,"
             " expected counts by area, given the total"

@@ -271,7 +271,9 @@ def _all_rows(each: Findings) -> Iterator[list[Cell]]:
 def _simulated_rows(each: Findings) -> Iterator[list[Cell]]:
     """Yield the simulated test, which the verdict rests on."""
     test = each.simulated
-    note = f"{test.simulations} simulations, seed {each.seed}; all quadrats; the verdict's test"
+    note = f"{test.simulations} simulations, seed {each.seed}; all quadrats"
+    if each.verdict != "too few to tell":
+        note += "; the verdict's test"
     yield from _sides("chi2_simulated", test.statistic, test, _SIMULATED, len(each.counts), note)
 
 

@@ -145,7 +145,22 @@ def sentence(
 
 
 def p_text(p: float) -> str:
-    """Return a p in words, such as "p = 0.002"; never "p = 0"."""
+    """Return a p in words; never "p = 0".
+
+    Parameters
+    ----------
+    p : float
+        Between 0 and 1.
+
+    Returns
+    -------
+    str
+
+    Examples
+    --------
+    >>> p_text(0.0002), p_text(0.002), p_text(0.25)
+    ('p < 0.001', 'p = 0.002', 'p = 0.25')
+    """
     if p < 0.001:
         return "p < 0.001"
     return f"p = {p:.3f}" if p < 0.1 else f"p = {p:.2f}"

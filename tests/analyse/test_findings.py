@@ -126,6 +126,7 @@ def test_too_few_to_tell_keep_the_flags_of_their_p_values() -> None:
     found = analyse_points(points, DISH, grid=GridOptions(side=Length(15, "mm")))
     assert found.verdict == "too few to tell"
     assert "low_expected" in found.flags
+    assert found.rests_on == "the numbers of points and quadrats alone: too few for a test"
 
 
 def test_an_impossible_evenness_is_not_among_what_would_have_been_seen() -> None:

@@ -99,6 +99,12 @@ def test_flags_go_with_every_statistic() -> None:
             assert row["notes"].endswith(ending) if each.flags else "flags" not in row["notes"]
 
 
+def test_no_test_is_called_the_verdicts_where_there_is_too_little() -> None:
+    for n, there in ((5, False), (150, True)):
+        rows = rows_of(tables.tests_csv([analyse_points(POINTS[:n], DISH)]))
+        assert any("the verdict's test" in row["notes"] for row in rows) == there
+
+
 def test_areas_add_up_to_the_study_area() -> None:
     found = three()[:1]
     areas = [float(row["area_mm2"]) for row in rows_of(tables.quadrats_csv(found))]
