@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections import Counter
 from collections.abc import Sequence
 from dataclasses import dataclass, field
 from pathlib import Path
@@ -15,6 +16,7 @@ from analyse.report import RenderedPage, render_page, write_report
 from analyse.tables import quadrats_csv, summary_csv, tests_csv
 from detect.amendments import Amendment
 from detect.batch import Failure
+from detect.errors import RequestWrong
 from detect.files import write_text_atomically
 from detect.photograph import Photograph
 from detect.sheet import Sheet, current_state
@@ -121,8 +123,14 @@ def write_results(
     -------
     Path
         The report.
+
+    Raises
+    ------
+    RequestWrong
+        If two results bear one name, so that their rows could not be told apart.
     """
     findings = [result.findings for result in results]
+    _check_names(findings)
     factors = {result.findings.name: result.factors for result in results}
     write_text_atomically(folder / "quadrats.csv", quadrats_csv(findings))
     write_text_atomically(folder / "summary.csv", summary_csv(findings, factors=factors))
@@ -136,3 +144,14 @@ def write_results(
         seed=trial.seed,
     )
     return report
+
+
+def _check_names(findings: Sequence[Findings]) -> None:
+    """Refuse two results of one name: neither rows nor chance could tell them apart."""
+    names = Counter(each.name for each in findings)
+    name, often = names.most_common(1)[0] if names else ("", 0)
+    if often > 1:
+        raise RequestWrong(
+            f"{often} of the sheets or tables are about one photograph ({name}); leave out"
+            " all but one, or analyse them one at a time with different folders for --out."
+        )

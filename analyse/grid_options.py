@@ -27,7 +27,8 @@ class GridOptions:
     rings : (rings, sectors) or None
         Divide a dish into rings and sectors of equal area.
     join_below : float
-        A clipped quadrat with less than this share of a full one is joined to a neighbour.
+        A clipped square or rectangle with less than this share of a full one is joined to a
+        neighbour; sectors, which are of one size, are never joined.
 
     Raises
     ------
