@@ -42,7 +42,7 @@ class Failure:
     @classmethod
     def of(cls, name: str, trouble: Exception) -> Failure:
         """Return the failure that a trouble means; what is no `PhotographFailed` is the request."""
-        reason = str(trouble).removeprefix(f"{name}: ")
+        reason = str(trouble).removeprefix(name).lstrip(":, ")
         return cls(name, reason, not isinstance(trouble, PhotographFailed))
 
 

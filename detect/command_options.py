@@ -6,6 +6,7 @@ from pathlib import Path
 from typing import Annotated, Any, get_args
 
 import typer
+from typer.core import TyperCommand
 
 from detect.contrast import Colour, Polarity
 from detect.lengths import parse_length
@@ -63,7 +64,7 @@ HighestDoubtOption = Annotated[
     _option(
         "--highest-doubt",
         WHAT,
-        "Leave out what is more doubtful than this.",
+        "Leave out what is more doubtful than this: 0 is surely real, 1 surely false.",
         "0..1",
         "by kind",
     ),
@@ -120,7 +121,7 @@ OutOption = Annotated[
     ),
 ]
 WorkersOption = Annotated[
-    int | None,
+    str | None,
     _option("--workers", OUTPUT, "Photographs done at a time.", "N", "one per core, 8 at most"),
 ]
 KeepOption = Annotated[
@@ -131,6 +132,26 @@ KeepOption = Annotated[
         rich_help_panel=OUTPUT,
     ),
 ]
+
+
+class PlainHelp:
+    """Mixed into a command, it keeps the names of types (<bool>, <list[Path]>) out of the help."""
+
+    def get_params(self, ctx: Any) -> list[Any]:
+        """Return the options and arguments; what each takes is said by its own name alone."""
+        params: list[Any] = super().get_params(ctx)  # type: ignore[misc]  # of the command
+        for param in params:
+            param.display_type = _no_type
+        return params
+
+
+class PlainCommand(PlainHelp, TyperCommand):
+    """A command with plain help."""
+
+
+def _no_type(*_unnamed: Any, **_named: Any) -> str:
+    """Say nothing about the type of a parameter."""
+    return ""
 
 
 def spelled(key: str) -> str:

@@ -39,12 +39,14 @@ from detect.files import make_folder, write_text_atomically
 from detect.gather import gather_photographs, gather_sheets
 from detect.outcome import write_detection
 from detect.overlay import DOUBTFUL
+from detect.readers import whole
 from detect.requests import DetectRequest, detect_photograph, parse_request
 from detect.sheet import Sheet, current_state, read_sheet
 from detect.terminal import (
     exit_if_failed,
     number_text,
     progress_on_terminal,
+    quoted,
     show_failures,
     show_path,
     show_table,
@@ -55,7 +57,7 @@ def detect(
     photographs: Annotated[
         list[Path],
         typer.Argument(
-            help="Photographs, or folders of them.", metavar="PHOTO...", show_default=False
+            help="Photographs, or folders of them.", metavar="PHOTO", show_default=False
         ),
     ],
     kind: KindOption = None,
@@ -100,13 +102,17 @@ def detect(
     make_folder(out)
     tasks = [DetectTask(path, request, out, keep_amendments) for path in paths]
     with progress_on_terminal("Detecting", len(tasks)) as progress:
-        processes = workers_for(len(tasks), workers)
+        processes = workers_for(len(tasks), whole(workers, "--workers"))
         results = do_each(DETECT, tasks, workers=processes, progress=progress)
     done = [result for result in results if not isinstance(result, Failure)]
     failures = [result for result in results if isinstance(result, Failure)]
     show_table(("photograph", "spots", "doubtful", "scale"), [line.cells() for line in done])
     if done:
         show_path("Sheets, points and overlays", out)
+        folder = quoted(out)
+        typer.echo(
+            f"Look at the overlays, then test the pattern: strewn analyse {folder} --out {folder}"
+        )
     show_failures(failures)
     exit_if_failed(failures, len(results))
 
@@ -115,14 +121,17 @@ def score(
     sheets: Annotated[
         list[Path],
         typer.Argument(
-            help="Sheets, or folders of them.", metavar="SHEET|DIR...", show_default=False
+            help="Sheets (NAME.sheet.json, as detect writes them), or folders of them.",
+            metavar="SHEET|DIR",
+            show_default=False,
         ),
     ],
     truth: Annotated[
         Path,
         typer.Option(
             "--truth",
-            help="Folder with a table for each photograph: x, y and r in pixels, in STEM.csv.",
+            help="Folder with a table for each photograph, such as dish_01.csv for dish_01.jpg, with"
+            " the columns x, y and r (radius) in pixels.",
             metavar="DIR",
             show_default=False,
         ),
@@ -138,7 +147,7 @@ def score(
         ),
     ] = None,
 ) -> None:
-    """Measure the counted spots of sheets, hand edits included, against hand-marked objects."""
+    """Measure how well spots were found, against objects that you marked by hand."""
     paths = gather_sheets(sheets)
     if not truth.is_dir():
         raise RequestWrong(f"There is no folder {truth}; --truth names a folder of CSV tables.")
@@ -150,6 +159,10 @@ def score(
     failures = [result for result in results if isinstance(result, Failure)]
     if scores:
         show_scores(scores)
+        typer.echo(
+            "Precision: real of what is found; recall: found of what is there; F1: both in one;"
+            " RMSE: how far centres lie off, in pixels."
+        )
     if out is not None and scores:
         write_text_atomically(out / "score.csv", score_csv(scores))
         show_path("Scores", out / "score.csv")

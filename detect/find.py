@@ -132,11 +132,16 @@ def _diameters(
     else:
         smallest, largest = learn_diameters(photograph, area, options, model)
     x0, y0, x1, y1 = area.polygon.bounds
-    if smallest > min(x1 - x0, y1 - y0):
-        raise OptionWrong(
-            f"The smallest diameter ({smallest:.0f} px) is larger than the study area"
-            f" ({x1 - x0:.0f} x {y1 - y0:.0f} px); give smaller diameters."
-        )
+    asked = largest if options.diameter is not None else 0.0
+    for word, diameter, room in (
+        ("smallest", smallest, min(x1 - x0, y1 - y0)),
+        ("largest", asked, max(x1 - x0, y1 - y0)),
+    ):
+        if diameter > room:
+            raise OptionWrong(
+                f"The {word} diameter ({diameter:.4g} px) is larger than the study area"
+                f" ({x1 - x0:.0f} x {y1 - y0:.0f} px); give smaller diameters."
+            )
     if largest < 3.0:
         raise OptionWrong(
             f"Objects of at most {largest:.1f} px cannot be seen; give larger diameters or take"

@@ -11,6 +11,7 @@ from detect.errors import OptionWrong
 
 LengthUnit = Literal["px", "mm", "cm", "m"]
 _MM = {"mm": 1.0, "cm": 10.0, "m": 1000.0}
+SHORTEST, LONGEST = 1e-6, 1e9  # in any unit: beyond lie only slips of the finger
 _NUMBER = r"[-+]?(?:\d+\.?\d*|\.\d+)(?:[eE][-+]?\d+)?|nan|[-+]?inf"
 _UNIT = r"\s*(px|mm|cm|m)?\s*"
 
@@ -95,7 +96,7 @@ def parse_length(text: str, *, name: str, unit: LengthUnit | None = None) -> Len
     Raises
     ------
     OptionWrong
-        If `text` is no positive length.
+        If `text` is no positive length from 1e-6 to 1e9.
     """
     match = re.fullmatch(rf"\s*({_NUMBER}){_UNIT}", text)
     if match is None:
@@ -143,11 +144,13 @@ def parse_pair(text: str, *, name: str, separator: Literal["-", "x"]) -> tuple[L
 
 def _length(number: str, unit: str | None, name: str, text: str) -> Length:
     """One checked length, with the option's name in the complaint."""
+    value = float(number)
+    if not (math.isfinite(value) and value > 0):
+        raise OptionWrong(f"{name} must be positive and finite, not {text!r}.")
+    if not SHORTEST <= value <= LONGEST:
+        raise OptionWrong(f"{name} must lie between {SHORTEST:g} and {LONGEST:g}, not at {text!r}.")
     if unit is None:
         raise OptionWrong(
             f"{name} needs a unit: {text!r} could be px or mm; write {text.strip()}mm."
         )
-    value = float(number)
-    if not (math.isfinite(value) and value > 0):
-        raise OptionWrong(f"{name} must be positive and finite, not {text!r}.")
     return Length(value, unit)  # type: ignore[arg-type]  # the pattern admits known units only

@@ -3,13 +3,14 @@
 from __future__ import annotations
 
 import math
+import re
 from collections.abc import Callable, Sequence
 from pathlib import Path
 from typing import Any, Literal, get_args
 
 from detect.contrast import Colour, Polarity
 from detect.errors import OptionWrong
-from detect.lengths import Length, parse_length, parse_pair
+from detect.lengths import LONGEST, SHORTEST, Length, parse_length, parse_pair
 from detect.wanted import Kind
 
 AreaWord = Literal["dish", "frame", "plot", "leaf"]
@@ -31,7 +32,20 @@ def positive(value: Any, name: str) -> float:
     number = _finite(value)
     if not 0 < number < math.inf:
         raise OptionWrong(f"{name} must be a positive number, not {value!r}.")
+    if not SHORTEST <= number <= LONGEST:
+        raise OptionWrong(
+            f"{name} must lie between {SHORTEST:g} and {LONGEST:g}, not at {value!r}."
+        )
     return number
+
+
+def whole(value: str | None, name: str) -> int | None:
+    """Read a whole number typed by a person; None stays None."""
+    if value is None:
+        return None
+    if not re.fullmatch(r"\s*[-+]?\d{1,18}\s*", value):
+        raise OptionWrong(f"{name} must be a whole number such as 3, not {value!r}.")
+    return int(value)
 
 
 def one_of(choices: Sequence[str]) -> Callable[[Any, str], str]:

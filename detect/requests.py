@@ -30,6 +30,7 @@ from detect.sheet import SCHEMA, PhotographIdentity, Sheet
 from detect.wanted import DetectOptions
 
 _SOURCES = ("mm_per_pixel", "dish", "line", "corners")
+_TOGETHER = (("line", "line_length"), ("corners", "plot"))
 
 
 @dataclass(frozen=True, slots=True)
@@ -62,13 +63,7 @@ class ScaleRequest:
     plot: tuple[Length, Length] | None = None
 
     def __post_init__(self) -> None:
-        given = [name for name in _SOURCES if getattr(self, name) is not None]
-        if len(given) > 1:
-            raise OptionWrong(
-                f"Two sources of the scale are given ({given[0]} and {given[1]}); keep one."
-            )
-        _need_both("line", self.line, "line length", self.line_length)
-        _need_both("corners", self.corners, "plot size", self.plot)
+        _one_scale({entry.name: getattr(self, entry.name) for entry in fields(self)}, str)
         for length in (self.dish, self.line_length, *(self.plot or ())):
             if length is not None:
                 length.to_mm()
@@ -183,6 +178,7 @@ def detect_photograph(path: Path, request: DetectRequest) -> tuple[Photograph, S
     from detect.find import find_spots  # loads scipy, which help can do without
 
     photograph = read_photograph(path)
+    _positions_within(photograph, request.scale)
     dish_needed = request.where == "dish" or request.scale.dish is not None
     dish = find_dish(photograph) if dish_needed else None
     scale = request.scale.resolve(dish)
@@ -263,6 +259,7 @@ def parse_request(
         if key not in READERS:
             raise OptionWrong(f"{named(key)} is not known; use one of {', '.join(READERS)}.")
         read[key] = READERS[key](value, named(key))
+    _one_scale(read, named)
     if "area" in read:
         read["where"] = _existing(read.pop("area"), named("area"), folder)
     return DetectRequest(
@@ -298,10 +295,26 @@ def _plain(value: Any) -> Any:
     return value
 
 
-def _need_both(first: str, value: object, second: str, other: object) -> None:
-    """Refuse one half of a pair of options without the other."""
-    if (value is None) != (other is None):
-        given = first if other is None else second
+def _one_scale(values: Mapping[str, object], named: Callable[[str], str]) -> None:
+    """Refuse two sources of the scale, and one half of a source without the other."""
+    sources = [key for key in _SOURCES if values.get(key) is not None]
+    if len(sources) > 1:
         raise OptionWrong(
-            f"The {first} and the {second} go together, but only the {given} is given; give both."
+            f"{named(sources[0])} and {named(sources[1])} both tell the scale; keep one of them."
         )
+    for first, second in _TOGETHER:
+        lacking = [key for key in (first, second) if values.get(key) is None]
+        if len(lacking) == 1:
+            given = second if lacking == [first] else first
+            raise OptionWrong(f"{named(given)} needs {named(lacking[0])} beside it; give both.")
+
+
+def _positions_within(photograph: Photograph, scale: ScaleRequest) -> None:
+    """Refuse positions outside the picture, where nothing can have been seen."""
+    ends = () if scale.line is None else (scale.line[:2], scale.line[2:])
+    for x, y in (*ends, *(scale.corners or ())):
+        if not (-1 <= x <= photograph.width and -1 <= y <= photograph.height):
+            raise OptionWrong(
+                f"The position {x:g},{y:g} lies outside the picture of {photograph.width} x"
+                f" {photograph.height} pixels; give x and y as seen in the upright picture."
+            )

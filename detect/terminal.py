@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import shlex
 import sys
 from collections.abc import Iterator, Sequence
 from contextlib import contextmanager
@@ -38,6 +39,11 @@ def show_table(header: Sequence[str], rows: Sequence[Sequence[str]]) -> None:
 def show_path(label: str, path: Path) -> None:
     """Print where something was written."""
     typer.echo(f"{label}: {path}")
+
+
+def quoted(path: Path) -> str:
+    """Return a path as it can be typed after a command."""
+    return shlex.quote(str(path))
 
 
 def show_failures(failures: Sequence[Failure]) -> None:

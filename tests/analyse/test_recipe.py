@@ -105,7 +105,7 @@ def test_keys_that_contradict_each_other_fail_their_photograph_alone(tmp_path: P
     plans = a_recipe(tmp_path).plans([*NAMES, "plot_2.jpg"])
     failure = plans["plot_2.jpg"]
     assert isinstance(failure, Failure)
-    assert failure.reason.startswith("corners needs plot beside it; give both")
+    assert failure.reason.startswith("plot needs corners beside it; give both")
     assert isinstance(plans["plot_1.jpg"], Plan)
 
 

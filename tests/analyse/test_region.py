@@ -53,6 +53,7 @@ def test_several_polygons_are_one_area(tmp_path: Path) -> None:
         ("0,0,10", "needs four finite numbers X0,Y0,X1,Y1"),
         ("0,0,10,nan", "needs four finite numbers"),
         ("0,0,10,inf", "needs four finite numbers"),
+        ("0,0,1e300,1", r"A rectangle may reach to 1e\+09 at most, not \[0.0, 0.0, 1e\+300"),
         ("10,0,0,10", "The rectangle 10,0,0,10 encloses nothing; give the smaller corner first"),
         ("0,0,10,0", "encloses nothing"),
         ("nowhere.geojson", "'nowhere.geojson' is neither X0,Y0,X1,Y1 nor a file that can be read"),

@@ -85,5 +85,8 @@ def test_workers_for_suit_computer_and_task() -> None:
 def test_the_name_before_a_reason_is_not_repeated() -> None:
     trouble = PhotographUnreadable("a.jpg: it holds no image.")
     assert Failure.of("a.jpg", trouble).reason == "it holds no image."
+    at_start = RequestWrong("a.csv, row 3, is empty.")
+    assert Failure.of("a.csv", at_start).reason == "row 3, is empty."
+    assert Failure.of("a.csv", RequestWrong("a.csv is empty.")).reason == "is empty."
     assert Failure.of("b.jpg", trouble).reason == "a.jpg: it holds no image."
     assert Path(Failure.of("b.jpg", trouble).name).suffix == ".jpg"

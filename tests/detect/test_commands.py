@@ -47,6 +47,7 @@ def test_one_photograph_gives_a_line_and_three_files(photo: Path, tmp_path: Path
         "photograph  spots  doubtful  scale\n"
         "bed_1.png      24         0  0.25 mm per pixel (mm-per-pixel)\n"
         f"Sheets, points and overlays: {out}\n"
+        f"Look at the overlays, then test the pattern: strewn analyse {out} --out {out}\n"
     )
     assert result.stderr == ""
     names = sorted(path.name for path in out.iterdir())
@@ -91,6 +92,49 @@ def test_the_sample_dish_is_found_by_its_diameter(tmp_path: Path) -> None:
     assert truth.exit_code == 0
     recall = float(truth.stdout.splitlines()[1].split()[4])
     assert recall >= 0.9
+
+
+@pytest.mark.parametrize(
+    ("options", "message"),
+    [
+        (
+            ("--diameter", "1-1e9px"),
+            "The largest diameter (1e+09 px) is larger than the study area (420 x 320 px);"
+            " give smaller diameters.",
+        ),
+        (
+            ("--diameter", "400-410px"),
+            "The smallest diameter (400 px) is larger than the study area (420 x 320 px);"
+            " give smaller diameters.",
+        ),
+        (
+            ("--line", "0,0,9999,0", "--line-mm", "50"),
+            "The position 9999,0 lies outside the picture of 420 x 320 pixels;"
+            " give x and y as seen in the upright picture.",
+        ),
+        (
+            ("--corners", "-50,0,400,0,400,300,0,300", "--plot", "10x10mm"),
+            "The position -50,0 lies outside the picture of 420 x 320 pixels;"
+            " give x and y as seen in the upright picture.",
+        ),
+    ],
+)
+def test_what_does_not_fit_the_photograph_is_told_in_a_sentence(
+    photo: Path, tmp_path: Path, options: tuple[str, ...], message: str
+) -> None:
+    out = tmp_path / "out"
+    result = run("detect", photo, *options, "--out", out)
+    assert result.exit_code == 2
+    assert result.stderr == f"bed_1.png: {message}\n"
+    assert list(out.iterdir()) == []
+
+
+def test_the_help_names_no_types(photo: Path) -> None:
+    for words in (("--help",), *((name, "--help") for name in ("detect", "analyse", "score"))):
+        shown = run(*words)
+        assert shown.exit_code == 0
+        assert "<" not in shown.stdout
+        assert "[x>=" not in shown.stdout
 
 
 # Photographs that cannot be done: each is listed with its reason, the others are done.
@@ -180,15 +224,15 @@ def test_no_dish_in_the_picture_fails_the_photograph(photo: Path, tmp_path: Path
         (["--line", "1,2,3"], "--line must be 4 numbers with commas between, not '1,2,3'."),
         (
             ["--line", "1,2,3,4"],
-            "The line and the line length go together, but only the line is given; give both.",
+            "--line needs --line-mm beside it; give both.",
         ),
         (
             ["--corners", "1,2,3,4,5,6,7,8"],
-            "The corners and the plot size go together, but only the corners is given; give both.",
+            "--corners needs --plot beside it; give both.",
         ),
         (
             ["--dish-mm", "86", "--mm-per-pixel", "1"],
-            "Two sources of the scale are given (mm_per_pixel and dish); keep one.",
+            "--mm-per-pixel and --dish-mm both tell the scale; keep one of them.",
         ),
         (
             ["--kind", "stars"],
@@ -201,6 +245,12 @@ def test_no_dish_in_the_picture_fails_the_photograph(photo: Path, tmp_path: Path
             "--area names the file gone.geojson, which does not exist; check its path.",
         ),
         (["--workers", "0"], "--workers must be 1 or more, not 0."),
+        (["--workers", "two"], "--workers must be a whole number such as 3, not 'two'."),
+        (["--dish-mm", "1e300"], "--dish-mm must lie between 1e-06 and 1e+09, not at '1e300'."),
+        (
+            ["--mm-per-pixel", "1e-9"],
+            "--mm-per-pixel must lie between 1e-06 and 1e+09, not at '1e-9'.",
+        ),
     ],
 )
 def test_a_wrong_option_ends_with_one_sentence(
@@ -318,7 +368,8 @@ def test_scores_are_printed_and_written(tmp_path: Path) -> None:
     assert lines[2][:5] == ["bed_2.png", "24", "23", "1", "0.958"]
     assert lines[2][6] == "-1"
     assert lines[3][:3] == ["all", "48", "47"]
-    assert result.stdout.splitlines()[4] == f"Scores: {tmp_path / 'scores' / 'score.csv'}"
+    assert result.stdout.splitlines()[4].startswith("Precision: real of what is found;")
+    assert result.stdout.splitlines()[5] == f"Scores: {tmp_path / 'scores' / 'score.csv'}"
     rows = list(
         csv.DictReader((tmp_path / "scores" / "score.csv").read_text(encoding="utf-8").splitlines())
     )

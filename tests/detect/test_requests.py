@@ -94,18 +94,18 @@ def test_the_area_goes_with_the_scale_unless_named(values: dict[str, Any], where
         ({"moons": 1}, "MOONS is not known; use one of kind, diameter"),
         (
             {"dish": "86mm", "mm_per_pixel": 1},
-            r"Two sources .* \(mm_per_pixel and dish\); keep one",
+            "MM_PER_PIXEL and DISH both tell the scale; keep one of them",
         ),
         (
             {"line": "1,2,3,4"},
-            "The line and the line length go together, but only the line is given; give",
+            "LINE needs LINE_LENGTH beside it; give both",
         ),
-        ({"line_length": "5mm"}, "but only the line length is given; give both"),
+        ({"line_length": "5mm"}, "LINE_LENGTH needs LINE beside it; give both"),
         (
             {"corners": CORNERS},
-            "corners and the plot size go together, but only the corners is given",
+            "CORNERS needs PLOT beside it; give both",
         ),
-        ({"plot": "10x7cm"}, "but only the plot size is given"),
+        ({"plot": "10x7cm"}, "PLOT needs CORNERS beside it; give both"),
         ({"area": "plot"}, "The area plot needs the positions of its corners and its size"),
         ({"inset": "5px"}, "The inset 5px has no edge to step in from; give an area as well"),
         ({"inset": "1mm", "mm_per_pixel": 0.1}, "The inset 1mm has no edge to step in from"),
