@@ -28,7 +28,7 @@ from analyse.nulls import least_chi2, simulated_p
 from analyse.pattern import CountTable, Pattern, Unit
 from analyse.quadrats import GridOptions, QuadratCounts, count_in_quadrats, lay_grid
 from analyse.said import Findings as Findings
-from analyse.verdict import LEVEL, decide, detectable, sentence
+from analyse.verdict import LEVEL, Verdict, decide, detectable, sentence
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -273,7 +273,7 @@ def _judged(subject: _Subject, seed: int, simulations: int) -> Findings:
         "mean_expected": everything.mean,
         "clipped_percent": 100 * subject.counts.clipped_share,
     }
-    seen = _seen(everything, weights)
+    seen = _seen(verdict, everything, weights)
     return Findings(
         name=subject.name,
         n=everything.n,
@@ -298,8 +298,12 @@ def _judged(subject: _Subject, seed: int, simulations: int) -> Findings:
     )
 
 
-def _seen(everything: Dispersion, areas: NDArray[np.float64]) -> tuple[float, float]:
-    """Return the VMR that would have been seen; NaN for an evenness that n points cannot have."""
+def _seen(
+    verdict: Verdict, everything: Dispersion, areas: NDArray[np.float64]
+) -> tuple[float, float]:
+    """Return the VMR that would have been seen; NaN for what n points cannot show."""
+    if verdict == "too few to tell":
+        return math.nan, math.nan
     low, high = detectable(everything.df)
     possible = low * everything.df >= least_chi2(everything.n, areas)
     return low if possible else math.nan, high

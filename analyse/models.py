@@ -10,6 +10,7 @@ import numpy as np
 from numpy.typing import ArrayLike, NDArray
 from scipy import special
 
+from analyse.columns import hold_columns
 from analyse.dispersion import checked_counts
 from analyse.errors import TooFewQuadrats
 
@@ -54,10 +55,7 @@ class PoissonFit:
     def __post_init__(self) -> None:
         if not len(self.classes) == len(self.observed) == len(self.expected):
             raise ValueError("classes, observed and expected differ in length")
-        for name in ("frequencies", "poisson", "observed", "expected"):
-            column = np.array(getattr(self, name))
-            column.setflags(write=False)
-            object.__setattr__(self, name, column)
+        hold_columns(self, ("frequencies", "poisson", "observed", "expected"))
 
     @property
     def labels(self) -> tuple[str, ...]:

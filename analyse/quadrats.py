@@ -12,6 +12,7 @@ from numpy.typing import ArrayLike, NDArray
 from shapely.geometry.base import BaseGeometry
 
 from analyse.cells import Lattice, Sectors, joined
+from analyse.columns import hold_columns
 from analyse.errors import GridWrong
 from analyse.grid_options import MOST_QUADRATS, side_in
 from analyse.grid_options import GridOptions as GridOptions
@@ -77,12 +78,8 @@ class Grid:
     home: NDArray[np.int64]
 
     def __post_init__(self) -> None:
-        for name in ("row", "column", "x", "y", "area", "whole", "home"):
-            column = np.array(getattr(self, name))
-            if name != "home" and column.shape != (len(self.polygons),):
-                raise ValueError(f"{name} has shape {column.shape} for {len(self)} quadrats")
-            column.setflags(write=False)
-            object.__setattr__(self, name, column)
+        hold_columns(self, ("row", "column", "x", "y", "area", "whole"), length=len(self))
+        hold_columns(self, ["home"])
 
     def __len__(self) -> int:
         return len(self.polygons)
@@ -114,13 +111,9 @@ class QuadratCounts:
     column: NDArray[np.int64] | None = None
 
     def __post_init__(self) -> None:
-        for name in ("counts", "area", "whole", "row", "column"):
-            if getattr(self, name) is not None:
-                column = np.array(getattr(self, name))
-                if column.shape != (len(self.counts),):
-                    raise ValueError(f"{name} has shape {column.shape} for {len(self)} quadrats")
-                column.setflags(write=False)
-                object.__setattr__(self, name, column)
+        names = ("counts", "area", "whole", "row", "column")
+        known = [name for name in names if getattr(self, name) is not None]
+        hold_columns(self, known, length=len(self))
 
     def __len__(self) -> int:
         return len(self.counts)

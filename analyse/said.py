@@ -8,6 +8,7 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
+from analyse.columns import hold_columns
 from analyse.density import Limits
 from analyse.dispersion import Dispersion
 from analyse.flags import flag_sentences
@@ -54,7 +55,8 @@ class Findings:
         The verdict as a sentence.
     detectable : (low, high)
         VMR that would have been seen with about 80 % power, on the even and the clumped side;
-        the first is NaN where so few points cannot lie as evenly as that.
+        the first is NaN where so few points cannot lie as evenly as that, both where there are
+        too few to tell.
     flags : tuple of str
         Reasons for care, names in `analyse.flags.FLAGS`.
     flag_values : dict
@@ -87,12 +89,7 @@ class Findings:
     settings: dict[str, Any]
 
     def __post_init__(self) -> None:
-        for name in ("expected", "residuals"):
-            column = np.array(getattr(self, name), dtype=np.float64)
-            if column.shape != (len(self.counts),):
-                raise ValueError(f"{name} has shape {column.shape} for {len(self.counts)} quadrats")
-            column.setflags(write=False)
-            object.__setattr__(self, name, column)
+        hold_columns(self, ("expected", "residuals"), length=len(self.counts))
 
     @property
     def flag_sentences(self) -> tuple[str, ...]:

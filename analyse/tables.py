@@ -263,6 +263,8 @@ def _all_rows(each: Findings) -> Iterator[list[Cell]]:
         method = "sqrt(2 X2) - sqrt(2 df - 1), two-sided normal p (Fisher 1925)"
         yield ["normal_deviate", d, None, None, p, method, seen.q, note]
     low, high = each.detectable
+    if math.isnan(high):
+        return
     method = "VMR at or beyond which a departure would have been seen (scaled chi-square)"
     note = f"with about {100 * POWER:.0f} % power, two-sided at {100 * each.settings['level']:g} %"
     yield ["vmr_seen", None, low, high, None, method, seen.q, note]

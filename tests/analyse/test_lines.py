@@ -47,4 +47,4 @@ def test_many_notes_are_told_flag_by_flag(capsys: pytest.CaptureFixture[str]) ->
 
 def test_the_seed_is_told(capsys: pytest.CaptureFixture[str]) -> None:
     show_findings([a_finding("a.jpg", 200)])
-    assert capsys.readouterr().out.endswith("by area. Seed 1, 99 simulations.\n")
+    assert capsys.readouterr().out.endswith(" Seed 1, 99 simulations.\n")

@@ -103,6 +103,7 @@ def test_no_test_is_called_the_verdicts_where_there_is_too_little() -> None:
     for n, there in ((5, False), (150, True)):
         rows = rows_of(tables.tests_csv([analyse_points(POINTS[:n], DISH)]))
         assert any("the verdict's test" in row["notes"] for row in rows) == there
+        assert ("vmr_seen" in {row["statistic"] for row in rows}) == there
 
 
 def test_areas_add_up_to_the_study_area() -> None:
