@@ -363,7 +363,22 @@ def greens_index(counts: ArrayLike) -> float:
 
 
 def checked_counts(counts: ArrayLike) -> NDArray[np.int64]:
-    """Return counts as whole numbers, or refuse them."""
+    """Return counts as whole numbers, or refuse them.
+
+    Parameters
+    ----------
+    counts : array_like, any shape
+        Whole numbers of 0 or more.
+
+    Returns
+    -------
+    ndarray of int64, shape (q,)
+
+    Raises
+    ------
+    ValueError
+        If one is negative, not whole or not finite.
+    """
     x = np.asarray(counts).reshape(-1)
     if x.size and not (np.isfinite(x).all() and (x >= 0).all() and (x == np.floor(x)).all()):
         raise ValueError("counts must be whole numbers of 0 or more")
@@ -371,7 +386,22 @@ def checked_counts(counts: ArrayLike) -> NDArray[np.int64]:
 
 
 def checked_areas(areas: ArrayLike) -> NDArray[np.float64]:
-    """Return areas as positive finite numbers, or refuse them."""
+    """Return areas as positive finite numbers, or refuse them.
+
+    Parameters
+    ----------
+    areas : array_like, any shape
+        In any one unit.
+
+    Returns
+    -------
+    ndarray of float64, shape (q,)
+
+    Raises
+    ------
+    ValueError
+        If one is not positive and finite.
+    """
     a = np.asarray(areas, dtype=np.float64).reshape(-1)
     if not (np.isfinite(a).all() and (a > 0).all()):
         raise ValueError("areas must be positive and finite")

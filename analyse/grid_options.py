@@ -98,7 +98,24 @@ def default_side(area: float, n: int) -> float:
 
 
 def side_in(side: Length, unit: Unit) -> float:
-    """Return a side in the unit of the area, or refuse one that cannot be turned into it."""
+    """Return a side in the unit of the area, or refuse one that cannot be turned into it.
+
+    Parameters
+    ----------
+    side : Length
+        In pixels or a metric unit.
+    unit : {"mm", "px"}
+        Unit of the area.
+
+    Returns
+    -------
+    float
+
+    Raises
+    ------
+    GridWrong
+        If the side is in pixels and the area in millimetres, or the other way round.
+    """
     if side.in_pixels and unit == "mm":
         raise GridWrong(f"--quadrat {side} is in pixels, but the scale is known; give it in mm.")
     if not side.in_pixels and unit == "px":

@@ -35,6 +35,16 @@ class Row:
 def read_rows(path: Path) -> list[Row]:
     """Return the rows of a CSV file that hold anything; lines that start with # are comments.
 
+    Parameters
+    ----------
+    path : Path
+        Text in UTF-8, its columns separated by commas.
+
+    Returns
+    -------
+    list of Row
+        At least one; cells are stripped of spaces.
+
     Raises
     ------
     TableWrong
@@ -64,7 +74,26 @@ def read_rows(path: Path) -> list[Row]:
 
 
 def real_in(row: Row, column: int, name: str) -> float:
-    """Return a cell's finite number, or complain with its row, column and value."""
+    """Return a cell's finite number, or complain with its row, column and value.
+
+    Parameters
+    ----------
+    row : Row
+        A row of the table.
+    column : int
+        Which cell, from 0.
+    name : str
+        What its column is called in a complaint.
+
+    Returns
+    -------
+    float
+
+    Raises
+    ------
+    TableWrong
+        If the cell is empty or holds anything else.
+    """
     text = _cell(row, column, name)
     if not _REAL.fullmatch(text):
         raise TableWrong(
@@ -79,7 +108,26 @@ def real_in(row: Row, column: int, name: str) -> float:
 
 
 def whole_in(row: Row, column: int, name: str) -> int:
-    """Return a cell's whole number of 0 or more, or complain with its row, column and value."""
+    """Return a cell's whole number of 0 or more, or complain with its row, column and value.
+
+    Parameters
+    ----------
+    row : Row
+        A row of the table.
+    column : int
+        Which cell, from 0.
+    name : str
+        What its column is called in a complaint.
+
+    Returns
+    -------
+    int
+
+    Raises
+    ------
+    TableWrong
+        If the cell is empty or holds anything else.
+    """
     text = _cell(row, column, name)
     if not _WHOLE.fullmatch(text) or int(text.split(".")[0]) > MOST_COUNTED:
         raise TableWrong(
