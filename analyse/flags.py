@@ -13,7 +13,8 @@ LARGE_CLIPPED = 0.5  # share of the study area in quadrats that are not whole: o
 FLAGS: dict[str, str] = {
     "uncalibrated": "No scale is known: lengths are in pixels, and no density is given.",
     "unreviewed": "No person has checked these spots: everything here rests on the detector alone.",
-    "doubtful": "Counted spots that are more likely false than real: {doubtful} of {n}; check them.",
+    "doubtful": "Counted spots that are more likely false than real: {doubtful} of {n};"
+    " check them (orange in the pictures).",
     "outside": "Points outside the study area, which were left out: {outside}.",
     "duplicates": "Points at the very place of another: {duplicates}; check for double entries.",
     "no_area": "A table of counts tells no study area, so no density is given.",

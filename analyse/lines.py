@@ -27,8 +27,9 @@ def show_findings(findings: Sequence[Findings]) -> None:
     """
     show_table(_HEADER, [_line(each) for each in findings])
     typer.echo(
-        "VMR is of whole quadrats; X2/df, p (two-sided, simulated) and verdict are of all"
-        f" quadrats by area. Seed {findings[0].seed},"
+        "VMR (variance-to-mean ratio) is of whole quadrats; X2/df (the same by area), p (two-sided,"
+        " simulated) and verdict are of all. Both ratios are near 1 at random, above it where"
+        f" clumped, below it where even; - where none can be given. Seed {findings[0].seed},"
         f" {findings[0].simulated.simulations:,} simulations."
     )
     for note in _notes(findings):

@@ -62,7 +62,7 @@ def page_words(
     return {
         "verdict": findings.verdict,
         "kind": KINDS[findings.verdict],
-        "sentence": findings.sentence,
+        "sentence": findings.sentence.replace("X2/df", "X\u00b2/df"),
         "flags": list(findings.flag_sentences),
         "flag_names": ", ".join(flag.replace("_", " ") for flag in findings.flags),
         "unreviewed": "unreviewed" in findings.flags,

@@ -14,6 +14,7 @@ from typer.core import TyperGroup
 from typer.testing import CliRunner
 
 from analyse.cli import app
+from detect.amendments import read_amendments
 from tests.conftest import SAMPLE, Surveyed
 
 ROOT = SAMPLE.parent
@@ -69,6 +70,14 @@ def test_exactly_two_commands_lead_from_nothing_to_verdict_and_tests() -> None:
     assert "-m pytest" in second
     # Nothing else stands before it that a reader would have to type.
     assert blocks(README)[:2] == [first, second]
+
+
+def test_the_line_that_strikes_a_spot_is_one(tmp_path: Path) -> None:
+    (block,) = re.findall(r"```json\n(.*?)```", README, flags=re.DOTALL)
+    log = tmp_path / "a.amendments.jsonl"
+    log.write_text(block, encoding="utf-8")
+    (amendment,) = read_amendments(log)
+    assert (amendment.what, amendment.spot) == ("strike", "12")
 
 
 def test_the_first_command_ends_as_the_readme_says(sample_survey: Surveyed) -> None:

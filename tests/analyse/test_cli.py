@@ -97,7 +97,7 @@ def test_a_sheet_is_analysed_with_its_photograph(sheets: Path, tmp_path: Path) -
     lines = result.stdout.splitlines()
     assert lines[0].split() == ["photograph", "count", "per", "cm2", "VMR", "X2/df", "p", "verdict"]
     assert lines[1].split()[:3] == ["bed_1.png", "24", "0.286"]
-    assert lines[2].startswith("VMR is of whole quadrats")
+    assert lines[2].startswith("VMR (variance-to-mean ratio) is of whole quadrats")
     assert lines[3:] == [f"Tables: {out}", f"Report: {out / 'report.html'}"]
     assert "Note: No person has checked these spots" in result.stderr
     names = sorted(path.name for path in out.iterdir())

@@ -31,7 +31,8 @@ def test_every_flag_says_a_sentence_with_its_numbers(flag: str) -> None:
 
 def test_flags_in_words() -> None:
     assert flag_sentences(["doubtful", "clipped_large", "low_expected"], VALUES) == (
-        "Counted spots that are more likely false than real: 4 of 60; check them.",
+        "Counted spots that are more likely false than real: 4 of 60;"
+        " check them (orange in the pictures).",
         "Of the study area, 38 % lies in clipped quadrats; the verdict takes their areas into"
         " account, the VMR of whole quadrats leaves them out.",
         "A quadrat expects only 1.9 points on average: the chi-square p and the stated power are"
