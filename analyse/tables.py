@@ -9,13 +9,15 @@ from scipy import special
 
 from analyse.dispersion import (
     Dispersion,
+    normal_deviate,
+)
+from analyse.findings import Findings
+from analyse.indices import (
     cluster_size_index,
     greens_index,
     mean_crowding,
     morisita_index,
-    normal_deviate,
 )
-from analyse.findings import Findings
 from analyse.verdict import POWER
 from detect.files import Cell, csv_text
 

@@ -12,16 +12,13 @@ from scipy import stats
 
 from analyse.dispersion import (
     clipped_dispersion,
-    cluster_size_index,
     dispersion,
     expected_counts,
-    greens_index,
-    mean_crowding,
-    morisita_index,
     normal_deviate,
     residuals,
 )
 from analyse.errors import TooFewQuadrats
+from analyse.indices import greens_index, morisita_index
 from tests.analyse import published
 
 some_counts = st.lists(st.integers(0, 40), min_size=2, max_size=40).filter(lambda x: sum(x) > 1)
@@ -155,43 +152,6 @@ def test_many_quadrats_by_the_normal_approximation() -> None:
         assert normal_deviate(seen.chi2, seen.df) == pytest.approx(d, abs=5e-5)
     mites = dispersion(published.counts("bliss_fisher1953_mites"))
     assert normal_deviate(mites.chi2, mites.df) == pytest.approx(7.0744, abs=5e-5)
-
-
-def test_indices_of_the_mites() -> None:
-    """Bliss and Fisher (1953), Biometrics 9, 176-200: computed from their frequencies."""
-    mites = published.counts("bliss_fisher1953_mites")
-    d = dispersion(mites)
-    assert (d.vmr, d.chi2) == pytest.approx((1.982831, 295.4419), abs=5e-5)
-    assert morisita_index(mites) == pytest.approx(1.856385, abs=5e-7)
-    assert mean_crowding(mites) == pytest.approx(2.129498, abs=5e-7)
-    assert mean_crowding(mites) / d.mean == pytest.approx(1.857120, abs=5e-7)
-    assert greens_index(mites) == pytest.approx(0.005748, abs=5e-7)
-    assert cluster_size_index(mites) == pytest.approx(0.982831, abs=5e-7)
-
-
-@given(some_counts)
-def test_identities_between_the_indices(counts: list[int]) -> None:
-    """Exact identities: X2 from Morisita's index; Lloyd, David and Moore, Green from the VMR."""
-    x = np.array(counts)
-    q, total, d = x.size, x.sum(), dispersion(counts)
-    index = morisita_index(counts)
-    assert index * (total - 1) + q - total == pytest.approx(d.chi2, abs=1e-9 * total * q)
-    crowding = (x * (x - 1)).sum() / total
-    assert crowding == pytest.approx(d.mean + x.var() / d.mean - 1, abs=1e-9)
-    assert index == pytest.approx(q * crowding / (total - 1), abs=1e-9)
-    assert mean_crowding(counts) == pytest.approx(d.mean + d.vmr - 1, abs=1e-9)
-    assert cluster_size_index(counts) == pytest.approx(d.vmr - 1, abs=1e-9)
-    assert greens_index(counts) == pytest.approx((d.vmr - 1) / (total - 1), abs=1e-9)
-
-
-@given(st.integers(2, 30), st.integers(2, 50))
-def test_limits_of_the_indices(q: int, total: int) -> None:
-    """All in one quadrat: Green 1, Morisita q; one or none in each: Morisita 0; even: -1/(S - 1)."""
-    together = [total] + [0] * (q - 1)
-    assert greens_index(together) == pytest.approx(1)
-    assert morisita_index(together) == pytest.approx(q)
-    assert morisita_index([1, 1] + [0] * (q - 2)) == 0
-    assert greens_index([total] * q) == pytest.approx(-1 / (q * total - 1))
 
 
 def test_clipped_quadrats_by_hand() -> None:
