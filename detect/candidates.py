@@ -37,6 +37,11 @@ def find_candidates(
     -------
     Candidates
         About ten overlapping regions for each object.
+
+    References
+    ----------
+    Borgefors G (1986). Distance transformations in digital images. Computer Vision, Graphics, and
+    Image Processing 34, 344-371: the distance whose peaks tell touching objects apart.
     """
     smooth = cv2.GaussianBlur(contrast.map, (0, 0), max(0.06 * smallest_px, 0.3))
     crest = cv2.GaussianBlur(contrast.map, (0, 0), max(0.15 * smallest_px, 0.5))

@@ -64,7 +64,22 @@ class Contrast:
 
 
 def to_lab(pixels: Map) -> Map:
-    """Turn (h, w, 3) red, green, blue in 0..1 into CIE L*, a*, b*."""
+    """Turn red, green and blue into lightness and two axes of hue.
+
+    Parameters
+    ----------
+    pixels : ndarray of shape (height, width, 3), float32
+        sRGB values, 0..1.
+
+    Returns
+    -------
+    ndarray of shape (height, width, 3), float32
+        L* (0..100), a* and b* under white D65.
+
+    References
+    ----------
+    CIE 15:2004, Colorimetry, 3rd edition, section 8.2.1 (CIELAB). IEC 61966-2-1:1999 (sRGB).
+    """
     return np.asarray(cv2.cvtColor(pixels, cv2.COLOR_RGB2Lab), dtype=np.float32)
 
 

@@ -96,6 +96,7 @@ def judge_side(
     Returns
     -------
     Judgement
+        Without the regions whose mean contrast is below `LEAST_CONTRAST` times the noise.
     """
     colour = options.colour
     if colour == "auto":

@@ -42,8 +42,13 @@ def split_regions(
 
     Notes
     -----
-    A pixel goes to the seed with least (distance^2 - radius^2), the power diagram of Aurenhammer
-    (1987): for overlapping discs it cuts along the line through the two points where they cross.
+    A pixel goes to the seed with least (distance^2 - radius^2), which is the power diagram [1]_:
+    for overlapping discs it cuts along the line through the two points where they cross.
+
+    References
+    ----------
+    .. [1] Aurenhammer F (1987). Power diagrams: properties, algorithms and applications. SIAM
+       Journal on Computing 16, 78-96.
     """
     x, y, peak, owner = _peaks(relief, labels, distance, 0.2 * smallest_px)
     group = _joined(x, y, peak, owner, relief, 1.2 * largest_px)
@@ -153,6 +158,11 @@ def nearest_by_power(
     Returns
     -------
     ndarray of int, shape (n,)
+
+    References
+    ----------
+    Aurenhammer F (1987). Power diagrams: properties, algorithms and applications. SIAM Journal on
+    Computing 16, 78-96. Its lifting turns power into distance, which a tree can search.
     """
     if len(seed) <= 8:
         power = ((points[:, None, :] - seed[None]) ** 2).sum(axis=2) - radius**2

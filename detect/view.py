@@ -22,7 +22,9 @@ class View:
     Parameters
     ----------
     lab : ndarray of shape (height, width, 3), float32
+        L* (0..100), a* and b* of each working pixel.
     inside : ndarray of bool, shape (height, width)
+        Which working pixels' centres lie in the study area.
     shrink_x, shrink_y : float
         Working pixels per photograph pixel.
     left, top : int
@@ -44,7 +46,18 @@ class View:
     def to_photograph(
         self, x: NDArray[np.float64], y: NDArray[np.float64]
     ) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
-        """Map working positions to photograph pixels (pixel centres at whole numbers)."""
+        """Map working positions to the photograph.
+
+        Parameters
+        ----------
+        x, y : ndarray of shape (n,)
+            Positions in working pixels, centres at whole numbers.
+
+        Returns
+        -------
+        x, y : ndarray of shape (n,)
+            The same positions in photograph pixels, centres at whole numbers.
+        """
         return (
             (x + 0.5) / self.shrink_x - 0.5 + self.left,
             (y + 0.5) / self.shrink_y - 0.5 + self.top,
@@ -52,7 +65,25 @@ class View:
 
 
 def view_of(photograph: Photograph, area: StudyArea, *, shrink: float) -> View:
-    """Cut out the study area's box and reduce it, in L*, a*, b*."""
+    """Cut out the study area's box and reduce it, in L*, a*, b*.
+
+    Parameters
+    ----------
+    photograph : Photograph
+    area : StudyArea
+    shrink : float
+        Working pixels per photograph pixel wanted, from 0 (excluded) to 1; whole working pixels
+        make the true one differ a little, which the view records.
+
+    Returns
+    -------
+    View
+
+    Raises
+    ------
+    AreaWrong
+        If fewer than three columns or rows of the photograph lie in the area's box.
+    """
     x0, y0, x1, y1 = area.polygon.bounds
     left, top = max(0, int(np.floor(x0))), max(0, int(np.floor(y0)))
     right = min(photograph.width, int(np.ceil(x1)) + 1)

@@ -63,8 +63,7 @@ def holds(
 # Truth by construction
 
 
-@pytest.mark.parametrize("bits", [8, 16])
-@pytest.mark.parametrize("colour", [DARK, LIGHT])
+@pytest.mark.parametrize(("bits", "colour"), [(8, DARK), (16, LIGHT)])
 @pytest.mark.parametrize("form", ["disc", "dome", "ring"])
 def test_drawn_objects_are_found_and_nothing_else(form: str, colour: Rgb, bits: int) -> None:
     photograph = SpotScene(discs=DISCS, form=form, colour=colour, bits=bits).draw()
@@ -131,7 +130,7 @@ def test_touching_and_overlapping_pairs_are_two(form: str, apart: float) -> None
     holds(spots, truth, centre=1.0, radius=0.1)
 
 
-@pytest.mark.parametrize("apart", [0.3, 0.6, 0.9])
+@pytest.mark.parametrize("apart", [0.3, 0.9])
 def test_discs_that_nearly_coincide_are_one(apart: float) -> None:
     spots = found(SpotScene(discs=beside(apart), width=470).draw(), "20-44px").spots
     middles = beside(0.0)[::2]
@@ -220,17 +219,17 @@ def test_noise_alone_has_next_to_no_spots_of_a_named_colour(colour: Colour) -> N
 @pytest.mark.parametrize(("kind", "most"), [("colonies", 12), ("lesions", 5), ("spots", 60)])
 def test_smooth_noise_has_few_spots(kind: Kind, most: int) -> None:
     # Blurred noise is made of blobs; what is no single pixel cannot all be told from objects.
-    # Measured at sizes of 6-12 px: 0 to 2 colonies, 0 or 1 lesions, 28 to 44 spots.
-    smooth = [empty(seed, blur=1.5) for seed in (1, 2)]
-    assert max(len(found(photograph, "6-12px", kind=kind).spots) for photograph in smooth) <= most
+    # Measured at sizes of 6-12 px (seeds 1-6): 0-2 colonies, 0-1 lesions, 36-53 spots.
+    assert len(found(empty(1, blur=1.5), "6-12px", kind=kind).spots) <= most
 
 
-def test_faint_objects_well_above_the_noise_stay() -> None:
-    ground = (0.5,) * 3
+@pytest.mark.parametrize(("level", "colour"), [(0.58, "auto"), (0.55, "grey")])
+def test_faint_objects_stay(level: float, colour: Colour) -> None:
+    # 4 and 2.5 times the noise of a pixel lighter than the ground.
     scene = SpotScene(
-        discs=DISCS, ground=ground, colour=(0.62,) * 3, noise=0.02, blur=0.5, texture=0, light=0.1
+        discs=DISCS, ground=(0.5,) * 3, colour=(level,) * 3, noise=0.02, blur=0.5, texture=0.0
     )
-    holds(found(scene.draw()).spots, DISCS, missed=1, invented=1)
+    holds(found(scene.draw(), colour=colour).spots, DISCS, missed=1, invented=1)
 
 
 def test_a_picture_of_one_colour_has_no_spots() -> None:
@@ -268,8 +267,9 @@ def test_brightness_does_not_matter(scale: float) -> None:
     same(found(linear(scale)).spots.centres, found(linear(1.0)).spots.centres, 1.0)
 
 
-@pytest.mark.parametrize("turns", [1, 2, 3])
-@pytest.mark.parametrize("mirrored", [False, True])
+@pytest.mark.parametrize(
+    ("turns", "mirrored"), [(1, False), (2, False), (3, False), (0, True), (1, True)]
+)
 def test_quarter_turns_and_mirrors_do_not_matter(turns: int, mirrored: bool) -> None:
     stored = np.rot90(BASE.stored, turns)
     places = np.column_stack([BASE_FOUND.spots.x, BASE_FOUND.spots.y])
