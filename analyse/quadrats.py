@@ -189,8 +189,8 @@ def lay_grid(
         )
     if rows * columns > MOST_QUADRATS:
         raise GridWrong(
-            f"Quadrats of {side:g} {unit} would make {rows * columns:,} of them,"
-            f" more than {MOST_QUADRATS:,}; give a larger --quadrat."
+            f"Quadrats of {side:g} {unit} would cut the box around the study area into"
+            f" {rows * columns:,} cells, more than {MOST_QUADRATS:,}; give a larger --quadrat."
         )
     start = ((x0 + x1 - columns * side) / 2, (y0 + y1 - rows * side) / 2)
     return _clipped(Lattice(*start, side, side, rows, columns), area, options, unit, side)

@@ -273,7 +273,11 @@ def test_arrays_cannot_be_changed() -> None:
             "mm",
             r"A quadrat of 86 mm covers the whole study area \(86",
         ),
-        (GridOptions(side=Length(0.1, "mm")), "mm", "739,600 of them, more than 100,000"),
+        (
+            GridOptions(side=Length(0.1, "mm")),
+            "mm",
+            "the box around the study area into 739,600 cells, more than 100,000",
+        ),
         (GridOptions(side=Length(9, "px")), "mm", "9px is in pixels, but the scale is known"),
         (GridOptions(side=Length(9, "mm")), "px", "9mm needs a scale, and none is known"),
         (GridOptions(rings=(3, 8)), "mm", "--rings needs a dish, and this study area is none"),
