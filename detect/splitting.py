@@ -14,6 +14,8 @@ from detect.regions import Column, Labels
 
 # Two peaks stay one when the relief between them stays above this share of the lower one.
 _TOGETHER = 0.95
+# Only so many nearest peaks are kin to a peak; on noise there would be thousands within reach.
+_NEAREST = 16
 
 
 def split_regions(
@@ -97,12 +99,27 @@ def _saddles(
     """Pairs of peaks of one region, and the lowest relief on the straight line between them."""
     if x.size < 2:
         return np.zeros(0, np.intp), np.zeros(0, np.intp), np.zeros(0)
-    pairs = cKDTree(np.column_stack([x, y])).query_pairs(reach, output_type="ndarray")
-    i, j = pairs[owner[pairs[:, 0]] == owner[pairs[:, 1]]].T
+    i, j = _near_pairs(np.column_stack([x, y]), reach)
+    kin = owner[i] == owner[j]
+    i, j = i[kin], j[kin]
     t = np.linspace(0.0, 1.0, 13)[1:-1]
     xs = np.rint(x[i][:, None] * (1 - t) + x[j][:, None] * t).astype(np.intp)
     ys = np.rint(y[i][:, None] * (1 - t) + y[j][:, None] * t).astype(np.intp)
     return i, j, relief[ys, xs].min(axis=1, initial=np.inf).astype(np.float64)
+
+
+def _near_pairs(
+    points: NDArray[np.float64], reach: float
+) -> tuple[NDArray[np.intp], NDArray[np.intp]]:
+    """Pairs of each point with its nearest others within reach, each pair once."""
+    k = min(_NEAREST + 1, len(points))
+    found = cKDTree(points).query(points, k=[*range(1, k + 1)], distance_upper_bound=reach)
+    distance, other = (np.asarray(part) for part in found)
+    first, rank = np.nonzero(np.isfinite(distance))
+    second = other[first, rank]
+    low, high = np.minimum(first, second), np.maximum(first, second)
+    pairs = np.unique(np.column_stack([low, high])[low < high], axis=0)
+    return pairs[:, 0], pairs[:, 1]
 
 
 def _highest_of_each(group: NDArray[np.intp], peak: Column) -> NDArray[np.intp]:

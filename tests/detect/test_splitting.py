@@ -8,7 +8,7 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from detect.splitting import nearest_by_power, split_regions
+from detect.splitting import _near_pairs, nearest_by_power, split_regions
 
 
 def split(discs: list[tuple[float, float, float]]) -> tuple[np.ndarray, np.ndarray | None]:
@@ -82,3 +82,18 @@ def test_the_tree_gives_what_the_plain_definition_gives(n: int, seed: int) -> No
     chosen = nearest_by_power(points, seeds, radius)
     best = power.min(axis=1)
     assert power[np.arange(80), chosen] == pytest.approx(best, abs=1e-6)
+
+
+def test_kin_are_sought_among_the_nearest_only_so_that_noise_stays_cheap() -> None:
+    rng = np.random.default_rng(3)
+    points = rng.uniform(0, 60, (400, 2))
+    i, j = _near_pairs(points, 80.0)
+    assert len(i) <= 400 * 16
+    assert (i < j).all()
+    assert len({*zip(i.tolist(), j.tolist(), strict=True)}) == len(i)
+    few = rng.uniform(0, 60, (12, 2))
+    i, j = _near_pairs(few, 25.0)
+    plain = {
+        (a, b) for a in range(12) for b in range(a + 1, 12) if np.hypot(*(few[a] - few[b])) <= 25.0
+    }
+    assert {*zip(i.tolist(), j.tolist(), strict=True)} == plain
