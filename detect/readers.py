@@ -44,7 +44,7 @@ def whole(value: str | None, name: str) -> int | None:
     if value is None:
         return None
     if not re.fullmatch(r"\s*[-+]?\d{1,18}\s*", value):
-        raise OptionWrong(f"{name} must be a whole number such as 3, not {value!r}.")
+        raise OptionWrong(f"{name} must be a whole number of 18 digits at most, not {value!r}.")
     return int(value)
 
 

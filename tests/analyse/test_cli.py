@@ -360,6 +360,23 @@ def beds(tmp_path: Path) -> Path:
     return folder
 
 
+@pytest.mark.parametrize(
+    ("option", "value", "message"),
+    [
+        ("--simulations", "10", "--simulations must lie between 99 and 1,000,000, not at 10;"),
+        ("--seed", "-1", "--seed must be a whole number of 0 or more, not -1."),
+        ("--seed", "x", "--seed must be a whole number of 18 digits at most, not 'x'."),
+    ],
+)
+def test_chance_that_cannot_be_is_refused_before_anything_is_done(
+    beds: Path, tmp_path: Path, option: str, value: str, message: str
+) -> None:
+    result = survey(beds, option, value, "--out", tmp_path / "out")
+    assert result.exit_code == 2
+    assert result.stderr.startswith(f"Error: {message}")
+    assert not (tmp_path / "out").exists()
+
+
 def test_a_folder_is_surveyed_by_options(beds: Path, tmp_path: Path) -> None:
     out = tmp_path / "out"
     result = survey(beds, "--diameter", DIAMETER, "--grid", "3x4", "--out", out)

@@ -245,7 +245,7 @@ def test_no_dish_in_the_picture_fails_the_photograph(photo: Path, tmp_path: Path
             "--area names the file gone.geojson, which does not exist; check its path.",
         ),
         (["--workers", "0"], "--workers must be 1 or more, not 0."),
-        (["--workers", "two"], "--workers must be a whole number such as 3, not 'two'."),
+        (["--workers", "two"], "--workers must be a whole number of 18 digits at most, not 'two'."),
         (["--dish-mm", "1e300"], "--dish-mm must lie between 1e-06 and 1e+09, not at '1e300'."),
         (
             ["--mm-per-pixel", "1e-9"],
