@@ -37,7 +37,15 @@ _AT_LEAST, _AT_MOST = 0.6, 1.2
 
 @dataclass(frozen=True, slots=True)
 class Found:
-    """Spots, and what the detector settled on to find them."""
+    """Spots, and what the detector settled on to find them.
+
+    Parameters
+    ----------
+    spots : Spots
+    settings : dict
+        Plain values for the sheet: kind, diameters in pixels, direction of the contrast in L*, a*,
+        b*, the ground's noise, the working scale and the highest doubt kept.
+    """
 
     spots: Spots
     settings: dict[str, Any]
@@ -85,12 +93,7 @@ def find_spots(
     contrast = judgement.contrast
     rows = choose(judgement.candidates, judgement.doubt, highest_doubt=options.most_doubt)
     spots = _spots(view, judgement, rows, plants=plants)
-    spots = spots.where(area.contains(spots.centres))
-    if options.kind != "spots":
-        diameter = 2 * spots.radius
-        spots = spots.where((diameter >= _AT_LEAST * smallest) & (diameter <= _AT_MOST * largest))
-    order = np.lexsort((spots.x, spots.y))
-    spots = spots.where(order).renumbered()
+    spots = _kept(spots, area, options.kind, smallest, largest)
     settings = {
         "kind": options.kind,
         "diameter_px": [round(smallest, 2), round(largest, 2)],
@@ -101,6 +104,18 @@ def find_spots(
         "highest_doubt": options.most_doubt,
     }
     return Found(spots, settings)
+
+
+def _kept(
+    spots: Spots, area: StudyArea, kind: Kind, smallest_px: float, largest_px: float
+) -> Spots:
+    """Return the spots centred in the area and, for a kind, near the sizes asked for; in order."""
+    spots = spots.where(area.contains(spots.centres))
+    if kind != "spots":
+        size = 2 * spots.radius
+        near = (size >= _AT_LEAST * smallest_px) & (size <= _AT_MOST * largest_px)
+        spots = spots.where(near)
+    return spots.where(np.lexsort((spots.x, spots.y))).renumbered()
 
 
 def _with_its_surroundings(area: StudyArea, largest_px: float) -> StudyArea:
