@@ -95,10 +95,17 @@ def read_claim(data: bytes) -> Claim:
         raise PhotographUnreadable(f"the file is empty (0 bytes); {_AGAIN}")
     if data[4:8] == b"ftyp":
         raise PhotographUnreadable(f"the file is a phone's HEIC or AVIF picture; {_EXPORT}")
-    seen = data[:8].hex(" ")
     raise PhotographUnreadable(
-        f"the file is no JPEG, PNG, TIFF or BMP picture (it begins {seen}); {_EXPORT}"
+        f"the file is no JPEG, PNG, TIFF or BMP picture ({_beginning(data)}); {_EXPORT}"
     )
+
+
+def _beginning(data: bytes) -> str:
+    """What a file that is no picture begins with, as a person would recognise it."""
+    text = data[:24].decode("latin-1").split("\n")[0].rstrip()
+    if text and text.isascii() and text.isprintable():
+        return f"it is text that begins {text!r}"
+    return f"it begins with the bytes {data[:8].hex(' ')}"
 
 
 def _cut_short(what: str) -> PhotographUnreadable:

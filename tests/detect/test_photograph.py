@@ -352,8 +352,13 @@ WRONG_BYTES = {
     "empty": (b"", "the file is empty (0 bytes); copy it again from the camera or card."),
     "text": (
         b"x,y\n12,15\n",
-        "the file is no JPEG, PNG, TIFF or BMP picture (it begins 78 2c 79 0a 31 32 2c 31); "
+        "the file is no JPEG, PNG, TIFF or BMP picture (it is text that begins 'x,y'); "
         "export it as an 8- or 16-bit RGB JPEG, PNG or TIFF.",
+    ),
+    "other bytes": (
+        b"\0\1\2\xff" * 9,
+        "the file is no JPEG, PNG, TIFF or BMP picture (it begins with the bytes "
+        "00 01 02 ff 00 01 02 ff); export it as",
     ),
     "phone": (b"\0\0\0\x18ftypheic" + bytes(99), "the file is a phone's HEIC or AVIF picture;"),
     "one pixel": (
