@@ -101,7 +101,7 @@ def read_claim(data: bytes) -> Claim:
 
 
 def _beginning(data: bytes) -> str:
-    """What a file that is no picture begins with, as a person would recognise it."""
+    """Say what a file that is no picture begins with, as a person would recognise it."""
     text = data[:24].decode("latin-1").split("\n")[0].rstrip()
     if text and text.isascii() and text.isprintable():
         return f"it is text that begins {text!r}"
