@@ -19,6 +19,8 @@ _FUSING_BLURS, _FUSING_CUT = (0.35, 0.5), 1.5
 # Scales of the leaf directions, as shares of the smallest diameter.
 _EDGE_BLUR, _LEAF_BLUR = 0.06, 0.15
 _RAYS, _STEPS = 24, np.arange(0.2, 1.5, 0.1)
+# How far leaves radiate, and what that counts for: a compact plant as much as a usual rosette.
+_COMPACT = ([-0.6, -0.35, -0.2, 1.0], [0.15, -0.2, -0.2, 1.0])
 _ROUNDS, _PLANT_REACH = 2, 1.6
 
 
@@ -103,7 +105,9 @@ def rosette_features(candidates: Candidates, leaves: Leaves) -> NDArray[np.float
     -------
     ndarray of shape (n, 2)
         `star`: mean over the leaf within 1.4 radii of cos(2 x angle between the leaf's axis and the
-        ray from the centre), -1..1. `around`: share of the rays that meet leaf within a radius.
+        ray from the centre); where edges run round the centre, far below 0, the plant is compact
+        and counts like one whose leaves radiate. `around`: share of the rays that meet leaf within
+        a radius.
     """
     if len(candidates) == 0:
         return np.zeros((0, 2))
@@ -120,7 +124,7 @@ def rosette_features(candidates: Candidates, leaves: Leaves) -> NDArray[np.float
         for field in (leaves.leaf, leaves.cosine, leaves.sine)
     )
     aligned = cosine * np.cos(2 * turn)[:, None] + sine * np.sin(2 * turn)[:, None]
-    star = aligned.sum(axis=(1, 2)) / (leaf.sum(axis=(1, 2)) + 3.0)
+    star = np.interp(aligned.sum(axis=(1, 2)) / (leaf.sum(axis=(1, 2)) + 3.0), *_COMPACT)
     around = (leaf[:, :, 1:9].max(axis=2) > 0.5).mean(axis=1)
     return np.column_stack([star, around])
 

@@ -14,7 +14,7 @@ from detect.photograph import Photograph
 from detect.plants import fused, leaf_axes, rosette_features, settle_plants
 from detect.regions import Candidates
 from detect.wanted import DetectOptions
-from tests.scenes import cloud, developed, lay, rosette
+from tests.scenes import SpotScene, cloud, developed, lay, rosette, scattered
 
 ALONE = np.array(
     [[90.0 + 120 * i + 7 * j, 90.0 + 120 * j, 34.0] for i in range(3) for j in range(3)]
@@ -158,3 +158,19 @@ def test_a_plant_without_leaf_stays_where_it_was() -> None:
     centres, radius = settle_plants(circles((30, 40, 10)), np.zeros((80, 80), np.float32), 5.0)
     assert centres.tolist() == [[30.0, 40.0]]
     assert radius.tolist() == pytest.approx([10.0])
+
+
+@pytest.mark.parametrize("form", ["disc", "dome"])
+def test_compact_plants_without_leaves_to_tell_apart_are_found(form: str) -> None:
+    """Once nearly all of them were refused, because no leaf of theirs radiates from a centre."""
+    discs = scattered(30, radius=(9, 18), seed=2, size=(600, 500))
+    scene = SpotScene(
+        discs=discs, form=form, ground=(0.42, 0.33, 0.25), colour=(0.3, 0.5, 0.16),
+        texture=0.08, width=600, height=500,
+    )  # fmt: skip
+    photograph = scene.draw()
+    options = DetectOptions(kind="seedlings", diameter=(Length(16, "px"), Length(40, "px")))
+    found = find_spots(photograph, frame_area(600, 500), options).spots
+    match = match_spots(found.centres, discs[:, :2], discs[:, 2])
+    assert len(match) >= 29
+    assert len(found) <= 31
