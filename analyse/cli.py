@@ -235,6 +235,11 @@ def survey(
         "grid": grid,
         "rings": rings,
     }
+    if folder.is_file():
+        raise RequestWrong(
+            f"{folder} is a file, and a survey takes a folder of photographs;"
+            " give its folder, or use detect for one photograph."
+        )
     if not folder.is_dir():
         raise RequestWrong(f"There is no folder {folder}; check the path.")
     paths = gather_photographs([folder])

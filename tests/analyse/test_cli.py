@@ -390,6 +390,17 @@ def test_a_folder_is_surveyed_by_options(beds: Path, tmp_path: Path) -> None:
     assert len(rows) == 12
 
 
+def test_a_survey_of_one_file_is_told_to_be_for_folders(beds: Path, tmp_path: Path) -> None:
+    photograph = next(beds.glob("*.png"))
+    result = survey(photograph, "--out", tmp_path / "out")
+    assert refused(
+        result,
+        f"{photograph} is a file, and a survey takes a folder of photographs;"
+        " give its folder, or use detect for one photograph.",
+    )
+    assert not (tmp_path / "out").exists()
+
+
 def test_a_folder_is_surveyed_by_the_recipe_in_it(beds: Path, tmp_path: Path) -> None:
     recipe = f'[trial]\ntitle = "Beds"\nseed = 5\n[[set]]\nmatch = "*"\ndiameter = "{DIAMETER}"\n'
     (beds / "survey.toml").write_text(recipe + 'factors = { block = "north" }\n')
