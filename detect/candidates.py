@@ -36,7 +36,7 @@ def find_candidates(
     Returns
     -------
     Candidates
-        About ten overlapping regions for each object.
+        Ten to twenty overlapping regions for each object.
 
     References
     ----------
