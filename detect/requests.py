@@ -24,62 +24,11 @@ from detect.dish import Dish, find_dish
 from detect.errors import OptionWrong
 from detect.lengths import Length
 from detect.photograph import Photograph, read_photograph
-from detect.readers import READERS, AreaWord, Corners, Four
-from detect.scale import Scale, scale_from_corners, scale_from_dish, scale_from_line
+from detect.readers import READERS, AreaWord
+from detect.scale import Scale
+from detect.scale_request import ScaleRequest, check_one_scale
 from detect.sheet import SCHEMA, PhotographIdentity, Sheet
 from detect.wanted import DetectOptions
-
-_SOURCES = ("mm_per_pixel", "dish", "line", "corners")
-_TOGETHER = (("line", "line_length"), ("corners", "plot"))
-
-
-@dataclass(frozen=True, slots=True)
-class ScaleRequest:
-    """What is known about lengths; nothing means that everything stays in pixels.
-
-    Parameters
-    ----------
-    mm_per_pixel : float or None
-        Millimetres per pixel.
-    dish : Length or None
-        Inner diameter of the dish.
-    line, line_length : tuple of four floats, Length, or None
-        Both ends of a line (x1, y1, x2, y2 in pixels) and its true length.
-    corners, plot : tuple of four points, two Lengths, or None
-        The corners of a rectangle (top left, top right, bottom right, bottom left, in pixels)
-        and its width and height.
-
-    Raises
-    ------
-    OptionWrong
-        If two sources are given, or one half of a source without the other.
-    """
-
-    mm_per_pixel: float | None = None
-    dish: Length | None = None
-    line: Four | None = None
-    line_length: Length | None = None
-    corners: Corners | None = None
-    plot: tuple[Length, Length] | None = None
-
-    def __post_init__(self) -> None:
-        _one_scale({entry.name: getattr(self, entry.name) for entry in fields(self)}, str)
-        for length in (self.dish, self.line_length, *(self.plot or ())):
-            if length is not None:
-                length.to_mm()
-
-    def resolve(self, dish: Dish | None) -> Scale | None:
-        """Return the scale of a photograph in which `dish` was found if it was needed."""
-        if self.mm_per_pixel is not None:
-            return Scale.from_mm_per_pixel(self.mm_per_pixel)
-        if self.dish is not None and dish is not None:
-            return scale_from_dish(dish, self.dish.to_mm())
-        if self.line is not None and self.line_length is not None:
-            return scale_from_line(self.line[:2], self.line[2:], self.line_length.to_mm())
-        if self.corners is not None and self.plot is not None:
-            width, height = self.plot
-            return scale_from_corners(np.array(self.corners), width.to_mm(), height.to_mm())
-        return None
 
 
 @dataclass(frozen=True, slots=True)
@@ -178,7 +127,7 @@ def detect_photograph(path: Path, request: DetectRequest) -> tuple[Photograph, S
     from detect.find import find_spots  # loads scipy, which help can do without
 
     photograph = read_photograph(path)
-    _positions_within(photograph, request.scale)
+    request.scale.check_positions(photograph)
     dish_needed = request.where == "dish" or request.scale.dish is not None
     dish = find_dish(photograph) if dish_needed else None
     scale = request.scale.resolve(dish)
@@ -259,7 +208,7 @@ def parse_request(
         if key not in READERS:
             raise OptionWrong(f"{named(key)} is not known; use one of {', '.join(READERS)}.")
         read[key] = READERS[key](value, named(key))
-    _one_scale(read, named)
+    check_one_scale(read, named)
     if "area" in read:
         read["where"] = _existing(read.pop("area"), named("area"), folder)
     return DetectRequest(
@@ -293,28 +242,3 @@ def _plain(value: Any) -> Any:
     if isinstance(value, tuple):
         return [_plain(entry) for entry in value]
     return value
-
-
-def _one_scale(values: Mapping[str, object], named: Callable[[str], str]) -> None:
-    """Refuse two sources of the scale, and one half of a source without the other."""
-    sources = [key for key in _SOURCES if values.get(key) is not None]
-    if len(sources) > 1:
-        raise OptionWrong(
-            f"{named(sources[0])} and {named(sources[1])} both tell the scale; keep one of them."
-        )
-    for first, second in _TOGETHER:
-        lacking = [key for key in (first, second) if values.get(key) is None]
-        if len(lacking) == 1:
-            given = second if lacking == [first] else first
-            raise OptionWrong(f"{named(given)} needs {named(lacking[0])} beside it; give both.")
-
-
-def _positions_within(photograph: Photograph, scale: ScaleRequest) -> None:
-    """Refuse positions outside the picture, where nothing can have been seen."""
-    ends = () if scale.line is None else (scale.line[:2], scale.line[2:])
-    for x, y in (*ends, *(scale.corners or ())):
-        if not (-1 <= x <= photograph.width and -1 <= y <= photograph.height):
-            raise OptionWrong(
-                f"The position {x:g},{y:g} lies outside the picture of {photograph.width} x"
-                f" {photograph.height} pixels; give x and y as seen in the upright picture."
-            )
