@@ -32,10 +32,16 @@ from detect.errors import PhotographUnreadable
 
 PROFILE_NOTE = "colour profile not applied"
 ALPHA_NOTE = "transparency dropped"
-_AGAIN = "copy it again from the camera or card"
-_EXPORT = "export it as an 8- or 16-bit RGB JPEG, PNG or TIFF"
+AGAIN = "copy it again from the camera or card"
+EXPORT = "export it as an 8- or 16-bit RGB JPEG, PNG or TIFF"
 _AFTER_SCAN = re.compile(rb"\xff[^\x00\xd0-\xd7\xff]")
 _MOST_PAGES = 65536
+RAW_ADVICE = (
+    "{}, whose colours depend on how it is developed; develop it in the camera's own program, the"
+    " same way for all, and give the JPEG or 16-bit TIFF, or set the camera to keep JPEG as well"
+)
+# Tags of TIFF/EP (ISO 12234-2) and DNG: a file of them begins with a small copy, or holds the sensor.
+_RAW_TAG, _SENSOR_MODELS = 50706, (32803, 34892)
 
 
 @dataclass(frozen=True, slots=True)
@@ -58,6 +64,8 @@ class Claim:
         What to hand to the decoder.
     inverted : bool
         Whether the decoder leaves white as 0.
+    by_phone : bool
+        Whether `detect.phone` decodes it.
     """
 
     width: int
@@ -68,6 +76,7 @@ class Claim:
     taken: str | None = None
     notes: tuple[str, ...] = ()
     inverted: bool = False
+    by_phone: bool = False
 
 
 def read_claim(data: bytes) -> Claim:
@@ -92,11 +101,11 @@ def read_claim(data: bytes) -> Claim:
         if data.startswith(magic):
             return reader(data)
     if not data:
-        raise PhotographUnreadable(f"the file is empty (0 bytes); {_AGAIN}")
+        raise PhotographUnreadable(f"the file is empty (0 bytes); {AGAIN}")
     if data[4:8] == b"ftyp":
-        raise PhotographUnreadable(f"the file is a phone's HEIC or AVIF picture; {_EXPORT}")
+        raise PhotographUnreadable(f"the file is an AVIF picture, a film or a raw file; {EXPORT}")
     raise PhotographUnreadable(
-        f"the file is no JPEG, PNG, TIFF or BMP picture ({_beginning(data)}); {_EXPORT}"
+        f"the file is no JPEG, PNG, TIFF or BMP picture ({_beginning(data)}); {EXPORT}"
     )
 
 
@@ -109,11 +118,11 @@ def _beginning(data: bytes) -> str:
 
 
 def _cut_short(what: str) -> PhotographUnreadable:
-    return PhotographUnreadable(f"the file is cut short ({what}); {_AGAIN}")
+    return PhotographUnreadable(f"the file is cut short ({what}); {AGAIN}")
 
 
-def _with_camera_notes(claim: Claim, block: bytes | None) -> Claim:
-    """Add turn and time from an Exif block; a damaged one is noted, not fatal."""
+def with_camera_notes(claim: Claim, block: bytes | None) -> Claim:
+    """Add turn and time from an Exif block, if there is one; a damaged one is noted, not fatal."""
     if block is None:
         return claim
     try:
@@ -139,7 +148,7 @@ def _read_jpeg(data: bytes) -> Claim:
         raise _cut_short("no picture before its end")
     if has_profile:
         claim = replace(claim, notes=(*claim.notes, PROFILE_NOTE))
-    return _with_camera_notes(claim, exif)
+    return with_camera_notes(claim, exif)
 
 
 def _jpeg_segments(data: bytes) -> Iterator[tuple[int, bytes]]:
@@ -151,7 +160,7 @@ def _jpeg_segments(data: bytes) -> Iterator[tuple[int, bytes]]:
         if at + 2 > len(data):
             raise _cut_short("no end-of-image mark")
         if data[at] != 0xFF:
-            raise PhotographUnreadable(f"the JPEG is damaged at byte {at}; {_AGAIN}")
+            raise PhotographUnreadable(f"the JPEG is damaged at byte {at}; {AGAIN}")
         marker = data[at + 1]
         if marker == 0xD9:
             if not scans:
@@ -177,10 +186,10 @@ def _jpeg_frame(data: bytes, marker: int, body: bytes) -> Claim:
     depth, height, width, channels = struct.unpack_from(">BHHB", body)
     if marker not in (0xC0, 0xC1, 0xC2) or depth != 8:
         raise PhotographUnreadable(
-            f"the JPEG is of a rare kind (frame type {marker - 0xC0}, {depth} bits); {_EXPORT}"
+            f"the JPEG is of a rare kind (frame type {marker - 0xC0}, {depth} bits); {EXPORT}"
         )
     if channels not in (1, 3, 4):
-        raise PhotographUnreadable(f"the JPEG has {channels} colour channels; {_EXPORT}")
+        raise PhotographUnreadable(f"the JPEG has {channels} colour channels; {EXPORT}")
     notes = ("printing colours (CMYK) turned into RGB without a profile",) if channels == 4 else ()
     return Claim(width, height, width * height * channels, data, notes=notes)
 
@@ -193,7 +202,7 @@ def _read_png(data: bytes) -> Claim:
     for kind, body in _png_chunks(data):
         if claim is None:
             if kind != b"IHDR" or len(body) != 13:
-                raise PhotographUnreadable(f"the PNG does not begin with its header; {_AGAIN}")
+                raise PhotographUnreadable(f"the PNG does not begin with its header; {AGAIN}")
             width, height, depth, colour = struct.unpack_from(">IIBB", body)
             channels = {0: 1, 2: 3, 3: 1, 4: 2, 6: 4}.get(colour, 4)
             claim = Claim(width, height, -(-width * channels * depth // 8) * height, data)
@@ -206,7 +215,7 @@ def _read_png(data: bytes) -> Claim:
             exif = body
     if claim is None:  # pragma: no cover - the walk raises before it yields nothing
         raise _cut_short("no header")
-    return _with_camera_notes(replace(claim, notes=tuple(dict.fromkeys(notes))), exif)
+    return with_camera_notes(replace(claim, notes=tuple(dict.fromkeys(notes))), exif)
 
 
 def _png_chunks(data: bytes) -> Iterator[tuple[bytes, bytes]]:
@@ -222,7 +231,7 @@ def _png_chunks(data: bytes) -> Iterator[tuple[bytes, bytes]]:
             raise _cut_short(f"chunk {kind.decode('latin-1')!r} runs past the end")
         if zlib.crc32(memoryview(data)[at + 4 : end]) != int.from_bytes(data[end : end + 4], "big"):
             raise PhotographUnreadable(
-                f"the PNG is damaged (chunk {kind.decode('latin-1')!r} fails its check); {_AGAIN}"
+                f"the PNG is damaged (chunk {kind.decode('latin-1')!r} fails its check); {AGAIN}"
             )
         yield kind, data[at + 8 : end]
         if kind == b"IEND":
@@ -261,7 +270,7 @@ def _read_tiff(data: bytes) -> Claim:
     _check_tiff_kind(page, samples, bits)
     starts, sizes = page.numbers(324) or page.numbers(273), page.numbers(325) or page.numbers(279)
     if not starts or len(starts) != len(sizes):
-        raise PhotographUnreadable(f"the TIFF does not say where its pixels are; {_AGAIN}")
+        raise PhotographUnreadable(f"the TIFF does not say where its pixels are; {AGAIN}")
     end = max(start + size for start, size in zip(starts, sizes, strict=True))
     if end > len(data):
         raise _cut_short(f"pixels up to byte {end} announced, {len(data)} there")
@@ -298,18 +307,20 @@ def _check_tiff_kind(page: Directory, samples: int, bits: tuple[int, ...]) -> No
     """Refuse number formats, colour models and layouts that would not be decoded faithfully."""
     if set(page.numbers(339, (1,))) != {1}:
         raise PhotographUnreadable(
-            f"the TIFF holds floating-point or signed numbers, not 8 or 16 bits; {_EXPORT}"
+            f"the TIFF holds floating-point or signed numbers, not 8 or 16 bits; {EXPORT}"
         )
     model = page.number(262, 1)
+    if _RAW_TAG in page.fields or model in _SENSOR_MODELS or page.number(254, 0) & 1:
+        raise PhotographUnreadable(RAW_ADVICE.format("the file is a camera's raw file"))
     if len(set(bits)) != 1 or bits[0] not in (1, 8, 16) or (bits[0] == 16 and model == 3):
-        raise PhotographUnreadable(f"the TIFF has {bits[0]} bits per channel; {_EXPORT}")
+        raise PhotographUnreadable(f"the TIFF has {bits[0]} bits per channel; {EXPORT}")
     if model not in (0, 1, 2, 3, 6):
         raise PhotographUnreadable(
-            f"the TIFF's colour model (number {model}) is not grey, RGB or palette; {_EXPORT}"
+            f"the TIFF's colour model (number {model}) is not grey, RGB or palette; {EXPORT}"
         )
     if samples > 4 or (samples > 1 and bits[0] == 16 and page.number(284, 1) == 2):
         raise PhotographUnreadable(
-            f"the TIFF keeps its {samples} channels in a layout that is not read; {_EXPORT}"
+            f"the TIFF keeps its {samples} channels in a layout that is not read; {EXPORT}"
         )
 
 

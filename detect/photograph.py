@@ -13,20 +13,23 @@ import cv2
 import numpy as np
 from numpy.typing import NDArray
 
-from detect.containers import Claim, read_claim
+from detect.containers import EXPORT, RAW_ADVICE, Claim, read_claim
 from detect.errors import PhotographUnreadable, RequestWrong
+from detect.phone import decode_phone_picture, is_phone_picture, read_phone_picture
 
 PixelsFloat = NDArray[np.float32]
 StoredPixels = NDArray[np.uint8] | NDArray[np.uint16]
 
 IMAGE_SUFFIXES = (".jpg", ".jpeg", ".png", ".tif", ".tiff", ".bmp")
-SUFFIXES_TO_EXPORT = (
-    *(".heic", ".heif", ".avif", ".webp"),
+PHONE_SUFFIXES = (".heic", ".heif")
+RAW_SUFFIXES = (
     *(".dng", ".cr2", ".cr3", ".nef", ".arw", ".orf", ".rw2", ".raf", ".pef", ".srw", ".raw"),
 )
+SUFFIXES_TO_EXPORT = (".avif", ".webp", *RAW_SUFFIXES)
 MOST_PIXELS = 500_000_000
 SMALLEST_SIDE = 16
-# Unpacking has limits: deflate gives at most 1,032 bytes for one (RFC 1951), a blank JPEG less.
+# Unpacking has limits: deflate gives at most 1,032 bytes for one (RFC 1951), a blank JPEG less. A
+# phone's blank picture has no such limit; its decoder has limits of its own.
 MOST_DECODED_PER_BYTE = 1200
 _FLAGS = cv2.IMREAD_ANYCOLOR | cv2.IMREAD_ANYDEPTH | cv2.IMREAD_IGNORE_ORIENTATION
 
@@ -127,7 +130,8 @@ def read_photograph(path: Path) -> Photograph:
     Parameters
     ----------
     path : Path
-        A JPEG, PNG, TIFF or BMP file, told by what it holds rather than by its name.
+        A JPEG, PNG, TIFF or BMP file, or with the extra `heif` a phone's HEIC file, told by what it
+        holds rather than by its name.
 
     Returns
     -------
@@ -143,7 +147,7 @@ def read_photograph(path: Path) -> Photograph:
     """
     try:
         data = _bytes_of(path)
-        claim = read_claim(data)
+        claim = read_phone_picture(data) if is_phone_picture(data) else read_claim(data)
         _check_size(claim, len(data))
         stored = _decode(claim)
     except PhotographUnreadable as trouble:
@@ -176,7 +180,8 @@ def find_photographs(folder: Path) -> list[Path]:
     files = [f for f in files if not f.name.lower().endswith(".overlay.jpg")]
     found = [f for f in files if f.suffix.lower() in IMAGE_SUFFIXES]
     stems = {f.stem for f in found}
-    found += [f for f in files if f.suffix.lower() in SUFFIXES_TO_EXPORT and f.stem not in stems]
+    others = (*PHONE_SUFFIXES, *SUFFIXES_TO_EXPORT)
+    found += [f for f in files if f.suffix.lower() in others and f.stem not in stems]
     if not found:
         known = ", ".join(IMAGE_SUFFIXES)
         raise RequestWrong(
@@ -199,10 +204,10 @@ def natural_order(name: str) -> list[tuple[int, int, str]]:
 
 def _bytes_of(path: Path) -> bytes:
     """Read a file's bytes; every way this can fail becomes one sentence."""
+    if path.suffix.lower() in RAW_SUFFIXES:
+        raise PhotographUnreadable(RAW_ADVICE.format(f"{path.suffix} files are raw files"))
     if path.suffix.lower() in SUFFIXES_TO_EXPORT:
-        raise PhotographUnreadable(
-            f"{path.suffix} files are not read; export the picture as JPEG or TIFF"
-        )
+        raise PhotographUnreadable(f"{path.suffix} files are not read; {EXPORT}")
     try:
         return path.read_bytes()
     except FileNotFoundError as error:
@@ -227,7 +232,7 @@ def _check_size(claim: Claim, file_size: int) -> None:
         raise PhotographUnreadable(
             f"the picture has {size}, more than {MOST_PIXELS // 10**6} million; cut it into parts"
         )
-    if claim.decoded_bytes > MOST_DECODED_PER_BYTE * file_size:
+    if claim.decoded_bytes > MOST_DECODED_PER_BYTE * file_size and not claim.by_phone:
         raise PhotographUnreadable(
             f"the header claims {size}, which {file_size} bytes cannot hold; the file is damaged"
         )
@@ -235,8 +240,12 @@ def _check_size(claim: Claim, file_size: int) -> None:
 
 def _decode(claim: Claim) -> StoredPixels:
     """Decode, make three channels, and stand the picture upright."""
+    array: Any
     try:
-        array: Any = cv2.imdecode(np.frombuffer(claim.data, dtype=np.uint8), _FLAGS)
+        if claim.by_phone:
+            array = decode_phone_picture(claim.data)
+        else:
+            array = cv2.imdecode(np.frombuffer(claim.data, dtype=np.uint8), _FLAGS)
     except cv2.error:
         array = None
     if array is None or array.shape[:2] != (claim.height, claim.width):

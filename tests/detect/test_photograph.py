@@ -360,7 +360,10 @@ WRONG_BYTES = {
         "the file is no JPEG, PNG, TIFF or BMP picture (it begins with the bytes "
         "00 01 02 ff 00 01 02 ff); export it as",
     ),
-    "phone": (b"\0\0\0\x18ftypheic" + bytes(99), "the file is a phone's HEIC or AVIF picture;"),
+    "avif": (
+        b"\0\0\0\x18ftypavif" + bytes(99),
+        "the file is an AVIF picture, a film or a raw file; export it as an 8- or 16-bit",
+    ),
     "one pixel": (
         saved(COLOUR[:1, :1], "PNG"),
         "the picture has 1 x 1 pixels, too small to count in; at least 16 each way are needed.",
@@ -509,12 +512,37 @@ def test_a_device_that_fails_is_told(tmp_path: Path, monkeypatch: pytest.MonkeyP
         read_photograph(tmp_path / "a.png")
 
 
-@pytest.mark.parametrize("suffix", [".heic", ".NEF", ".dng", ".webp"])
-def test_raw_and_phone_files_are_refused_with_advice(suffix: str, tmp_path: Path) -> None:
-    message = trouble(tmp_path, b"II\x2a\0", f"a{suffix}")
-    assert message == (
-        f"a{suffix}: {suffix} files are not read; export the picture as JPEG or TIFF."
+@pytest.mark.parametrize("suffix", [".NEF", ".dng", ".cr3"])
+def test_raw_files_are_refused_with_advice(suffix: str, tmp_path: Path) -> None:
+    assert trouble(tmp_path, b"II\x2a\0", f"a{suffix}") == (
+        f"a{suffix}: {suffix} files are raw files, whose colours depend on how it is developed;"
+        " develop it in the camera's own program, the same way for all, and give the JPEG or 16-bit"
+        " TIFF, or set the camera to keep JPEG as well."
     )
+
+
+def test_files_of_the_web_are_refused_with_advice(tmp_path: Path) -> None:
+    assert trouble(tmp_path, b"RIFF", "a.webp") == (
+        "a.webp: .webp files are not read; export it as an 8- or 16-bit RGB JPEG, PNG or TIFF."
+    )
+
+
+@pytest.mark.parametrize(
+    "tags",
+    [
+        [(50706, "B", 4, (1, 4, 0, 0), True)],  # DNGVersion
+        [(254, "I", 1, 1, True)],  # the first page is a reduced copy
+    ],
+)
+def test_a_raw_file_that_is_called_tif_is_not_taken_for_its_small_copy(
+    tags: list[tuple[object, ...]], tmp_path: Path
+) -> None:
+    path = tmp_path / "a.tif"
+    tifffile.imwrite(path, COLOUR, extratags=tags, photometric="rgb", metadata=None)
+    with pytest.raises(
+        PhotographUnreadable, match=r"a\.tif: the file is a camera's raw file, whose"
+    ):
+        read_photograph(path)
 
 
 def test_a_photograph_checks_itself() -> None:
