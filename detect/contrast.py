@@ -94,6 +94,7 @@ def contrast_map(
     flipped: bool = False,
     calming: float = 0.5,
     many_colours: bool = False,
+    direction: NDArray[np.float64] | None = None,
 ) -> Contrast:
     """Measure how far each pixel stands out from the local background.
 
@@ -117,6 +118,9 @@ def contrast_map(
         learned: 0 gives plain principal axes, 1 has no say for channels in which the ground varies.
     many_colours : bool
         Objects of several colours are looked for: departures across the direction count as well.
+    direction : ndarray of shape (3,) or None
+        Direction in L*, a*, b* from ground to object, where it is known; nothing is learned from
+        the picture then, and objects are of one colour.
 
     Returns
     -------
@@ -143,9 +147,14 @@ def contrast_map(
        Understanding 64, 300-302.
     """
     background = _background(lab, inside, smallest_px, largest_px)
-    signed, direction, sureness = _project(
-        lab - background, inside, colour, polarity, largest_px, flipped, calming
-    )
+    known = direction is not None
+    if direction is None:
+        signed, direction, sureness = _project(
+            lab - background, inside, colour, polarity, largest_px, flipped, calming
+        )
+    else:
+        direction = direction / np.linalg.norm(direction)
+        signed, sureness = (lab - background) @ direction.astype(np.float32), np.inf
     noise, threshold = _noise_and_threshold(signed[inside])
     ground = inside & (signed < 0.5 * threshold)
     if ground.sum() > 0.05 * inside.sum():
@@ -153,10 +162,10 @@ def contrast_map(
             lab, ground.astype(np.float32), smallest_px, largest_px, background
         )
         signed = np.asarray((lab - background) @ direction.astype(np.float32))
-        if colour == "green":
+        if colour == "green" and not known:
             signed = _only_hued(signed, lab - background, direction)
         noise, threshold = _noise_and_threshold(signed[inside])
-    if many_colours and colour == "auto":
+    if many_colours and colour == "auto" and not known:
         signed = _with_other_colours(signed, lab - background, direction, inside)
         noise, threshold = _noise_and_threshold(signed[inside])
     signed[~inside] = 0.0

@@ -48,7 +48,13 @@ class Judgement:
 
 
 def judged(
-    view: View, smallest_px: float, largest_px: float, options: DetectOptions, model: DoubtModel
+    view: View,
+    smallest_px: float,
+    largest_px: float,
+    options: DetectOptions,
+    model: DoubtModel,
+    *,
+    direction: NDArray[np.float64] | None = None,
 ) -> Judgement:
     """Contrast, candidates and their doubt; both sides are tried when the picture is unclear.
 
@@ -60,12 +66,16 @@ def judged(
         are looked at.
     options : DetectOptions
     model : DoubtModel
+    direction : ndarray of shape (3,) or None
+        Direction in L*, a*, b* from ground to object, where it is known.
 
     Returns
     -------
     Judgement
     """
-    first = judge_side(view, smallest_px, largest_px, options, model, flipped=False)
+    first = judge_side(
+        view, smallest_px, largest_px, options, model, flipped=False, direction=direction
+    )
     if first.contrast.sureness > _SURE:
         return first
     other = judge_side(view, smallest_px, largest_px, options, model, flipped=True)
@@ -80,6 +90,7 @@ def judge_side(
     model: DoubtModel,
     *,
     flipped: bool,
+    direction: NDArray[np.float64] | None = None,
 ) -> Judgement:
     """Contrast, candidates and their doubt for one side.
 
@@ -92,6 +103,8 @@ def judge_side(
     model : DoubtModel
     flipped : bool
         Look at the side that the picture speaks against.
+    direction : ndarray of shape (3,) or None
+        Direction in L*, a*, b* from ground to object, where it is known: it has but one side.
 
     Returns
     -------
@@ -111,6 +124,7 @@ def judge_side(
         flipped=flipped,
         calming=_CALMING.get(options.kind, 0.5),
         many_colours=options.kind == "colonies",
+        direction=direction,
     )
     plants = options.kind == "seedlings"
     maps = fused(contrast, smallest_px) if plants else (contrast,)

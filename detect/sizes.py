@@ -10,6 +10,7 @@ from detect.choice import choose
 from detect.doubt import DoubtModel
 from detect.judge import judged
 from detect.photograph import Photograph
+from detect.regions import Column
 from detect.view import view_of
 from detect.wanted import DetectOptions
 
@@ -20,7 +21,12 @@ _WORKING_PX = 8.0
 
 
 def learn_diameters(
-    photograph: Photograph, area: StudyArea, options: DetectOptions, model: DoubtModel
+    photograph: Photograph,
+    area: StudyArea,
+    options: DetectOptions,
+    model: DoubtModel,
+    *,
+    direction: Column | None = None,
 ) -> tuple[float, float]:
     """Learn the range of diameters in which the picture holds the most plausible objects.
 
@@ -31,6 +37,8 @@ def learn_diameters(
     options : DetectOptions
         Its `diameter` is not looked at.
     model : DoubtModel
+    direction : ndarray of shape (3,) or None
+        Direction in L*, a*, b* from ground to object, where it is known.
 
     Returns
     -------
@@ -49,8 +57,7 @@ def learn_diameters(
     lowest = max(_SMALLEST_PX, _SMALLEST_SHARE * short)
     count = max(1, int(np.floor(np.log2(_LARGEST_SHARE * short / lowest))))
     found = [
-        _octave(photograph, area, options, model, lowest * 2.0**k, lowest * 2.0 ** (k + 1))
-        for k in range(count)
+        _octave(photograph, area, options, model, direction, lowest * 2.0**k) for k in range(count)
     ]
     worth = np.array([weight.sum() for _, weight in found])
     best = int(np.argmax(worth))
@@ -70,12 +77,13 @@ def _octave(
     area: StudyArea,
     options: DetectOptions,
     model: DoubtModel,
+    direction: Column | None,
     smallest: float,
-    largest: float,
 ) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
     """Diameters (photograph pixels) found in one octave, and what each is worth."""
     view = view_of(photograph, area, shrink=min(1.0, _WORKING_PX / smallest))
-    judgement = judged(view, smallest * view.shrink, largest * view.shrink, options, model)
+    low = smallest * view.shrink
+    judgement = judged(view, low, 2.0 * low, options, model, direction=direction)
     rows = choose(judgement.candidates, judgement.doubt, highest_doubt=0.6)
     diameter = judgement.candidates.diameter[rows] / view.shrink
     return diameter, (0.6 - judgement.doubt[rows]) * diameter**1.5

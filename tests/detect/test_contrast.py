@@ -122,6 +122,31 @@ def test_colonies_of_another_colour_are_raised() -> None:
     assert raised.map[140, 150] > 0.8 * raised.map[60, 30]
 
 
+def two_colours() -> tuple[np.ndarray, np.ndarray]:
+    """A grey ground with six red and six blue patches of its own lightness."""
+    lab = np.zeros((200, 300, 3), np.float32)
+    lab[:] = (55.0, 0.0, 0.0)
+    for k in range(6):
+        cv2.circle(lab, (30 + 45 * k, 60), 9, (55.0, 30.0, 15.0), -1)
+        cv2.circle(lab, (30 + 45 * k, 140), 9, (55.0, 5.0, -30.0), -1)
+    lab += np.random.default_rng(1).normal(0, 0.5, lab.shape).astype(np.float32)
+    return lab, np.ones(lab.shape[:2], dtype=bool)
+
+
+@pytest.mark.parametrize("many_colours", [False, True])
+def test_a_known_direction_is_followed_to_its_own_side(many_colours: bool) -> None:
+    lab, inside = two_colours()
+    known = np.array([0.0, 2.0, 1.0])
+    contrast = contrast_map(
+        lab, inside, smallest_px=12, largest_px=24, direction=known, many_colours=many_colours
+    )
+    assert contrast.direction == pytest.approx(known / np.sqrt(5))
+    assert contrast.map[60, 30] == pytest.approx((2 * 30 + 15) / np.sqrt(5), abs=2.0)
+    assert contrast.map[140, 30] == pytest.approx((2 * 5 - 30) / np.sqrt(5), abs=2.0)
+    assert np.isinf(contrast.sureness)
+    assert known.tolist() == [0.0, 2.0, 1.0]
+
+
 def test_the_local_mean_of_a_constant_is_that_constant() -> None:
     rng = np.random.default_rng(1)
     lab = np.broadcast_to(np.array([40.0, -3.0, 12.0], np.float32), (90, 130, 3)).copy()

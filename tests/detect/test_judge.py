@@ -69,3 +69,15 @@ def test_the_model_given_is_the_model_used() -> None:
     general = judged(view, 10, 24, DetectOptions(), GENERAL)
     colonies = judged(view, 10, 24, DetectOptions(), COLONIES)
     assert np.abs(general.doubt - colonies.doubt).max() > 0.05
+
+
+def test_a_known_direction_has_but_one_side() -> None:
+    discs = scattered(20, radius=(6, 10))
+    view = seen(SpotScene(discs=discs))
+    rows, columns = np.rint(discs[:, [1, 0]]).astype(int).T
+    for side_of_lightness in (-1.0, 1.0):
+        known = np.array([side_of_lightness, 0.0, 0.0])
+        judgement = judged(view, 10, 24, DetectOptions(), GENERAL, direction=known)
+        assert judgement.contrast.direction.tolist() == known.tolist()
+        assert (np.sign(judgement.contrast.map[rows, columns]) == -side_of_lightness).all()
+        assert ((judgement.doubt < 0.3).sum() >= 20) == (side_of_lightness < 0)
