@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Sequence
 
 import cv2
@@ -50,14 +51,15 @@ def draw_overlay(
         with a small square beside them; struck ones as grey crosses; placed ones as violet
         diamonds.
     longest_side : int
-        The picture is made smaller so that no side is longer, in pixels.
+        The picture is made a whole number of times smaller so that no side is longer, in pixels.
 
     Returns
     -------
     ndarray of shape (height, width, 3), uint8
         Red, green and blue.
     """
-    shrink = min(1.0, longest_side / max(photograph.width, photograph.height))
+    # By a whole number, which is several times as fast.
+    shrink = 1.0 / math.ceil(max(photograph.width, photograph.height) / longest_side)
     picture = _in_8_bits(photograph.reduced(shrink=shrink))
     stroke = max(1, round(max(picture.shape[:2]) / 1000))
     _draw(picture, _dashes(area, shrink, 9.0 * stroke), _OUTLINE, stroke, closed=False)

@@ -25,7 +25,7 @@ from pathlib import Path
 ROOT = Path(__file__).resolve().parents[2]
 sys.path.insert(0, str(ROOT))
 MEGAPIXELS = 12.0
-MOST_TIMES_DECODING, MOST_TIMES_PIXELS = 25.0, 12.0
+MOST_TIMES_DECODING, MOST_TIMES_PIXELS = 12.0, 8.0
 DISH = {"kind": "colonies", "dish": "86mm", "inset": "1mm", "diameter": "1.2-6mm"}
 
 

@@ -288,6 +288,22 @@ def test_shrunk_pixels_are_averages(tmp_path: Path) -> None:
     np.testing.assert_allclose(photograph.pixels(shrink=0.5), means, atol=0.51 / 255)
 
 
+@pytest.mark.parametrize("sides", [(96, 64), (48, 32), (36, 24), (30, 20)])
+@pytest.mark.parametrize("depth", [np.uint8, np.uint16])
+def test_averages_by_halves_are_averages(
+    depth: type, sides: tuple[int, int], tmp_path: Path
+) -> None:
+    """A ramp, of which the average of an area is the value at its middle."""
+    x, y = np.meshgrid(np.arange(192), np.arange(128))
+    ramp = np.repeat((40 + x // 2 + y // 2)[..., None], 3, axis=2).astype(depth)
+    photograph = Photograph(tmp_path / "a.png", "0" * 64, ramp)
+    reduced = photograph.reduced(shrink=sides[0] / 192)
+    assert reduced.shape == (sides[1], sides[0], 3)
+    column, row = (np.arange(n) + 0.5 for n in sides)
+    expected = 40 + (column * 192 / sides[0] - 1 + (row[:, None] * 128 / sides[1] - 1)) / 2
+    np.testing.assert_allclose(reduced[..., 1], expected, atol=1.01)
+
+
 @pytest.mark.parametrize("depth", [np.uint8, np.uint16])
 def test_reduced_pixels_are_the_same_in_the_depth_of_the_file(depth: type, tmp_path: Path) -> None:
     most = np.iinfo(depth).max
