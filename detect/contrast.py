@@ -1,33 +1,61 @@
-"""Photograph -> one signed contrast map: how far each pixel stands out from its own background.
+"""Photograph -> one signed contrast map: how far each pixel stands out from its own ground.
 
-The background's colour is learned from the picture and followed across it, so gradients of light
+The ground's colour is learned from the picture and followed across it, so gradients of light
 drop out; the colour direction in which things stand out is learned too, unless it is named.
 """
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass
-from typing import Literal
 
 import cv2
 import numpy as np
 from numpy.typing import NDArray
 
-Colour = Literal["auto", "grey", "green", "red", "blue", "yellow", "brown", "purple"]
-Polarity = Literal["auto", "dark", "bright"]
-Map = NDArray[np.float32]
-Mask = NDArray[np.bool_]
+from detect.constants import Constants, Settling, pooled
+from detect.constants import Mask as Mask
+from detect.direction import Colour as Colour
+from detect.direction import Polarity as Polarity
+from detect.direction import evidence, named_direction, principal_axis
+from detect.ground import Map as Map
+from detect.ground import followed_ground, local_mean
+from detect.threshold import grain_of, noise_and_threshold
 
-# Directions in L*, a*, b* along which a named colour stands out from a neutral ground.
-_DIRECTIONS: dict[str, tuple[float, float, float]] = {
-    "green": (-0.4, -1.0, 0.2),
-    "red": (0.0, 1.0, 0.4),
-    "blue": (0.0, 0.0, -1.0),
-    "yellow": (0.0, 0.0, 1.0),
-    "brown": (-0.8, 0.4, 0.4),
-    "purple": (-0.3, 0.8, -0.8),
-}
-_SAMPLE = 60_000
+
+@dataclass(frozen=True, slots=True)
+class Sought:
+    """What is to stand out.
+
+    Parameters
+    ----------
+    smallest_px, largest_px : float
+        Range of object diameters in pixels of the map.
+    colour : Colour
+        "auto" learns the direction from the picture; "grey" uses lightness alone.
+    polarity : Polarity
+        Whether objects are darker or lighter than the ground; "auto" decides by the picture. A
+        named colour has its own direction.
+    flipped : bool
+        Take the side that "auto" would not have taken.
+    calming : float
+        Power of a channel's spread on the ground by which it is divided before a direction is
+        learned: 0 gives plain principal axes, 1 has no say for channels in which the ground varies.
+    many_colours : bool
+        Objects of several colours are looked for: departures across the direction count as well.
+    direction : ndarray of shape (3,) or None
+        Direction in L*, a*, b* from ground to object, where it is known; with it neither colour nor
+        polarity is looked at, and objects are of one colour.
+    """
+
+    smallest_px: float
+    largest_px: float
+    colour: Colour = "auto"
+    polarity: Polarity = "auto"
+    flipped: bool = False
+    calming: float = 0.5
+    many_colours: bool = False
+    direction: NDArray[np.float64] | None = None
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -62,6 +90,13 @@ class Contrast:
         self.map.setflags(write=False)
         self.direction.setflags(write=False)
 
+    @classmethod
+    def of(cls, signed: Map, known: Constants) -> Contrast:
+        """Return a map with the constants it was measured with."""
+        return cls(
+            signed, known.noise, known.grain, known.threshold, known.direction, known.sureness
+        )
+
 
 def to_lab(pixels: Map) -> Map:
     """Turn red, green and blue into lightness and two axes of hue.
@@ -87,8 +122,8 @@ def contrast_map(
     lab: Map,
     inside: Mask,
     *,
-    largest_px: float,
     smallest_px: float,
+    largest_px: float,
     colour: Colour = "auto",
     polarity: Polarity = "auto",
     flipped: bool = False,
@@ -96,7 +131,7 @@ def contrast_map(
     many_colours: bool = False,
     direction: NDArray[np.float64] | None = None,
 ) -> Contrast:
-    """Measure how far each pixel stands out from the local background.
+    """Measure how far each pixel stands out from the local ground, on a picture in one piece.
 
     Parameters
     ----------
@@ -104,272 +139,170 @@ def contrast_map(
         The photograph in L*, a*, b*.
     inside : ndarray of bool, shape (height, width)
         The study area; pixels outside it have no say and get contrast 0.
-    largest_px, smallest_px : float
-        Range of object diameters in pixels of `lab`.
-    colour : Colour
-        "auto" learns the direction from the picture; "grey" uses lightness alone.
-    polarity : Polarity
-        Whether objects are darker or lighter than the ground; "auto" decides by the picture. A
-        named colour has its own direction.
-    flipped : bool
-        Take the side that "auto" would not have taken.
-    calming : float
-        Power of a channel's spread on the ground by which it is divided before a direction is
-        learned: 0 gives plain principal axes, 1 has no say for channels in which the ground varies.
-    many_colours : bool
-        Objects of several colours are looked for: departures across the direction count as well.
-    direction : ndarray of shape (3,) or None
-        Direction in L*, a*, b* from ground to object, where it is known; nothing is learned from
-        the picture then, and objects are of one colour.
+    smallest_px, largest_px, colour, polarity, flipped, calming, many_colours, \
+    direction
+        As in `Sought`.
 
     Returns
     -------
     Contrast
+    """
+    sought = Sought(
+        smallest_px, largest_px, colour, polarity, flipped, calming, many_colours, direction
+    )
+    return contrast_maps([lab], [inside], sought)[0][0]
+
+
+def contrast_maps(
+    labs: Sequence[Map],
+    insides: Sequence[Mask],
+    sought: Sought,
+    known: Constants | None = None,
+) -> tuple[list[Contrast], Constants]:
+    """Measure how far each pixel stands out from the local ground, on pieces of one picture.
+
+    Parameters
+    ----------
+    labs : sequence of ndarray of shape (height, width, 3), float32
+        Pieces of one photograph in L*, a*, b*: the whole, or windows spread over it.
+    insides : sequence of ndarray of bool, shape (height, width)
+        The study area on each; pixels outside it have no say and get contrast 0.
+    sought : Sought
+    known : Constants or None
+        What was learned of this picture before; None learns it from these pieces together.
+
+    Returns
+    -------
+    list of Contrast
+        One map for each piece, all with the same constants.
+    Constants
+        `known`, or what was learned.
 
     Notes
     -----
-    The background is a local mean in which pixels far from the picture's commonest colour have
-    next to no weight (redescending weights [1]_).
-    The direction is the first principal axis [2]_, about zero, of the deviations that stand clear
-    of the ground, each capped at their median length so that one rare strong colour cannot take it.
-    The base threshold is Otsu's [3]_, but no more than four times the noise or 0.4 of what is
-    usual above that. The grain comes from a mask that is blind to slopes and edges [4]_.
-
-    References
-    ----------
-    .. [1] Geman S, McClure DE (1987). Statistical methods for tomographic image reconstruction.
-       Bulletin of the International Statistical Institute 52(4), 5-21.
-    .. [2] Pearson K (1901). On lines and planes of closest fit to systems of points in space.
-       Philosophical Magazine 2, 559-572.
-    .. [3] Otsu N (1979). A threshold selection method from gray-level histograms. IEEE
-       Transactions on Systems, Man, and Cybernetics 9, 62-66.
-    .. [4] Immerkaer J (1996). Fast noise variance estimation. Computer Vision and Image
-       Understanding 64, 300-302.
+    The ground is a local mean in which pixels far from the picture's commonest colour have next to
+    no weight. The first threshold tells ground from objects well enough for a second, plain local
+    mean of the ground alone; noise, grain and threshold are those of the map that follows.
     """
-    background = _background(lab, inside, smallest_px, largest_px)
-    known = direction is not None
-    if direction is None:
-        signed, direction, sureness = _project(
-            lab - background, inside, colour, polarity, largest_px, flipped, calming
-        )
-    else:
-        direction = direction / np.linalg.norm(direction)
-        signed, sureness = (lab - background) @ direction.astype(np.float32), np.inf
-    noise, threshold = _noise_and_threshold(signed[inside])
-    ground = inside & (signed < 0.5 * threshold)
-    if ground.sum() > 0.05 * inside.sum():
-        background = _local_mean(
-            lab, ground.astype(np.float32), smallest_px, largest_px, background
-        )
-        signed = np.asarray((lab - background) @ direction.astype(np.float32))
-        if colour == "green" and not known:
-            signed = _only_hued(signed, lab - background, direction)
-        noise, threshold = _noise_and_threshold(signed[inside])
-    if many_colours and colour == "auto" and not known:
-        signed = _with_other_colours(signed, lab - background, direction, inside)
-        noise, threshold = _noise_and_threshold(signed[inside])
-    signed[~inside] = 0.0
-    grain = _grain(lab @ direction.astype(np.float32), inside)
-    return Contrast(np.ascontiguousarray(signed), noise, grain, threshold, direction, sureness)
-
-
-def _thin(values: NDArray[np.float32]) -> NDArray[np.float32]:
-    """Every so many rows, so that about `_SAMPLE` stay."""
-    return values[:: max(1, len(values) // _SAMPLE)]
-
-
-def _commonest(sample: Map) -> NDArray[np.float32]:
-    """Mode of (n, 3) colours: fullest cell of a smoothed coarse histogram, then mean shift."""
-    low, high = np.percentile(sample, [0.5, 99.5], axis=0)
-    cell = float(np.clip((high - low).max() / 40, 0.25, 6.0))
-    bins = np.maximum(1, np.ceil((high - low) / cell).astype(int) + 2)
-    index = np.clip(((sample - low) / cell).astype(int) + 1, 0, bins - 1)
-    counts = np.bincount(np.ravel_multi_index(tuple(index.T), tuple(bins)), minlength=bins.prod())
-    cube = counts.reshape(bins).astype(np.float64)
-    for axis in range(3):
-        padded = np.pad(cube, [(1, 1) if a == axis else (0, 0) for a in range(3)])
-        n = bins[axis]
-        parts = [np.take(padded, range(k, k + n), axis=axis) for k in range(3)]
-        cube = parts[0] + parts[1] + parts[2]
-    fullest = np.array(np.unravel_index(np.argmax(cube), tuple(bins)))
-    mode = (fullest - 0.5) * cell + low
-    for _ in range(5):
-        near = ((sample - mode) ** 2).sum(axis=1) < (2 * cell) ** 2
-        if not near.any():
-            break
-        mode = sample[near].mean(axis=0)
-    return np.asarray(mode, dtype=np.float32)
-
-
-def _background(lab: Map, inside: Mask, smallest_px: float, largest_px: float) -> Map:
-    """Background colour everywhere: the commonest colour, then followed by local robust means."""
-    shrink = min(1.0, 4.0 / smallest_px)
-    small = cv2.resize(lab, None, fx=shrink, fy=shrink, interpolation=cv2.INTER_AREA)
-    small_inside = cv2.resize(
-        inside.astype(np.float32), small.shape[1::-1], interpolation=cv2.INTER_AREA
+    settling = Settling(known)
+    grounds = followed_ground(
+        labs, insides, settling, smallest_px=sought.smallest_px, largest_px=sought.largest_px
     )
-    usable = small_inside > 0.5
-    if not usable.any():
-        usable = small_inside > 0
-    background: Map = np.broadcast_to(_commonest(_thin(small[usable])), small.shape)
-    for _ in range(3):
-        distance2 = ((small - background) ** 2).sum(axis=2)
-        reach = max(1.0, 2.0 * float(np.percentile(np.sqrt(_thin(distance2[usable])), 10)))
-        weight = (usable / (1.0 + distance2 / reach**2) ** 2).astype(np.float32)
-        background = _smooth_ratio(small, weight, 1.5 * largest_px * shrink, background)
-    return np.asarray(cv2.resize(background, lab.shape[1::-1], interpolation=cv2.INTER_LINEAR))
-
-
-def _local_mean(lab: Map, weight: Map, smallest_px: float, largest_px: float, fallback: Map) -> Map:
-    """Weighted local mean, computed on a small map and enlarged."""
-    shrink = min(1.0, 4.0 / smallest_px)
-    small = cv2.resize(
-        lab * weight[..., None], None, fx=shrink, fy=shrink, interpolation=cv2.INTER_AREA
+    deviations = [lab - ground for lab, ground in zip(labs, grounds, strict=True)]
+    maps = _settle_direction(deviations, insides, sought, settling)
+    first = settling.settle(
+        "first_threshold", lambda: noise_and_threshold(pooled(maps, insides))[1]
     )
-    small_weight = cv2.resize(weight, small.shape[1::-1], interpolation=cv2.INTER_AREA)
-    small /= np.maximum(small_weight, 1e-6)[..., None]
-    small_fallback = cv2.resize(fallback, small.shape[1::-1], interpolation=cv2.INTER_AREA)
-    mean = _smooth_ratio(small, small_weight, 1.5 * largest_px * shrink, small_fallback)
-    return np.asarray(cv2.resize(mean, lab.shape[1::-1], interpolation=cv2.INTER_LINEAR))
+    masks = [inside & (signed < 0.5 * first) for inside, signed in zip(insides, maps, strict=True)]
+    if settling.settle("second_look", lambda: _share(masks, insides) > 0.05):
+        maps = _second_look(labs, masks, grounds, deviations, sought, settling)
+    if sought.many_colours and sought.colour == "auto" and sought.direction is None:
+        maps = _with_other_colours(maps, deviations, insides, settling)
+    return _finished(labs, insides, maps, settling)
 
 
-def _smooth_ratio(values: Map, weight: Map, sigma: float, fallback: Map) -> Map:
-    """Gaussian mean of (h, w, 3) values under weights; `fallback` where no weight reaches."""
-    top = _blur(values * weight[..., None], sigma)
-    bottom = _blur(weight, sigma)[..., None]
-    tiny = 1e-4
-    return np.asarray((top + tiny * fallback) / (bottom + tiny), dtype=np.float32)
+def _settle_direction(
+    deviations: Sequence[Map], insides: Sequence[Mask], sought: Sought, settling: Settling
+) -> list[Map]:
+    """Settle the direction from ground to object, and measure along it."""
+    direction, _ = settling.settle_both(
+        "direction", "sureness", lambda: _learned_direction(deviations, insides, sought)
+    )
+    return [_along(deviation, direction, sought) for deviation in deviations]
 
 
-def _blur(values: Map, sigma: float) -> Map:
-    """Gaussian blur; wide ones on a reduced map, where they are exact enough and cheap."""
-    reduce = int(max(1, min(sigma // 4, min(values.shape[:2]) // 4)))
-    if reduce == 1:
-        return np.asarray(cv2.GaussianBlur(values, (0, 0), sigma, borderType=cv2.BORDER_REFLECT))
-    size = (max(1, values.shape[1] // reduce), max(1, values.shape[0] // reduce))
-    small = cv2.resize(values, size, interpolation=cv2.INTER_AREA)
-    small = cv2.GaussianBlur(small, (0, 0), sigma / reduce, borderType=cv2.BORDER_REFLECT)
-    return np.asarray(cv2.resize(small, values.shape[1::-1], interpolation=cv2.INTER_LINEAR))
-
-
-def _project(
-    deviation: Map,
-    inside: Mask,
-    colour: Colour,
-    polarity: Polarity,
-    largest_px: float,
-    flipped: bool,
-    calming: float,
-) -> tuple[Map, NDArray[np.float64], float]:
-    """Deviation along the wanted direction, the direction from ground to object, and sureness."""
-    if colour in _DIRECTIONS:
-        direction = np.array(_DIRECTIONS[colour])
-        direction /= np.linalg.norm(direction)
-        signed = deviation @ direction.astype(np.float32)
-        if colour == "green":
-            signed = _only_hued(signed, deviation, direction)
-        return signed, direction, np.inf
-    if colour == "grey":
-        direction = np.array([1.0, 0.0, 0.0])
+def _learned_direction(
+    deviations: Sequence[Map], insides: Sequence[Mask], sought: Sought
+) -> tuple[NDArray[np.float64], float]:
+    """Return the direction from ground to object, and how sure its side is."""
+    given = named_direction(sought.colour)
+    if sought.direction is not None:
+        given = sought.direction / np.linalg.norm(sought.direction)
+    if given is not None:
+        return given, np.inf
+    if sought.colour == "grey":
+        axis = np.array([1.0, 0.0, 0.0])
     else:
-        direction = _principal_axis(_thin(deviation[inside]), calming)
-    signed = deviation @ direction.astype(np.float32)
-    if polarity == "auto":
-        evidence = _evidence(signed, inside, largest_px) * (-1.0 if flipped else 1.0)
+        axis = principal_axis(pooled(deviations, insides), sought.calming)
+    if sought.polarity == "auto":
+        maps = [deviation @ axis.astype(np.float32) for deviation in deviations]
+        weight = evidence(maps, insides, sought.largest_px) * (-1.0 if sought.flipped else 1.0)
     else:
-        evidence = np.inf * (direction[0] or 1.0) * (1.0 if polarity == "bright" else -1.0)
-    side = 1.0 if evidence > 0 else -1.0
-    return signed * np.float32(side), direction * side, abs(float(evidence))
+        weight = np.inf * (axis[0] or 1.0) * (1.0 if sought.polarity == "bright" else -1.0)
+    return axis * (1.0 if weight > 0 else -1.0), abs(float(weight))
 
 
-def _with_other_colours(
-    signed: Map, deviation: Map, direction: NDArray[np.float64], inside: Mask
-) -> Map:
-    """Contrast raised where the colour departs across the direction, four times further than is usual.
-
-    An orange colony among cream ones hardly stands out along the axis of cream.
-    """
-    across2 = (deviation**2).sum(axis=2) - (deviation @ direction.astype(np.float32)) ** 2
-    across = np.sqrt(np.maximum(across2, 0.0))
-    extra = np.maximum(across - 4.0 * float(np.median(_thin(across[inside]))), 0.0)
-    # What lies on the other side in lightness (ink, shadow, where objects are light) stays out.
-    same_side = np.sign(direction[0]).astype(np.float32) * deviation[..., 0] > -0.5 * extra
-    raised = np.where(same_side, np.maximum(signed, 0.0) + extra, signed)
-    return np.asarray(np.where(extra > 0, raised, signed), dtype=np.float32)
-
-
-def _only_hued(signed: Map, deviation: Map, direction: NDArray[np.float64]) -> Map:
-    """Contrast of a named colour where the hue itself departs; elsewhere none above zero."""
+def _along(deviation: Map, direction: NDArray[np.float64], sought: Sought) -> Map:
+    """Deviation along the direction; of a named green, only where the hue itself departs."""
+    signed: Map = deviation @ direction.astype(np.float32)
+    if sought.colour != "green" or sought.direction is not None:
+        return signed
     hue = deviation[..., 1:] @ direction[1:].astype(np.float32)
     return np.where(hue > 2.0, signed, np.minimum(signed, 0.0)).astype(np.float32)
 
 
-def _principal_axis(sample: Map, calming: float) -> NDArray[np.float64]:
-    """First principal axis about zero of the clear deviations, lengths capped at their median.
+def _share(masks: Sequence[Mask], insides: Sequence[Mask]) -> float:
+    """Share of the study area that the masks cover."""
+    return sum(int(m.sum()) for m in masks) / max(1, sum(int(i.sum()) for i in insides))
 
-    Channels in which the ground itself varies much have less say.
+
+def _second_look(
+    labs: Sequence[Map],
+    masks: Sequence[Mask],
+    grounds: Sequence[Map],
+    deviations: list[Map],
+    sought: Sought,
+    settling: Settling,
+) -> list[Map]:
+    """Deviations anew, from the plain local mean of what is ground, and the maps along them."""
+    direction = settling.settled("direction")
+    for k, (lab, mask, ground) in enumerate(zip(labs, masks, grounds, strict=True)):
+        weight = mask.astype(np.float32)
+        deviations[k] = lab - local_mean(lab, weight, sought.smallest_px, sought.largest_px, ground)
+    return [_along(deviation, direction, sought) for deviation in deviations]
+
+
+def _with_other_colours(
+    maps: Sequence[Map], deviations: Sequence[Map], insides: Sequence[Mask], settling: Settling
+) -> list[Map]:
+    """Contrast raised where the colour departs across the direction, four times further than is usual.
+
+    An orange colony among cream ones hardly stands out along the axis of cream.
     """
-    spread = 1.4826 * np.median(np.abs(sample), axis=0) + 0.5
-    metric = (spread / spread.max()) ** -calming
-    sample = sample * metric
-    length = np.linalg.norm(sample, axis=1)
-    clear = sample[length > 3.0 * np.percentile(length, 30)]
-    if len(clear) < 20:
-        clear = sample[length >= np.percentile(length, 90)]
-    length = np.maximum(np.linalg.norm(clear, axis=1), 1e-6)
-    capped = (clear * np.minimum(1.0, np.median(length) / length)[:, None]).astype(np.float64)
-    _, vectors = np.linalg.eigh(capped.T @ capped)
-    axis = vectors[:, -1] * metric
-    return np.asarray(axis / np.linalg.norm(axis))
+    direction = settling.settled("direction")
+    across = [_across(deviation, direction) for deviation in deviations]
+    usual = settling.settle("across", lambda: float(np.median(pooled(across, insides))))
+    return [
+        _raised(signed, deviation[..., 0] * np.float32(np.sign(direction[0])), beyond - 4.0 * usual)
+        for signed, deviation, beyond in zip(maps, deviations, across, strict=True)
+    ]
 
 
-def _evidence(signed: Map, inside: Mask, largest_px: float) -> float:
-    """Evidence that objects are positive: skewness, and which side falls apart in pieces."""
-    values = _thin(signed[inside]).astype(np.float64)
-    spread = float(np.sqrt((values**2).mean())) or 1.0
-    third = float((np.clip(values / spread, -4, 4) ** 3).mean())
-    return float(_piecewise(signed, inside, largest_px) + 0.5 * np.tanh(third))
+def _across(deviation: Map, direction: NDArray[np.float64]) -> Map:
+    """Length of the deviation across the direction."""
+    along = deviation @ direction.astype(np.float32)
+    return np.asarray(np.sqrt(np.maximum((deviation**2).sum(axis=2) - along**2, 0.0)))
 
 
-def _piecewise(signed: Map, inside: Mask, largest_px: float) -> float:
-    """-1..1: positive when the upper side of Otsu's cut falls apart in pieces below largest_px."""
-    upper = (signed > _otsu(_thin(signed[inside]))) & inside
-    size = max(3, round(0.5 * largest_px) | 1)
-    element = cv2.getStructuringElement(cv2.MORPH_ELLIPSE, (size, size))
-    ground = cv2.morphologyEx((~upper & inside).astype(np.uint8), cv2.MORPH_OPEN, element).sum()
-    things = cv2.morphologyEx(upper.astype(np.uint8), cv2.MORPH_OPEN, element).sum()
-    return float((int(ground) - int(things)) / max(1, int(ground) + int(things)))
+def _raised(signed: Map, lightness: Map, beyond: Map) -> Map:
+    """Contrast with what lies beyond the usual added to it, above the ground in lightness only."""
+    extra = np.maximum(beyond, 0.0)
+    # What lies on the other side in lightness (ink, shadow, where objects are light) stays out.
+    raised = np.where(lightness > -0.5 * extra, np.maximum(signed, 0.0) + extra, signed)
+    return np.asarray(np.where(extra > 0, raised, signed), dtype=np.float32)
 
 
-def _otsu(values: NDArray[np.float32]) -> float:
-    """Otsu's threshold on 256 bins between the 0.1 and 99.9 percentiles (Otsu 1979)."""
-    low, high = np.percentile(values, [0.1, 99.9])
-    if not high > low:
-        return float(high)
-    counts, edges = np.histogram(np.clip(values, low, high), bins=256)
-    centres = 0.5 * (edges[:-1] + edges[1:])
-    weight = np.cumsum(counts)[:-1].astype(np.float64)
-    total = np.cumsum(counts * centres)
-    rest = counts.sum() - weight
-    mean_low = total[:-1] / np.maximum(weight, 1)
-    mean_high = (total[-1] - total[:-1]) / np.maximum(rest, 1)
-    between = weight * rest * (mean_low - mean_high) ** 2
-    return float(centres[:-1][np.argmax(between)])
-
-
-def _grain(values: Map, inside: Mask) -> float:
-    """Noise from pixel to pixel: median size of Immerkaer's (1996) mask, which sees no slope."""
-    mask = np.array([[1, -2, 1], [-2, 4, -2], [1, -2, 1]], dtype=np.float32) / 6.0
-    seen = cv2.filter2D(np.asarray(values), -1, mask, borderType=cv2.BORDER_REFLECT)
-    return 1.4826 * float(np.median(np.abs(_thin(seen[inside]))))
-
-
-def _noise_and_threshold(values: NDArray[np.float32]) -> tuple[float, float]:
-    """Robust noise from the side no object lies on, and the base threshold."""
-    values = _thin(values)
-    below = values[values < 0]
-    noise = 1.4826 * float(np.median(-below)) if below.size else 0.0
-    noise = max(noise, 1e-3)
-    clear = values[values > 4.0 * noise]
-    upper = max(4.0 * noise, 0.4 * float(np.median(clear))) if clear.size else 4.0 * noise
-    return noise, max(min(_otsu(values), upper), noise)
+def _finished(
+    labs: Sequence[Map], insides: Sequence[Mask], maps: list[Map], settling: Settling
+) -> tuple[list[Contrast], Constants]:
+    """Settle noise, grain and threshold of the finished maps, and close them."""
+    direction = settling.settled("direction")
+    settling.settle_both("noise", "threshold", lambda: noise_and_threshold(pooled(maps, insides)))
+    settling.settle(
+        "grain",
+        lambda: grain_of([lab @ direction.astype(np.float32) for lab in labs], insides),
+    )
+    constants = settling.constants()
+    for signed, inside in zip(maps, insides, strict=True):
+        signed[~inside] = 0.0
+    return [Contrast.of(np.ascontiguousarray(signed), constants) for signed in maps], constants

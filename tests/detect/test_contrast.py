@@ -2,24 +2,17 @@
 
 from __future__ import annotations
 
-from typing import get_args
+from typing import Any, get_args
 
 import cv2
 import numpy as np
 import pytest
 from skimage.filters import threshold_otsu
 
-from detect.contrast import (
-    Colour,
-    Contrast,
-    _grain,
-    _local_mean,
-    _noise_and_threshold,
-    _otsu,
-    contrast_map,
-    to_lab,
-)
+from detect.contrast import Colour, Contrast, Sought, contrast_map, contrast_maps, to_lab
+from detect.ground import local_mean
 from detect.judge import _least_contrast
+from detect.threshold import grain_of, noise_and_threshold, otsu
 from tests.scenes import SpotScene, scattered
 
 DISCS = scattered(30, radius=(6, 10))
@@ -151,7 +144,7 @@ def test_the_local_mean_of_a_constant_is_that_constant() -> None:
     rng = np.random.default_rng(1)
     lab = np.broadcast_to(np.array([40.0, -3.0, 12.0], np.float32), (90, 130, 3)).copy()
     weight = (rng.uniform(size=lab.shape[:2]) > 0.4).astype(np.float32)
-    mean = _local_mean(lab, weight, 8.0, 30.0, lab)
+    mean = local_mean(lab, weight, 8.0, 30.0, lab)
     assert np.abs(mean - lab).max() < 1e-3
 
 
@@ -162,34 +155,34 @@ def test_the_threshold_is_that_of_another_library(seed: int) -> None:
     values = np.r_[rng.normal(0, 1, 9000), rng.normal(rng.uniform(5, 12), 1.5, 2000)]
     low, high = np.percentile(values, [0.1, 99.9])
     theirs = threshold_otsu(np.clip(values, low, high), nbins=256)
-    assert _otsu(values.astype(np.float32)) == pytest.approx(theirs, abs=(high - low) / 128)
+    assert otsu(values.astype(np.float32)) == pytest.approx(theirs, abs=(high - low) / 128)
 
 
 def test_otsu_of_a_constant_is_that_constant() -> None:
-    assert _otsu(np.full(100, 7.0, np.float32)) == 7.0
+    assert otsu(np.full(100, 7.0, np.float32)) == 7.0
 
 
 def test_noise_comes_from_the_side_on_which_no_object_lies() -> None:
     rng = np.random.default_rng(1)
     values = np.r_[rng.normal(0, 2.0, 50_000), rng.normal(30, 4, 8_000)].astype(np.float32)
-    noise, threshold = _noise_and_threshold(values)
+    noise, threshold = noise_and_threshold(values)
     assert noise == pytest.approx(2.0, rel=0.03)
     assert 4 < threshold < 20
 
 
 def test_a_flat_map_has_next_to_no_noise() -> None:
-    assert _noise_and_threshold(np.zeros(50, np.float32)) == (1e-3, 1e-3)
+    assert noise_and_threshold(np.zeros(50, np.float32)) == (1e-3, 1e-3)
 
 
 def test_grain_is_the_noise_of_pixels_and_sees_no_slope() -> None:
     y, x = np.mgrid[:200, :300].astype(np.float32)
     white = np.random.default_rng(1).normal(0, 1.5, x.shape).astype(np.float32)
     inside = np.ones(x.shape, dtype=bool)
-    assert _grain(white, inside) == pytest.approx(1.5, rel=0.03)
-    assert _grain(white + 0.4 * x - 0.2 * y, inside) == pytest.approx(1.5, rel=0.03)
+    assert grain_of([white], [inside]) == pytest.approx(1.5, rel=0.03)
+    assert grain_of([white + 0.4 * x - 0.2 * y], [inside]) == pytest.approx(1.5, rel=0.03)
     smooth = cv2.GaussianBlur(white, (0, 0), 3)
-    assert _grain(smooth, inside) < 0.05 * smooth.std()
-    assert _grain(0.3 * x + y, inside) < 1e-4
+    assert grain_of([smooth], [inside]) < 0.05 * smooth.std()
+    assert grain_of([0.3 * x + y], [inside]) < 1e-4
 
 
 def test_noise_is_the_grounds_spread_unless_a_colour_is_named() -> None:
@@ -198,3 +191,44 @@ def test_noise_is_the_grounds_spread_unless_a_colour_is_named() -> None:
     for colour in ("auto", "grey"):
         assert _least_contrast(contrast, colour) == 3.5 * contrast.noise
     assert _least_contrast(contrast, "green") == 3.5 * contrast.grain
+
+
+@pytest.mark.parametrize("choices", [{}, {"many_colours": True}, {"colour": "green"}])
+def test_known_constants_give_the_same_map_again(choices: dict[str, Any]) -> None:
+    lab = to_lab(SpotScene(discs=DISCS, light=0.3).draw().pixels())
+    inside = np.ones(lab.shape[:2], dtype=bool)
+    sought = Sought(10, 22, **choices)
+    (first,), constants = contrast_maps([lab], [inside], sought)
+    (again,), same = contrast_maps([lab], [inside], sought, constants)
+    assert same is constants
+    assert np.array_equal(first.map, again.map)
+    assert (again.noise, again.threshold, again.grain) == (
+        first.noise,
+        first.threshold,
+        first.grain,
+    )
+
+
+def test_a_part_with_known_constants_has_the_contrast_it_has_in_the_whole() -> None:
+    lab = to_lab(SpotScene(discs=DISCS, light=0.3).draw().pixels())
+    inside = np.ones(lab.shape[:2], dtype=bool)
+    sought = Sought(8, 10)
+    (whole,), constants = contrast_maps([lab], [inside], sought)
+    part = (slice(40, 240), slice(64, 320))
+    (alone,), _ = contrast_maps([lab[part]], [inside[part]], sought, constants)
+    away = np.abs(alone.map - whole.map[part])[60:-60, 60:-60]
+    assert away.max() < 0.3 * whole.noise
+
+
+def test_windows_of_a_picture_teach_what_the_whole_does() -> None:
+    lab = to_lab(SpotScene(discs=DISCS).draw().pixels())
+    inside = np.ones(lab.shape[:2], dtype=bool)
+    sought = Sought(10, 22)
+    _, whole = contrast_maps([lab], [inside], sought)
+    windows = [(slice(y, y + 150), slice(x, x + 190)) for y in (5, 165) for x in (5, 205)]
+    maps, learned = contrast_maps([lab[w] for w in windows], [inside[w] for w in windows], sought)
+    assert len(maps) == 4
+    assert learned.direction @ whole.direction > 0.995
+    assert learned.noise == pytest.approx(whole.noise, rel=0.05)
+    assert learned.threshold == pytest.approx(whole.threshold, rel=0.1)
+    assert np.abs(learned.commonest - whole.commonest).max() < 1.0
