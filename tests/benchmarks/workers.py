@@ -37,15 +37,11 @@ def draw(folder: Path, n: int) -> None:
 
 def detect(folder: Path, workers: int) -> float:
     """Seconds of one command."""
-    told = "--kind colonies --dish-mm 86 --inset 1mm --diameter 1.2-6mm".split()
+    told = ["--kind", "colonies", "--dish-mm", "86", "--inset", "1mm", "--diameter", "1.2-6mm"]
+    where = ["--out", str(folder / "out"), "--workers", str(workers)]
+    command = [sys.executable, "-m", "analyse", "detect", str(folder), *told, *where]
     begun = time.perf_counter()
-    subprocess.run(
-        [sys.executable, "-m", "analyse", "detect", str(folder), *told]
-        + ["--out", str(folder / "out"), "--workers", str(workers)],
-        cwd=ROOT,
-        check=True,
-        capture_output=True,
-    )
+    subprocess.run(command, cwd=ROOT, check=True, capture_output=True)
     return time.perf_counter() - begun
 
 
