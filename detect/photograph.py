@@ -246,9 +246,9 @@ def _averaged(array: StoredPixels, size: tuple[int, int]) -> StoredPixels:
         # Halfway between four pixels linear interpolation is their average.
         array = cv2.resize(array, half, interpolation=cv2.INTER_LINEAR)
         width, height = half
-    if (width, height) == size:
-        return array
-    return cv2.resize(array, size, interpolation=cv2.INTER_AREA)
+    if (width, height) != size:
+        array = cv2.resize(array, size, interpolation=cv2.INTER_AREA)
+    return array
 
 
 def _decode(claim: Claim) -> StoredPixels:
