@@ -6,19 +6,25 @@ pool; what they look like is measured in `regions` and judged in `doubt`.
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Iterator, Sequence
 
 import cv2
 import numpy as np
 from numpy.typing import NDArray
 
+from detect.constants import pooled
 from detect.contrast import Contrast, Map, Mask
 from detect.regions import Candidates, Column, Labels, join, measure_regions
 from detect.splitting import split_regions
 
 
 def find_candidates(
-    contrast: Contrast, inside: Mask, *, smallest_px: float, largest_px: float, levels: int = 8
+    contrast: Contrast,
+    inside: Mask,
+    *,
+    smallest_px: float,
+    largest_px: float,
+    cuts: Column | None = None,
 ) -> Candidates:
     """Cut the map at several levels and collect every region that could be an object.
 
@@ -30,8 +36,8 @@ def find_candidates(
         The study area on the same map.
     smallest_px, largest_px : float
         Range of diameters in pixels of the map.
-    levels : int
-        Number of cuts, in geometric steps.
+    cuts : ndarray or None
+        Levels at which the map is cut; None takes those of `cut_levels`.
 
     Returns
     -------
@@ -47,7 +53,7 @@ def find_candidates(
     crest = cv2.GaussianBlur(contrast.map, (0, 0), max(0.15 * smallest_px, 0.5))
     crest = np.sqrt(np.maximum(crest, 0.0))
     parts: list[Candidates] = []
-    for level in _levels(contrast, inside, levels):
+    for level in cut_levels([contrast], [inside]) if cuts is None else cuts:
         mask = _clean((smooth > level) & inside, largest_px)
         for labels, count, neck in _whole_and_split(mask, crest, smallest_px, largest_px):
             parts.append(
@@ -63,12 +69,28 @@ def find_candidates(
     return join(parts)
 
 
-def _levels(contrast: Contrast, inside: Mask, levels: int) -> Column:
-    """Geometric steps from under the base threshold to near the strongest contrast."""
-    values = contrast.map[inside]
-    values = values[:: max(1, values.size // 60_000)]
-    above = values[values > contrast.threshold]
-    lowest = 0.45 * contrast.threshold
+def cut_levels(
+    contrasts: Sequence[Contrast], insides: Sequence[Mask], *, levels: int = 8
+) -> Column:
+    """Return the levels to cut at, from under the base threshold to near the strongest contrast.
+
+    Parameters
+    ----------
+    contrasts : sequence of Contrast
+        Maps of pieces of one picture, with one threshold.
+    insides : sequence of ndarray of bool
+        The study area on each.
+    levels : int
+        Number of cuts, in geometric steps.
+
+    Returns
+    -------
+    ndarray of shape (levels,)
+    """
+    values = pooled([contrast.map for contrast in contrasts], insides)
+    threshold = contrasts[0].threshold
+    above = values[values > threshold]
+    lowest = 0.45 * threshold
     highest = float(np.percentile(above, 97)) if above.size else 2.0 * lowest
     return np.geomspace(lowest, max(highest, 1.05 * lowest), levels)
 

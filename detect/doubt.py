@@ -144,7 +144,12 @@ MODELS: dict[Kind, DoubtModel] = {
 
 
 def features(
-    candidates: Candidates, *, noise: float, smallest_px: float, largest_px: float
+    candidates: Candidates,
+    *,
+    noise: float,
+    smallest_px: float,
+    largest_px: float,
+    step: float | None = None,
 ) -> NDArray[np.float64]:
     """Measure what the model weighs.
 
@@ -156,6 +161,8 @@ def features(
         The ground's noise, in the units of the candidates' contrast.
     smallest_px, largest_px : float
         Expected range of diameters, in the candidates' pixels.
+    step : float or None
+        The picture's usual edge step; None takes that of these candidates.
 
     Returns
     -------
@@ -165,7 +172,8 @@ def features(
     middle = 0.5 * np.log(smallest_px * largest_px)
     half = 0.5 * np.log(largest_px / smallest_px) + 0.2
     size = np.minimum(np.abs(np.log(candidates.diameter) - middle) / half, 2.5)
-    relative = np.log(np.maximum(candidates.step, 1e-6) / usual_step(candidates))
+    usual = usual_step(candidates) if step is None else step
+    relative = np.log(np.maximum(candidates.step, 1e-6) / usual)
     return np.column_stack(
         [
             size,

@@ -2,15 +2,17 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
 
-from detect.candidates import find_candidates
+from detect.candidates import cut_levels, find_candidates
 from detect.choice import choose
-from detect.contrast import Colour, Contrast, contrast_map
-from detect.doubt import DoubtModel, doubt_of, features
+from detect.constants import Constants
+from detect.contrast import Colour, Contrast, Mask, Sought, contrast_maps
+from detect.doubt import DoubtModel, doubt_of, features, usual_step
 from detect.plants import fused, leaf_axes, rosette_features
 from detect.regions import Candidates, join
 from detect.view import View
@@ -47,6 +49,28 @@ class Judgement:
     doubt: NDArray[np.float64]
 
 
+@dataclass(frozen=True, slots=True, eq=False)
+class Yardstick:
+    """What all parts of one picture are judged by, learned once.
+
+    Parameters
+    ----------
+    flipped : bool
+        Whether the side is looked at that the picture speaks against.
+    constants : Constants
+        What the contrast is measured with.
+    cuts : tuple of ndarray
+        Levels at which each map is cut: the contrast, or for plants the maps of fused leaves.
+    step : float
+        Usual edge step of objects.
+    """
+
+    flipped: bool
+    constants: Constants
+    cuts: tuple[NDArray[np.float64], ...]
+    step: float
+
+
 def judged(
     view: View,
     smallest_px: float,
@@ -73,13 +97,65 @@ def judged(
     -------
     Judgement
     """
-    first = judge_side(
-        view, smallest_px, largest_px, options, model, flipped=False, direction=direction
-    )
-    if first.contrast.sureness > _SURE:
+    return judged_together([view], smallest_px, largest_px, options, model, direction=direction)[0][
+        0
+    ]
+
+
+def judged_together(
+    views: Sequence[View],
+    smallest_px: float,
+    largest_px: float,
+    options: DetectOptions,
+    model: DoubtModel,
+    *,
+    direction: NDArray[np.float64] | None = None,
+) -> tuple[list[Judgement], Yardstick]:
+    """Judge views of one picture by what they teach together; both sides when it is unclear.
+
+    Parameters
+    ----------
+    views : sequence of View
+        The whole, or windows spread over it, all equally reduced.
+    smallest_px, largest_px, options, model, direction
+        As in `judged`.
+
+    Returns
+    -------
+    list of Judgement
+        One for each view.
+    Yardstick
+        What they were judged by, and what further views of the picture can be judged by.
+    """
+    first = _judge(views, smallest_px, largest_px, options, model, direction=direction)
+    if first[1].constants.sureness > _SURE:
         return first
-    other = judge_side(view, smallest_px, largest_px, options, model, flipped=True)
-    return max(first, other, key=_worth)
+    other = _judge(views, smallest_px, largest_px, options, model, flipped=True)
+    return max(first, other, key=lambda side: sum(_worth(judgement) for judgement in side[0]))
+
+
+def judge_by(
+    view: View,
+    smallest_px: float,
+    largest_px: float,
+    options: DetectOptions,
+    model: DoubtModel,
+    yardstick: Yardstick,
+) -> Judgement:
+    """Judge one view of a picture by what was learned of the picture before.
+
+    Parameters
+    ----------
+    view : View
+    smallest_px, largest_px, options, model
+        As in `judged`, and as they were when the yardstick was learned.
+    yardstick : Yardstick
+
+    Returns
+    -------
+    Judgement
+    """
+    return _judge([view], smallest_px, largest_px, options, model, known=yardstick)[0][0]
 
 
 def judge_side(
@@ -111,42 +187,108 @@ def judge_side(
     Judgement
         Without the regions whose mean contrast is below `LEAST_CONTRAST` times the noise.
     """
-    colour = options.colour
-    if colour == "auto":
-        colour = _USUAL_COLOUR.get(options.kind, "auto")
-    contrast = contrast_map(
-        view.lab,
-        view.inside,
-        smallest_px=smallest_px,
-        largest_px=largest_px,
-        colour=colour,
+    judgements, _ = _judge(
+        [view], smallest_px, largest_px, options, model, flipped=flipped, direction=direction
+    )
+    return judgements[0]
+
+
+def _judge(
+    views: Sequence[View],
+    smallest_px: float,
+    largest_px: float,
+    options: DetectOptions,
+    model: DoubtModel,
+    *,
+    flipped: bool = False,
+    direction: NDArray[np.float64] | None = None,
+    known: Yardstick | None = None,
+) -> tuple[list[Judgement], Yardstick]:
+    """Judge views on one side, by what is known or by what they teach together."""
+    insides = [view.inside for view in views]
+    contrasts, constants = contrast_maps(
+        [view.lab for view in views],
+        insides,
+        _sought(options, smallest_px, largest_px, known.flipped if known else flipped, direction),
+        known.constants if known else None,
+    )
+    plants = options.kind == "seedlings"
+    maps = [fused(each, smallest_px) if plants else (each,) for each in contrasts]
+    cuts = (
+        known.cuts
+        if known
+        else tuple(cut_levels(same, insides) for same in zip(*maps, strict=True))
+    )
+    candidates = [
+        _candidates(looked_at, inside, cuts, smallest_px, largest_px)
+        for looked_at, inside in zip(maps, insides, strict=True)
+    ]
+    least = _least_contrast(contrasts[0], _colour(options))
+    candidates = [each.where(each.contrast >= least) for each in candidates]
+    step = known.step if known else usual_step(join(candidates))
+    judgements = []
+    for contrast, each in zip(contrasts, candidates, strict=True):
+        measured = features(
+            each,
+            noise=contrast.noise,
+            smallest_px=smallest_px,
+            largest_px=largest_px,
+            step=step,
+        )
+        if plants:
+            rosettes = rosette_features(each, leaf_axes(contrast, smallest_px))
+            measured = np.column_stack([measured, rosettes])
+        judgements.append(Judgement(contrast, each, measured, doubt_of(measured, model)))
+    return judgements, known or Yardstick(flipped, constants, cuts, step)
+
+
+def _colour(options: DetectOptions) -> Colour:
+    """Return the colour looked for: as asked, or usual for the kind."""
+    if options.colour == "auto":
+        return _USUAL_COLOUR.get(options.kind, "auto")
+    return options.colour
+
+
+def _sought(
+    options: DetectOptions,
+    smallest_px: float,
+    largest_px: float,
+    flipped: bool,
+    direction: NDArray[np.float64] | None,
+) -> Sought:
+    """Say what is to stand out, for the kind that is looked for."""
+    return Sought(
+        smallest_px,
+        largest_px,
+        colour=_colour(options),
         polarity=options.polarity,
         flipped=flipped,
         calming=_CALMING.get(options.kind, 0.5),
         many_colours=options.kind == "colonies",
         direction=direction,
     )
-    plants = options.kind == "seedlings"
-    maps = fused(contrast, smallest_px) if plants else (contrast,)
-    candidates = join(
+
+
+def _candidates(
+    maps: Sequence[Contrast],
+    inside: Mask,
+    cuts: Sequence[NDArray[np.float64]],
+    smallest_px: float,
+    largest_px: float,
+) -> Candidates:
+    """Collect the candidates of all maps of one view."""
+    return join(
         [
             find_candidates(
                 looked_at,
-                view.inside,
+                inside,
                 smallest_px=_BELOW * smallest_px,
                 largest_px=_ABOVE * largest_px,
+                cuts=levels,
             )
-            for looked_at in maps
+            for looked_at, levels in zip(maps, cuts, strict=True)
         ]
     )
-    candidates = candidates.where(candidates.contrast >= _least_contrast(contrast, colour))
-    measured = features(
-        candidates, noise=contrast.noise, smallest_px=smallest_px, largest_px=largest_px
-    )
-    if plants:
-        rosettes = rosette_features(candidates, leaf_axes(contrast, smallest_px))
-        measured = np.column_stack([measured, rosettes])
-    return Judgement(contrast, candidates, measured, doubt_of(measured, model))
 
 
 def _least_contrast(contrast: Contrast, colour: Colour) -> float:

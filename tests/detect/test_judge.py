@@ -7,7 +7,14 @@ import pytest
 
 from detect.area import frame_area
 from detect.doubt import COLONIES, GENERAL, MODELS
-from detect.judge import LEAST_CONTRAST, Judgement, judge_side, judged
+from detect.judge import (
+    LEAST_CONTRAST,
+    Judgement,
+    judge_by,
+    judge_side,
+    judged,
+    judged_together,
+)
 from detect.view import View, view_of
 from detect.wanted import DetectOptions, Kind
 from tests.scenes import SpotScene, scattered
@@ -23,6 +30,7 @@ def side(view: View, *, flipped: bool, kind: Kind = "spots") -> Judgement:
     return judge_side(view, 10.0, 24.0, options, MODELS[kind], flipped=flipped)
 
 
+DARK_AND_PALE = ((0.33, 0.28, 0.2), (0.55, 0.5, 0.43))
 CROWDED = scattered(75, radius=(9, 12), gap=1.5, seed=4)
 
 
@@ -81,3 +89,26 @@ def test_a_known_direction_has_but_one_side() -> None:
         assert judgement.contrast.direction.tolist() == known.tolist()
         assert (np.sign(judgement.contrast.map[rows, columns]) == -side_of_lightness).all()
         assert ((judgement.doubt < 0.3).sum() >= 20) == (side_of_lightness < 0)
+
+
+@pytest.mark.parametrize("kind", MODELS)
+def test_what_was_learned_of_a_picture_judges_it_again_alike(kind: Kind) -> None:
+    discs = scattered(20, radius=(6, 10))
+    view = seen(SpotScene(discs=discs, ground=(0.42, 0.33, 0.25), colour=(0.3, 0.5, 0.16)))
+    options, model = DetectOptions(kind=kind), MODELS[kind]
+    (first,), yardstick = judged_together([view], 10, 24, options, model)
+    again = judge_by(view, 10, 24, options, model, yardstick)
+    assert len(first.candidates) > 20
+    assert np.array_equal(first.candidates.x, again.candidates.x)
+    assert np.array_equal(first.doubt, again.doubt)
+
+
+def test_parts_of_a_picture_are_judged_with_one_measure() -> None:
+    dark, pale = (SpotScene(discs=scattered(20, radius=(6, 10)), colour=c) for c in DARK_AND_PALE)
+    views = [seen(dark), seen(pale)]
+    (first, second), yardstick = judged_together(views, 10, 24, DetectOptions(), GENERAL)
+    assert first.contrast.threshold == second.contrast.threshold == yardstick.constants.threshold
+    alone = judged(views[1], 10, 24, DetectOptions(), GENERAL)
+    assert second.contrast.threshold > 1.2 * alone.contrast.threshold
+    apart = judge_by(views[1], 10, 24, DetectOptions(), GENERAL, yardstick)
+    assert np.array_equal(second.doubt, apart.doubt)
