@@ -69,6 +69,15 @@ HighestDoubtOption = Annotated[
         "by kind",
     ),
 ]
+TaughtOption = Annotated[
+    str | None,
+    _option(
+        "--taught",
+        WHAT,
+        "Detect as an earlier --learn taught; other options given here win over it.",
+        "FILE",
+    ),
+]
 MmPerPixelOption = Annotated[
     str | None, _option("--mm-per-pixel", SCALE, "Millimetres per pixel.", "NUMBER")
 ]

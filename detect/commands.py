@@ -30,6 +30,7 @@ from detect.command_options import (
     OutOption,
     PlotOption,
     PolarityOption,
+    TaughtOption,
     WorkersOption,
     spelled,
     with_units,
@@ -65,6 +66,7 @@ def detect(
     colour: ColourOption = None,
     polarity: PolarityOption = None,
     highest_doubt: HighestDoubtOption = None,
+    taught: TaughtOption = None,
     mm_per_pixel: MmPerPixelOption = None,
     dish_mm: DishOption = None,
     line: LineOption = None,
@@ -86,6 +88,7 @@ def detect(
                 "colour": colour,
                 "polarity": polarity,
                 "highest_doubt": highest_doubt,
+                "taught": taught,
                 "mm_per_pixel": mm_per_pixel,
                 "dish": dish_mm,
                 "line": line,
@@ -100,6 +103,7 @@ def detect(
     )
     paths = gather_photographs(photographs)
     make_folder(out)
+    show_overruled(request)
     tasks = [DetectTask(path, request, out, keep_amendments) for path in paths]
     with progress_on_terminal("Detecting", len(tasks)) as progress:
         processes = workers_for(len(tasks), whole(workers, "--workers"))
@@ -115,6 +119,14 @@ def detect(
         )
     show_failures(failures)
     exit_if_failed(failures, len(results))
+
+
+def show_overruled(request: DetectRequest) -> None:
+    """Say on stderr which given options win over what was learned."""
+    if request.taught is None:
+        return
+    for name in request.taught.overruled(request.options):
+        typer.echo(f"{spelled(name)} as given is used instead of what was learned.", err=True)
 
 
 def score(

@@ -3,7 +3,9 @@
     DetectError
     ├── RequestWrong            the request cannot be carried out as asked (exit 2)
     │   ├── OptionWrong         an option's value is impossible or does not apply
-    │   └── AreaWrong           a study area given by hand cannot be used
+    │   ├── AreaWrong           a study area given by hand cannot be used
+    │   ├── TaughtUnreadable    a file of what was learned cannot be used
+    │   └── NothingLearned      corrections from which nothing can be learned
     └── PhotographFailed        one photograph cannot be done (exit 1; others go on)
         ├── PhotographUnreadable    the file is no image, is damaged or is too large
         ├── AreaNotFound            the dish or leaf cannot be found in the picture
@@ -31,6 +33,14 @@ class OptionWrong(RequestWrong):
 
 class AreaWrong(RequestWrong):
     """A study area given by hand cannot be used: it crosses itself or misses the picture."""
+
+
+class TaughtUnreadable(RequestWrong):
+    """A file of what was learned is missing, damaged, or of a later version."""
+
+
+class NothingLearned(RequestWrong):
+    """Nothing can be learned from these sheets: none reviewed, too few spots, unlike each other."""
 
 
 class FolderNotWritable(RequestWrong):

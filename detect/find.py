@@ -19,6 +19,7 @@ from detect.plants import settle_plants
 from detect.scale import Scale
 from detect.sizes import learn_diameters
 from detect.spots import Spots
+from detect.taught import Taught
 from detect.view import View, view_of
 from detect.wanted import DetectOptions, Kind
 
@@ -58,6 +59,7 @@ def find_spots(
     *,
     scale: Scale | None = None,
     model: DoubtModel | None = None,
+    taught: Taught | None = None,
 ) -> Found:
     """Find the objects of a photograph within its study area.
 
@@ -70,7 +72,9 @@ def find_spots(
     scale : Scale or None
         Needed when diameters are given in millimetres.
     model : DoubtModel or None
-        Weights of the doubt; None takes those of the kind.
+        Weights of the doubt; None takes those that were taught, or else those of the kind.
+    taught : Taught or None
+        What corrections taught: it completes `options`.
 
     Returns
     -------
@@ -82,17 +86,18 @@ def find_spots(
     OptionWrong
         If diameters are in millimetres and no scale is known, or exceed the area.
     """
-    model = model or MODELS[options.kind]
-    smallest, largest = _diameters(photograph, area, options, scale, model)
-    plants = options.kind == "seedlings"
-    working = _WORKING_PX_PLANTS if plants else _WORKING_PX
-    looked_at = _with_its_surroundings(area, largest)
-    view = view_of(photograph, looked_at, shrink=min(1.0, working / smallest))
-    small, large = smallest * view.shrink, largest * view.shrink
-    judgement = judged(view, small, large, options, model)
+    model = model or (MODELS[options.kind] if taught is None else taught.model)
+    direction = None if taught is None else taught.direction_for(options)
+    options = options if taught is None else taught.completed(options)
+    smallest, largest = _diameters(photograph, area, options, scale, model, direction)
+    view, judgement = look_at(
+        photograph, area, options, (smallest, largest), model=model, direction=direction
+    )
+    if taught is not None:
+        judgement = replace(judgement, doubt=taught.calibration.applied(judgement.doubt))
     contrast = judgement.contrast
     rows = choose(judgement.candidates, judgement.doubt, highest_doubt=options.most_doubt)
-    spots = _spots(view, judgement, rows, plants=plants)
+    spots = _spots(view, judgement, rows, plants=options.kind == "seedlings")
     spots = _kept(spots, area, options.kind, smallest, largest)
     settings = {
         "kind": options.kind,
@@ -104,6 +109,41 @@ def find_spots(
         "highest_doubt": options.most_doubt,
     }
     return Found(spots, settings)
+
+
+def look_at(
+    photograph: Photograph,
+    area: StudyArea,
+    options: DetectOptions,
+    diameters_px: tuple[float, float],
+    *,
+    model: DoubtModel,
+    direction: NDArray[np.float64] | None = None,
+) -> tuple[View, Judgement]:
+    """Reduce a photograph as its smallest objects allow, and judge the candidates in it.
+
+    Parameters
+    ----------
+    photograph : Photograph
+    area : StudyArea
+    options : DetectOptions
+        Their `diameter` is not looked at.
+    diameters_px : pair of float
+        Smallest and largest diameter in photograph pixels.
+    model : DoubtModel
+    direction : ndarray of shape (3,) or None
+        Direction in L*, a*, b* from ground to object, where it is known.
+
+    Returns
+    -------
+    tuple of View and Judgement
+    """
+    smallest, largest = diameters_px
+    working = _WORKING_PX_PLANTS if options.kind == "seedlings" else _WORKING_PX
+    looked_at = _with_its_surroundings(area, largest)
+    view = view_of(photograph, looked_at, shrink=min(1.0, working / smallest))
+    small, large = smallest * view.shrink, largest * view.shrink
+    return view, judged(view, small, large, options, model, direction=direction)
 
 
 def _kept(
@@ -135,6 +175,7 @@ def _diameters(
     options: DetectOptions,
     scale: Scale | None,
     model: DoubtModel,
+    direction: NDArray[np.float64] | None,
 ) -> tuple[float, float]:
     """Smallest and largest diameter in photograph pixels: given, usual for the kind, or learned."""
     mm_per_px = None
@@ -145,7 +186,7 @@ def _diameters(
     elif mm_per_px is not None and options.kind in _USUAL_MM:
         smallest, largest = (d / mm_per_px for d in _USUAL_MM[options.kind])
     else:
-        smallest, largest = learn_diameters(photograph, area, options, model)
+        smallest, largest = learn_diameters(photograph, area, options, model, direction=direction)
     x0, y0, x1, y1 = area.polygon.bounds
     asked = largest if options.diameter is not None else 0.0
     for word, diameter, room in (

@@ -108,6 +108,13 @@ def _corners(value: Any, name: str) -> Corners:
     return tuple(zip(flat[::2], flat[1::2], strict=True))
 
 
+def _taught(value: Any, name: str) -> Path:
+    """Read the path of a file of what was learned."""
+    if not isinstance(value, str | Path) or not str(value):
+        raise OptionWrong(f"{name} must be a file such as taught.toml, not {value!r}.")
+    return Path(value)
+
+
 READERS: dict[str, Callable[[Any, str], Any]] = {
     "kind": one_of(get_args(Kind)),
     "diameter": _range,
@@ -122,6 +129,7 @@ READERS: dict[str, Callable[[Any, str], Any]] = {
     "plot": _sides,
     "area": _area,
     "inset": _length,
+    "taught": _taught,
 }
 
 

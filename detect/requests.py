@@ -28,6 +28,7 @@ from detect.readers import READERS, AreaWord
 from detect.scale import Scale
 from detect.scale_request import ScaleRequest, check_one_scale
 from detect.sheet import SCHEMA, PhotographIdentity, Sheet
+from detect.taught import Taught, read_taught
 from detect.wanted import DetectOptions
 
 
@@ -60,18 +61,27 @@ class DetectRequest:
         What is known about lengths.
     area : AreaRequest
         Where spots count.
+    taught : Taught or None
+        What corrections taught: it completes the options.
 
     Raises
     ------
     OptionWrong
-        If the plot is the area and its corners are missing, or an inset has no area to act on.
+        If the plot is the area and its corners are missing, an inset has no area to act on, or
+        what was taught is about another kind.
     """
 
     options: DetectOptions = field(default_factory=DetectOptions)
     scale: ScaleRequest = field(default_factory=ScaleRequest)
     area: AreaRequest = field(default_factory=AreaRequest)
+    taught: Taught | None = None
 
     def __post_init__(self) -> None:
+        if self.taught is not None and self.taught.kind != self.options.kind:
+            raise OptionWrong(
+                f"What was learned is about {self.taught.kind}, but {self.options.kind} are asked"
+                " for; leave the kind out, or learn from sheets of that kind."
+            )
         if self.where == "plot" and self.scale.corners is None:
             raise OptionWrong(
                 "The area plot needs the positions of its corners and its size;"
@@ -100,6 +110,8 @@ class DetectRequest:
         asked["area"] = _plain(self.where)
         if isinstance(self.where, Path) and self.where.is_file():
             asked["area_sha256"] = sha256(self.where.read_bytes()).hexdigest()
+        if self.taught is not None:
+            asked["taught_sha256"] = self.taught.identity
         return {name: value for name, value in asked.items() if value is not None}
 
 
@@ -132,7 +144,7 @@ def detect_photograph(path: Path, request: DetectRequest) -> tuple[Photograph, S
     dish = find_dish(photograph) if dish_needed else None
     scale = request.scale.resolve(dish)
     area = _study_area(photograph, request, scale, dish)
-    found = find_spots(photograph, area, request.options, scale=scale)
+    found = find_spots(photograph, area, request.options, scale=scale, taught=request.taught)
     settings = {
         "request": request.as_dict(),
         "detector": found.settings,
@@ -187,11 +199,11 @@ def parse_request(
     ----------
     values : mapping of str to object
         The keys of a recipe: kind, diameter, colour, polarity, highest_doubt, mm_per_pixel, dish,
-        line, line_length, corners, plot, area, inset. None counts as not given.
+        line, line_length, corners, plot, area, inset, taught. None counts as not given.
     named : callable
         Turns a key into the name the reader knows it by, for messages.
     folder : Path, optional
-        Where the file of an area lies if its path is relative.
+        Where the files of an area and of what was taught lie if their paths are relative.
 
     Returns
     -------
@@ -201,6 +213,8 @@ def parse_request(
     ------
     OptionWrong
         If a value is impossible or does not apply, or a key is unknown.
+    TaughtUnreadable
+        If the file of what was taught cannot be used.
     """
     given = {key: value for key, value in values.items() if value is not None}
     read: dict[str, Any] = {}
@@ -211,10 +225,15 @@ def parse_request(
     check_one_scale(read, named)
     if "area" in read:
         read["where"] = _existing(read.pop("area"), named("area"), folder)
+    taught = None
+    if "taught" in read:
+        taught = read_taught(read["taught"] if folder is None else folder / read["taught"])
+        read.setdefault("kind", taught.kind)
     return DetectRequest(
         DetectOptions(**_fitting(DetectOptions, read)),
         ScaleRequest(**_fitting(ScaleRequest, read)),
         AreaRequest(**_fitting(AreaRequest, read)),
+        taught,
     )
 
 
