@@ -7,6 +7,7 @@ from typing import TYPE_CHECKING, Any
 
 from analyse.look import MOST_COUNTS
 from analyse.marks import photograph_inches
+from analyse.unseen import planted_sentence
 from analyse.wording import (
     area_words,
     density_words,
@@ -76,6 +77,7 @@ def page_words(
             "p": p_words(findings.simulated.p_two_sided),
         },
         "facts": _facts(findings, sheet),
+        "planted": planted_sentence(findings.pattern),
         "picture": None if sheet is None else _picture(findings, sheet),
         "numbered": len(findings.counts) <= MOST_COUNTS,
         "points_alt": _points_alt(findings),

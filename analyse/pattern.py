@@ -19,6 +19,7 @@ from analyse.errors import TableWrong
 from analyse.region import MM_PER_UNIT, TableUnit, check_area, rectangle
 from analyse.region import area_from_option as area_from_option
 from analyse.rows import read_rows, real_in
+from detect.planted import Planted
 from detect.sheet import Amendment, Sheet, current_state
 
 Unit = Literal["mm", "px"]
@@ -62,6 +63,10 @@ class Pattern:
         The circle that rings and sectors are laid in.
     outside : int
         Points left out because they lie outside the area.
+    planted : Planted or None
+        What planted objects showed of the detector, where they were set.
+    blind : float
+        How near two usual spots may lie to be seen as one, in `unit`; NaN where not measured.
 
     Raises
     ------
@@ -82,6 +87,8 @@ class Pattern:
     flags: tuple[str, ...]
     dish: Circle | None
     outside: int
+    planted: Planted | None = None
+    blind: float = math.nan
 
     def __post_init__(self) -> None:
         points = np.array(self.points, dtype=np.float64).reshape(-1, 2)
@@ -214,6 +221,8 @@ def pattern_from_sheet(sheet: Sheet, amendments: Sequence[Amendment] = ()) -> Pa
         flags,
         _circle(area) if sheet.area.kind == "dish" else None,
         outside,
+        sheet.planted,
+        _blind(sheet),
     )
 
 
@@ -263,6 +272,14 @@ def _point_flags(
         "doubtful": bool((doubt > DOUBTFUL).any()),
     }
     return tuple(name for name, raised in known.items() if raised)
+
+
+def _blind(sheet: Sheet) -> float:
+    """Return the blind distance of a sheet as a length, at the scale of its area's middle."""
+    if sheet.planted is None or sheet.scale is None:
+        return math.nan if sheet.planted is None else sheet.planted.blind_px
+    middle = sheet.area.polygon.centroid
+    return sheet.planted.blind_px * float(sheet.scale.mm_per_px([[middle.x, middle.y]])[0])
 
 
 def _circle(area: BaseGeometry) -> Circle:

@@ -18,6 +18,7 @@ from analyse.indices import (
     mean_crowding,
     morisita_index,
 )
+from analyse.unseen import planted_cells, planted_rows
 from analyse.verdict import POWER
 from detect.files import Cell, csv_text
 
@@ -77,6 +78,11 @@ SUMMARY_COLUMNS = [
     "rests_on",
     "flags",
     "sentence",
+    "planted_recall",
+    "planted_recall_low",
+    "planted_recall_high",
+    "blind_distance",
+    "blind_distance_mm",
 ]
 TEST_COLUMNS = ["photograph", "statistic", "value", "low", "high", "p", "method", "n", "notes"]
 _FISHER = "index of dispersion, chi-square (Fisher, Thornton and Mackenzie 1922)"
@@ -152,7 +158,7 @@ def tests_csv(findings: Sequence[Findings]) -> str:
     rows = (
         [each.name, *row[:-1], _flagged(row[-1], each)]
         for each in findings
-        for part in (_density_rows, _whole_rows, _all_rows, _simulated_rows, _poisson_rows)
+        for part in _PARTS
         for row in part(each)
     )
     return csv_text(TEST_COLUMNS, rows, digits=DIGITS)
@@ -215,6 +221,7 @@ def _summary(each: Findings) -> list[Cell]:
         each.rests_on,
         " ".join(each.flags),
         each.sentence,
+        *planted_cells(each.pattern),
     ]
 
 
@@ -289,6 +296,21 @@ def _poisson_rows(each: Findings) -> Iterator[list[Cell]]:
         note = f"df {fit.df}; classes {', '.join(fit.labels)}; whole quadrats"
         n = int(fit.observed.sum())
         yield ["poisson_fit", fit.chi2, None, None, fit.p, method, n, note]
+
+
+def _planted_rows(each: Findings) -> Iterator[list[Cell]]:
+    """Yield what planted objects showed."""
+    return planted_rows(each.pattern)
+
+
+_PARTS = (
+    _density_rows,
+    _whole_rows,
+    _all_rows,
+    _simulated_rows,
+    _poisson_rows,
+    _planted_rows,
+)
 
 
 def _sides(

@@ -10,10 +10,12 @@ from typer.core import TyperCommand
 
 from detect.contrast import Colour, Polarity
 from detect.lengths import parse_length
+from detect.planted import PlantedOptions
 from detect.readers import AreaWord
 from detect.wanted import DetectOptions, Kind
 
 WHAT, SCALE, AREA, OUTPUT = "What to find", "Scale", "Study area", "Output"
+TRUST = "What is missed"
 OUT = Path("strewn-out")
 _DEFAULTS = DetectOptions()
 _SPELLED = {"dish": "--dish-mm", "line_length": "--line-mm"}
@@ -143,6 +145,18 @@ KeepOption = Annotated[
 ]
 
 
+PlantedOption = Annotated[
+    str | None,
+    _option(
+        "--planted",
+        TRUST,
+        "Set copies of clear spots into the photograph and see which are found again, in N rounds"
+        f" ({PlantedOptions().rounds} unless said), each as long as a detection.",
+        "[N]",
+    ),
+]
+
+
 class PlainHelp:
     """Mixed into a command, it keeps the names of types (<bool>, <list[Path]>) out of the help."""
 
@@ -155,12 +169,33 @@ class PlainHelp:
 
 
 class PlainCommand(PlainHelp, TyperCommand):
-    """A command with plain help."""
+    """A command with plain help, in which --planted may stand without its number."""
+
+    def parse_args(self, ctx: Any, args: list[str]) -> list[str]:
+        """Read the words of a command line."""
+        read: list[str] = super().parse_args(ctx, with_rounds(args))
+        return read
 
 
 def _no_type(*_unnamed: Any, **_named: Any) -> str:
     """Say nothing about the type of a parameter."""
     return ""
+
+
+def with_rounds(words: list[str]) -> list[str]:
+    """Return the words of a command line with a bare --planted given its usual number.
+
+    Examples
+    --------
+    >>> with_rounds(["--planted", "dish.jpg"]), with_rounds(["--planted", "5", "dish.jpg"])
+    (['--planted=10', 'dish.jpg'], ['--planted', '5', 'dish.jpg'])
+    """
+    usual = f"--planted={PlantedOptions().rounds}"
+    following = [*words[1:], ""]
+    return [
+        usual if word == "--planted" and not after.lstrip("+-").isdigit() else word
+        for word, after in zip(words, following, strict=True)
+    ]
 
 
 def spelled(key: str) -> str:

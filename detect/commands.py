@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from pathlib import Path
 from typing import Annotated
 
@@ -11,7 +11,7 @@ import typer
 
 from detect.accuracy import Accuracy, pooled, read_truth, score_csv, score_sheet
 from detect.amendments import read_amendments
-from detect.batch import Each, Failure, do_each, workers_for
+from detect.batch import Each, Failure, Progress, do_each, workers_for
 from detect.command_options import (
     OUT,
     OUTPUT,
@@ -28,6 +28,7 @@ from detect.command_options import (
     LineOption,
     MmPerPixelOption,
     OutOption,
+    PlantedOption,
     PlotOption,
     PolarityOption,
     TaughtOption,
@@ -75,6 +76,7 @@ def detect(
     plot: PlotOption = None,
     area: AreaOption = None,
     inset: InsetOption = None,
+    planted: PlantedOption = None,
     out: OutOption = OUT,
     keep_amendments: KeepOption = False,
     workers: WorkersOption = None,
@@ -97,6 +99,7 @@ def detect(
                 "plot": plot,
                 "area": area,
                 "inset": inset,
+                "planted": planted,
             }
         ),
         named=spelled,
@@ -105,9 +108,13 @@ def detect(
     make_folder(out)
     show_overruled(request)
     tasks = [DetectTask(path, request, out, keep_amendments) for path in paths]
-    with progress_on_terminal("Detecting", len(tasks)) as progress:
+    # Of one photograph the rounds of planted objects are shown, of many the photographs.
+    rounds = 0 if request.planted is None or len(tasks) > 1 else request.planted.rounds
+    with progress_on_terminal("Planting" if rounds else "Detecting", rounds or len(tasks)) as bar:
+        if rounds:
+            tasks, bar = [replace(task, progress=bar) for task in tasks], None
         processes = workers_for(len(tasks), whole(workers, "--workers"))
-        results = do_each(DETECT, tasks, workers=processes, progress=progress)
+        results = do_each(DETECT, tasks, workers=processes, progress=bar)
     done = [result for result in results if not isinstance(result, Failure)]
     failures = [result for result in results if isinstance(result, Failure)]
     show_table(("photograph", "spots", "doubtful", "scale"), [line.cells() for line in done])
@@ -211,6 +218,7 @@ class DetectTask:
     request: DetectRequest
     folder: Path
     keep_amendments: bool
+    progress: Progress | None = None
 
 
 @dataclass(frozen=True, slots=True)
@@ -253,7 +261,7 @@ class ScoreTask:
 
 def _detect_one(task: DetectTask) -> DetectLine:
     """Detect one photograph and write its results."""
-    photograph, sheet = detect_photograph(task.path, task.request)
+    photograph, sheet = detect_photograph(task.path, task.request, progress=task.progress)
     outcome = write_detection(photograph, sheet, task.folder, keep_amendments=task.keep_amendments)
     return DetectLine.of(outcome.state)
 

@@ -11,6 +11,7 @@ from typing import Any, Literal, get_args
 from detect.contrast import Colour, Polarity
 from detect.errors import OptionWrong
 from detect.lengths import LONGEST, SHORTEST, Length, parse_length, parse_pair
+from detect.planted import PlantedOptions
 from detect.wanted import Kind
 
 AreaWord = Literal["dish", "frame", "plot", "leaf"]
@@ -96,6 +97,19 @@ def _area(value: Any, name: str) -> AreaWord | Path:
     return Path(value)
 
 
+def _rounds(value: Any, name: str) -> PlantedOptions | None:
+    """Read whether objects are planted, and in how many rounds."""
+    if isinstance(value, bool):
+        return PlantedOptions() if value else None
+    text = str(value) if isinstance(value, int) else value
+    if not isinstance(text, str) or not re.fullmatch(r"\s*\d{1,9}\s*", text):
+        raise OptionWrong(
+            f"{name} must be a whole number of rounds such as {PlantedOptions().rounds}, or true,"
+            f" not {value!r}."
+        )
+    return PlantedOptions(rounds=int(text))
+
+
 def _four(value: Any, name: str) -> Four:
     """Read both ends of a line."""
     x1, y1, x2, y2 = numbers(value, 4, name)
@@ -130,6 +144,7 @@ READERS: dict[str, Callable[[Any, str], Any]] = {
     "area": _area,
     "inset": _length,
     "taught": _taught,
+    "planted": _rounds,
 }
 
 

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Mapping
-from dataclasses import dataclass, field, fields
+from dataclasses import dataclass, field, fields, replace
 from functools import cache
 from hashlib import sha256
 from importlib.metadata import version
@@ -20,10 +20,12 @@ from detect.area import (
     plot_area,
     polygon_area,
 )
+from detect.batch import Progress
 from detect.dish import Dish, find_dish
 from detect.errors import OptionWrong
 from detect.lengths import Length
 from detect.photograph import Photograph, read_photograph
+from detect.planted import PlantedOptions
 from detect.readers import READERS, AreaWord
 from detect.scale import Scale
 from detect.scale_request import ScaleRequest, check_one_scale
@@ -63,6 +65,8 @@ class DetectRequest:
         Where spots count.
     taught : Taught or None
         What corrections taught: it completes the options.
+    planted : PlantedOptions or None
+        How objects are planted to measure what is missed; None for not at all.
 
     Raises
     ------
@@ -75,6 +79,7 @@ class DetectRequest:
     scale: ScaleRequest = field(default_factory=ScaleRequest)
     area: AreaRequest = field(default_factory=AreaRequest)
     taught: Taught | None = None
+    planted: PlantedOptions | None = None
 
     def __post_init__(self) -> None:
         if self.taught is not None and self.taught.kind != self.options.kind:
@@ -112,10 +117,13 @@ class DetectRequest:
             asked["area_sha256"] = sha256(self.where.read_bytes()).hexdigest()
         if self.taught is not None:
             asked["taught_sha256"] = self.taught.identity
+        asked["planted"] = None if self.planted is None else self.planted.rounds
         return {name: value for name, value in asked.items() if value is not None}
 
 
-def detect_photograph(path: Path, request: DetectRequest) -> tuple[Photograph, Sheet]:
+def detect_photograph(
+    path: Path, request: DetectRequest, *, progress: Progress | None = None
+) -> tuple[Photograph, Sheet]:
     """Find the spots of one photograph.
 
     Parameters
@@ -124,6 +132,8 @@ def detect_photograph(path: Path, request: DetectRequest) -> tuple[Photograph, S
         The photograph.
     request : DetectRequest
         What to find, at which scale, and where.
+    progress : callable, optional
+        Called with (done, total) after each round of planted objects.
 
     Returns
     -------
@@ -151,7 +161,22 @@ def detect_photograph(path: Path, request: DetectRequest) -> tuple[Photograph, S
         "notes": list(photograph.notes),
     }
     identity = PhotographIdentity.of(photograph)
-    return photograph, Sheet(SCHEMA, tool_version(), identity, scale, area, settings, found.spots)
+    sheet = Sheet(SCHEMA, tool_version(), identity, scale, area, settings, found.spots)
+    if request.planted is None:
+        return photograph, sheet
+    from detect.rounds import measure_planted  # loads scipy likewise
+
+    planted = measure_planted(
+        photograph,
+        area,
+        request.options,
+        found,
+        scale=scale,
+        taught=request.taught,
+        planted=request.planted,
+        progress=progress,
+    )
+    return photograph, replace(sheet, planted=planted)
 
 
 @cache
@@ -199,7 +224,7 @@ def parse_request(
     ----------
     values : mapping of str to object
         The keys of a recipe: kind, diameter, colour, polarity, highest_doubt, mm_per_pixel, dish,
-        line, line_length, corners, plot, area, inset, taught. None counts as not given.
+        line, line_length, corners, plot, area, inset, taught, planted. None counts as not given.
     named : callable
         Turns a key into the name the reader knows it by, for messages.
     folder : Path, optional
@@ -234,6 +259,7 @@ def parse_request(
         ScaleRequest(**_fitting(ScaleRequest, read)),
         AreaRequest(**_fitting(AreaRequest, read)),
         taught,
+        read.get("planted"),
     )
 
 

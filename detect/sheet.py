@@ -23,6 +23,7 @@ from detect.area import StudyArea
 from detect.errors import DetectError, SheetUnreadable
 from detect.files import csv_text, write_text_atomically
 from detect.photograph import Photograph
+from detect.planted import Planted
 from detect.scale import Scale
 from detect.spots import Spots
 
@@ -96,8 +97,8 @@ class Sheet:
         What was asked for and what it was resolved to; plain values.
     spots : Spots
         In pixels.
-    planted : dict or None
-        Results of the planted-object test, once measured.
+    planted : Planted or None
+        What planted objects showed, once measured.
     """
 
     schema: int
@@ -107,7 +108,7 @@ class Sheet:
     area: StudyArea
     settings: dict[str, Any]
     spots: Spots
-    planted: dict[str, Any] | None = None
+    planted: Planted | None = None
 
     def __post_init__(self) -> None:
         if self.schema != SCHEMA:
@@ -298,7 +299,7 @@ def _sheet_text(sheet: Sheet) -> str:
         "scale": None if sheet.scale is None else sheet.scale.as_dict(),
         "area": sheet.area.as_dict(),
         "settings": sheet.settings,
-        "planted": sheet.planted,
+        "planted": None if sheet.planted is None else sheet.planted.as_dict(),
         "spot_columns": list(_SPOT_COLUMNS),
     }
     lines = [f"{json.dumps(name)}: {_json(value)}" for name, value in parts.items()]
@@ -333,7 +334,7 @@ def _sheet_from(values: dict[str, Any]) -> Sheet:
         StudyArea.from_dict(values["area"]),
         dict(values["settings"]),
         Spots(*columns),
-        values["planted"],
+        None if values.get("planted") is None else Planted.from_dict(values["planted"]),
     )
 
 

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import csv
 import json
+from dataclasses import replace
 from pathlib import Path
 
 import cv2
@@ -12,6 +13,8 @@ import pytest
 from typer.testing import CliRunner, Result
 
 from analyse.cli import app
+from detect.planted import PlantedOptions
+from detect.requests import DetectRequest, detect_photograph
 from detect.sheet import Amendment, amendments_path, append_amendment, read_sheet
 from tests.discs import DIAMETER, scattered, write_discs, write_truth
 
@@ -412,3 +415,60 @@ def test_a_damaged_sheet_is_listed(photo: Path, tmp_path: Path) -> None:
     assert result.exit_code == 1
     assert result.stderr.startswith("bed_1.sheet.json: ")
     assert "is damaged" in result.stderr
+
+
+def test_planted_objects_are_set_if_asked_and_kept_on_the_sheet(
+    photo: Path, tmp_path: Path
+) -> None:
+    plain = detect(photo, out=tmp_path / "plain")
+    assert plain.exit_code == 0
+    assert read_sheet(tmp_path / "plain" / "bed_1.sheet.json").planted is None
+    result = detect(photo, "--planted", "2", out=tmp_path / "out")
+    assert result.exit_code == 0, result.stderr
+    sheet = read_sheet(tmp_path / "out" / "bed_1.sheet.json")
+    assert sheet.planted is not None
+    assert (sheet.planted.rounds, sheet.planted.seed) == (2, 1)
+    assert sheet.planted.copies >= 10
+    assert sheet.planted.recall is not None
+    assert sheet.settings["request"]["planted"] == 2
+    name = "bed_1.points.csv"
+    assert (tmp_path / "out" / name).read_bytes() == (tmp_path / "plain" / name).read_bytes()
+
+
+@pytest.mark.parametrize("words", [["--planted"], ["--planted", "--colour", "grey"]])
+def test_planted_may_stand_without_its_number(
+    photo: Path, tmp_path: Path, monkeypatch: pytest.MonkeyPatch, words: list[str]
+) -> None:
+    asked: list[object] = []
+
+    def noted(path: Path, request: DetectRequest, **_more: object) -> object:
+        asked.append(request.planted)
+        return detect_photograph(path, replace(request, planted=None))
+
+    monkeypatch.setattr("detect.commands.detect_photograph", noted)
+    assert detect(*words, photo, out=tmp_path / "out").exit_code == 0
+    assert asked == [PlantedOptions(rounds=10)]
+
+
+@pytest.mark.parametrize(
+    ("value", "message"),
+    [
+        ("1", "Planted objects take 2 to 1,000 rounds, not 1; 10 is usual."),
+        ("2000", "Planted objects take 2 to 1,000 rounds, not 2000; 10 is usual."),
+    ],
+)
+def test_impossible_rounds_are_refused(
+    photo: Path, tmp_path: Path, value: str, message: str
+) -> None:
+    result = detect(photo, "--planted", value, out=tmp_path / "out")
+    assert result.exit_code == 2
+    assert result.stderr == f"Error: {message}\n"
+    assert not (tmp_path / "out").exists()
+
+
+def test_rounds_that_are_no_number_are_refused(photo: Path, tmp_path: Path) -> None:
+    result = detect(photo, "--planted=many", out=tmp_path / "out")
+    assert result.exit_code == 2
+    assert result.stderr == (
+        "Error: --planted must be a whole number of rounds such as 10, or true, not 'many'.\n"
+    )

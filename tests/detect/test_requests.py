@@ -11,6 +11,7 @@ import pytest
 
 from detect.errors import AreaNotFound, AreaWrong, OptionWrong
 from detect.lengths import Length
+from detect.planted import PlantedOptions
 from detect.requests import DetectRequest, detect_photograph, parse_request, tool_version
 from detect.wanted import DetectOptions
 from tests.discs import DIAMETER, HEIGHT, WIDTH, scattered, write_discs
@@ -209,3 +210,18 @@ def test_no_dish_in_the_picture_fails_the_photograph(tmp_path: Path) -> None:
     path = write_discs(tmp_path / "a.png", scattered(30, seed=1))
     with pytest.raises(AreaNotFound):
         detect_photograph(path, parse_request({"dish": "86mm", "diameter": DIAMETER}))
+
+
+@pytest.mark.parametrize(
+    ("value", "rounds"), [(True, 10), (7, 7), ("7", 7), (False, None), (None, None)]
+)
+def test_planted_objects_are_asked_for_by_true_or_a_number(value: Any, rounds: int | None) -> None:
+    request = parse_request({"planted": value})
+    assert request.planted == (None if rounds is None else PlantedOptions(rounds=rounds))
+    assert request.as_dict().get("planted") == rounds
+
+
+@pytest.mark.parametrize("value", ["yes", 2.5, -3, [2], "1e3"])
+def test_other_words_for_planted_objects_are_refused(value: Any) -> None:
+    with pytest.raises(OptionWrong, match="planted must be a whole number of rounds such as 10"):
+        parse_request({"planted": value})

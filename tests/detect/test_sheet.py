@@ -16,6 +16,7 @@ from shapely.geometry import MultiPolygon, Point, box
 from detect.amendments import load_json
 from detect.area import StudyArea
 from detect.errors import SheetUnreadable
+from detect.planted import Planted
 from detect.scale import Scale
 from detect.sheet import (
     Amendment,
@@ -30,6 +31,7 @@ from detect.sheet import (
     write_sheet,
 )
 from detect.spots import Spots
+from tests.detect.test_planted import MEASURED
 
 TIME = "2026-01-02T10:00:00Z"
 COLUMNS = ("x", "y", "radius", "area", "contrast", "fill", "doubt", "found", "counted")
@@ -78,7 +80,7 @@ def test_a_sheet_reads_back_as_written(tmp_path: Path) -> None:
 
 
 def test_a_sheet_without_spots_or_scale_reads_back(tmp_path: Path) -> None:
-    sheet = replace(a_sheet(Spots.none()), planted={"recall": 0.9})
+    sheet = replace(a_sheet(Spots.none()), planted=Planted(10, 1, note="Too little."))
     back = read_sheet(write_sheet(sheet, tmp_path))
     assert same(back, sheet)
     assert len(back.spots) == 0
@@ -308,3 +310,25 @@ def test_one_id_for_two_edits_is_an_error(tmp_path: Path) -> None:
 def test_not_a_number_is_refused_in_files() -> None:
     with pytest.raises(ValueError, match="-Infinity is not a number"):
         load_json(b'{"x": -Infinity}')
+
+
+def test_what_planted_objects_showed_reads_back(tmp_path: Path) -> None:
+    sheet = replace(a_sheet(), planted=MEASURED)
+    assert read_sheet(write_sheet(sheet, tmp_path)).planted == MEASURED
+
+
+def test_a_sheet_from_before_planted_objects_reads_as_it_did(tmp_path: Path) -> None:
+    path = write_sheet(a_sheet(), tmp_path)
+    text = path.read_text(encoding="utf-8")
+    assert '"planted": null,\n' in text
+    path.write_text(text.replace('"planted": null,\n', ""), encoding="utf-8")
+    assert same(read_sheet(path), a_sheet())
+
+
+def test_impossible_results_of_planted_objects_are_damage(tmp_path: Path) -> None:
+    path = write_sheet(replace(a_sheet(), planted=MEASURED), tmp_path)
+    text = path.read_text(encoding="utf-8")
+    assert '"found": 81' in text
+    path.write_text(text.replace('"found": 81', '"found": 91'), encoding="utf-8")
+    with pytest.raises(SheetUnreadable, match=r"is damaged \(found 91 of 90 copies\)"):
+        read_sheet(path)
