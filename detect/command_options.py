@@ -80,6 +80,16 @@ TaughtOption = Annotated[
         "FILE",
     ),
 ]
+LearnOption = Annotated[
+    Path | None,
+    typer.Option(
+        "--learn",
+        help="Learn first from the sheets in this folder that a person has corrected.",
+        metavar="DIR",
+        show_default=False,
+        rich_help_panel=WHAT,
+    ),
+]
 MmPerPixelOption = Annotated[
     str | None, _option("--mm-per-pixel", SCALE, "Millimetres per pixel.", "NUMBER")
 ]

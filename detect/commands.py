@@ -24,6 +24,7 @@ from detect.command_options import (
     InsetOption,
     KeepOption,
     KindOption,
+    LearnOption,
     LineLengthOption,
     LineOption,
     MmPerPixelOption,
@@ -36,14 +37,17 @@ from detect.command_options import (
     spelled,
     with_units,
 )
-from detect.errors import RequestWrong
+from detect.errors import OptionWrong, RequestWrong
 from detect.files import make_folder, write_text_atomically
 from detect.gather import gather_photographs, gather_sheets
 from detect.outcome import write_detection
 from detect.overlay import DOUBTFUL
 from detect.readers import whole
-from detect.requests import DetectRequest, detect_photograph, parse_request
+from detect.requests import DetectRequest, detect_photograph, parse_request, tool_version
+from detect.reviewed import Reviewed, gather_reviewed
 from detect.sheet import Sheet, current_state, read_sheet
+from detect.taught import Taught, told
+from detect.taught_file import TAUGHT_NAME, taught_text
 from detect.terminal import (
     exit_if_failed,
     number_text,
@@ -67,6 +71,7 @@ def detect(
     colour: ColourOption = None,
     polarity: PolarityOption = None,
     highest_doubt: HighestDoubtOption = None,
+    learn: LearnOption = None,
     taught: TaughtOption = None,
     mm_per_pixel: MmPerPixelOption = None,
     dish_mm: DishOption = None,
@@ -82,10 +87,11 @@ def detect(
     workers: WorkersOption = None,
 ) -> None:
     """Find the spots of photographs: colonies, seedlings, lesions."""
+    reviewed = None if learn is None else _reviewed(learn, kind, taught)
     request = parse_request(
         with_units(
             {
-                "kind": kind,
+                "kind": kind if reviewed is None else reviewed[0].options.kind,
                 "diameter": diameter,
                 "colour": colour,
                 "polarity": polarity,
@@ -106,7 +112,9 @@ def detect(
     )
     paths = gather_photographs(photographs)
     make_folder(out)
-    show_overruled(request)
+    if reviewed is not None:
+        request = replace(request, taught=_learned(reviewed, out))
+    _show_overruled(request)
     tasks = [DetectTask(path, request, out, keep_amendments) for path in paths]
     # Of one photograph the rounds of planted objects are shown, of many the photographs.
     rounds = 0 if request.planted is None or len(tasks) > 1 else request.planted.rounds
@@ -128,7 +136,37 @@ def detect(
     exit_if_failed(failures, len(results))
 
 
-def show_overruled(request: DetectRequest) -> None:
+def _reviewed(folder: Path, kind: str | None, taught: str | None) -> list[Reviewed]:
+    """Read the sheets to learn from, and say what is left out."""
+    if taught is not None:
+        raise OptionWrong("--learn and --taught both say what was learned; keep one of them.")
+    reviewed, left_out = gather_reviewed(folder)
+    own = reviewed[0].options.kind
+    if kind not in (None, own):
+        raise OptionWrong(
+            f"--kind {kind} is asked for, but the sheets in {folder} are of {own};"
+            " leave --kind out, or learn from sheets of that kind."
+        )
+    if left_out:
+        sheets = "1 sheet" if left_out == 1 else f"{left_out} sheets"
+        typer.echo(f"Nothing is learned from {sheets} that nobody has amended.", err=True)
+    return reviewed
+
+
+def _learned(reviewed: list[Reviewed], out: Path) -> Taught:
+    """Learn, write down what was learned, and say it."""
+    from detect.learning import learn, looks_at_most  # loads scipy, which help can do without
+
+    with progress_on_terminal("Learning", looks_at_most(len(reviewed))) as progress:
+        taught = learn(reviewed, tool_version=tool_version(), progress=progress)
+    path = out / TAUGHT_NAME
+    write_text_atomically(path, taught_text(taught))
+    typer.echo(told(taught))
+    show_path("What was learned", path)
+    return taught
+
+
+def _show_overruled(request: DetectRequest) -> None:
     """Say on stderr which given options win over what was learned."""
     if request.taught is None:
         return

@@ -14,6 +14,7 @@ from detect.doubt import MODELS, DoubtModel
 from detect.errors import OptionWrong
 from detect.judge import Judgement, judged
 from detect.outline import settle_outlines
+from detect.own_colour import own_colours
 from detect.photograph import Photograph
 from detect.plants import settle_plants
 from detect.scale import Scale
@@ -94,7 +95,8 @@ def find_spots(
         photograph, area, options, (smallest, largest), model=model, direction=direction
     )
     if taught is not None:
-        judgement = replace(judgement, doubt=taught.calibration.applied(judgement.doubt))
+        colours = own_colours(view.lab, judgement.candidates)
+        judgement = replace(judgement, doubt=taught.doubt(judgement.doubt, colours))
     contrast = judgement.contrast
     rows = choose(judgement.candidates, judgement.doubt, highest_doubt=options.most_doubt)
     spots = _spots(view, judgement, rows, plants=options.kind == "seedlings")

@@ -30,7 +30,8 @@ from detect.readers import READERS, AreaWord
 from detect.scale import Scale
 from detect.scale_request import ScaleRequest, check_one_scale
 from detect.sheet import SCHEMA, PhotographIdentity, Sheet
-from detect.taught import Taught, read_taught
+from detect.taught import Taught
+from detect.taught_file import identity_of, read_taught
 from detect.wanted import DetectOptions
 
 
@@ -116,7 +117,7 @@ class DetectRequest:
         if isinstance(self.where, Path) and self.where.is_file():
             asked["area_sha256"] = sha256(self.where.read_bytes()).hexdigest()
         if self.taught is not None:
-            asked["taught_sha256"] = self.taught.identity
+            asked["taught_sha256"] = identity_of(self.taught)
         asked["planted"] = None if self.planted is None else self.planted.rounds
         return {name: value for name, value in asked.items() if value is not None}
 

@@ -1,28 +1,19 @@
-"""What was learned from corrections: the record, and the small file it is kept in."""
+"""What was learned from corrections, and how it completes what a person asks for."""
 
 from __future__ import annotations
 
 import math
-import tomllib
 from dataclasses import dataclass, replace
-from hashlib import sha256
-from pathlib import Path
-from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
 
 from detect.calibration import Calibration
 from detect.contrast import Colour, Polarity
-from detect.doubt import FEATURES, DoubtModel
-from detect.errors import DetectError, TaughtUnreadable
-from detect.lengths import Length, parse_pair
+from detect.doubt import DoubtModel
+from detect.lengths import Length
+from detect.own_colour import OwnColour
 from detect.wanted import DetectOptions, Kind
-
-SCHEMA = 1
-TAUGHT_NAME = "taught.toml"
-_IMPOSSIBLE = (KeyError, TypeError, ValueError, AttributeError, DetectError)
-_AXES = ("lightness", "green_to_red", "blue_to_yellow")
 
 
 @dataclass(frozen=True, slots=True)
@@ -39,21 +30,28 @@ class Lessons:
         Those of them that a person placed.
     struck : int
         Spots that a person struck.
+    f1_before, f1_after : float
+        F1 on the reviewed photographs as they had been detected, and judged by what the others
+        teach.
 
     Raises
     ------
     ValueError
-        If a number is negative, more were placed than are real, or no photograph is named.
+        If a number is impossible, more were placed than are real, or no photograph is named.
     """
 
     photographs: tuple[tuple[str, str], ...]
     real: int
     placed: int
     struck: int
+    f1_before: float
+    f1_after: float
 
     def __post_init__(self) -> None:
         if not self.photographs:
             raise ValueError("no photograph is named")
+        if not (0 <= self.f1_before <= 1 and 0 <= self.f1_after <= 1):
+            raise ValueError(f"an F1 of {self.f1_before:g} or {self.f1_after:g} cannot be")
         if not 0 <= self.placed <= self.real or self.struck < 0:
             raise ValueError(
                 f"{self.real} real spots, {self.placed} placed and {self.struck} struck cannot be"
@@ -80,13 +78,17 @@ class Taught:
     highest_doubt : float
         Spots of more doubt (after calibration) are not kept.
     calibration : Calibration
-        From the model's doubt to the doubt that is shown.
+        From the model's doubt, own colour counted in, to the doubt that is shown.
+    own_colour : OwnColour or None
+        How a candidate's own colour changes its doubt.
     colour, polarity : Colour, Polarity
         As they were asked for when the reviewed sheets were made.
     direction : tuple of three floats or None
         Unit direction in L*, a*, b* from ground to object; None leaves it to colour and polarity.
     diameter : pair of Length or None
         Smallest and largest diameter; None leaves them to the kind or the picture.
+    sized : bool
+        Whether the diameters were learned, not just asked for.
     tool_version : str
         Version of the program that learned.
 
@@ -103,10 +105,12 @@ class Taught:
     model: DoubtModel
     highest_doubt: float
     calibration: Calibration
+    own_colour: OwnColour | None = None
     colour: Colour = "auto"
     polarity: Polarity = "auto"
     direction: tuple[float, float, float] | None = None
     diameter: tuple[Length, Length] | None = None
+    sized: bool = False
     tool_version: str = ""
 
     def __post_init__(self) -> None:
@@ -119,15 +123,31 @@ class Taught:
         )
         if not all(map(math.isfinite, (self.model.intercept, *self.model.weights))):
             raise ValueError("a weight is not finite")
+        if self.sized and self.diameter is None:
+            raise ValueError("the diameters that were learned are missing")
         if self.direction is not None:
             length = math.hypot(*self.direction)
             if len(self.direction) != 3 or not abs(length - 1) < 0.01:
                 raise ValueError(f"the direction {self.direction} has not the length 1")
 
-    @property
-    def identity(self) -> str:
-        """The sha256 of its text."""
-        return sha256(taught_text(self).encode()).hexdigest()
+    def doubt(
+        self, doubt: NDArray[np.float64], colours: NDArray[np.float64]
+    ) -> NDArray[np.float64]:
+        """Return the doubt that is shown of candidates with these own (n, 3) colours.
+
+        Parameters
+        ----------
+        doubt : ndarray of shape (n,)
+            By the model alone.
+        colours : ndarray of shape (n, 3)
+            L*, a*, b* of each candidate.
+
+        Returns
+        -------
+        ndarray of shape (n,)
+        """
+        eased = doubt if self.own_colour is None else self.own_colour.eased(doubt, colours)
+        return self.calibration.applied(eased)
 
     def completed(self, asked: DetectOptions) -> DetectOptions:
         """Return options in which what a person did not give is as it was learned.
@@ -178,142 +198,26 @@ def _names_colour(asked: DetectOptions) -> bool:
     return asked.colour != "auto" or asked.polarity != "auto"
 
 
-def taught_text(taught: Taught) -> str:
-    """Write what was learned so that a person can read it, and `read_taught` reads it back.
-
-    Parameters
-    ----------
-    taught : Taught
-
-    Returns
-    -------
-    str
-        TOML; numbers are written so that they read back the same.
-    """
+def told(taught: Taught) -> str:
+    """Say in two sentences what was learned from what, and what it is worth."""
     lessons = taught.lessons
-    lines = [
-        "# What corrections taught the detector; use it with: strewn detect --taught FILE",
-        f"schema = {SCHEMA}",
-        f"tool_version = {_quoted(taught.tool_version)}",
-        f"kind = {_quoted(taught.kind)}",
-        "",
-        "[learned_from]",
-        f"spots_real = {lessons.real}  # left counted, or placed",
-        f"spots_placed = {lessons.placed}  # those of them that had been missed",
-        f"spots_struck = {lessons.struck}",
-        "photographs = [",
-        *(
-            f"  {{ name = {_quoted(name)}, sha256 = {_quoted(digest)} }},"
-            for name, digest in lessons.photographs
-        ),
-        "]",
-        "",
-        "[objects]",
-    ]
-    if taught.diameter is not None:
-        smallest, largest = taught.diameter
-        lines.append(f"diameter = {_quoted(f'{smallest}-{largest}')}")
-    lines += [f"colour = {_quoted(taught.colour)}", f"polarity = {_quoted(taught.polarity)}"]
+    photographs = len(lessons.photographs)
+    parts = []
+    if taught.own_colour is not None:
+        parts.append("the weights of the doubt")
+    if taught.sized:
+        parts.append("the range of sizes")
     if taught.direction is not None:
-        axes = zip(_AXES, taught.direction, strict=True)
-        lines += ["", "[direction]  # from ground to object, in L*, a*, b*"]
-        lines += [f"{name} = {value!r}" for name, value in axes]
-    lines += [
-        "",
-        "[doubt]",
-        f"highest = {taught.highest_doubt!r}  # what is more doubtful is left out",
-        "",
-        "[doubt.weights]  # logit(1 - doubt) = intercept + sum of weight x feature",
-        *(f"{name} = {getattr(taught.model, name)!r}" for name in ("intercept", *FEATURES)),
-        "",
-        "[doubt.calibration]  # logit(doubt shown) = intercept + slope x logit(doubt)",
-        f"intercept = {taught.calibration.intercept!r}",
-        f"slope = {taught.calibration.slope!r}",
-    ]
-    return "\n".join(lines) + "\n"
-
-
-def read_taught(path: Path) -> Taught:
-    """Read what was learned.
-
-    Parameters
-    ----------
-    path : Path
-        A file that `taught_text` wrote.
-
-    Returns
-    -------
-    Taught
-
-    Raises
-    ------
-    TaughtUnreadable
-        If the file is missing, damaged, or written by a later version.
-    """
-    try:
-        values = tomllib.loads(path.read_text(encoding="utf-8-sig"))
-    except OSError as trouble:
-        reason = (trouble.strerror or str(trouble)).lower()
-        raise TaughtUnreadable(
-            f"{path} cannot be read ({reason}); name a {TAUGHT_NAME} that --learn wrote."
-        ) from trouble
-    except ValueError as trouble:
-        raise TaughtUnreadable(_damaged(path, trouble)) from trouble
-    schema = values.get("schema")
-    if schema != SCHEMA:
-        raise TaughtUnreadable(
-            f"{path.name} has schema {schema!r}, but this version reads {SCHEMA};"
-            " use the version that wrote it, or learn again with --learn."
-        )
-    try:
-        return _taught_from(values)
-    except _IMPOSSIBLE as trouble:
-        raise TaughtUnreadable(_damaged(path, trouble)) from trouble
-
-
-def _taught_from(values: dict[str, Any]) -> Taught:
-    """Build what a file's values describe."""
-    learned, objects, doubt = values["learned_from"], values["objects"], values["doubt"]
-    weights = doubt["weights"]
-    unknown = set(weights) - {"intercept", *FEATURES}
-    if unknown:
-        raise ValueError(f"the weight {min(unknown)!r} is not known")
-    model = DoubtModel(**{"intercept": weights["intercept"], **dict.fromkeys(FEATURES, 0.0)})
-    diameter = objects.get("diameter")
-    direction = values.get("direction")
-    return Taught(
-        values["kind"],
-        Lessons(
-            tuple((str(entry["name"]), str(entry["sha256"])) for entry in learned["photographs"]),
-            int(learned["spots_real"]),
-            int(learned["spots_placed"]),
-            int(learned["spots_struck"]),
-        ),
-        replace(model, **{name: float(value) for name, value in weights.items()}),
-        float(doubt["highest"]),
-        Calibration(**{name: float(value) for name, value in doubt["calibration"].items()}),
-        objects["colour"],
-        objects["polarity"],
-        None if direction is None else _direction_from(direction),
-        None if diameter is None else parse_pair(diameter, name="diameter", separator="-"),
-        str(values["tool_version"]),
+        parts.append("the direction of colour")
+    what = "nothing that is better than what was known" if not parts else _listed(parts)
+    return (
+        f"Learned from {photographs} photograph{'' if photographs == 1 else 's'}"
+        f" ({lessons.real} real spots, {lessons.placed} of them placed; {lessons.struck} struck):"
+        f" {what}. F1 there was {lessons.f1_before:.3f}; where each part is judged by what the"
+        f" others teach, it is {lessons.f1_after:.3f}."
     )
 
 
-def _direction_from(values: dict[str, Any]) -> tuple[float, float, float]:
-    """Read a direction by the names of its axes."""
-    lightness, red, yellow = (float(values[name]) for name in _AXES)
-    return lightness, red, yellow
-
-
-def _damaged(path: Path, trouble: Exception) -> str:
-    """Say what is damaged about a file, and what to do."""
-    reason = f"{trouble.args[0]!r} is missing" if isinstance(trouble, KeyError) else str(trouble)
-    return f"{path.name} is damaged ({reason.rstrip('.')}); learn again with --learn."
-
-
-def _quoted(text: str) -> str:
-    """Write a text as a TOML string, which holds control characters as escapes."""
-    plain = text.encode("utf-8", errors="replace").decode("utf-8")
-    plain = plain.replace("\\", "\\\\").replace('"', '\\"')
-    return '"' + "".join(c if c.isprintable() else f"\\U{ord(c):08x}" for c in plain) + '"'
+def _listed(parts: list[str]) -> str:
+    """Put parts into one phrase."""
+    return parts[0] if len(parts) == 1 else f"{', '.join(parts[:-1])} and {parts[-1]}"

@@ -16,21 +16,24 @@ from detect.doubt import GENERAL
 from detect.errors import OptionWrong, TaughtUnreadable
 from detect.find import find_spots
 from detect.lengths import Length
+from detect.own_colour import OwnColour
 from detect.requests import parse_request
 from detect.sheet import read_sheet
-from detect.taught import SCHEMA, Lessons, Taught, read_taught, taught_text
+from detect.taught import Lessons, Taught
+from detect.taught_file import SCHEMA, identity_of, read_taught, taught_text
 from detect.wanted import DetectOptions
 from tests.discs import DIAMETER, scattered, write_discs
 from tests.scenes import SpotScene
 from tests.scenes import scattered as discs_of
 
-LESSONS = Lessons((('dish "1"\n.jpg', "a" * 64), ("böd.png", "b" * 64)), 41, 3, 7)
+LESSONS = Lessons((('dish "1"\n.jpg', "a" * 64), ("böd.png", "b" * 64)), 41, 3, 7, 0.8, 0.85)
 TAUGHT = Taught(
     "spots",
     LESSONS,
     GENERAL,
     0.47,
     Calibration(0.25, 0.8),
+    OwnColour((50.5, 10.0, -3.0), (0.0, 0.0, 0.0)),
     direction=(-0.6, 0.8, 0.0),
     diameter=(Length(11.5, "px"), Length(24, "px")),
     tool_version="0.1",
@@ -47,7 +50,9 @@ def written(folder: Path, text: str) -> Path:
     "taught",
     [
         TAUGHT,
-        replace(TAUGHT, direction=None, diameter=None, colour="green", kind="seedlings"),
+        replace(
+            TAUGHT, own_colour=None, direction=None, diameter=None, colour="green", kind="seedlings"
+        ),
         replace(
             TAUGHT, direction=None, polarity="dark", diameter=(Length(1, "mm"), Length(6, "mm"))
         ),
@@ -56,10 +61,10 @@ def written(folder: Path, text: str) -> Path:
 def test_what_is_written_is_what_is_read(taught: Taught, tmp_path: Path) -> None:
     path = written(tmp_path, taught_text(taught))
     assert read_taught(path) == taught
-    assert read_taught(path).identity == taught.identity
+    assert identity_of(read_taught(path)) == identity_of(taught)
     path.write_text("# a person's remark\n" + path.read_text(encoding="utf-8"), encoding="utf-8")
-    assert read_taught(path).identity == taught.identity
-    assert replace(taught, highest_doubt=0.5).identity != taught.identity
+    assert identity_of(read_taught(path)) == identity_of(taught)
+    assert identity_of(replace(taught, highest_doubt=0.5)) != identity_of(taught)
 
 
 def test_the_file_can_be_read_by_a_person() -> None:
@@ -114,7 +119,7 @@ def test_a_file_that_is_not_there_or_no_text_is_refused(tmp_path: Path) -> None:
 
 def test_nothing_comes_from_no_photographs() -> None:
     with pytest.raises(ValueError, match="no photograph is named"):
-        Lessons((), 10, 0, 0)
+        Lessons((), 10, 0, 0, 0.5, 0.5)
 
 
 def test_what_a_person_asks_for_wins() -> None:
@@ -157,7 +162,7 @@ def test_a_request_knows_what_was_taught(tmp_path: Path) -> None:
     request = parse_request({"taught": "taught.toml"}, folder=tmp_path)
     assert request.options.kind == "lesions"
     assert request.taught is not None
-    assert request.as_dict()["taught_sha256"] == request.taught.identity
+    assert request.as_dict()["taught_sha256"] == identity_of(request.taught)
     with pytest.raises(OptionWrong, match="learned is about lesions, but colonies are asked for"):
         parse_request({"taught": "taught.toml", "kind": "colonies"}, folder=tmp_path)
     with pytest.raises(OptionWrong, match=r"taught must be a file such as taught.toml, not 3"):
@@ -175,7 +180,7 @@ def test_the_command_says_which_options_win_over_what_was_learned(tmp_path: Path
     quiet = run(*given)
     assert (quiet.exit_code, quiet.stderr) == (0, "")
     request = read_sheet(tmp_path / "out" / "a.sheet.json").settings["request"]
-    assert request["taught_sha256"] == read_taught(taught).identity
+    assert request["taught_sha256"] == identity_of(read_taught(taught))
     said = run(*given, "--diameter", DIAMETER)
     assert said.exit_code == 0
     assert said.stderr == "--diameter as given is used instead of what was learned.\n"
