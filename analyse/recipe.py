@@ -23,7 +23,14 @@ _BOUNDS = {"seed": (0, _MOST), "simulations": (FEWEST_SIMULATIONS, MOST_SIMULATI
 # A photograph's own keys replace those of its set; a new source of the scale, or another way to
 # lay quadrats, replaces the set's as a whole.
 _RIVALS = (
-    (("mm_per_pixel",), ("dish",), ("line", "line_length"), ("corners", "plot")),
+    (
+        ("mm_per_pixel",),
+        ("dish",),
+        ("line", "line_length"),
+        ("ruler",),
+        ("corners", "plot"),
+        ("height", "focal_length", "sensor_width"),
+    ),
     (("quadrat",), ("grid",), ("rings",)),
 )
 

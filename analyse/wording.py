@@ -22,8 +22,12 @@ MINUS = "\u2212"
 _SOURCES = {
     "mm-per-pixel": "given in millimetres per pixel",
     "line": "from a line of known length",
+    "ruler": "from a banded bar of known length, found in the picture",
     "dish": "from the dish's inner diameter",
     "corners": "from the four corners of a rectangle",
+    "plates": "from the four corner plates of a plot, found in the picture",
+    "fiducials": "from the four fiducial marks of a plot, found in the picture",
+    "height": "from the camera's height, focal length and sensor",
 }
 _CLASSES_READ = 12  # frequencies of more classes are not read out
 

@@ -9,16 +9,17 @@ import typer
 from typer.core import TyperCommand
 
 from detect.contrast import Colour, Polarity
+from detect.flight import HEIGHT_UNCERTAINTY
 from detect.lengths import parse_length
 from detect.planted import PlantedOptions
-from detect.readers import AreaWord
+from detect.readers import AreaWord, MarkKind
 from detect.wanted import DetectOptions, Kind
 
 WHAT, SCALE, AREA, OUTPUT = "What to find", "Scale", "Study area", "Output"
 TRUST = "What is missed"
 OUT = Path("strewn-out")
 _DEFAULTS = DetectOptions()
-_SPELLED = {"dish": "--dish-mm", "line_length": "--line-mm"}
+_SPELLED = {"dish": "--dish-mm", "line_length": "--line-mm", "ruler": "--ruler-mm"}
 
 
 def _option(name: str, panel: str, text: str, metavar: str, default: Any = None) -> Any:
@@ -104,18 +105,49 @@ LineOption = Annotated[
 LineLengthOption = Annotated[
     str | None, _option("--line-mm", SCALE, "True length of that line, in mm.", "NUMBER")
 ]
+RulerOption = Annotated[
+    str | None,
+    _option(
+        "--ruler-mm", SCALE, "Length of a banded bar to be found in the picture, in mm.", "NUMBER"
+    ),
+]
 CornersOption = Annotated[
     str | None,
     _option(
         "--corners",
         SCALE,
-        "Corners of a known rectangle in pixels: top left, top right, bottom right, bottom left.",
-        "X1,Y1,...,X4,Y4",
+        "Corners of a known rectangle in pixels (top left, top right, bottom right, bottom left);"
+        f" or {' or '.join(get_args(MarkKind))}, to be found there.",
+        "X1,Y1,...|MARKS",
     ),
 ]
 PlotOption = Annotated[
     str | None,
     _option("--plot", SCALE, "Width and height of that rectangle, such as 1000x750mm.", "WxH"),
+]
+HeightOption = Annotated[
+    str | None,
+    _option(
+        "--height", SCALE, "Height of a camera that looked straight down, such as 30m.", "LENGTH"
+    ),
+]
+FocalLengthOption = Annotated[
+    str | None,
+    _option("--focal-length", SCALE, "True focal length of its lens, such as 8.8mm.", "LENGTH"),
+]
+SensorWidthOption = Annotated[
+    str | None,
+    _option("--sensor-width", SCALE, "Longer side of its sensor, such as 13.2mm.", "LENGTH"),
+]
+ScaleUncertaintyOption = Annotated[
+    str | None,
+    _option(
+        "--scale-uncertainty",
+        SCALE,
+        "Standard uncertainty of the known length, such as 1%.",
+        "PERCENT",
+        f"{100 * HEIGHT_UNCERTAINTY:g}% with --height, else 0%",
+    ),
 ]
 AreaOption = Annotated[
     str | None,
@@ -224,7 +256,7 @@ def with_units(values: dict[str, str | None]) -> dict[str, Any]:
     Returns
     -------
     dict
-        The same, with the dish and the line as lengths in millimetres.
+        The same, with the dish, the line and the ruler as lengths in millimetres.
 
     Raises
     ------
@@ -232,7 +264,7 @@ def with_units(values: dict[str, str | None]) -> dict[str, Any]:
         If one of them is no positive length.
     """
     read: dict[str, Any] = dict(values)
-    for key in ("dish", "line_length"):
+    for key in ("dish", "line_length", "ruler"):
         text = values.get(key)
         if text is not None:
             read[key] = parse_length(text, name=spelled(key), unit="mm")

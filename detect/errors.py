@@ -9,6 +9,7 @@
     └── PhotographFailed        one photograph cannot be done (exit 1; others go on)
         ├── PhotographUnreadable    the file is no image, is damaged or is too large
         ├── AreaNotFound            the dish or leaf cannot be found in the picture
+        ├── ScaleNotFound           the marks or the bar of known length cannot be found in the picture
         ├── SheetUnreadable         a sheet, or its amendments, cannot be read
         └── AmendmentsPresent       a sheet with hand edits would be overwritten
     FolderNotWritable (a RequestWrong) results cannot be written
@@ -57,6 +58,10 @@ class PhotographUnreadable(PhotographFailed):
 
 class AreaNotFound(PhotographFailed):
     """The dish or the leaf cannot be found in the picture."""
+
+
+class ScaleNotFound(PhotographFailed):
+    """The corner marks, or the bar of known length, cannot be found in the picture."""
 
 
 class SheetUnreadable(PhotographFailed):

@@ -15,6 +15,7 @@ from detect.planted import PlantedOptions
 from detect.wanted import Kind
 
 AreaWord = Literal["dish", "frame", "plot", "leaf"]
+MarkKind = Literal["plates", "fiducials"]
 Four = tuple[float, float, float, float]
 Corners = tuple[tuple[float, float], ...]
 
@@ -116,8 +117,15 @@ def _four(value: Any, name: str) -> Four:
     return x1, y1, x2, y2
 
 
-def _corners(value: Any, name: str) -> Corners:
-    """Read four points."""
+def _corners(value: Any, name: str) -> Corners | MarkKind:
+    """Read four points, or a word for the marks that are to be found there."""
+    if value in get_args(MarkKind):
+        return value  # type: ignore[no-any-return]  # one of the words
+    if isinstance(value, str) and not any(sign.isdigit() for sign in value):
+        words = " or ".join(get_args(MarkKind))
+        raise OptionWrong(
+            f"{name} must be 8 numbers with commas between, or {words} to be found, not {value!r}."
+        )
     flat = numbers(value, 8, name)
     return tuple(zip(flat[::2], flat[1::2], strict=True))
 
@@ -127,6 +135,15 @@ def _taught(value: Any, name: str) -> Path:
     if not isinstance(value, str | Path) or not str(value):
         raise OptionWrong(f"{name} must be a file such as taught.toml, not {value!r}.")
     return Path(value)
+
+
+def _percent(value: Any, name: str) -> float:
+    """Read a share in percent, such as 1%, above 0 and below 100."""
+    text = value.strip() if isinstance(value, str) else ""
+    share = _finite(text[:-1]) / 100 if text.endswith("%") else math.nan
+    if not 0 < share < 1:
+        raise OptionWrong(f"{name} must be a share of a length such as 1%, not {value!r}.")
+    return share
 
 
 READERS: dict[str, Callable[[Any, str], Any]] = {
@@ -139,8 +156,13 @@ READERS: dict[str, Callable[[Any, str], Any]] = {
     "dish": _length,
     "line": _four,
     "line_length": _length,
+    "ruler": _length,
     "corners": _corners,
     "plot": _sides,
+    "height": _length,
+    "focal_length": _length,
+    "sensor_width": _length,
+    "scale_uncertainty": _percent,
     "area": _area,
     "inset": _length,
     "taught": _taught,

@@ -10,8 +10,6 @@ from importlib.metadata import version
 from pathlib import Path
 from typing import Any
 
-import numpy as np
-
 from detect.area import (
     StudyArea,
     dish_area,
@@ -153,7 +151,7 @@ def detect_photograph(
     request.scale.check_positions(photograph)
     dish_needed = request.where == "dish" or request.scale.dish is not None
     dish = find_dish(photograph) if dish_needed else None
-    scale = request.scale.resolve(dish)
+    scale = request.scale.resolve(photograph, dish)
     area = _study_area(photograph, request, scale, dish)
     found = find_spots(photograph, area, request.options, scale=scale, taught=request.taught)
     settings = {
@@ -192,16 +190,20 @@ def _study_area(
     """Find where spots count, then step in from the edge, at the scale of the area's middle."""
     inset = request.area.inset
     if inset is None:
-        return _whole_area(photograph, request, dish, 0.0)
+        return _whole_area(photograph, request, scale, dish, 0.0)
     mm_per_px: float | None = None
     if scale is not None:
-        middle = _whole_area(photograph, request, dish, 0.0).polygon.centroid
+        middle = _whole_area(photograph, request, scale, dish, 0.0).polygon.centroid
         mm_per_px = float(scale.mm_per_px([[middle.x, middle.y]])[0])
-    return _whole_area(photograph, request, dish, inset.to_px(mm_per_px))
+    return _whole_area(photograph, request, scale, dish, inset.to_px(mm_per_px))
 
 
 def _whole_area(
-    photograph: Photograph, request: DetectRequest, dish: Dish | None, inset_px: float
+    photograph: Photograph,
+    request: DetectRequest,
+    scale: Scale | None,
+    dish: Dish | None,
+    inset_px: float,
 ) -> StudyArea:
     """Return the area asked for, `inset_px` pixels inwards."""
     where = request.where
@@ -209,8 +211,8 @@ def _whole_area(
         return polygon_area(where, photograph.width, photograph.height, inset_px=inset_px)
     if where == "dish" and dish is not None:
         return dish_area(dish, inset_px=inset_px)
-    if where == "plot" and request.scale.corners is not None:
-        return plot_area(np.array(request.scale.corners), inset_px=inset_px)
+    if where == "plot" and scale is not None:
+        return plot_area(request.scale.plot_outline(scale), inset_px=inset_px)
     if where == "leaf":
         return leaf_area(photograph, inset_px=inset_px)
     return frame_area(photograph.width, photograph.height, inset_px=inset_px)

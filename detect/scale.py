@@ -17,7 +17,9 @@ from detect.errors import OptionWrong
 if TYPE_CHECKING:
     from detect.dish import Dish
 
-ScaleSource = Literal["mm-per-pixel", "line", "dish", "corners"]
+ScaleSource = Literal[
+    "mm-per-pixel", "line", "ruler", "dish", "corners", "plates", "fiducials", "height"
+]
 Points = NDArray[np.float64]
 
 DISH_UNCERTAINTY = 0.002  # of a diameter: how well the agar's edge is told from its shading
@@ -32,7 +34,7 @@ class Scale:
     ----------
     matrix : ndarray of shape (3, 3)
         Homography from pixel x, y, 1 to millimetre x, y, w; a plain scale is diagonal.
-    source : {"mm-per-pixel", "line", "dish", "corners"}
+    source : ScaleSource
         What the map was taken from.
     relative_uncertainty : float
         Standard uncertainty of a length, as a fraction of it.

@@ -152,27 +152,36 @@ inset = "1mm"
 diameter = "1.2-6mm"
 factors = {{ batch = "A" }}
 
-# Seed beds. The four black squares mark a rectangle of known sides, so a tilted photograph is no harm.
+# Seed beds. The black squares of four plates mark a rectangle of known sides, so a tilted photograph is no
+# harm. They are found by themselves; where one is covered, give a photograph's corners as below.
 [[set]]
 match = "plot_*.jpg"
 kind = "seedlings"
 area = "plot"
+corners = "plates"
 plot = "1000x750mm"
 diameter = "12-36mm"
 
-# Single leaves on a board. The banded bar beside each gives the scale.
+# Single leaves on a board. The banded bar beside each gives the scale; any other line of known length can
+# be given by its ends, as below.
 [[set]]
 match = "leaf_*.jpg"
 kind = "lesions"
 area = "leaf"
+ruler = "50mm"           # from end to end
 diameter = "1.4-5mm"
 """
+
+
+READ_OFF = ("plot_03", "leaf_01")  # whose positions stand in the recipe; marks tell the others
 
 
 def write_recipe(path: Path, shots: dict[str, Shot]) -> None:
     """Write `survey.toml`: the sets, and what a careful person would read off each photograph."""
     parts = [RECIPE_HEAD]
     for name, shot in shots.items():
+        if name not in READ_OFF:
+            continue
         if isinstance(shot, Plot):
             listed = ", ".join(f"[{x:.1f}, {y:.1f}]" for x, y in corners_px(shot))
             parts.append(

@@ -184,8 +184,13 @@ def test_objects_stand_where_the_truth_says(name: str) -> None:
 def test_recipe_holds_what_a_careful_person_reads_off() -> None:
     recipe = tomllib.loads((FOLDER / "survey.toml").read_text(encoding="utf-8"))
     assert [s["kind"] for s in recipe["set"]] == ["colonies", "seedlings", "lesions"]
+    assert [s.get("corners") for s in recipe["set"]] == [None, "plates", None]
+    assert [s.get("ruler") for s in recipe["set"]] == [None, None, "50mm"]
+    assert {"plot_03.jpg", "leaf_01.jpg"} <= set(recipe["photographs"])
     for name, row in rows().items():
         noted = recipe["photographs"].get(f"{name}.jpg", {})
+        if not noted:
+            continue
         if row["kind"] == "seedlings":
             true = [[float(row[f"x{k}"]), float(row[f"y{k}"])] for k in range(1, 5)]
             assert np.allclose(noted["corners"], true, atol=0.051)

@@ -60,6 +60,9 @@ def test_the_command_line_spells_the_same_request() -> None:
         ({"dish": "86mm", "area": "frame"}, "frame"),
         ({"line": [0, 0, 10, 0], "line_length": "1cm"}, "frame"),
         ({"area": "leaf", "mm_per_pixel": 0.1}, "leaf"),
+        ({"corners": "plates", "plot": "10x7cm"}, "plot"),
+        ({"corners": "fiducials", "plot": "10x7cm", "area": "frame"}, "frame"),
+        ({"ruler": "50mm"}, "frame"),
     ],
 )
 def test_the_area_goes_with_the_scale_unless_named(values: dict[str, Any], where: str) -> None:
@@ -87,6 +90,23 @@ def test_the_area_goes_with_the_scale_unless_named(values: dict[str, Any], where
         ({"line": "1,2,3"}, "LINE must be 4 numbers with commas between, not '1,2,3'"),
         ({"line": "1,2,3,nan"}, "LINE must be 4 numbers with commas between"),
         ({"line": 5}, "LINE must be 4 numbers with commas between, not 5"),
+        (
+            {"corners": "found"},
+            "CORNERS must be 8 numbers with commas between, or plates or fiducials",
+        ),
+        ({"ruler": "50px"}, "50px is in pixels, but millimetres are needed"),
+        ({"ruler": "50mm", "dish": "86mm"}, "DISH and RULER both tell the scale; keep one"),
+        ({"corners": "plates"}, "CORNERS needs PLOT beside it; give both"),
+        (
+            {"height": "30m"},
+            "HEIGHT needs FOCAL_LENGTH and SENSOR_WIDTH beside it; give all three",
+        ),
+        ({"sensor_width": "13mm", "focal_length": "9mm"}, "FOCAL_LENGTH needs HEIGHT beside it"),
+        ({"scale_uncertainty": "1%"}, "SCALE_UNCERTAINTY has no scale to be the uncertainty of"),
+        ({"scale_uncertainty": "1", "mm_per_pixel": 1}, "must be a share of a length such as 1%"),
+        ({"scale_uncertainty": 0.01, "mm_per_pixel": 1}, "such as 1%, not 0.01"),
+        ({"scale_uncertainty": "100%", "mm_per_pixel": 1}, "such as 1%, not '100%'"),
+        ({"scale_uncertainty": "nan%", "mm_per_pixel": 1}, "such as 1%, not 'nan%'"),
         ({"corners": [[1, 2], [3, 4]]}, r"CORNERS must be 8 numbers with commas between, not \[\["),
         ({"plot": "1000mm"}, "PLOT must be two lengths with a unit such as 1000x750mm"),
         ({"area": "moon"}, "AREA must be one of dish, frame, plot, leaf or a GeoJSON file"),
