@@ -60,10 +60,7 @@ def shrunk(photograph: Photograph, longest_side: int) -> tuple[Array, float]:
     Of 16 bits that are hardly used (a 12-bit camera's), the used part is stretched.
     """
     factor = min(1.0, longest_side / max(photograph.width, photograph.height))
-    array: Array = photograph.stored
-    if factor < 1.0:
-        size = (round(photograph.width * factor), round(photograph.height * factor))
-        array = cv2.resize(array, size, interpolation=cv2.INTER_AREA)
+    array: Array = photograph.reduced(shrink=factor)
     if array.dtype == np.uint16:
         top = float(np.percentile(array[::7, ::7], 99.9))
         gain = 1.0 if top > _DIM else 60_000 / max(top, 1.0)
@@ -71,9 +68,25 @@ def shrunk(photograph: Photograph, longest_side: int) -> tuple[Array, float]:
     return array, array.shape[1] / photograph.width
 
 
-def find_circle(photograph: Photograph) -> RoughCircle:
-    """Return the circle whose line is best seen; of several about as well seen, the largest."""
-    small, factor = shrunk(photograph, LONGEST_SIDE)
+def find_circle(picture: Array, factor: float) -> RoughCircle:
+    """Return the circle whose line is best seen; of several about as well seen, the largest.
+
+    Parameters
+    ----------
+    picture : ndarray of shape (rows, columns, 3), uint8
+        The photograph made `factor` times as large.
+    factor : float
+
+    Returns
+    -------
+    RoughCircle
+        In pixels of the photograph.
+    """
+    shrink = min(1.0, LONGEST_SIDE / max(picture.shape[:2]))
+    small, factor = picture, factor * shrink
+    if shrink < 1.0:
+        size = (round(picture.shape[1] * shrink), round(picture.shape[0] * shrink))
+        small = cv2.resize(picture, size, interpolation=cv2.INTER_AREA)
     edges = _thin_edges(small)
     shorter = min(small.shape[:2])
     centres = _likely_centres(edges, small.shape[:2])

@@ -12,6 +12,7 @@ Communications in Statistics A 6 (1977) 813-827: the fit that ignores stray edge
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass
 from typing import Any
 
@@ -25,10 +26,13 @@ RAYS = 360
 ANGLES = np.arange(RAYS) * 2 * np.pi / RAYS
 RAY_DIRECTIONS = np.column_stack([np.cos(ANGLES), np.sin(ANGLES)])
 SHAPES = np.column_stack([np.ones(RAYS), RAY_DIRECTIONS, np.cos(2 * ANGLES), np.sin(2 * ANGLES)])
-_STRONG = 4.0  # an edge is fully strong at so many times the ordinary slope
+_AROUND = 0.05  # within this share of the radius the ordinary slope is taken
+_BROAD = 0.012  # what changes more slowly is shading, no edge
+_STRONG = 3.0  # an edge is fully strong at so many times the ordinary slope
 _ON_RING = 0.003  # an edge so near a ring lies on it
-_NEAR = (-0.006, -0.003, 0.0, 0.003, 0.006)
-_EVERY = 4  # rays used while searching
+_DARK = 16.0
+_EVERY = 6  # rays used while searching
+_AT_ONCE = 32  # shapes
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -57,6 +61,27 @@ class Frame:
         ).astype(np.float32)
         return sampled
 
+    def around(self, shape: Array) -> Frame:
+        """Return the frame whose unit circle is the ellipse through a ring of a shape (5,)."""
+        x, y = self.positions(SHAPES @ shape).T
+        scale = math.sqrt(float(np.linalg.det(self.matrix))) * float(shape[0])
+        u, v = (x - self.centre[0]) / scale, (y - self.centre[1]) / scale
+        conic = np.column_stack([u * u, u * v, v * v, u, v])
+        a, b, c, d, e = np.linalg.lstsq(conic, np.ones(RAYS), rcond=None)[0]
+        form = np.array([[a, b / 2], [b / 2, c]])
+        middle = -0.5 * np.linalg.solve(form, np.array([d, e]))
+        form = form / (1.0 + middle @ form @ middle)
+        values, vectors = np.linalg.eigh(form)
+        matrix = vectors @ np.diag(scale / np.sqrt(np.maximum(values, 1e-12))) @ vectors.T
+        return Frame(self.centre + scale * middle, matrix)
+
+    def is_like(self, other: Frame) -> bool:
+        """Tell whether both are the same to within a thousandth of the radius."""
+        apart = max(
+            np.abs(self.matrix - other.matrix).max(), np.abs(self.centre - other.centre).max()
+        )
+        return bool(apart * self.pixel < 0.001)
+
     def moved(self, factor: float) -> Frame:
         """Return the frame in the same picture at `factor` times the size."""
         return Frame((self.centre + 0.5) * factor - 0.5, self.matrix * factor)
@@ -76,12 +101,21 @@ class Ring:
         Mean strength of that edge, 0..1.
     scatter : float
         Robust standard deviation of the edge about the ring, as a distance along a ray.
+    sign : float
+        1 where the picture brightens outwards at the ring, -1 where it darkens.
+    on : ndarray of shape (RAYS,), bool
+        The rays on which an edge of this sign lies on the ring.
+    of_tint : bool
+        Whether it was found by colour instead of brightness.
     """
 
     shape: Array
     seen: float
     strength: float
     scatter: float
+    sign: float
+    on: Array
+    of_tint: bool = False
 
     @property
     def size(self) -> float:
@@ -95,20 +129,47 @@ class Ring:
 
 @dataclass(frozen=True, slots=True, eq=False)
 class EdgeMap:
-    """Edges along the rays: the slope's local maxima as strengths 0..1, (RAYS, n)."""
+    """Edges along the rays: slopes -1..1, brightening outwards positive, and their peaks, (RAYS, n).
+
+    A ring's edges have one sign over long arcs, so that pieces of several rings, or a ring and the
+    texture beside it, cancel where magnitudes would add up to a ring that is none.
+    """
 
     distances: Array
-    strengths: Array
+    slopes: Array
+    peaks: Array
 
     @property
     def step(self) -> float:
         """Spacing of the distances."""
         return float(self.distances[1] - self.distances[0])
 
+    def coarser(self, step: float) -> EdgeMap:
+        """Return the map at a wider step: the mean within each."""
+        every = max(1, round(step / self.step))
+        n = self.distances.size // every * every
+        shape = (len(self.slopes), n // every, every)
+        return EdgeMap(
+            self.distances[:n].reshape(-1, every).mean(1),
+            self.slopes[:, :n].reshape(shape).mean(2),
+            self.peaks[:, :n].reshape(shape).mean(2),
+        )
+
+    def mean_sign(self, shape: Array) -> float:
+        """Return 1 where a ring brightens outwards on the whole, -1 where it darkens."""
+        column = np.round((SHAPES @ shape - self.distances[0]) / self.step).astype(int)
+        inside = (column >= 0) & (column < self.distances.size)
+        at = self.slopes[np.arange(RAYS)[inside], column[inside]]
+        return 1.0 if at.sum() >= 0 else -1.0
+
     def without(self, ring: Ring, *, width: float) -> EdgeMap:
         """Return the map with the edges near a ring taken out."""
         near = np.abs(self.distances - ring.distances()[:, None]) < width
-        return EdgeMap(self.distances, np.where(near, 0, self.strengths))
+        return EdgeMap(
+            self.distances,
+            np.where(near, np.float32(0), self.slopes),
+            np.where(near, np.float32(0), self.peaks),
+        )
 
 
 def smoothed_round(rays: Array, sigma_rays: float) -> Array:
@@ -117,6 +178,21 @@ def smoothed_round(rays: Array, sigma_rays: float) -> Array:
     padded = np.concatenate([rays[-pad:], rays, rays[:pad]])
     smooth: Array = cv2.GaussianBlur(padded, (1, 2 * pad + 1), sigmaX=0.1, sigmaY=sigma_rays)
     return np.asarray(smooth[pad:-pad].reshape(rays.shape))
+
+
+def logs_of(values: Array) -> Array:
+    """Logarithms of values 0..255, a little lifted so that noise in the dark counts little."""
+    return np.log(values + _DARK)
+
+
+def tints_in(logs: Array) -> Array:
+    """Colour free of brightness: log red over green and log blue over green."""
+    return np.asarray(logs[..., [0, 2]] - logs[..., [1]])
+
+
+def tints_of(rays: Array) -> Array:
+    """Tints of sampled rays, smoothed a little across them."""
+    return tints_in(logs_of(smoothed_round(rays, 2.0)))
 
 
 def slopes_along(rays: Array, *, sigma_rays: float, sigma_steps: float) -> Array:
@@ -129,40 +205,47 @@ def slopes_along(rays: Array, *, sigma_rays: float, sigma_steps: float) -> Array
     return slopes
 
 
-def map_edges(
-    rays: Array, distances: Array, *, calm: float, least_strong: float, main: float = 0.0
-) -> EdgeMap:
+def map_edges(rays: Array, distances: Array, *, least_strong: float) -> EdgeMap:
     """Find the edges along sampled rays.
 
     Parameters
     ----------
-    rays : ndarray of shape (RAYS, n, channels)
-        Sampled values.
+    rays : ndarray of shape (RAYS, n)
+        Sampled values of one kind: brightness or a tint.
     distances : ndarray of shape (n,)
         Where along the rays.
-    calm : float
-        The ordinary slope is the median at distances below this.
     least_strong : float
         Slope per step below which no edge counts as fully strong, however calm the picture.
-    main : float
-        Share of the rays' strongest slope (their median) below which no edge counts as fully
-        strong; 0 lets weak rings count as much as the main one.
     """
-    size = np.abs(slopes_along(rays, sigma_rays=1.5, sigma_steps=1.0)).max(2)
-    ordinary = float(np.median(size[:, distances < calm]))
-    strongest = float(np.median(size.max(1)))
-    strong = max(_STRONG * ordinary, least_strong, main * strongest)
-    peak = np.zeros_like(size)
-    middle = size[:, 1:-1]
-    top = (middle >= size[:, :-2]) & (middle > size[:, 2:])
-    peak[:, 1:-1][top] = middle[top]
-    return EdgeMap(distances, np.minimum(peak / strong, 1.0))
+    slopes = slopes_along(rays[..., None], sigma_rays=1.5, sigma_steps=1.0)[..., 0]
+    step = float(distances[1] - distances[0])
+    broad = (2 * round(_BROAD / step) + 1, 1)
+    shading = np.abs(cv2.blur(slopes, broad, borderType=cv2.BORDER_REPLICATE))
+    slopes = np.sign(slopes) * np.maximum(np.abs(slopes) - shading, 0)
+    ordinary = np.median(np.abs(slopes), axis=0)
+    window = 2 * round(_AROUND / step) + 1
+    ordinary = cv2.blur(ordinary[None], (window, 1), borderType=cv2.BORDER_REPLICATE)[0]
+    strong = np.maximum(_STRONG * ordinary, least_strong)
+    slopes = slopes / strong
+    size = np.pad(np.abs(slopes), ((0, 0), (1, 1)))
+    peak = (size[:, 1:-1] >= size[:, :-2]) & (size[:, 1:-1] > size[:, 2:])
+    slopes = np.clip(slopes, -1, 1).astype(np.float32)
+    return EdgeMap(distances, slopes, np.where(peak, slopes, 0))
 
 
 def best_ring(
     edges: EdgeMap, *, shapes: Array, between: tuple[float, float]
 ) -> tuple[float, Array]:
-    """Search for the ring with the strongest edges, first coarsely, then near the best.
+    """Return the strongest of all rings of some shapes: its mean strength and its shape (5,)."""
+    strengths, found = best_rings(edges, shapes=shapes, between=between)
+    best = int(strengths.argmax())
+    return float(strengths[best]), found[best]
+
+
+def best_rings(
+    edges: EdgeMap, *, shapes: Array, between: tuple[float, float]
+) -> tuple[Array, Array]:
+    """Search the mean distance at which a ring of each shape has the strongest edges.
 
     Parameters
     ----------
@@ -175,60 +258,68 @@ def best_ring(
 
     Returns
     -------
-    strength : float
-        Mean strength over the rays.
-    shape : ndarray of shape (5,)
+    strengths : ndarray of shape (k,)
+        Mean slope over the rays, of either sign.
+    found : ndarray of shape (k, 5)
+        The shapes with their mean distance first.
     """
-    _, coarse = _search(edges, shapes, between, reach=2)
-    finer = coarse[1:] + np.array([(p, q, 0, 0) for p in _NEAR for q in _NEAR])
-    s = float(coarse[0])
-    return _search(edges, finer, (s - 0.012, s + 0.012), reach=1)
-
-
-def _search(
-    edges: EdgeMap, shapes: Array, between: tuple[float, float], *, reach: int
-) -> tuple[float, Array]:
-    """Best of some shapes; an edge may lie `reach` steps off the ring and still count."""
     rows = np.arange(0, RAYS, _EVERY)
-    wide = cv2.dilate(edges.strengths[rows], np.ones((1, 2 * reach + 1), np.uint8))
+    wide = edges.slopes[rows]
+    bends = np.round(SHAPES[rows, 1:] @ shapes.T / edges.step).astype(np.int64).T
+    room = int(np.abs(bends).max()) + 1
+    padded = np.pad(wide, ((0, 0), (room, room))).ravel()
+    width = wide.shape[1] + 2 * room
     first, last = np.searchsorted(edges.distances, between)
     columns = np.arange(first, max(last, first + 1))
-    bends = np.round(SHAPES[rows, 1:] @ shapes.T / edges.step).astype(int)
-    best_strength, best_shape = -1.0, np.zeros(5)
-    flat = wide.ravel()
-    starts = rows[:, None] // _EVERY * wide.shape[1]
-    for k in range(len(shapes)):
-        at = (columns + bends[:, k : k + 1]).clip(0, wide.shape[1] - 1)
-        strength = flat[starts + at].mean(0)
-        i = int(strength.argmax())
-        if strength[i] > best_strength:
-            best_strength = float(strength[i])
-            best_shape = np.array([edges.distances[columns[i]], *shapes[k]])
-    return best_strength, best_shape
+    starts = bends + (np.arange(rows.size) * width + room)
+    strengths, at = np.empty(len(shapes)), np.empty(len(shapes), int)
+    for k in range(0, len(shapes), _AT_ONCE):
+        block = slice(k, k + _AT_ONCE)
+        mean = np.abs(padded[starts[block, :, None] + columns].mean(1))
+        at[block] = mean.argmax(1)
+        strengths[block] = mean.max(1)
+    return strengths, np.column_stack([edges.distances[columns[at]], shapes])
 
 
-def fit_ring(edges: EdgeMap, start: Array, *, tolerances: tuple[float, ...]) -> Ring:
-    """Fit a ring to the strongest edges near a start, ever nearer; stray edges lose their weight."""
+def fit_ring(
+    edges: EdgeMap, start: Array, *, tolerances: tuple[float, ...], proportion: float = math.inf
+) -> Ring:
+    """Fit a ring to the edges near a start, ever nearer; stray edges lose their weight."""
     shape = np.asarray(start, dtype=np.float64)
     scatter, every_ray = 1.0, np.arange(RAYS)
+    sign = edges.mean_sign(shape)
+    signed = np.maximum(sign * edges.peaks, 0)
     for tolerance in tolerances:
         off = np.abs(edges.distances - (SHAPES @ shape)[:, None]) / tolerance
-        weight = np.where(off < 1, edges.strengths * (1 - 0.5 * off), 0)
+        weight = np.where(off < 1, signed * (1 - 0.5 * off), 0)
         column = weight.argmax(1)
         weights = weight[every_ray, column]
         weights[weights < 0.15] = 0
         if (weights > 0).mean() < 0.3:
             break
-        shape, scatter = robust_shape(edges.distances[column], weights, shape, edges.step)
+        shape, scatter = robust_shape(
+            edges.distances[column], weights, shape, edges.step, proportion=proportion
+        )
     off = np.abs(edges.distances - (SHAPES @ shape)[:, None])
-    strongest = np.where(off < max(_ON_RING, 1.3 * edges.step), edges.strengths, 0).max(1)
-    return Ring(shape, float((strongest > 0.3).mean()), float(strongest.mean()), scatter)
+    near = off < max(_ON_RING, 1.3 * edges.step)
+    strongest = np.where(near, np.maximum(sign * edges.slopes, 0), 0).max(1)
+    on = strongest > 0.3
+    return Ring(shape, float(on.mean()), float(strongest.mean()), scatter, sign, on)
 
 
 def robust_shape(
-    distances: Array, weights: Array, start: Array, least_scatter: float
+    distances: Array,
+    weights: Array,
+    start: Array,
+    least_scatter: float,
+    *,
+    proportion: float = math.inf,
 ) -> tuple[Array, float]:
-    """Fit a shape to one distance per ray by reweighted least squares; return it with the scatter."""
+    """Fit a shape to one distance per ray by reweighted least squares; return it with the scatter.
+
+    `proportion` is the standard deviation of the stretches e and f about 0 where the frame's own
+    proportion is trusted: what is seen of half a ring alone would not tell them.
+    """
     shape, scatter = start, 0.0
     used = weights > 0
     for _ in range(6):
@@ -236,5 +327,8 @@ def robust_shape(
         scatter = 1.4826 * float(np.median(np.abs(off[used])))
         width = max(scatter, 0.3 * least_scatter)
         root = np.sqrt(weights) / (1 + (off / (2 * width)) ** 2)
-        shape = np.linalg.lstsq(SHAPES * root[:, None], distances * root, rcond=None)[0]
+        ties = np.zeros((2, 5))
+        ties[0, 3] = ties[1, 4] = 3 * width / proportion  # neighbouring rays err together
+        rows = np.vstack([SHAPES * root[:, None], ties])
+        shape = np.linalg.lstsq(rows, np.append(distances * root, [0.0, 0.0]), rcond=None)[0]
     return shape, scatter

@@ -13,6 +13,7 @@ import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
 from detect.errors import OptionWrong
+from detect.tilt import INVERSE_UNCERTAINTY, onto_circle
 
 if TYPE_CHECKING:
     from detect.dish import Dish
@@ -22,7 +23,8 @@ ScaleSource = Literal[
 ]
 Points = NDArray[np.float64]
 
-DISH_UNCERTAINTY = 0.002  # of a diameter: how well the agar's edge is told from its shading
+DISH_UNCERTAINTY = 0.0012  # of a diameter: how well the agar's edge is told from its shading
+NOTED_TILT_DEG = 5.0  # less is not told from no tilt, nor does it matter
 _EIGHTH = math.pi / 4
 
 
@@ -176,8 +178,8 @@ def scale_from_dish(dish: Dish, diameter_mm: float) -> Scale:
     Returns
     -------
     Scale
-        The map that makes the inner ellipse a circle of that diameter: it stretches along the
-        ellipse's axes and turns nothing, so x stays right and y stays down.
+        The map that makes the inner ellipse a circle of that diameter, its true centre where the
+        tilt puts it; it turns nothing, so x stays right and y stays down.
 
     Raises
     ------
@@ -186,21 +188,35 @@ def scale_from_dish(dish: Dish, diameter_mm: float) -> Scale:
 
     Notes
     -----
-    With the scatter s of the edge about the ellipse of mean radius r, the relative standard
-    uncertainty is sqrt(0.002^2 + (s / r)^2). The scatter is not divided by the number of edge
-    points, for neighbouring ones err together; 0.2 % is what shading at the edge leaves open even
-    where it is smooth (our own measurements on drawn dishes).
+    The relative standard uncertainty is that of the diameter, sqrt(0.0012^2 + s^2 + d^2): s is the
+    scatter of the edge about the ellipse over its radius, not divided by the number of edge points
+    since neighbouring ones err together; d is how far apart the readings lie of where in its shading
+    the edge is; 0.12 % is what is left open even where all of this is small (our own measurements on
+    drawn dishes, `tests/benchmarks/scale_dishes.py`). Under tilt, single lengths err more, by up to
+    2 sin(tilt) u(R/D) at the edge, as the camera's distance D is assumed; the note says how much.
     """
     diameter_mm = _length_mm(diameter_mm, "The dish's inner diameter")
     inner = dish.inner
-    stretch = np.diag([0.5 * diameter_mm / inner.semi_a, 0.5 * diameter_mm / inner.semi_b])
-    matrix = np.eye(3)
-    matrix[:2, :2] = inner.axes @ stretch @ inner.axes.T
-    relative = math.hypot(DISH_UNCERTAINTY, dish.scatter_px / inner.mean_radius)
-    across = f"{2 * inner.semi_a:.1f} by {2 * inner.semi_b:.1f} pixels"
-    return Scale(
-        matrix, "dish", relative, f"the dish's inner diameter of {diameter_mm:g} mm, {across}"
+    half = 0.5 * diameter_mm
+    back = inner.axes @ np.diag([half / inner.semi_a, half / inner.semi_b]) @ inner.axes.T
+    centred = np.eye(3)
+    centred[:2, :2] = back / half
+    centred[:2, 2] = -centred[:2, :2] @ [inner.cx, inner.cy]
+    matrix = np.diag([half, half, 1.0]) @ onto_circle(dish.far) @ centred
+    corner = matrix[:2, 2] / matrix[2, 2]  # millimetres count from the picture's first pixel
+    matrix = np.array([[1, 0, -corner[0]], [0, 1, -corner[1]], [0, 0, 1]]) @ matrix
+    relative = math.hypot(DISH_UNCERTAINTY, dish.scatter_px / inner.mean_radius, dish.spread)
+    note = (
+        f"the dish's inner diameter of {diameter_mm:g} mm, {2 * inner.semi_a:.1f} by"
+        f" {2 * inner.semi_b:.1f} pixels"
     )
+    at_edge = 200 * math.sin(math.radians(dish.tilt_deg)) * INVERSE_UNCERTAINTY
+    if dish.tilt_deg >= NOTED_TILT_DEG:
+        note += (
+            f", seen {dish.tilt_deg:.0f} degrees aslant, so that short lengths near its edge"
+            f" are sure to {at_edge:.1f} %"
+        )
+    return Scale(matrix, "dish", relative, note)
 
 
 def scale_from_corners(

@@ -138,7 +138,7 @@ def test_where_no_dish_is_none_is_found(picture: object) -> None:
 
 
 def test_a_circle_without_an_edge_is_no_dish(monkeypatch: pytest.MonkeyPatch) -> None:
-    monkeypatch.setattr(detect.dish, "find_circle", lambda _: RoughCircle(450, 350, 250, 0.9))
+    monkeypatch.setattr(detect.dish, "find_circle", lambda *_: RoughCircle(450, 350, 250, 0.9))
     with pytest.raises(
         AreaNotFound, match=r"the circle found there has no clear closed edge; photograph"
     ):

@@ -11,7 +11,13 @@ from hypothesis import strategies as st
 
 from detect.dish import Dish, Ellipse
 from detect.errors import OptionWrong
-from detect.scale import Scale, scale_from_corners, scale_from_dish, scale_from_line
+from detect.scale import (
+    DISH_UNCERTAINTY,
+    Scale,
+    scale_from_corners,
+    scale_from_dish,
+    scale_from_line,
+)
 
 CORNERS = np.array([[110.0, 95.0], [905.0, 120.0], [880.0, 700.0], [140.0, 690.0]])
 
@@ -61,10 +67,27 @@ def test_a_dish_becomes_a_circle_without_turning() -> None:
     assert scale.note == "the dish's inner diameter of 86 mm, 620.0 by 600.0 pixels"
 
 
-@pytest.mark.parametrize(("scatter", "expected"), [(0.0, 0.002), (3.0, math.hypot(0.002, 0.01))])
-def test_the_uncertainty_of_a_dish_follows_its_edge(scatter: float, expected: float) -> None:
-    dish = Dish(Ellipse(500, 400, 300.0, 300.0, 0.0), None, 1.0, scatter)
+@pytest.mark.parametrize(
+    ("scatter", "spread", "expected"),
+    [
+        (0.0, 0.0, DISH_UNCERTAINTY),
+        (3.0, 0.0, math.hypot(DISH_UNCERTAINTY, 0.01)),
+        (3.0, 0.004, math.hypot(DISH_UNCERTAINTY, 0.01, 0.004)),
+    ],
+)
+def test_the_uncertainty_of_a_dish_follows_its_edge(
+    scatter: float, spread: float, expected: float
+) -> None:
+    dish = Dish(Ellipse(500, 400, 300.0, 300.0, 0.0), None, 1.0, scatter, spread)
     assert scale_from_dish(dish, 86.0).relative_uncertainty == pytest.approx(expected)
+
+
+def test_the_note_tells_what_tilt_leaves_open() -> None:
+    dish = Dish(Ellipse(500, 400, 300.0, 290.0, 0.0), None, 1.0, tilt_deg=14.8)
+    assert scale_from_dish(dish, 86.0).note == (
+        "the dish's inner diameter of 86 mm, 600.0 by 580.0 pixels, seen 15 degrees aslant,"
+        " so that short lengths near its edge are sure to 2.6 %"
+    )
 
 
 @pytest.mark.parametrize("tilt", [0.0, 6.0, 15.0])
