@@ -9,6 +9,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from detect.area import StudyArea
+from detect.calibration import Calibration
 from detect.choice import choose
 from detect.doubt import MODELS, DoubtModel
 from detect.errors import OptionWrong
@@ -16,6 +17,13 @@ from detect.judge import Judgement, judged
 from detect.outline import settle_outlines
 from detect.own_colour import own_colours
 from detect.photograph import Photograph
+from detect.picture_doubt import (
+    CALIBRATIONS,
+    LOOKED_AT,
+    Evidence,
+    PictureCalibration,
+    evidence_of,
+)
 from detect.plants import settle_plants
 from detect.scale import Scale
 from detect.sizes import learn_diameters
@@ -46,11 +54,15 @@ class Found:
     spots : Spots
     settings : dict
         Plain values for the sheet: kind, diameters in pixels, direction of the contrast in L*, a*,
-        b*, the ground's noise, the working scale and the highest doubt kept.
+        b*, the ground's noise, the working scale, the highest doubt kept, and the calibration of
+        the doubt.
+    evidence : Evidence
+        What the picture as a whole says about its spots.
     """
 
     spots: Spots
     settings: dict[str, Any]
+    evidence: Evidence
 
 
 def find_spots(
@@ -60,6 +72,7 @@ def find_spots(
     *,
     scale: Scale | None = None,
     model: DoubtModel | None = None,
+    calibration: PictureCalibration | None = None,
     taught: Taught | None = None,
 ) -> Found:
     """Find the objects of a photograph within its study area.
@@ -74,6 +87,8 @@ def find_spots(
         Needed when diameters are given in millimetres.
     model : DoubtModel or None
         Weights of the doubt; None takes those that were taught, or else those of the kind.
+    calibration : PictureCalibration or None
+        What the model's doubt is worth; None takes what goes with the weights.
     taught : Taught or None
         What corrections taught: it completes `options`.
 
@@ -97,10 +112,19 @@ def find_spots(
     if taught is not None:
         colours = own_colours(view.lab, judgement.candidates)
         judgement = replace(judgement, doubt=taught.doubt(judgement.doubt, colours))
+        calibration = calibration or PictureCalibration()  # what was taught is calibrated
+
+    def chosen(worth: Calibration, limit: float) -> Spots:
+        rows = choose(judgement.candidates, judgement.doubt, highest_doubt=limit)
+        spots = _spots(view, judgement, rows, worth, plants=options.kind == "seedlings")
+        return _kept(spots, area, options.kind, smallest, largest)
+
+    looked_at = chosen(Calibration(), LOOKED_AT)
+    evidence = evidence_of(2 * looked_at.radius, looked_at.doubt)
+    worth = (calibration or CALIBRATIONS[options.kind]).of(evidence)
+    highest = options.highest_doubt
+    limit = options.most_doubt if highest is None else float(worth.inverse.applied(highest))
     contrast = judgement.contrast
-    rows = choose(judgement.candidates, judgement.doubt, highest_doubt=options.most_doubt)
-    spots = _spots(view, judgement, rows, plants=options.kind == "seedlings")
-    spots = _kept(spots, area, options.kind, smallest, largest)
     settings = {
         "kind": options.kind,
         "diameter_px": [round(smallest, 2), round(largest, 2)],
@@ -108,9 +132,10 @@ def find_spots(
         "direction_lab": [round(float(v), 4) for v in contrast.direction],
         "noise_lab": round(contrast.noise, 4),
         "working_px_per_px": round(view.shrink, 6),
-        "highest_doubt": options.most_doubt,
+        "highest_doubt": round(float(worth.applied(limit)), 6) if highest is None else highest,
+        "doubt_calibration": [round(worth.intercept, 6), round(worth.slope, 6)],
     }
-    return Found(spots, settings)
+    return Found(chosen(worth, limit), settings, evidence)
 
 
 def look_at(
@@ -208,7 +233,14 @@ def _diameters(
     return max(smallest, 2.0), largest
 
 
-def _spots(view: View, judgement: Judgement, rows: NDArray[np.intp], *, plants: bool) -> Spots:
+def _spots(
+    view: View,
+    judgement: Judgement,
+    rows: NDArray[np.intp],
+    worth: Calibration,
+    *,
+    plants: bool,
+) -> Spots:
     """Turn chosen regions into spots in photograph pixels."""
     contrast, chosen = judgement.contrast, judgement.candidates.where(rows)
     if plants:
@@ -223,5 +255,5 @@ def _spots(view: View, judgement: Judgement, rows: NDArray[np.intp], *, plants: 
         radius / view.shrink,
         contrast=chosen.contrast / contrast.noise,
         fill=chosen.fill,
-        doubt=judgement.doubt[rows],
+        doubt=worth.applied(judgement.doubt[rows]),
     )

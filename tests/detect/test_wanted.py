@@ -66,6 +66,5 @@ def test_every_colour_may_be_named(colour: Colour) -> None:
 
 
 @pytest.mark.parametrize("kind", get_args(Kind))
-def test_a_given_limit_of_doubt_replaces_that_of_the_kind(kind: Kind) -> None:
+def test_every_kind_has_a_usual_limit_of_the_models_doubt(kind: Kind) -> None:
     assert 0.0 < DetectOptions(kind=kind).most_doubt < 1.0
-    assert DetectOptions(kind=kind, highest_doubt=1.0).most_doubt == 1.0
