@@ -19,7 +19,7 @@ from analyse.command_options import (
 )
 from analyse.errors import AnalyseError
 from analyse.plan import RECIPE_NAME, Plan, Trial, grid_from, plan_from
-from detect import commands
+from detect import commands, score_command
 from detect.batch import Failure, do_each, workers_for
 from detect.command_options import (
     OUT,
@@ -267,7 +267,7 @@ def survey(
     _finish(results, out, trial)
 
 
-app.command("score", cls=PlainCommand)(commands.score)
+app.command("score", cls=PlainCommand)(score_command.score)
 
 
 def _recipe(folder: Path, recipe: Path | None, typed: dict[str, str | None]) -> Recipe | None:

@@ -17,10 +17,10 @@ from analyse.plan import Trial
 from analyse.region import TableUnit, area_from_option
 from detect.amendments import amendments_path, read_amendments
 from detect.batch import Each
-from detect.errors import DetectError, OptionWrong, PhotographFailed, RequestWrong
+from detect.errors import DetectError, OptionWrong, RequestWrong
 from detect.gather import gather_sheets
-from detect.photograph import Photograph, read_photograph
-from detect.sheet import Sheet, read_sheet
+from detect.outcome import photograph_of
+from detect.sheet import read_sheet
 
 
 @dataclass(frozen=True, slots=True)
@@ -128,33 +128,6 @@ def analyse_input(each: Input) -> Analysed:
     amendments = read_amendments(amendments_path(each.path))
     photograph = photograph_of(sheet, each.path.parent)
     return analyse_sheet(sheet, amendments, photograph, grid=each.grid, trial=each.trial)
-
-
-def photograph_of(sheet: Sheet, folder: Path) -> Photograph | None:
-    """Find the photograph of a sheet, for pictures: where it was, or beside the sheet.
-
-    Parameters
-    ----------
-    sheet : Sheet
-        The sheet.
-    folder : Path
-        Where the sheet lies.
-
-    Returns
-    -------
-    Photograph or None
-        None where the very file that was detected is not to be found.
-    """
-    way = sheet.settings.get("photograph_at")
-    places = [folder / str(way)] if way else []
-    for place in (*places, folder / sheet.photograph.name):
-        try:
-            photograph = read_photograph(place)
-        except PhotographFailed:
-            continue
-        if photograph.sha256 == sheet.photograph.sha256:
-            return photograph
-    return None
 
 
 def _table_unit(text: str | None) -> TableUnit:

@@ -83,10 +83,17 @@ class CalibrationOptions:
     intercept_spread, slope_spread : float
         Standard deviations of the intercept about 0 and of the slope about 1 that are expected
         before any spot was reviewed.
+
+    Notes
+    -----
+    The defaults were chosen on five hand-marked subjects, each left out of all fitting: thirty of
+    its spots at random calibrated the rest, 200 times over. The log loss of the rest is level
+    (within 0.001) for intercepts of 0.25 to 0.75 and slopes of 0.1 to 0.3; a stiffer intercept
+    leaves a subject that differs much as it was, a freer one follows the chance of thirty spots.
     """
 
-    intercept_spread: float = 1.0
-    slope_spread: float = 0.25
+    intercept_spread: float = 0.5
+    slope_spread: float = 0.2
 
     def __post_init__(self) -> None:
         for spread in (self.intercept_spread, self.slope_spread):

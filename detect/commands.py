@@ -1,20 +1,16 @@
-"""The commands of this half: find spots, and measure how well they are found."""
+"""The command that finds spots."""
 
 from __future__ import annotations
 
-from collections.abc import Sequence
 from dataclasses import dataclass, replace
 from pathlib import Path
 from typing import Annotated
 
 import typer
 
-from detect.accuracy import Accuracy, pooled, read_truth, score_csv, score_sheet
-from detect.amendments import read_amendments
 from detect.batch import Each, Failure, Progress, do_each, workers_for
 from detect.command_options import (
     OUT,
-    OUTPUT,
     AreaOption,
     ColourOption,
     CornersOption,
@@ -42,20 +38,19 @@ from detect.command_options import (
     spelled,
     with_units,
 )
-from detect.errors import OptionWrong, RequestWrong
+from detect.errors import OptionWrong
 from detect.files import make_folder, write_text_atomically
-from detect.gather import gather_photographs, gather_sheets
+from detect.gather import gather_photographs
 from detect.outcome import write_detection
 from detect.overlay import DOUBTFUL
 from detect.readers import whole
 from detect.requests import DetectRequest, detect_photograph, parse_request, tool_version
 from detect.reviewed import Reviewed, gather_reviewed
-from detect.sheet import Sheet, current_state, read_sheet
+from detect.sheet import Sheet
 from detect.taught import Taught, told
 from detect.taught_file import TAUGHT_NAME, taught_text
 from detect.terminal import (
     exit_if_failed,
-    number_text,
     progress_on_terminal,
     quoted,
     show_failures,
@@ -189,80 +184,6 @@ def _show_overruled(request: DetectRequest) -> None:
         typer.echo(f"{spelled(name)} as given is used instead of what was learned.", err=True)
 
 
-def score(
-    sheets: Annotated[
-        list[Path],
-        typer.Argument(
-            help="Sheets (NAME.sheet.json, as detect writes them), or folders of them.",
-            metavar="SHEET|DIR",
-            show_default=False,
-        ),
-    ],
-    truth: Annotated[
-        Path,
-        typer.Option(
-            "--truth",
-            help="Folder with a table for each photograph, such as dish_01.csv for dish_01.jpg, with"
-            " the columns x, y and r (radius) in pixels.",
-            metavar="DIR",
-            show_default=False,
-        ),
-    ],
-    out: Annotated[
-        Path | None,
-        typer.Option(
-            "--out",
-            help="Folder for score.csv.",
-            metavar="DIR",
-            show_default=False,
-            rich_help_panel=OUTPUT,
-        ),
-    ] = None,
-) -> None:
-    """Measure how well spots were found, against objects that you marked by hand."""
-    paths = gather_sheets(sheets)
-    if not truth.is_dir():
-        raise RequestWrong(f"There is no folder {truth}; --truth names a folder of CSV tables.")
-    if out is not None:
-        make_folder(out)
-    tasks = [ScoreTask(path, truth) for path in paths]
-    results = do_each(SCORE, tasks)
-    scores = [result for result in results if not isinstance(result, Failure)]
-    failures = [result for result in results if isinstance(result, Failure)]
-    if scores:
-        show_scores(scores)
-        typer.echo(
-            "Precision: real of what is found; recall: found of what is there; F1: both in one;"
-            " RMSE: how far centres lie off, in pixels."
-        )
-    if out is not None and scores:
-        write_text_atomically(out / "score.csv", score_csv(scores))
-        show_path("Scores", out / "score.csv")
-    show_failures(failures)
-    exit_if_failed(failures, len(results))
-
-
-def show_scores(scores: Sequence[Accuracy]) -> None:
-    """Print scores, and those of all photographs together."""
-    rows = [*scores, pooled(scores)] if len(scores) > 1 else scores
-    show_table(
-        ("photograph", "truth", "found", "precision", "recall", "F1", "count error", "RMSE px"),
-        [
-            (
-                row.name,
-                str(row.truth),
-                str(row.found),
-                number_text(row.precision),
-                number_text(row.recall),
-                number_text(row.f1),
-                f"{row.count_error:+d}",
-                number_text(row.rmse_px),
-            )
-            for row in rows
-        ],
-    )
-
-
 @dataclass(frozen=True, slots=True)
 class DetectTask:
     """One photograph to be detected, and where its results go."""
@@ -304,14 +225,6 @@ def scale_text(sheet: Sheet) -> str:
     return f"{mm_per_px:.4g} mm per pixel ({sheet.scale.source})"
 
 
-@dataclass(frozen=True, slots=True)
-class ScoreTask:
-    """One sheet to be scored, and where its truth lies."""
-
-    path: Path
-    truth: Path
-
-
 def _detect_one(task: DetectTask) -> DetectLine:
     """Detect one photograph and write its results."""
     photograph, sheet = detect_photograph(task.path, task.request, progress=task.progress)
@@ -319,21 +232,9 @@ def _detect_one(task: DetectTask) -> DetectLine:
     return DetectLine.of(outcome.state)
 
 
-def _score_one(task: ScoreTask) -> Accuracy:
-    """Score one sheet."""
-    state = current_state(read_sheet(task.path), read_amendments(task.path))
-    table = task.truth / f"{state.stem}.csv"
-    if not table.is_file():
-        raise RequestWrong(
-            f"There is no {table.name} in {task.truth}; add it, or leave the sheet out."
-        )
-    return score_sheet(state, read_truth(table))
-
-
-def _name_of(task: DetectTask | ScoreTask) -> str:
+def _name_of(task: DetectTask) -> str:
     """Return the file name that a failure is listed under."""
     return task.path.name
 
 
 DETECT = Each(_detect_one, _name_of)
-SCORE = Each(_score_one, _name_of)

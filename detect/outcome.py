@@ -10,12 +10,12 @@ from typing import Any
 
 import numpy as np
 
-from detect.accuracy import match_spots
 from detect.amendments import Amendment, amendments_path, read_amendments
-from detect.errors import AmendmentsPresent
+from detect.errors import AmendmentsPresent, PhotographFailed
 from detect.files import write_bytes_atomically, write_text_atomically
+from detect.matching import match_spots
 from detect.overlay import overlay_jpeg
-from detect.photograph import Photograph
+from detect.photograph import Photograph, read_photograph
 from detect.sheet import Sheet, current_state, points_csv, read_sheet, sheet_path, write_sheet
 from detect.spots import Spots
 
@@ -92,6 +92,33 @@ def write_views(photograph: Photograph, state: Sheet, folder: Path) -> None:
     write_text_atomically(folder / f"{state.stem}.points.csv", points_csv(state))
     picture = overlay_jpeg(photograph, state.area, state.spots)
     write_bytes_atomically(folder / f"{state.stem}.overlay.jpg", picture)
+
+
+def photograph_of(sheet: Sheet, folder: Path) -> Photograph | None:
+    """Find the photograph of a sheet, for pictures: where it was, or beside the sheet.
+
+    Parameters
+    ----------
+    sheet : Sheet
+        The sheet.
+    folder : Path
+        Where the sheet lies.
+
+    Returns
+    -------
+    Photograph or None
+        None where the very file that was detected is not to be found.
+    """
+    way = sheet.settings.get("photograph_at")
+    places = [folder / str(way)] if way else []
+    for place in (*places, folder / sheet.photograph.name):
+        try:
+            photograph = read_photograph(place)
+        except PhotographFailed:
+            continue
+        if photograph.sha256 == sheet.photograph.sha256:
+            return photograph
+    return None
 
 
 def carry_over(old: Sheet, new: Sheet, amendments: Sequence[Amendment]) -> Sheet:

@@ -4,13 +4,26 @@ from __future__ import annotations
 
 import math
 from dataclasses import dataclass
-from typing import Literal
+from typing import Literal, get_args
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
+from detect.files import Cell, csv_text
+
 Binning = Literal["count", "width"]
 N_BINS = 10
+RELIABILITY_COLUMNS = (
+    "binning",
+    "low",
+    "high",
+    "spots",
+    "mean_doubt",
+    "share_false",
+    "share_low",
+    "share_high",
+)
+_Z = 1.959963984540054  # 97.5 % point of the normal distribution
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -28,6 +41,11 @@ class Reliability:
         Their mean doubt.
     false : ndarray of shape (k,)
         Share of them that is false.
+
+    References
+    ----------
+    Wilson EB (1927). Probable inference, the law of succession, and statistical inference. Journal
+    of the American Statistical Association 22, 209-212: the interval of a share.
     """
 
     low: NDArray[np.float64]
@@ -55,6 +73,14 @@ class Reliability:
         if not len(self):
             return math.nan
         return float(np.average(np.abs(self.doubt - self.false), weights=self.number))
+
+    @property
+    def interval(self) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
+        """Lower and upper ends of the 95 % interval of each share (Wilson 1927)."""
+        n, share = self.number, self.false
+        middle = (share + 0.5 * _Z**2 / n) / (1 + _Z**2 / n)
+        half = np.sqrt(share * (1 - share) / n + 0.25 * (_Z / n) ** 2) * _Z / (1 + _Z**2 / n)
+        return np.clip(middle - half, 0.0, share), np.clip(middle + half, share, 1.0)
 
 
 def reliability(
@@ -127,6 +153,16 @@ def reliability(
         np.array([p[part].mean() for part in parts]),
         np.array([wrong[part].mean() for part in parts]),
     )
+
+
+def reliability_csv(doubt: ArrayLike, false: ArrayLike) -> str:
+    """Return the bins of equal count and those of equal width as a table, a row per bin."""
+    rows: list[tuple[Cell, ...]] = []
+    for binning in get_args(Binning):
+        table = reliability(doubt, false, binning=binning)
+        columns = (table.low, table.high, table.number, table.doubt, table.false, *table.interval)
+        rows += [(binning, *row) for row in zip(*columns, strict=True)]
+    return csv_text(RELIABILITY_COLUMNS, rows, digits=6)
 
 
 def area_under_curve(doubt: ArrayLike, false: ArrayLike) -> float:

@@ -45,7 +45,7 @@ RAW = PictureCalibration()  # leaves the model's doubt as it is
 REVIEWED = 30
 SEEDS = 200
 # Ridge on the constants in units of one spot's log likelihood, per 1,000 spots of a set or kind.
-RIDGE, KIND_RIDGE = np.array([0.0, 0.5, 0.5, 0.5]), np.array([0.0, 2.0, 10.0, 10.0])
+RIDGE, KIND_RIDGE = np.array([0.0, 0.5, 0.5, 0.5]), np.array([0.0, 3.0, 10.0, 10.0])
 SPREADS = [(a, b) for a in (0.25, 0.35, 0.5, 0.75, 1.0) for b in (0.1, 0.2, 0.3)]
 
 

@@ -16,7 +16,7 @@ from analyse.cli import app
 from detect.planted import PlantedOptions
 from detect.requests import DetectRequest, detect_photograph
 from detect.sheet import Amendment, amendments_path, append_amendment, read_sheet
-from tests.discs import DIAMETER, scattered, write_discs, write_truth
+from tests.discs import DIAMETER, scattered, write_discs
 
 SAMPLES = Path(__file__).parents[2] / "sample_images"
 PLACES = scattered(24, seed=4)
@@ -350,71 +350,6 @@ def test_hand_edits_are_kept_on_request(photo: Path, tmp_path: Path) -> None:
     assert result.exit_code == 0
     assert "bed_1.png      23" in result.stdout
     assert (out / "bed_1.points.csv").read_text().count(",struck") == 1
-
-
-# Score.
-
-
-def test_scores_are_printed_and_written(tmp_path: Path) -> None:
-    truth, out = tmp_path / "truth", tmp_path / "out"
-    truth.mkdir()
-    for name in ("bed_1.png", "bed_2.png"):
-        write_discs(tmp_path / name, PLACES)
-        write_truth(truth / name.replace("png", "csv"), PLACES)
-    detect(tmp_path, out=out)
-    strike(out / "bed_2.sheet.json", "3")
-    result = run("score", out, "--truth", truth, "--out", tmp_path / "scores")
-    assert result.exit_code == 0
-    lines = [line.split() for line in result.stdout.splitlines()]
-    assert lines[0][:6] == ["photograph", "truth", "found", "precision", "recall", "F1"]
-    assert lines[1][:7] == ["bed_1.png", "24", "24", "1", "1", "1", "+0"]
-    assert lines[2][:5] == ["bed_2.png", "24", "23", "1", "0.958"]
-    assert lines[2][6] == "-1"
-    assert lines[3][:3] == ["all", "48", "47"]
-    assert result.stdout.splitlines()[4].startswith("Precision: real of what is found;")
-    assert result.stdout.splitlines()[5] == f"Scores: {tmp_path / 'scores' / 'score.csv'}"
-    rows = list(
-        csv.DictReader((tmp_path / "scores" / "score.csv").read_text(encoding="utf-8").splitlines())
-    )
-    assert [row["photograph"] for row in rows] == ["bed_1.png", "bed_2.png", "all"]
-    assert rows[2]["matched"] == "47"
-
-
-def test_a_sheet_without_truth_is_listed(tmp_path: Path) -> None:
-    truth, out = tmp_path / "truth", tmp_path / "out"
-    truth.mkdir()
-    for name in ("bed_1.png", "bed_2.png"):
-        write_discs(tmp_path / name, PLACES)
-    write_truth(truth / "bed_1.csv", PLACES)
-    detect(tmp_path, out=out)
-    result = run("score", out, "--truth", truth)
-    assert result.exit_code == 1
-    assert result.stderr == (
-        f"bed_2.sheet.json: There is no bed_2.csv in {truth}; add it, or leave the sheet out.\n"
-    )
-    assert "bed_1.png" in result.stdout
-    (truth / "bed_1.csv").write_text("x,y\n1,2\n")
-    result = run("score", out, "--truth", truth)
-    assert result.exit_code == 2
-    assert result.stdout == ""
-
-
-def test_truth_that_is_no_folder_ends_with_2(photo: Path, tmp_path: Path) -> None:
-    out = tmp_path / "out"
-    detect(photo, out=out)
-    result = run("score", out, "--truth", tmp_path / "gone")
-    assert result.exit_code == 2
-    assert result.stderr.startswith(f"Error: There is no folder {tmp_path / 'gone'}")
-
-
-def test_a_damaged_sheet_is_listed(photo: Path, tmp_path: Path) -> None:
-    out = tmp_path / "out"
-    detect(photo, out=out)
-    (out / "bed_1.sheet.json").write_text("{")
-    result = run("score", out, "--truth", tmp_path)
-    assert result.exit_code == 1
-    assert result.stderr.startswith("bed_1.sheet.json: ")
-    assert "is damaged" in result.stderr
 
 
 def test_planted_objects_are_set_if_asked_and_kept_on_the_sheet(

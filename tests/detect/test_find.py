@@ -20,6 +20,7 @@ from detect.errors import OptionWrong
 from detect.find import Found, find_spots
 from detect.lengths import Length, parse_pair
 from detect.photograph import Photograph
+from detect.picture_doubt import CALIBRATIONS, PictureCalibration
 from detect.scale import Scale
 from detect.spots import Spots
 from detect.wanted import DetectOptions, Kind
@@ -341,6 +342,36 @@ def test_nothing_more_doubtful_than_asked_is_kept(highest: float) -> None:
     result = found(noisy, highest_doubt=highest)
     assert (result.spots.doubt <= highest).all()
     assert result.settings["highest_doubt"] == highest
+
+
+def test_doubt_is_that_of_the_model_calibrated_by_the_picture() -> None:
+    photograph = SpotScene(discs=DISCS, noise=0.05, texture=0.06).draw()
+    area = frame_area(photograph.width, photograph.height)
+    options = DetectOptions(diameter=parse_pair(USUAL, name="--diameter", separator="-"))
+    shown = find_spots(photograph, area, options)
+    models = find_spots(photograph, area, options, calibration=PictureCalibration())
+    worth = CALIBRATIONS["spots"].of(shown.evidence)
+    assert shown.evidence == models.evidence
+    same(shown.spots.centres, models.spots.centres, 1e-9)
+    assert shown.spots.doubt == pytest.approx(worth.applied(models.spots.doubt))
+    assert shown.settings["doubt_calibration"] == pytest.approx(
+        [worth.intercept, worth.slope], abs=1e-6
+    )
+    assert shown.settings["highest_doubt"] == pytest.approx(
+        worth.applied(options.most_doubt), abs=1e-6
+    )
+
+
+@pytest.mark.parametrize("share", [0.3, 0.8])
+def test_the_highest_doubt_speaks_of_the_doubt_that_is_shown(share: float) -> None:
+    noisy = SpotScene(discs=DISCS, noise=0.05, texture=0.06).draw()
+    everything = found(noisy, highest_doubt=0.95).spots
+    highest = float(np.quantile(everything.doubt, share))
+    some = found(noisy, highest_doubt=highest).spots
+    below = everything.where(everything.doubt <= highest)
+    same(some.centres, below.centres, 1e-9)
+    assert some.doubt == pytest.approx(below.doubt)
+    assert 0 < len(some) < len(everything)
 
 
 def test_settings_say_what_was_settled() -> None:

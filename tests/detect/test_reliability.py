@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import csv
 import math
 
 import numpy as np
@@ -9,8 +10,15 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 from scipy.stats import mannwhitneyu
+from statsmodels.stats.proportion import proportion_confint
 
-from detect.reliability import Reliability, area_under_curve, reliability
+from detect.reliability import (
+    RELIABILITY_COLUMNS,
+    Reliability,
+    area_under_curve,
+    reliability,
+    reliability_csv,
+)
 
 spots = st.lists(st.tuples(st.integers(0, 20), st.booleans()), min_size=2, max_size=40)
 
@@ -134,3 +142,23 @@ def test_what_cannot_be_compared_is_refused(
 def test_columns_of_different_lengths_are_refused() -> None:
     with pytest.raises(ValueError, match="false has 2 values for 1 bins"):
         Reliability(*(np.zeros(1) for _ in range(2)), np.ones(1, int), np.zeros(1), np.zeros(2))
+
+
+def test_the_interval_is_that_of_statsmodels() -> None:
+    rng = np.random.default_rng(9)
+    doubt = rng.random(300)
+    table = reliability(doubt, rng.random(300) < doubt**3)
+    wrong = np.round(table.false * table.number)
+    known = proportion_confint(wrong, table.number, method="wilson")
+    for ours, theirs in zip(table.interval, known, strict=True):
+        assert ours == pytest.approx(theirs, abs=1e-12)
+
+
+def test_the_table_holds_both_kinds_of_bin() -> None:
+    text = reliability_csv([0.05, 0.15, 0.95], [False, False, True])
+    rows = list(csv.DictReader(text.splitlines()))
+    assert list(rows[0]) == list(RELIABILITY_COLUMNS)
+    assert [row["binning"] for row in rows] == ["count"] * 3 + ["width"] * 3
+    assert rows[5]["low"] == "0.9"
+    assert rows[5]["share_false"] == "1.0"
+    assert reliability_csv([], []).splitlines() == [",".join(RELIABILITY_COLUMNS)]
