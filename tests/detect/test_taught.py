@@ -126,7 +126,7 @@ def test_what_a_person_asks_for_wins() -> None:
     plain = DetectOptions()
     full = TAUGHT.completed(plain)
     assert full.diameter == TAUGHT.diameter
-    assert full.most_doubt == 0.47
+    assert full.highest_doubt == 0.47
     assert TAUGHT.direction_for(plain) is not None
     assert TAUGHT.overruled(plain) == ()
     own = DetectOptions(
