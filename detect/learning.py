@@ -7,7 +7,6 @@ from dataclasses import dataclass, field
 
 import numpy as np
 
-from detect.calibration import Calibration
 from detect.doubt import MODELS, DoubtModel
 from detect.fisher import ReviewedPixels, fisher_direction, reviewed_pixels
 from detect.lengths import Length
@@ -314,9 +313,10 @@ def _taught(
         if way.sized or way.directed or school.folds != school.whole:
             lessons = [school.look(each, sizes, direction) for each in school.whole]
         known = refit(lessons, school.prior, options=school.options.refit)
-    calibration = Calibration()
+    calibration = highest = None
     if school.enough:
         calibration = recalibrated(way.left_out, way.cut)
+        highest = float(f"{calibration.applied(way.cut):.5g}")
     asked = school.whole[0].options
     real, struck = (
         sum(len(getattr(each, name)) for each in school.whole) for name in ("real", "struck")
@@ -337,7 +337,7 @@ def _taught(
             round(way.f1, 4),
         ),
         known.model,
-        float(f"{calibration.applied(way.cut):.5g}"),
+        highest,
         calibration,
         known.own_colour,
         asked.colour,

@@ -75,10 +75,11 @@ class Taught:
         What it was learned from.
     model : DoubtModel
         Weights of the doubt.
-    highest_doubt : float
-        Spots of more doubt (after calibration) are not kept.
-    calibration : Calibration
-        From the model's doubt, own colour counted in, to the doubt that is shown.
+    highest_doubt : float or None
+        Spots of more doubt (after calibration) are not kept; None leaves it to the kind.
+    calibration : Calibration or None
+        From the model's doubt, own colour counted in, to the doubt that is shown; None leaves it
+        to the kind.
     own_colour : OwnColour or None
         How a candidate's own colour changes its doubt.
     colour, polarity : Colour, Polarity
@@ -103,8 +104,8 @@ class Taught:
     kind: Kind
     lessons: Lessons
     model: DoubtModel
-    highest_doubt: float
-    calibration: Calibration
+    highest_doubt: float | None
+    calibration: Calibration | None
     own_colour: OwnColour | None = None
     colour: Colour = "auto"
     polarity: Polarity = "auto"
@@ -133,7 +134,7 @@ class Taught:
     def doubt(
         self, doubt: NDArray[np.float64], colours: NDArray[np.float64]
     ) -> NDArray[np.float64]:
-        """Return the doubt that is shown of candidates with these own (n, 3) colours.
+        """Return the doubt of candidates with these own (n, 3) colours, calibrated if that is known.
 
         Parameters
         ----------
@@ -147,7 +148,7 @@ class Taught:
         ndarray of shape (n,)
         """
         eased = doubt if self.own_colour is None else self.own_colour.eased(doubt, colours)
-        return self.calibration.applied(eased)
+        return eased if self.calibration is None else self.calibration.applied(eased)
 
     def completed(self, asked: DetectOptions) -> DetectOptions:
         """Return options in which what a person did not give is as it was learned.
@@ -209,12 +210,15 @@ def told(taught: Taught) -> str:
         parts.append("the range of sizes")
     if taught.direction is not None:
         parts.append("the direction of colour")
+    more = (
+        "" if taught.calibration is not None else " 30 spots are needed to learn more than sizes."
+    )
     what = "nothing that is better than what was known" if not parts else _listed(parts)
     return (
         f"Learned from {photographs} photograph{'' if photographs == 1 else 's'}"
         f" ({lessons.real} real spots, {lessons.placed} of them placed; {lessons.struck} struck):"
         f" {what}. F1 there was {lessons.f1_before:.3f}; where each part is judged by what the"
-        f" others teach, it is {lessons.f1_after:.3f}."
+        f" others teach, it is {lessons.f1_after:.3f}.{more}"
     )
 
 

@@ -64,19 +64,22 @@ def taught_text(taught: Taught) -> str:
         axes = zip(_AXES, taught.direction, strict=True)
         lines += ["", "[direction]  # from ground to object, in L*, a*, b*"]
         lines += [f"{name} = {value!r}" for name, value in axes]
+    lines += ["", "[doubt]"]
+    if taught.highest_doubt is not None:
+        lines.append(f"highest = {taught.highest_doubt!r}  # what is more doubtful is left out")
     lines += [
-        "",
-        "[doubt]",
-        f"highest = {taught.highest_doubt!r}  # what is more doubtful is left out",
         "",
         "[doubt.weights]  # logit(1 - doubt) = intercept + sum of weight x feature",
         *(f"{name} = {getattr(taught.model, name)!r}" for name in ("intercept", *FEATURES)),
         *_own_colour_lines(taught.own_colour),
-        "",
-        "[doubt.calibration]  # logit(doubt shown) = intercept + slope x logit(doubt)",
-        f"intercept = {taught.calibration.intercept!r}",
-        f"slope = {taught.calibration.slope!r}",
     ]
+    if taught.calibration is not None:
+        lines += [
+            "",
+            "[doubt.calibration]  # logit(doubt shown) = intercept + slope x logit(doubt)",
+            f"intercept = {taught.calibration.intercept!r}",
+            f"slope = {taught.calibration.slope!r}",
+        ]
     return "\n".join(lines) + "\n"
 
 
@@ -144,6 +147,7 @@ def _taught_from(values: dict[str, Any]) -> Taught:
     model = DoubtModel(**{"intercept": weights["intercept"], **dict.fromkeys(FEATURES, 0.0)})
     diameter, own = objects.get("diameter"), doubt.get("own_colour")
     direction = values.get("direction")
+    highest, calibration = doubt.get("highest"), doubt.get("calibration")
     return Taught(
         values["kind"],
         Lessons(
@@ -155,8 +159,10 @@ def _taught_from(values: dict[str, Any]) -> Taught:
             float(learned["f1_after"]),
         ),
         replace(model, **{name: float(value) for name, value in weights.items()}),
-        float(doubt["highest"]),
-        Calibration(**{name: float(value) for name, value in doubt["calibration"].items()}),
+        None if highest is None else float(highest),
+        None
+        if calibration is None
+        else Calibration(float(calibration["intercept"]), float(calibration["slope"])),
         None if own is None else OwnColour(_axes_from(own["usual"]), _axes_from(own["weights"])),
         objects["colour"],
         objects["polarity"],

@@ -13,7 +13,6 @@ from typer.testing import CliRunner, Result
 
 from analyse.cli import app
 from detect.accuracy import match_spots
-from detect.calibration import Calibration
 from detect.doubt import GENERAL
 from detect.learning import LearnOptions, in_pixels, learn, learned_range, looks_at_most
 from detect.requests import DetectRequest, detect_photograph, parse_request
@@ -134,8 +133,9 @@ def test_few_spots_teach_sizes_alone(tmp_path: Path) -> None:
     assert taught.model == GENERAL
     assert taught.own_colour is None
     assert taught.direction is None
-    assert taught.calibration == Calibration()
-    assert taught.highest_doubt == parse_request({}).options.most_doubt
+    assert taught.calibration is None
+    assert taught.highest_doubt is None
+    assert told(taught).endswith("30 spots are needed to learn more than sizes.")
 
 
 def test_the_range_of_sizes_runs_beyond_the_real_ones(

@@ -51,7 +51,14 @@ def written(folder: Path, text: str) -> Path:
     [
         TAUGHT,
         replace(
-            TAUGHT, own_colour=None, direction=None, diameter=None, colour="green", kind="seedlings"
+            TAUGHT,
+            own_colour=None,
+            direction=None,
+            diameter=None,
+            calibration=None,
+            highest_doubt=None,
+            colour="green",
+            kind="seedlings",
         ),
         replace(
             TAUGHT, direction=None, polarity="dark", diameter=(Length(1, "mm"), Length(6, "mm"))
