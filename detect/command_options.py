@@ -72,6 +72,14 @@ HighestDoubtOption = Annotated[
         "by kind",
     ),
 ]
+LearnUnchangedOption = Annotated[
+    bool,
+    typer.Option(
+        "--learn-unchanged",
+        help="Learn from the sheets nobody amended as well: they were looked at and are all right.",
+        rich_help_panel=WHAT,
+    ),
+]
 TaughtOption = Annotated[
     str | None,
     _option(

@@ -23,6 +23,7 @@ from detect.command_options import (
     KeepOption,
     KindOption,
     LearnOption,
+    LearnUnchangedOption,
     LineLengthOption,
     LineOption,
     MmPerPixelOption,
@@ -72,6 +73,7 @@ def detect(
     polarity: PolarityOption = None,
     highest_doubt: HighestDoubtOption = None,
     learn: LearnOption = None,
+    learn_unchanged: LearnUnchangedOption = False,
     taught: TaughtOption = None,
     mm_per_pixel: MmPerPixelOption = None,
     dish_mm: DishOption = None,
@@ -92,7 +94,9 @@ def detect(
     workers: WorkersOption = None,
 ) -> None:
     """Find the spots of photographs: colonies, seedlings, lesions."""
-    reviewed = None if learn is None else _reviewed(learn, kind, taught)
+    if learn_unchanged and learn is None:
+        raise OptionWrong("--learn-unchanged needs --learn DIR beside it; give both.")
+    reviewed = None if learn is None else _reviewed(learn, learn_unchanged, kind, taught)
     request = parse_request(
         with_units(
             {
@@ -146,11 +150,13 @@ def detect(
     exit_if_failed(failures, len(results))
 
 
-def _reviewed(folder: Path, kind: str | None, taught: str | None) -> list[Reviewed]:
+def _reviewed(
+    folder: Path, unchanged: bool, kind: str | None, taught: str | None
+) -> list[Reviewed]:
     """Read the sheets to learn from, and say what is left out."""
     if taught is not None:
         raise OptionWrong("--learn and --taught both say what was learned; keep one of them.")
-    reviewed, left_out = gather_reviewed(folder)
+    reviewed, left_out = gather_reviewed(folder, unchanged=unchanged)
     own = reviewed[0].options.kind
     if kind not in (None, own):
         raise OptionWrong(

@@ -79,13 +79,15 @@ class Reviewed:
         return np.column_stack([spots.x, spots.y, spots.radius])
 
 
-def gather_reviewed(folder: Path) -> tuple[list[Reviewed], int]:
+def gather_reviewed(folder: Path, *, unchanged: bool = False) -> tuple[list[Reviewed], int]:
     """Read the sheets of a folder that a person has reviewed.
 
     Parameters
     ----------
     folder : Path
         A folder of sheets, or one sheet; those with amendments count as reviewed.
+    unchanged : bool
+        A person has looked at all of them: those without amendments are right as they are.
 
     Returns
     -------
@@ -105,11 +107,11 @@ def gather_reviewed(folder: Path) -> tuple[list[Reviewed], int]:
         If a sheet or its amendments cannot be read.
     """
     paths = gather_sheets([folder])
-    reviewed = [_reviewed(path) for path in paths if read_amendments(path)]
+    reviewed = [_reviewed(path) for path in paths if unchanged or read_amendments(path)]
     if not reviewed:
         raise NothingLearned(
             f"None of the {len(paths)} sheets in {folder} has been reviewed: nothing was struck or"
-            " placed on them. Correct some, then learn from them."
+            " placed on them. Correct some, or add --learn-unchanged if all are right as they are."
         )
     _check_alike(reviewed)
     spots = sum(len(each.real) + len(each.struck) for each in reviewed)

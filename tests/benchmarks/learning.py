@@ -226,12 +226,9 @@ def coloured_case(
         scenes.append((path, truth, detect_photograph(path, parse_request(told))[1]))
     for path, truth, sheet in scenes[:2]:
         review(sheet, path, truth[:, :2], truth[:, 2], folder / "sheets")
-    try:
-        taught = learn(gather_reviewed(folder / "sheets")[0], tool_version="benchmark")
-    except NothingLearned:
-        after = [sheet for _, _, sheet in scenes[2:]]
-    else:
-        after = [detect_photograph(path, with_taught({}, taught))[1] for path, _, _ in scenes[2:]]
+    reviewed, _ = gather_reviewed(folder / "sheets", unchanged=True)
+    taught = learn(reviewed, tool_version="benchmark")
+    after = [detect_photograph(path, with_taught({}, taught))[1] for path, _, _ in scenes[2:]]
     return tuple(
         f1(
             [

@@ -194,6 +194,9 @@ def test_wrong_requests_to_learn_end_with_one_sentence(
     two_colours: tuple[Path, Path, NDArray[np.float64]], tmp_path: Path
 ) -> None:
     sheets, path, _ = two_colours
+    alone = run("detect", path, "--learn-unchanged", "--out", tmp_path / "out")
+    assert alone.exit_code == 2
+    assert "--learn-unchanged needs --learn DIR beside it; give both." in alone.stderr
     for given, message in (
         (("--taught", "x.toml"), "--learn and --taught both say what was learned; keep one of them."),
         (("--kind", "lesions"), f"--kind lesions is asked for, but the sheets in {sheets} are of spots; leave --kind out"),

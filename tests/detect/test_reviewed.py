@@ -75,6 +75,11 @@ def test_sheets_nobody_amended_are_left_out(detected: tuple[Path, Sheet], tmp_pa
         write_sheet(replace(sheet, photograph=replace(sheet.photograph, name=name)), tmp_path)
     reviewed, left_out = gather_reviewed(tmp_path)
     assert (len(reviewed), left_out) == (1, 2)
+    for name in ("b.png", "c.png"):
+        (tmp_path / name).write_bytes(detected[0].read_bytes())
+    reviewed, left_out = gather_reviewed(tmp_path, unchanged=True)
+    assert (len(reviewed), left_out) == (3, 0)
+    assert [len(each.struck) for each in reviewed] == [4, 0, 0]
 
 
 def test_sheets_that_nobody_reviewed_teach_nothing(
