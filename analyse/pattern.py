@@ -208,6 +208,7 @@ def pattern_from_sheet(sheet: Sheet, amendments: Sequence[Amendment] = ()) -> Pa
         points, area = sheet.scale.to_mm(points), shapely.transform(area, sheet.scale.to_mm)
     flags = _point_flags(points, outside, spots.doubt)
     flags += () if sheet.scale else ("uncalibrated",)
+    flags += ("dish_unsure",) if sheet.settings.get("dish") else ()
     flags += () if amendments else ("unreviewed",)
     return Pattern(
         sheet.photograph.name,

@@ -77,17 +77,23 @@ class StudyArea:
         return cls(shape(values["geometry"]), values["kind"], str(values["note"]))
 
 
-def dish_area(dish: Dish, *, inset_px: float = 0.0) -> StudyArea:
+def dish_area(dish: Dish, *, width: int, height: int, inset_px: float = 0.0) -> StudyArea:
     """Return the inside of a dish, its edge stepped inwards by `inset_px` pixels.
+
+    Of a dish cut by the picture of `width` x `height` pixels it is the part within: a polygon.
 
     Raises
     ------
     AreaWrong
         If the inset is negative or swallows the dish.
     """
-    inner = dish.inner
     seen = f"dish found ({100 * dish.quality:.0f} % of its edge seen)"
-    return _stepped_in(Polygon(inner.outline(720)), "dish", seen, inset_px)
+    seen = "; ".join((seen, *dish.notes))
+    area = _stepped_in(Polygon(dish.inner.outline(720)), "dish", seen, inset_px)
+    if not dish.outside:
+        return area
+    frame = box(-0.5, -0.5, width - 0.5, height - 0.5)
+    return StudyArea(area.polygon.intersection(frame), "polygon", area.note)
 
 
 def plot_area(corners_px: ArrayLike, *, inset_px: float = 0.0) -> StudyArea:

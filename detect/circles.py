@@ -11,7 +11,7 @@ Pattern Recognition 13 (1981) 111-122: votes directed by the gradient.
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, fields, replace
 from typing import Any
 
 import cv2
@@ -25,7 +25,8 @@ Array = NDArray[Any]
 LONGEST_SIDE = 560
 SMALLEST_RADIUS, LARGEST_RADIUS = 0.15, 0.54  # of the shorter side
 _CELL = 4  # pixels of the shrunk picture per cell of the votes
-_VOTERS = 9000
+_VOTERS, _FEW = 5000, 7000  # edges used for votes, and for a closer look
+_CLEAR_OF = 1.25  # radii from a circle, beyond which edges belong to something else
 _CANDIDATES = 4
 _SECTORS = 36
 _FULL_WEIGHT = 70  # percentile of the edges' strengths
@@ -53,6 +54,20 @@ class _Edges:
     ny: Array
     weight: Array
 
+    def where(self, chosen: Array | slice) -> _Edges:
+        """Return some of the edges."""
+        return _Edges(*(getattr(self, entry.name)[chosen] for entry in fields(self)))
+
+    def thinned(self, most: int) -> _Edges:
+        """Return about so many of the edges at most, each counting for those left out."""
+        every = max(1, -(-self.x.size // most))
+        few = self.where(slice(None, None, every))
+        return replace(few, weight=few.weight * every)
+
+    def plain(self) -> _Edges:
+        """Return the edges with equal weights of 1."""
+        return replace(self, weight=np.ones(self.x.size))
+
 
 def shrunk(photograph: Photograph, longest_side: int) -> tuple[Array, float]:
     """Return the picture as uint8 with its longest side at most so long, and the factor.
@@ -68,7 +83,7 @@ def shrunk(photograph: Photograph, longest_side: int) -> tuple[Array, float]:
     return array, array.shape[1] / photograph.width
 
 
-def find_circle(picture: Array, factor: float) -> RoughCircle:
+def find_circle(picture: Array, factor: float, *, beside: RoughCircle | None = None) -> RoughCircle:
     """Return the circle whose line is best seen; of several about as well seen, the largest.
 
     Parameters
@@ -76,6 +91,8 @@ def find_circle(picture: Array, factor: float) -> RoughCircle:
     picture : ndarray of shape (rows, columns, 3), uint8
         The photograph made `factor` times as large.
     factor : float
+    beside : RoughCircle or None
+        A circle whose own edges, and those within it, are left out.
 
     Returns
     -------
@@ -88,12 +105,16 @@ def find_circle(picture: Array, factor: float) -> RoughCircle:
         size = (round(picture.shape[1] * shrink), round(picture.shape[0] * shrink))
         small = cv2.resize(picture, size, interpolation=cv2.INTER_AREA)
     edges = _thin_edges(small)
+    if beside is not None:
+        x, y = (edges.x + 0.5) / factor - 0.5, (edges.y + 0.5) / factor - 0.5
+        edges = edges.where(np.hypot(x - beside.cx, y - beside.cy) > _CLEAR_OF * beside.radius)
     shorter = min(small.shape[:2])
     centres = _likely_centres(edges, small.shape[:2])
-    found = [_best_around(edges, centre, shorter) for centre in centres]
+    few = edges.thinned(_FEW)
+    found = [_best_around(few, centre, shorter) for centre in centres]
     enough = 0.85 * max(f[0] for f in found)
     _, cx, cy, radius = max((f for f in found if f[0] >= enough), key=lambda f: f[3])
-    shares, radii = _seen_shares(edges, np.ones(edges.x.size), cx, cy, shorter)
+    shares, radii = _seen_shares(edges.plain(), cx, cy, shorter)
     seen = float(shares[np.abs(radii - radius) < 1.5 * _BIN].max())
     return RoughCircle((cx + 0.5) / factor - 0.5, (cy + 0.5) / factor - 0.5, radius / factor, seen)
 
@@ -150,19 +171,17 @@ def _best_around(
 ) -> tuple[float, float, float, float]:
     """Weighted share of the line seen, centre and radius of the best circle near a likely centre."""
     best = (-1.0, *centre, 0.0)
-    for step in (6, 3):
+    for step in (8, 4, 2):
         _, cx, cy, _ = best
-        for dx in (-2 * step, -step, 0, step, 2 * step):
-            for dy in (-2 * step, -step, 0, step, 2 * step):
-                shares, radii = _seen_shares(edges, edges.weight, cx + dx, cy + dy, shorter)
+        for dx in (-step, 0, step):
+            for dy in (-step, 0, step):
+                shares, radii = _seen_shares(edges, cx + dx, cy + dy, shorter)
                 i = int(shares.argmax())
                 best = max(best, (float(shares[i]), cx + dx, cy + dy, float(radii[i])))
     return best
 
 
-def _seen_shares(
-    edges: _Edges, weights: Array, cx: float, cy: float, shorter: int
-) -> tuple[Array, Array]:
+def _seen_shares(edges: _Edges, cx: float, cy: float, shorter: int) -> tuple[Array, Array]:
     """Share of the line that is an edge, for circles of many radii about one centre.
 
     Only edges that face the centre count, and in each sector at most as many as fill it.
@@ -175,7 +194,7 @@ def _seen_shares(
     n_bins = int(LARGEST_RADIUS * shorter / _BIN) + 2
     sector = ((np.arctan2(dy, dx) / (2 * np.pi) + 0.5) * _SECTORS).astype(int) % _SECTORS
     cell = sector * n_bins + (distance / _BIN).astype(int)
-    seen = np.bincount(cell, weights[facing], minlength=_SECTORS * n_bins)
+    seen = np.bincount(cell, edges.weight[facing], minlength=_SECTORS * n_bins)
     seen = seen.reshape(_SECTORS, n_bins)
     seen[:, 1:] += seen[:, :-1].copy()
     radii = np.arange(n_bins) * _BIN

@@ -12,7 +12,7 @@ from detect.contrast import Colour, Polarity
 from detect.flight import HEIGHT_UNCERTAINTY
 from detect.lengths import parse_length
 from detect.planted import PlantedOptions
-from detect.readers import AreaWord, MarkKind
+from detect.readers import AreaWord, CutDish, MarkKind
 from detect.wanted import DetectOptions, Kind
 
 WHAT, SCALE, AREA, OUTPUT = "What to find", "Scale", "Study area", "Output"
@@ -170,6 +170,16 @@ AreaOption = Annotated[
 InsetOption = Annotated[
     str | None,
     _option("--inset", AREA, "Step in from the edge of the area, such as 1mm or 20px.", "LENGTH"),
+]
+CutDishOption = Annotated[
+    str | None,
+    _option(
+        "--cut-dish",
+        AREA,
+        f"What to do with a dish that the frame cuts: {_words(CutDish)}.",
+        "WHAT",
+        "refuse",
+    ),
 ]
 OutOption = Annotated[
     Path,

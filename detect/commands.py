@@ -14,6 +14,7 @@ from detect.command_options import (
     AreaOption,
     ColourOption,
     CornersOption,
+    CutDishOption,
     DiameterOption,
     DishOption,
     FocalLengthOption,
@@ -88,6 +89,7 @@ def detect(
     scale_uncertainty: ScaleUncertaintyOption = None,
     area: AreaOption = None,
     inset: InsetOption = None,
+    cut_dish: CutDishOption = None,
     planted: PlantedOption = None,
     out: OutOption = OUT,
     keep_amendments: KeepOption = False,
@@ -119,6 +121,7 @@ def detect(
                 "scale_uncertainty": scale_uncertainty,
                 "area": area,
                 "inset": inset,
+                "cut_dish": cut_dish,
                 "planted": planted,
             }
         ),

@@ -3,22 +3,31 @@
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
+from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
 
-from detect.circles import find_circle, shrunk
+from detect.circles import RoughCircle, find_circle, shrunk
 from detect.errors import AreaNotFound
 from detect.inner import InnerEdge, choose_inner, place_inner
 from detect.nested import Nest, find_nest
 from detect.photograph import Photograph
+from detect.readers import CutDish
 from detect.rings import Frame, Ring
 from detect.tilt import far_centre, sine_of_tilt
 
 LEAST_SEEN = 0.45  # of a rough circle's line; text, soil and tissue stay below 0.35
 LEAST_PLACED = 0.6  # of the inner edge's visible part at last; chance alone gives half
-MOST_OUTSIDE = 0.02  # of the inner edge beyond the frame
+MOST_OUTSIDE = 0.02  # of the inner edge beyond the frame, without a word
+MOST_CUT = 0.40  # of it beyond the frame where cut dishes are used
+_PER_OUTSIDE = 0.02  # uncertainty of the diameter for each share of the edge beyond the frame
+_OTHER_SEEN = 0.6  # of another circle's line, from which on it may be a dish
+_ADVICE = (
+    "photograph one round dish wholly in the frame, or choose another area"
+    " (of a square dish: plot, with its corners)"
+)
 _MIDDLE_SIDE, _FINE_SIDE = 1100, 4200
 
 
@@ -95,8 +104,10 @@ class Dish:
         Where the true centre lies in the inner ellipse seen as the unit circle (see `tilt`).
     tilt_deg : float
         How far the camera stood off the dish's axis, about.
+    outside : float
+        Share of the inner edge beyond the frame, where the ellipse is only continued.
     notes : tuple of str
-        What the reader should know, such as that part of the dish lies outside the frame.
+        What the reader should know, such as that part of the dish lies beyond the frame.
     """
 
     inner: Ellipse
@@ -106,16 +117,21 @@ class Dish:
     spread: float = 0.0
     far: tuple[float, float] = (0.0, 0.0)
     tilt_deg: float = 0.0
+    outside: float = 0.0
     notes: tuple[str, ...] = ()
 
 
-def find_dish(photograph: Photograph) -> Dish:
+def find_dish(photograph: Photograph, *, cut: CutDish = "refuse") -> Dish:
     """Find the round dish of a photograph.
 
     Parameters
     ----------
     photograph : Photograph
-        One dish, seen from above or up to 20 degrees aslant, wholly in the frame; on any bench.
+        One dish, seen from above or up to 20 degrees aslant, on any bench. Of several, the one
+        nearest to the middle of the frame is taken, with a note.
+    cut : {"refuse", "use"}
+        What to do with a dish that the frame cuts: refuse it, or fit its edge to the arc that is
+        seen, at least 60 % of it, with a note and a larger uncertainty.
 
     Returns
     -------
@@ -124,7 +140,7 @@ def find_dish(photograph: Photograph) -> Dish:
     Raises
     ------
     AreaNotFound
-        If nothing round and large enough is seen, or the frame cuts it.
+        If nothing round and large enough is seen, or the frame cuts it more than is allowed.
 
     Notes
     -----
@@ -133,26 +149,64 @@ def find_dish(photograph: Photograph) -> Dish:
     pixel on the photograph itself, along the part that nothing higher hides.
     """
     middle, factor = shrunk(photograph, _MIDDLE_SIDE)
-    rough = find_circle(middle, factor)
-    if rough.seen < LEAST_SEEN:
-        raise AreaNotFound(
-            f"No dish is seen in {photograph.name}: the best circle shows"
-            f" {100 * rough.seen:.0f} % of its edge, {100 * LEAST_SEEN:.0f} % are needed;"
-            " photograph one dish wholly in the frame, or choose another area."
-        )
+    rough, notes = _central_circle(middle, factor, photograph)
     centre = (np.array([rough.cx, rough.cy]) + 0.5) * factor - 0.5
     nest = find_nest(middle, centre, rough.radius * factor)
-    chosen = choose_inner(nest)
-    if chosen is None:
+    choice = choose_inner(nest, middle.shape)
+    if choice is None:
         raise _no_edge(photograph)
-    ring, visible = chosen
     fine, fine_factor = shrunk(photograph, _FINE_SIDE)
-    edge = place_inner(fine, nest.frame.around(ring.shape).moved(fine_factor / factor), visible)
+    frame = nest.frame.around(choice.ring.shape).moved(fine_factor / factor)
+    edge = place_inner(fine, frame, choice.visible)
     if edge.seen < LEAST_PLACED * edge.visible:
         raise _no_edge(photograph)
-    dish = _dish(edge, fine_factor, _highest(nest, ring), factor, photograph)
-    _check_in_frame(dish.inner, photograph)
-    return dish
+    dish = _dish(edge, fine_factor, _highest(nest, choice.ring), factor, photograph)
+    outside = _outside_frame(dish.inner, photograph, cut)
+    if choice.rival != 1.0:
+        notes.append(
+            f"another ring, {abs(100 * (choice.rival - 1)):.0f} %"
+            f" {'larger' if choice.rival > 1 else 'smaller'}, might be the agar's edge instead;"
+            " check the dashed line in the overlay"
+        )
+    if outside:
+        notes.append(
+            f"{100 * outside:.0f} % of the dish's edge lie beyond the frame; the edge was fitted to"
+            " the rest, and only what lies in the frame counts"
+        )
+    spread = math.hypot(dish.spread, (choice.rival - 1) / math.sqrt(12), _PER_OUTSIDE * outside)
+    return replace(dish, spread=spread, outside=outside, notes=tuple(notes))
+
+
+def _central_circle(
+    middle: NDArray[Any], factor: float, photograph: Photograph
+) -> tuple[RoughCircle, list[str]]:
+    """Find the rough circle of the dish nearest to the middle of the frame; note if there are more."""
+    first = find_circle(middle, factor)
+    if first.seen < LEAST_SEEN:
+        raise AreaNotFound(
+            f"No dish is seen in {photograph.name}: the best circle shows"
+            f" {100 * first.seen:.0f} % of its edge, {100 * LEAST_SEEN:.0f} % are needed;"
+            f" {_ADVICE}."
+        )
+    x, y = (photograph.width - 1) / 2, (photograph.height - 1) / 2
+    room = max(abs(first.cx - x) + x, abs(first.cy - y) + y) - first.radius
+    if room < first.radius:
+        return first, []
+    other = find_circle(middle, factor, beside=first)
+    apart = math.hypot(other.cx - first.cx, other.cy - first.cy)
+    whole = min(other.cx, other.cy, 2 * x - other.cx, 2 * y - other.cy) > 0.95 * other.radius
+    alike = 0.7 < other.radius / first.radius < 1.4
+    if not (whole and alike and other.seen > _OTHER_SEEN and apart > 0.9 * first.radius):
+        return first, []
+    nearest = min(first, other, key=lambda c: math.hypot(c.cx - x, c.cy - y))
+    return nearest, ["several round things are seen; the one nearest to the middle was taken"]
+
+
+def _no_edge(photograph: Photograph) -> AreaNotFound:
+    return AreaNotFound(
+        f"No dish is seen in {photograph.name}: the circle found there has no clear closed edge;"
+        f" {_ADVICE}."
+    )
 
 
 def _highest(nest: Nest, inner: Ring) -> Frame | None:
@@ -186,13 +240,6 @@ def _dish(
     )
 
 
-def _no_edge(photograph: Photograph) -> AreaNotFound:
-    return AreaNotFound(
-        f"No dish is seen in {photograph.name}: the circle found there has no clear closed edge;"
-        " photograph one dish wholly in the frame, or choose another area."
-    )
-
-
 def _ellipse(frame: Frame) -> Ellipse:
     """Return a frame's ellipse."""
     (short, long), vectors = np.linalg.eigh(frame.matrix)
@@ -201,13 +248,22 @@ def _ellipse(frame: Frame) -> Ellipse:
     return Ellipse(float(cx), float(cy), float(long), float(min(short, long)), angle)
 
 
-def _check_in_frame(inner: Ellipse, photograph: Photograph) -> None:
-    """Refuse a dish that the frame cuts."""
+def _outside_frame(inner: Ellipse, photograph: Photograph, cut: CutDish) -> float:
+    """Share of the edge beyond the frame, 0 if hardly any; refuse what must not be cut."""
     x, y = inner.outline().T
     inside = (x >= -0.5) & (y >= -0.5)
     inside &= (x <= photograph.width - 0.5) & (y <= photograph.height - 0.5)
-    if (outside := float(1 - inside.mean())) > MOST_OUTSIDE:
+    if (outside := float(1 - inside.mean())) <= MOST_OUTSIDE:
+        return 0.0
+    if cut == "refuse":
         raise AreaNotFound(
             f"The dish in {photograph.name} is cut by the frame ({100 * outside:.0f} % of its inner"
-            " edge lie outside); photograph it whole, or choose another area."
+            " edge lie outside); photograph it whole, choose another area, or ask for cut dishes"
+            " to be used."
         )
+    if outside > MOST_CUT:
+        raise AreaNotFound(
+            f"The dish in {photograph.name} is cut too far by the frame ({100 * outside:.0f} % of its"
+            f" inner edge lie outside, at most {100 * MOST_CUT:.0f} % may); photograph it whole."
+        )
+    return outside

@@ -50,6 +50,12 @@ _AGREE = 0.004  # readings by brightness and by colour that lie closer agree
 _STEP = 0.0012
 
 
+_NEARLY = 0.8  # so much of a change is nearly enough
+_LITTLE = 1.5  # and so much hardly more
+_FARTHEST = 1.08  # times the chosen size, another ring may still be meant
+_Candidate = tuple[Ring, Array, float, float]  # with its visible rays, share seen, and change
+
+
 @dataclass(frozen=True, slots=True, eq=False)
 class InnerEdge:
     """The agar's edge as placed.
@@ -64,8 +70,6 @@ class InnerEdge:
         Robust standard deviation about the ellipse, as a fraction of the radius.
     spread : float
         How far apart the readings of the profile lie, as a fraction of the radius.
-    doubt : bool
-        Whether another ring might as well be the agar's edge.
     """
 
     frame: Frame
@@ -73,7 +77,6 @@ class InnerEdge:
     visible: float
     scatter: float
     spread: float
-    doubt: bool = False
 
 
 def visible_rays(ring: Ring, rings: tuple[Ring, ...]) -> Array:
@@ -87,8 +90,20 @@ def visible_rays(ring: Ring, rings: tuple[Ring, ...]) -> Array:
     return visible
 
 
-def choose_inner(nest: Nest) -> tuple[Ring, Array] | None:
-    """Choose the ring at which the agar ends, with the rays on which it is visible.
+@dataclass(frozen=True, slots=True, eq=False)
+class Choice:
+    """The ring taken for the agar's edge, and the rays on which it is visible.
+
+    `rival` is another ring's size over its own, where that might as well be the agar's edge; else 1.
+    """
+
+    ring: Ring
+    visible: Array
+    rival: float = 1.0
+
+
+def choose_inner(nest: Nest, shape: tuple[int, ...]) -> Choice | None:
+    """Choose the ring at which the agar ends, in a picture of a shape (rows, columns).
 
     It is the innermost that is seen on most of its visible rays and at which colour or brightness
     change, be it for good (a step) or for a while (a line); of it and its close neighbours in the
@@ -98,12 +113,13 @@ def choose_inner(nest: Nest) -> tuple[Ring, Array] | None:
     candidates = []
     for ring in nest.rings:
         visible = visible_rays(ring, nest.rings)
+        visible &= nest.frame.within(shape, ring.distances())
         if visible.mean() < LEAST_VISIBLE:
             continue
         seen = float(ring.on[visible].mean())
         if seen >= _LEAST_RING_SEEN:
-            candidates.append((ring, visible, seen, _changes(logs, nest.distances, ring, visible)))
-    first = next((c for c in candidates if c[3]), None)
+            candidates.append((ring, visible, seen, _change(logs, nest.distances, ring, visible)))
+    first = next((c for c in candidates if c[3] >= 1), None)
     if first is None:
         return None
     near = [
@@ -113,11 +129,26 @@ def choose_inner(nest: Nest) -> tuple[Ring, Array] | None:
         and math.hypot(*(c[0].shape[1:3] - first[0].shape[1:3])) <= _OTHER_PLANE
     ]
     best = max(near, key=lambda c: c[2] + c[0].strength + c[0].of_tint)
-    return best[0], best[1]
+    return Choice(best[0], best[1], _rival(best, max(c[3] for c in near), candidates))
 
 
-def _changes(logs: Array, distances: Array, ring: Ring, visible: Array) -> bool:
-    """Tell whether colour or brightness change across a ring."""
+def _rival(best: _Candidate, change: float, candidates: list[_Candidate]) -> float:
+    """Size of the ring that might as well be the agar's edge, over the chosen one's; 1 if none might.
+
+    One farther in, at which nothing much changes, or one farther out, at which far more does than the
+    little that changes here.
+    """
+    for ring, _, _, other in candidates:
+        ratio = ring.size / best[0].size
+        inside = ratio < 1 - 1.5 * _GROUP and other > _NEARLY
+        outside = 1 + 1.5 * _GROUP < ratio < _FARTHEST and change < _LITTLE and other > 3 * change
+        if inside or outside:
+            return ratio
+    return 1.0
+
+
+def _change(logs: Array, distances: Array, ring: Ring, visible: Array) -> float:
+    """How much colour or brightness change across a ring: from 1 on it counts."""
     step = distances[1] - distances[0]
     at = (ring.distances() - distances[0]) / step
 
@@ -128,7 +159,7 @@ def _changes(logs: Array, distances: Array, ring: Ring, visible: Array) -> bool:
     inside, outside = beside(-0.007), beside(0.007)
     light = float(np.median(np.abs((outside - inside).mean(1))))
     change = np.median(tints_in(outside - inside), axis=0)
-    return light >= _CLEAR_LIGHT or float(np.linalg.norm(change)) >= CLEAR_TINT
+    return max(light / _CLEAR_LIGHT, float(np.linalg.norm(change)) / CLEAR_TINT)
 
 
 def place_inner(picture: Array, frame: Frame, visible: Array) -> InnerEdge:

@@ -15,6 +15,7 @@ from detect.planted import PlantedOptions
 from detect.wanted import Kind
 
 AreaWord = Literal["dish", "frame", "plot", "leaf"]
+CutDish = Literal["refuse", "use"]
 MarkKind = Literal["plates", "fiducials"]
 Four = tuple[float, float, float, float]
 Corners = tuple[tuple[float, float], ...]
@@ -165,6 +166,7 @@ READERS: dict[str, Callable[[Any, str], Any]] = {
     "scale_uncertainty": _percent,
     "area": _area,
     "inset": _length,
+    "cut_dish": one_of(get_args(CutDish)),
     "taught": _taught,
     "planted": _rounds,
 }

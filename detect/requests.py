@@ -24,7 +24,7 @@ from detect.errors import OptionWrong
 from detect.lengths import Length
 from detect.photograph import Photograph, read_photograph
 from detect.planted import PlantedOptions
-from detect.readers import READERS, AreaWord
+from detect.readers import READERS, AreaWord, CutDish
 from detect.scale import Scale
 from detect.scale_request import ScaleRequest, check_one_scale
 from detect.sheet import SCHEMA, PhotographIdentity, Sheet
@@ -44,10 +44,13 @@ class AreaRequest:
         with a dish, the plot with corners, else the whole frame.
     inset : Length or None
         How far the area's edge steps inwards.
+    cut_dish : {"refuse", "use"} or None
+        What to do with a dish that the frame cuts; None is as "refuse".
     """
 
     where: AreaWord | Path | None = None
     inset: Length | None = None
+    cut_dish: CutDish | None = None
 
 
 @dataclass(frozen=True, slots=True)
@@ -95,6 +98,17 @@ class DetectRequest:
             raise OptionWrong(
                 f"The inset {self.area.inset} has no edge to step in from; give an area as well."
             )
+
+        if self.area.cut_dish is not None and not self.needs_dish:
+            raise OptionWrong(
+                f"What to do with a cut dish ({self.area.cut_dish}) is said, but no dish is looked for;"
+                " give the dish's diameter or the area dish as well."
+            )
+
+    @property
+    def needs_dish(self) -> bool:
+        """Whether a dish is looked for."""
+        return self.where == "dish" or self.scale.dish is not None
 
     @property
     def where(self) -> AreaWord | Path:
@@ -149,8 +163,8 @@ def detect_photograph(
 
     photograph = read_photograph(path)
     request.scale.check_positions(photograph)
-    dish_needed = request.where == "dish" or request.scale.dish is not None
-    dish = find_dish(photograph) if dish_needed else None
+    cut = request.area.cut_dish or "refuse"
+    dish = find_dish(photograph, cut=cut) if request.needs_dish else None
     scale = request.scale.resolve(photograph, dish)
     area = _study_area(photograph, request, scale, dish)
     found = find_spots(photograph, area, request.options, scale=scale, taught=request.taught)
@@ -159,6 +173,8 @@ def detect_photograph(
         "detector": found.settings,
         "notes": list(photograph.notes),
     }
+    if dish is not None and dish.notes:
+        settings["dish"] = list(dish.notes)
     identity = PhotographIdentity.of(photograph)
     sheet = Sheet(SCHEMA, tool_version(), identity, scale, area, settings, found.spots)
     if request.planted is None:
@@ -210,7 +226,7 @@ def _whole_area(
     if isinstance(where, Path):
         return polygon_area(where, photograph.width, photograph.height, inset_px=inset_px)
     if where == "dish" and dish is not None:
-        return dish_area(dish, inset_px=inset_px)
+        return dish_area(dish, inset_px=inset_px, width=photograph.width, height=photograph.height)
     if where == "plot" and scale is not None:
         return plot_area(request.scale.plot_outline(scale), inset_px=inset_px)
     if where == "leaf":
@@ -227,7 +243,7 @@ def parse_request(
     ----------
     values : mapping of str to object
         The keys of a recipe: kind, diameter, colour, polarity, highest_doubt, mm_per_pixel, dish,
-        line, line_length, corners, plot, area, inset, taught, planted. None counts as not given.
+        line, line_length, corners, plot, area, inset, cut_dish, taught, planted. None counts as not given.
     named : callable
         Turns a key into the name the reader knows it by, for messages.
     folder : Path, optional

@@ -47,6 +47,11 @@ class Frame:
         """One pixel as a distance along a ray."""
         return float(1.0 / np.sqrt(np.linalg.det(self.matrix)))
 
+    def within(self, shape: tuple[int, ...], distances: Array) -> Array:
+        """Tell which rays, at one distance each (RAYS,), are still in a picture of a shape."""
+        x, y = self.positions(distances).T
+        return np.asarray((x > -0.5) & (y > -0.5) & (x < shape[1] - 0.5) & (y < shape[0] - 0.5))
+
     def positions(self, distances: Array) -> Array:
         """Map a distance per ray (RAYS,) to pixel positions (RAYS, 2)."""
         return np.asarray(self.centre + (distances[:, None] * RAY_DIRECTIONS) @ self.matrix.T)
@@ -290,10 +295,14 @@ def fit_ring(
     sign = edges.mean_sign(shape)
     signed = np.maximum(sign * edges.peaks, 0)
     for tolerance in tolerances:
-        off = np.abs(edges.distances - (SHAPES @ shape)[:, None]) / tolerance
-        weight = np.where(off < 1, signed * (1 - 0.5 * off), 0)
-        column = weight.argmax(1)
-        weights = weight[every_ray, column]
+        ring = SHAPES @ shape
+        reach = np.arange(-math.ceil(tolerance / edges.step), math.ceil(tolerance / edges.step) + 1)
+        columns = np.round((ring - edges.distances[0]) / edges.step).astype(int)[:, None] + reach
+        columns = columns.clip(0, edges.distances.size - 1)
+        off = np.abs(edges.distances[columns] - ring[:, None]) / tolerance
+        weight = np.where(off < 1, signed[every_ray[:, None], columns] * (1 - 0.5 * off), 0)
+        best = weight.argmax(1)
+        column, weights = columns[every_ray, best], weight[every_ray, best]
         weights[weights < 0.15] = 0
         if (weights > 0).mean() < 0.3:
             break
@@ -322,13 +331,13 @@ def robust_shape(
     """
     shape, scatter = start, 0.0
     used = weights > 0
-    for _ in range(6):
+    for _ in range(5):
         off = distances - SHAPES @ shape
-        scatter = 1.4826 * float(np.median(np.abs(off[used])))
+        scatter = 1.4826 * float(np.sort(np.abs(off[used]))[used.sum() // 2])
         width = max(scatter, 0.3 * least_scatter)
-        root = np.sqrt(weights) / (1 + (off / (2 * width)) ** 2)
-        ties = np.zeros((2, 5))
-        ties[0, 3] = ties[1, 4] = 3 * width / proportion  # neighbouring rays err together
-        rows = np.vstack([SHAPES * root[:, None], ties])
-        shape = np.linalg.lstsq(rows, np.append(distances * root, [0.0, 0.0]), rcond=None)[0]
+        weight = weights / (1 + (off / (2 * width)) ** 2) ** 2
+        normal = SHAPES.T @ (SHAPES * weight[:, None])
+        normal[[3, 4], [3, 4]] += (3 * width / proportion) ** 2  # neighbouring rays err together
+        normal += 1e-9 * np.eye(5)
+        shape = np.linalg.solve(normal, SHAPES.T @ (weight * distances))
     return shape, scatter

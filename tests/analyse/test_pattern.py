@@ -83,6 +83,13 @@ def test_without_a_scale_everything_stays_in_pixels() -> None:
     assert "uncalibrated" in pattern.flags
 
 
+def test_notes_on_the_dish_become_a_flag() -> None:
+    empty = sheet(spots=Spots.none())
+    noted = replace(empty, settings={"dish": ["several round things are seen"]})
+    assert pattern_from_sheet(noted).flags == ("dish_unsure", "unreviewed")
+    assert pattern_from_sheet(empty).flags == ("unreviewed",)
+
+
 def test_no_spots_are_a_pattern_of_length_0() -> None:
     pattern = pattern_from_sheet(sheet(spots=Spots.none()))
     assert (len(pattern), pattern.points.shape) == (0, (0, 2))

@@ -31,7 +31,7 @@ def saved(folder: Path, value: Any) -> Path:
 
 
 def test_a_dish_s_area_is_that_of_its_ellipse() -> None:
-    area = dish_area(DISH)
+    area = dish_area(DISH, width=1200, height=1000)
     assert area.kind == "dish"
     assert area.note == "dish found (98 % of its edge seen)"
     assert area.polygon.area == pytest.approx(math.pi * 100 * 96, rel=1e-4)
@@ -39,7 +39,9 @@ def test_a_dish_s_area_is_that_of_its_ellipse() -> None:
 
 
 def test_an_inset_steps_the_edge_inwards() -> None:
-    area = dish_area(Dish(Ellipse(0, 0, 100.0, 100.0, 0.0), None, 1.0), inset_px=10)
+    area = dish_area(
+        Dish(Ellipse(0, 0, 100.0, 100.0, 0.0), None, 1.0), width=300, height=300, inset_px=10
+    )
     assert area.polygon.area == pytest.approx(math.pi * 90**2, rel=1e-3)
     assert area.note == "dish found (100 % of its edge seen), inset by 10.0 pixels"
 
@@ -183,7 +185,7 @@ def test_an_inset_that_leaves_nothing_is_told() -> None:
     with pytest.raises(
         AreaWrong, match=r"The inset of 97 pixels leaves nothing of the dish; give a smaller one\."
     ):
-        dish_area(DISH, inset_px=97)
+        dish_area(DISH, width=1200, height=1000, inset_px=97)
 
 
 def test_crossed_plot_corners_are_told() -> None:

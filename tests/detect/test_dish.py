@@ -14,10 +14,12 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 
 import detect.dish
+from detect.area import dish_area
 from detect.circles import RoughCircle
 from detect.dish import Dish, Ellipse, find_dish
 from detect.errors import AreaNotFound
 from detect.photograph import read_photograph
+from detect.scale import scale_from_dish
 from tests.scenes import DISHES, DishScene, photograph_of, plain_noise, soil, text_page
 
 SAMPLES = Path(__file__).parents[2] / "sample_images"
@@ -153,6 +155,74 @@ def test_a_dish_cut_by_the_frame_is_told(cut: int) -> None:
         match=r"The dish in scene\.png is cut by the frame \(\d+ % of its inner edge lie",
     ):
         find_dish(scene.draw())
+
+
+@pytest.mark.parametrize(("name", "cut"), [("dark bench", 60), ("red agar on white", 150)])
+def test_a_cut_dish_is_measured_on_request(name: str, cut: int) -> None:
+    scene = replace(DISHES[name], cx=scene_left(cut), n_colonies=20)
+    photograph = scene.draw()
+    dish = find_dish(photograph, cut="use")
+    u = scale_from_dish(dish, 86.0).relative_uncertainty
+    assert abs(error_percent(dish, scene)) < min(1.0, 196 * u)
+    true_share = math.acos(1 - cut / scene.radius) / math.pi  # of the edge beyond the left margin
+    assert dish.outside == pytest.approx(true_share, abs=0.02)
+    assert u > scale_from_dish(find_dish(DISHES[name].draw()), 86.0).relative_uncertainty
+    assert dish.notes[0].startswith(f"{100 * dish.outside:.0f} % of the dish's edge lie beyond")
+    area = dish_area(dish, width=photograph.width, height=photograph.height)
+    assert area.kind == "polygon"
+    assert "beyond the frame" in area.note
+    r, d = scene.radius, scene.radius - cut + 0.5
+    segment = r * r * math.acos(d / r) - d * math.sqrt(r * r - d * d)
+    assert area.polygon.area == pytest.approx(math.pi * r * r - segment, rel=0.02)
+
+
+def test_a_dish_cut_too_far_is_refused() -> None:
+    scene = replace(DISHES["red agar on white"], cx=scene_left(330), n_colonies=0)
+    with pytest.raises(AreaNotFound, match=r"is cut too far by the frame \(\d+ % .* at most 40 %"):
+        find_dish(scene.draw(), cut="use")
+
+
+def test_of_two_dishes_the_one_nearest_to_the_middle_is_taken() -> None:
+    near = replace(DISHES["dark bench"], width=1500, height=800, cx=860, cy=400, radius=260.0)
+    far = replace(near, cx=300, radius=240.0)
+    both = near.draw().stored.copy()
+    both[:, :580] = far.draw().stored[:, :580]
+    dish = find_dish(photograph_of(both))
+    assert dish.inner.cx == pytest.approx(860, abs=1)
+    assert abs(error_percent(dish, near)) < 0.3
+    assert dish.notes == ("several round things are seen; the one nearest to the middle was taken",)
+
+
+def test_a_square_dish_is_refused_with_advice() -> None:
+    y, x = np.mgrid[:700, :800]
+    from_edge = np.maximum(np.abs(x - 400), np.abs(y - 350))
+    picture = np.where(from_edge < 280, 0.7, 0.2) + np.where(np.abs(from_edge - 285) < 5, 0.3, 0)
+    with pytest.raises(AreaNotFound, match="of a square dish: plot, with its corners"):
+        find_dish(photograph_of(picture))
+
+
+@pytest.mark.parametrize("disc", [0.9, 0.3], ids=["coin", "plate"])
+def test_a_round_thing_that_is_no_dish_is_measured_or_refused_in_words(disc: float) -> None:
+    y, x = np.mgrid[:600, :800]
+    away = np.hypot(x - 380.0, y - 310.0)
+    picture = 0.5 + (disc - 0.5) * np.clip(220.5 - away, 0, 1)
+    picture = picture + 0.01 * np.random.default_rng(3).normal(size=away.shape)
+    dish = find_dish(photograph_of(picture))  # a disc with one edge: that edge it is
+    assert dish.inner.mean_radius == pytest.approx(220, rel=0.003)
+    assert dish.outer is None
+
+
+def test_a_small_photograph_will_do() -> None:
+    scene = replace(
+        DISHES["dark bench"], width=300, height=300, cx=152.3, cy=148.6, radius=120.0, n_colonies=5
+    )
+    assert abs(error_percent(find_dish(scene.draw()), scene)) < 0.7
+
+
+def test_a_grey_scan_of_sixteen_bits_will_do() -> None:
+    scene = DISHES["red agar on white"]
+    deep = (scene.draw().stored.mean(axis=2) * 257).astype(np.uint16)
+    assert abs(error_percent(find_dish(photograph_of(deep)), scene)) < 0.5
 
 
 def scene_left(cut: int) -> float:

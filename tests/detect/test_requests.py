@@ -3,9 +3,11 @@
 from __future__ import annotations
 
 import json
+from dataclasses import replace
 from pathlib import Path
 from typing import Any
 
+import cv2
 import numpy as np
 import pytest
 
@@ -15,6 +17,7 @@ from detect.planted import PlantedOptions
 from detect.requests import DetectRequest, detect_photograph, parse_request, tool_version
 from detect.wanted import DetectOptions
 from tests.discs import DIAMETER, HEIGHT, WIDTH, scattered, write_discs
+from tests.scenes import DISHES
 
 CORNERS = [[20, 20], [400, 25], [395, 300], [25, 295]]
 
@@ -129,6 +132,11 @@ def test_the_area_goes_with_the_scale_unless_named(values: dict[str, Any], where
         ({"plot": "10x7cm"}, "PLOT needs CORNERS beside it; give both"),
         ({"area": "plot"}, "The area plot needs the positions of its corners and its size"),
         ({"inset": "5px"}, "The inset 5px has no edge to step in from; give an area as well"),
+        (
+            {"cut_dish": "use", "area": "leaf"},
+            r"a cut dish \(use\) is said, but no dish is looked for",
+        ),
+        ({"cut_dish": "perhaps", "dish": "9cm"}, "CUT_DISH must be one of refuse, use, not"),
         ({"inset": "1mm", "mm_per_pixel": 0.1}, "The inset 1mm has no edge to step in from"),
     ],
 )
@@ -245,3 +253,17 @@ def test_planted_objects_are_asked_for_by_true_or_a_number(value: Any, rounds: i
 def test_other_words_for_planted_objects_are_refused(value: Any) -> None:
     with pytest.raises(OptionWrong, match="planted must be a whole number of rounds such as 10"):
         parse_request({"planted": value})
+
+
+def test_a_cut_dish_is_used_on_request_and_every_output_is_told(tmp_path: Path) -> None:
+    path = tmp_path / "cut.png"
+    scene = replace(DISHES["red agar on white"], cx=300.0, n_colonies=25)
+    cv2.imwrite(str(path), scene.draw().stored[..., ::-1])
+    values = {"dish": "86mm", "kind": "colonies", "cut_dish": "use"}
+    _, sheet = detect_photograph(path, parse_request(values))
+    assert sheet.area.kind == "polygon"
+    assert "of the dish's edge lie beyond the frame" in sheet.area.note
+    assert len(sheet.settings["dish"]) == 1
+    assert sheet.settings["request"]["cut_dish"] == "use"
+    with pytest.raises(AreaNotFound, match="is cut by the frame"):
+        detect_photograph(path, parse_request({**values, "cut_dish": "refuse"}))
