@@ -72,7 +72,7 @@ def reliability_figure(
             f",\narea under the curve {area:.3f}" if area == area else ""
         )
         upper.set_title(words, loc="left", fontsize=9, color=_INK)
-        upper.legend(frameon=False, fontsize=8, loc="upper left")
+        upper.legend(fontsize=8, loc="lower right", edgecolor="none", framealpha=0.85)
         edges = np.linspace(0, end, 31)
         lower.hist(doubt[~false], edges, color=_REAL, label="real")
         lower.hist(doubt[false], edges, histtype="step", color=_FALSE, linewidth=1.4, label="false")

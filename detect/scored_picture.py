@@ -24,6 +24,7 @@ from detect.strokes import (
     placed_at,
 )
 
+LEAST_SIDE = 900
 # Three shapes first, for who sees no colour; and three colours that differ in lightness and hue to
 # every kind of colour vision (from the set of Okabe and Ito, 2008).
 HIT: Ink = (86, 180, 233)
@@ -48,6 +49,7 @@ def draw_scored(
     compared: Compared,
     *,
     longest_side: int = LONGEST_SIDE,
+    least_side: int = LEAST_SIDE,
 ) -> Picture:
     """Draw what became of every true object and every counted spot.
 
@@ -63,15 +65,22 @@ def draw_scored(
         no object as orange triangles.
     longest_side : int
         The picture is made smaller so that no side is longer, in pixels.
+    least_side : int
+        A small picture is enlarged, by a whole number, until its longer side has as many.
 
     Returns
     -------
     ndarray of shape (height + legend, width, 3), uint8
         Red, green and blue; a legend with the three numbers stands below the photograph.
     """
-    shrink = 1.0 / math.ceil(max(photograph.width, photograph.height) / longest_side)
+    longer = max(photograph.width, photograph.height)
+    shrink = 1.0 / math.ceil(longer / longest_side)
     picture = in_8_bits(photograph.reduced(shrink=shrink))
-    stroke = max(1, round(max(picture.shape[:2]) / 900))
+    grow = max(1, math.ceil(least_side / max(picture.shape[:2])))
+    if grow > 1:
+        shrink *= grow
+        picture = picture.repeat(grow, axis=0).repeat(grow, axis=1)
+    stroke = max(2, round(max(picture.shape[:2]) / 800))
     draw_lines(picture, dashes(area, shrink, 9.0 * stroke), _OUTLINE, stroke, closed=False)
     claims, objects = compared.claims, compared.objects
     missed = ~objects.hit

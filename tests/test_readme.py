@@ -140,6 +140,8 @@ def test_every_command_line_shown_runs(
         out = Path(arguments[arguments.index("--out") + 1])
         if arguments[0] == "detect":
             detected += list(out.glob("*.points.csv"))
+        elif arguments[0] == "score":
+            assert (out / "score.csv").is_file()
         else:
             assert (out / "report.html").is_file()
     # The options shown are those of the recipe: they find the same spots in the same places.

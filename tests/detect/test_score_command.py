@@ -128,9 +128,14 @@ def test_pictures_show_what_was_missed_and_invented(beds: Path, tmp_path: Path) 
     assert (row["truth"], row["found"], row["matched"]) == ("24", "24", "23")
     assert row["with_doubt"] == "23"  # the placed one has none
 
+    grow = picture.shape[1] // 420
+
     def inked(ink: tuple[int, int, int], place: np.ndarray) -> int:
-        x, y = np.round(place).astype(int)
-        near = picture[max(0, y - 20) : y + 20, max(0, x - 20) : x + 20, ::-1].astype(int)
+        x, y = np.round(place * grow).astype(int)
+        reach = 20 * grow
+        near = picture[max(0, y - reach) : y + reach, max(0, x - reach) : x + reach, ::-1].astype(
+            int
+        )
         return int((np.abs(near - ink).max(axis=2) < 70).sum())
 
     assert inked((255, 120, 40), empty) > 15
