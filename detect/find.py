@@ -112,7 +112,8 @@ def find_spots(
     if taught is not None:
         colours = own_colours(view.lab, judgement.candidates)
         judgement = replace(judgement, doubt=taught.doubt(judgement.doubt, colours))
-        calibration = calibration or PictureCalibration()  # what was taught is calibrated
+        if taught.calibration is not None:  # it is applied already
+            calibration = calibration or PictureCalibration()
 
     def chosen(worth: Calibration, limit: float) -> Spots:
         rows = choose(judgement.candidates, judgement.doubt, highest_doubt=limit)

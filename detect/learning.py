@@ -5,18 +5,15 @@ from __future__ import annotations
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass, field
 
-import numpy as np
-
 from detect.doubt import MODELS, DoubtModel
 from detect.fisher import ReviewedPixels, fisher_direction, reviewed_pixels
-from detect.lengths import Length
+from detect.learned_sizes import Range, SizeOptions, in_pixels, learned_range
 from detect.lesson import Decided, Lesson, decided, take_lesson, together
 from detect.refit import RefitOptions, Refitted, best_cut, f1_at, recalibrated, refit
 from detect.reviewed import Reviewed
 from detect.taught import Lessons, Taught
 
 Progress = Callable[[int, int], None]
-Range = tuple[Length, Length]
 Direction = tuple[float, float, float]
 
 
@@ -34,10 +31,10 @@ class LearnOptions:
         F1 on photographs left out that another range or direction must gain to be taken.
     gain_unasked : float
         The same for a range where none was asked for.
-    quantiles : pair of float
-        Quantiles of the real diameters between which the range of sizes runs.
-    margin : float
-        Factor by which the range goes beyond them on either side.
+    gain_spots : float
+        Beside that, so many spots' worth must be gained, for F1 of few spots is chance.
+    sizes : SizeOptions
+        How the range of sizes is learned.
     refit : RefitOptions
         How strongly weights and cut-off are held.
     """
@@ -46,8 +43,8 @@ class LearnOptions:
     loss: float = 0.01
     gain: float = 0.02
     gain_unasked: float = 0.005
-    quantiles: tuple[float, float] = (0.05, 0.95)
-    margin: float = 1.2
+    gain_spots: float = 3.0
+    sizes: SizeOptions = field(default_factory=SizeOptions)
     refit: RefitOptions = field(default_factory=RefitOptions)
 
 
@@ -92,8 +89,8 @@ def learn(
     What is learned must earn its place by leave-one-photograph-out cross-validation [1]_ (over two
     halves where there is but one photograph): refitted weights with their cut-off unless F1 falls
     by more than `options.loss`, then the range of sizes and the direction of colour if F1 rises by `options.gain`. What
-    gains nothing stays as it was. The doubt is calibrated on spots judged by weights that had not
-    seen their photograph.
+    gains nothing stays as it was. Cut-off and calibration come from spots judged by weights that
+    had not seen their photograph (where there is but one, from that one).
 
     References
     ----------
@@ -178,7 +175,8 @@ class _School:
         way = first
         if self.enough:
             refitted = self._way(lessons, first)
-            way = refitted if refitted.f1 >= first.f1 - self.options.loss else first
+            loss = self.options.loss if len(self.whole) > 1 else 0.0
+            way = refitted if refitted.f1 >= first.f1 - loss else first
         way = self._better(
             way,
             self._sized(first),
@@ -197,7 +195,7 @@ class _School:
 
     def range_of(self, reviewed: Sequence[Reviewed]) -> Range | None:
         """Learn the range of diameters."""
-        return learned_range(reviewed, self.options, in_mm=self.unit_mm)
+        return learned_range(reviewed, self.options.sizes, in_mm=self.unit_mm)
 
     def _as_it_was(self, lessons: list[Lesson]) -> _Way:
         """Judge by the kind's weights and cut-off."""
@@ -249,52 +247,8 @@ class _School:
 
     def _better(self, way: _Way, other: _Way | None, *, gain: float) -> _Way:
         """Take another way if it gains enough."""
+        gain += self.options.gain_spots / self.spots
         return way if other is None or other.f1 < way.f1 + gain else other
-
-
-def learned_range(
-    reviewed: Sequence[Reviewed], options: LearnOptions, *, in_mm: bool
-) -> Range | None:
-    """Learn the range of diameters from real objects.
-
-    Parameters
-    ----------
-    reviewed : sequence of Reviewed
-    options : LearnOptions
-    in_mm : bool
-        In millimetres, for which every sheet needs a scale; else in pixels.
-
-    Returns
-    -------
-    pair of Length or None
-        Between quantiles of the diameters, a margin added; None from fewer than five objects.
-    """
-    diameters = np.concatenate(
-        [2.0 * each.real[:, 2] * (_mm_per_px(each) if in_mm else 1.0) for each in reviewed]
-    )
-    if diameters.size < 5:
-        return None
-    low, high = np.quantile(diameters, options.quantiles)
-    unit = "mm" if in_mm else "px"
-    smallest, largest = (
-        float(f"{value:.4g}") for value in (low / options.margin, high * options.margin)
-    )
-    return Length(smallest, unit), Length(largest, unit)  # type: ignore[arg-type]  # one of both
-
-
-def in_pixels(sizes: Range, reviewed: Reviewed) -> tuple[float, float]:
-    """Return a range of diameters in the pixels of a reviewed photograph."""
-    mm_per_px = None if reviewed.sheet.scale is None else _mm_per_px(reviewed)
-    smallest, largest = (length.to_px(mm_per_px) for length in sizes)
-    return max(smallest, 2.0), max(largest, 3.0)
-
-
-def _mm_per_px(reviewed: Reviewed) -> float:
-    """Millimetres per pixel in the middle of a photograph's study area."""
-    scale = reviewed.sheet.scale
-    if scale is None:
-        raise ValueError(f"{reviewed.sheet.photograph.name} has no scale")
-    return float(scale.mm_per_px([reviewed.sheet.area.polygon.centroid.coords[0]])[0])
 
 
 def _taught(
@@ -307,16 +261,20 @@ def _taught(
     """Fit what is taken to all reviewed photographs."""
     sizes = school.range_of(school.whole) if way.sized else None
     direction = fisher_direction(pixels) if way.directed else None
-    known = Refitted(school.prior)
+    known, spots, cut = Refitted(school.prior), way.left_out, way.cut
     if way.refitted:
         lessons = first.lessons
         if way.sized or way.directed or school.folds != school.whole:
             lessons = [school.look(each, sizes, direction) for each in school.whole]
         known = refit(lessons, school.prior, options=school.options.refit)
+        if len(lessons) == 1:
+            # Weights of half a photograph say too little of where the whole one's cut-off lies.
+            spots = decided(lessons[0], known.doubt(lessons[0]))
+            cut = best_cut(spots, first.left_out, first.cut, options=school.options.refit)
     calibration = highest = None
     if school.enough:
-        calibration = recalibrated(way.left_out, way.cut)
-        highest = float(f"{calibration.applied(way.cut):.5g}")
+        calibration = recalibrated(spots, cut)
+        highest = float(f"{calibration.applied(cut):.5g}")
     asked = school.whole[0].options
     real, struck = (
         sum(len(getattr(each, name)) for each in school.whole) for name in ("real", "struck")

@@ -14,7 +14,8 @@ from typer.testing import CliRunner, Result
 from analyse.cli import app
 from detect.accuracy import match_spots
 from detect.doubt import GENERAL
-from detect.learning import LearnOptions, in_pixels, learn, learned_range, looks_at_most
+from detect.learned_sizes import SizeOptions, in_pixels, learned_range
+from detect.learning import learn, looks_at_most
 from detect.requests import DetectRequest, detect_photograph, parse_request
 from detect.reviewed import gather_reviewed
 from detect.sheet import read_sheet
@@ -143,20 +144,20 @@ def test_the_range_of_sizes_runs_beyond_the_real_ones(
 ) -> None:
     reviewed, _ = gather_reviewed(two_colours[0])
     radii = np.concatenate([each.real[:, 2] for each in reviewed])
-    sizes = learned_range(reviewed, LearnOptions(), in_mm=False)
+    sizes = learned_range(reviewed, SizeOptions(), in_mm=False)
     assert sizes is not None
     low, high = 2 * np.quantile(radii, [0.05, 0.95])
     assert [str(length) for length in sizes] == [f"{low / 1.2:.4g}px", f"{high * 1.2:.4g}px"]
     assert in_pixels(sizes, reviewed[0]) == pytest.approx((low / 1.2, high * 1.2), rel=1e-3)
     few = replace(reviewed[0], sheet=replace(reviewed[0].sheet, spots=Spots.none()))
-    assert learned_range([few], LearnOptions(), in_mm=False) is None
+    assert learned_range([few], SizeOptions(), in_mm=False) is None
 
 
 def test_sizes_are_in_millimetres_where_every_sheet_has_a_scale(tmp_path: Path) -> None:
     scenes = [(tmp_path / "a_1.png", draw(tmp_path / "a_1.png", 1))]
     sheets = reviewed_folder(tmp_path, scenes, mm_per_pixel="0.5")
     reviewed, _ = gather_reviewed(sheets)
-    sizes = learned_range(reviewed, LearnOptions(), in_mm=True)
+    sizes = learned_range(reviewed, SizeOptions(), in_mm=True)
     assert sizes is not None
     assert {length.unit for length in sizes} == {"mm"}
     low = 2 * np.quantile(reviewed[0].real[:, 2], 0.05)

@@ -160,6 +160,12 @@ def test_the_detector_does_as_it_was_taught() -> None:
     plainly = replace(TAUGHT, calibration=Calibration())
     before = find_spots(photograph, area, DetectOptions(), taught=plainly).spots
     assert found.spots.doubt == pytest.approx(TAUGHT.calibration.applied(before.doubt))
+    unlearned = replace(TAUGHT, model=GENERAL, calibration=None, highest_doubt=None)
+    kinds = find_spots(photograph, area, DetectOptions(), taught=unlearned).settings
+    usual = find_spots(photograph, area, TAUGHT.completed(DetectOptions(highest_doubt=0.4)))
+    expected = pytest.approx(usual.settings["doubt_calibration"], rel=0.1)
+    assert kinds["doubt_calibration"] == expected
+    assert found.settings["doubt_calibration"] == [0.0, 1.0]
     wary = replace(TAUGHT, model=replace(GENERAL, intercept=-9.0))
     assert len(find_spots(photograph, area, DetectOptions(), taught=wary).spots) == 0
 
