@@ -170,6 +170,19 @@ def test_the_detector_does_as_it_was_taught() -> None:
     assert len(find_spots(photograph, area, DetectOptions(), taught=wary).spots) == 0
 
 
+def test_doubt_is_calibrated_as_usual_where_no_calibration_was_taught() -> None:
+    photograph = SpotScene(discs=discs_of(24, radius=(6, 9))).draw()
+    area = frame_area(photograph.width, photograph.height)
+    sizes = DetectOptions(diameter=TAUGHT.diameter)
+    nothing = replace(
+        TAUGHT, highest_doubt=None, calibration=None, own_colour=None, direction=None, diameter=None
+    )
+    usual = find_spots(photograph, area, sizes)
+    found = find_spots(photograph, area, sizes, taught=nothing)
+    assert found.spots.doubt == pytest.approx(usual.spots.doubt)
+    assert found.settings == usual.settings
+
+
 def test_a_request_knows_what_was_taught(tmp_path: Path) -> None:
     written(tmp_path, taught_text(replace(TAUGHT, kind="lesions")))
     request = parse_request({"taught": "taught.toml"}, folder=tmp_path)
