@@ -14,6 +14,7 @@ from matplotlib.figure import Figure
 from matplotlib.patches import PathPatch
 from matplotlib.path import Path as Outline
 from matplotlib.patheffects import withStroke
+from shapely.geometry.base import BaseGeometry
 
 from analyse import look
 from analyse.charts import RESIDUAL_COLOURS as RESIDUAL_COLOURS
@@ -39,9 +40,11 @@ if TYPE_CHECKING:
 
     from analyse.findings import Findings
     from detect.photograph import PixelsFloat
+    from detect.scale import Scale
     from detect.sheet import Sheet
 
-Mapped = Callable[[Points], Points]
+_PIECES = 64  # of the outline of a quadrat on a photograph whose lens bends it
+Mapped = Callable[[BaseGeometry], BaseGeometry]
 
 
 def photograph_figure(findings: Findings, sheet: Sheet) -> Figure:
@@ -116,7 +119,7 @@ def draw_photograph(
         axes.imshow(pixels, extent=extent, interpolation="antialiased")
     axes.set(xlim=(-0.5, width - 0.5), ylim=(height - 0.5, -0.5), aspect="equal")
     axes.set_axis_off()
-    to_px = None if sheet.scale is None else sheet.scale.to_px
+    to_px = None if sheet.scale is None else _bent_to_px(sheet.scale)
     discs = np.column_stack([sheet.spots.centres, sheet.spots.radius])
     quadrats, labels = _draw_grid(axes, findings, to_px, discs, on_photograph=True)
     _draw_lines(axes, rings([sheet.area.polygon]), 1.6, dashes=(5, 3))
@@ -158,6 +161,17 @@ def draw_points(axes: Axes, findings: Findings) -> DrawnPicture:
     return DrawnPicture({"counted": pattern.points}, quadrats, labels)
 
 
+def _bent_to_px(scale: Scale) -> Mapped:
+    """Return what puts a cell in mm on the photograph; its edges in short pieces where a lens bends them."""
+
+    def mapped(cell: BaseGeometry) -> BaseGeometry:
+        if scale.lens is not None:
+            cell = shapely.segmentize(cell, cell.length / _PIECES)
+        return shapely.transform(cell, scale.to_px)
+
+    return mapped
+
+
 def _draw_grid(
     axes: Axes, findings: Findings, mapped: Mapped | None, discs: Points, *, on_photograph: bool
 ) -> tuple[tuple[Points, ...], tuple[tuple[float, float, str], ...]]:
@@ -165,7 +179,7 @@ def _draw_grid(
     grid = findings.counts.grid
     if grid is None:
         return (), ()
-    quadrats = [shapely.transform(cell, mapped) if mapped else cell for cell in grid.polygons]
+    quadrats = [mapped(cell) if mapped else cell for cell in grid.polygons]
     if on_photograph:
         _draw_lines(axes, rings(quadrats), 0.7)
     else:

@@ -20,10 +20,13 @@ from analyse.region import MM_PER_UNIT, TableUnit, check_area, rectangle
 from analyse.region import area_from_option as area_from_option
 from analyse.rows import read_rows, real_in
 from detect.planted import Planted
+from detect.scale import Scale
 from detect.sheet import Amendment, Sheet, current_state
 
 Unit = Literal["mm", "px"]
 DOUBTFUL = 0.5  # a doubt above this is more likely false than real
+
+_PIECES = 64  # of the picture's width: how finely outlines are cut where a lens bends them
 
 
 @dataclass(frozen=True, slots=True)
@@ -197,7 +200,7 @@ def pattern_from_sheet(sheet: Sheet, amendments: Sequence[Amendment] = ()) -> Pa
     -----
     Struck spots are left out. Spots a person moved or placed outside the study area are left out
     and counted. Straight edges stay straight under the map of a tilted plane, so only the corners
-    of the outline are mapped.
+    of the outline are mapped; where a lens bends them, they are mapped in short pieces.
     """
     state = current_state(sheet, amendments)
     spots = state.spots.where(state.spots.counted)
@@ -205,9 +208,11 @@ def pattern_from_sheet(sheet: Sheet, amendments: Sequence[Amendment] = ()) -> Pa
     outside, spots = int((~inside).sum()), spots.where(inside)
     points, area = spots.centres, sheet.area.polygon
     if sheet.scale is not None:
+        if sheet.scale.lens is not None:
+            area = shapely.segmentize(area, sheet.photograph.width / _PIECES)
         points, area = sheet.scale.to_mm(points), shapely.transform(area, sheet.scale.to_mm)
     flags = _point_flags(points, outside, spots.doubt)
-    flags += () if sheet.scale else ("uncalibrated",)
+    flags += _scale_flags(sheet.scale)
     flags += ("dish_unsure",) if sheet.settings.get("dish") else ()
     flags += () if amendments else ("unreviewed",)
     return Pattern(
@@ -261,6 +266,13 @@ def read_points(path: Path, *, area: BaseGeometry, unit: TableUnit = "mm") -> Pa
     points = [[real_in(row, at[name], name) for name in ("x", "y")] for row in body]
     xy = np.array(points, dtype=np.float64).reshape(-1, 2) * MM_PER_UNIT[unit]
     return Pattern.of(xy, area, name=path.name)
+
+
+def _scale_flags(scale: Scale | None) -> tuple[str, ...]:
+    """Return the flag of a scale that is missing, or does not say how sure it is."""
+    if scale is None:
+        return ("uncalibrated",)
+    return () if scale.relative_uncertainty > 0 else ("exact_scale",)
 
 
 def _point_flags(

@@ -147,6 +147,15 @@ SensorWidthOption = Annotated[
     str | None,
     _option("--sensor-width", SCALE, "Longer side of its sensor, such as 13.2mm.", "LENGTH"),
 ]
+LensOption = Annotated[
+    str | None,
+    _option(
+        "--lens",
+        SCALE,
+        "Camera's lens: lens.toml, or a photograph of a chessboard by it; better a folder of several.",
+        "FILE|DIR",
+    ),
+]
 ScaleUncertaintyOption = Annotated[
     str | None,
     _option(

@@ -25,6 +25,7 @@ from detect.command_options import (
     KindOption,
     LearnOption,
     LearnUnchangedOption,
+    LensOption,
     LineLengthOption,
     LineOption,
     MmPerPixelOption,
@@ -86,6 +87,7 @@ def detect(
     height: HeightOption = None,
     focal_length: FocalLengthOption = None,
     sensor_width: SensorWidthOption = None,
+    lens: LensOption = None,
     scale_uncertainty: ScaleUncertaintyOption = None,
     area: AreaOption = None,
     inset: InsetOption = None,
@@ -118,6 +120,7 @@ def detect(
                 "height": height,
                 "focal_length": focal_length,
                 "sensor_width": sensor_width,
+                "lens": lens,
                 "scale_uncertainty": scale_uncertainty,
                 "area": area,
                 "inset": inset,
@@ -129,6 +132,8 @@ def detect(
     )
     paths = gather_photographs(photographs)
     make_folder(out)
+    if request.scale.lens is not None:
+        write_text_atomically(out / "lens.toml", request.scale.lens.as_toml())
     if reviewed is not None:
         request = replace(request, taught=_learned(reviewed, out))
     _show_overruled(request)

@@ -138,6 +138,15 @@ def _taught(value: Any, name: str) -> Path:
     return Path(value)
 
 
+def _lens(value: Any, name: str) -> Path:
+    """Read the path of a lens's file, or of photographs of a chessboard."""
+    if not isinstance(value, str | Path) or not str(value):
+        raise OptionWrong(
+            f"{name} must be a file such as lens.toml, or photographs of a chessboard, not {value!r}."
+        )
+    return Path(value)
+
+
 def _percent(value: Any, name: str) -> float:
     """Read a share in percent, such as 1%, above 0 and below 100."""
     text = value.strip() if isinstance(value, str) else ""
@@ -163,6 +172,7 @@ READERS: dict[str, Callable[[Any, str], Any]] = {
     "height": _length,
     "focal_length": _length,
     "sensor_width": _length,
+    "lens": _lens,
     "scale_uncertainty": _percent,
     "area": _area,
     "inset": _length,

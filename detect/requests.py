@@ -22,6 +22,7 @@ from detect.batch import Progress
 from detect.dish import Dish, find_dish
 from detect.errors import OptionWrong
 from detect.lengths import Length
+from detect.lens import Lens
 from detect.photograph import Photograph, read_photograph
 from detect.planted import PlantedOptions
 from detect.readers import READERS, AreaWord, CutDish
@@ -269,6 +270,8 @@ def parse_request(
     check_one_scale(read, named)
     if "area" in read:
         read["where"] = _existing(read.pop("area"), named("area"), folder)
+    if "lens" in read:
+        read["lens"] = _lens(read["lens"], named("lens"), folder)
     taught = None
     if "taught" in read:
         taught = read_taught(read["taught"] if folder is None else folder / read["taught"])
@@ -297,12 +300,24 @@ def _existing(where: AreaWord | Path, name: str, folder: Path | None) -> AreaWor
     return path
 
 
+def _lens(given: Path, name: str, folder: Path | None) -> Lens:
+    """Return a camera's lens from its file, or measured on the chessboards of a file or folder."""
+    from detect.chessboard import lens_from
+
+    path = given if folder is None else folder / given
+    if not path.exists():
+        raise OptionWrong(f"{name} names {path}, which does not exist; check its path.")
+    return lens_from(path)
+
+
 def _plain(value: Any) -> Any:
     """Turn a field into what JSON can hold."""
     if isinstance(value, Length):
         return str(value)
     if isinstance(value, Path):
         return value.name
+    if isinstance(value, Lens):
+        return value.as_dict()
     if isinstance(value, tuple):
         return [_plain(entry) for entry in value]
     return value

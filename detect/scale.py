@@ -13,6 +13,7 @@ import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
 from detect.errors import OptionWrong
+from detect.lens import Lens
 from detect.tilt import INVERSE_UNCERTAINTY, onto_circle
 
 if TYPE_CHECKING:
@@ -42,6 +43,8 @@ class Scale:
         Standard uncertainty of a length, as a fraction of it.
     note : str
         The known length in words, as reports quote it.
+    lens : Lens or None
+        What the lens bends; `matrix` then holds for straightened pixels.
 
     Raises
     ------
@@ -53,6 +56,7 @@ class Scale:
     source: ScaleSource
     relative_uncertainty: float
     note: str
+    lens: Lens | None = None
 
     def __post_init__(self) -> None:
         matrix = np.array(self.matrix, dtype=np.float64).reshape(3, 3)
@@ -79,26 +83,33 @@ class Scale:
 
     def to_mm(self, points_px: ArrayLike) -> Points:
         """Map (n, 2) pixel positions to millimetres."""
-        return _apply(self.matrix, points_px)
+        return _apply(self.matrix, self._straight(points_px))
 
     def to_px(self, points_mm: ArrayLike) -> Points:
         """Map (n, 2) millimetre positions to pixels."""
-        return _apply(np.linalg.inv(self.matrix), points_mm)
+        straight = _apply(np.linalg.inv(self.matrix), points_mm)
+        return straight if self.lens is None else self.lens.bend(straight)
 
     def mm_per_px(self, points_px: ArrayLike) -> NDArray[np.float64]:
         """Return the local millimetres per pixel, the root of the area factor, at (n, 2) pixels."""
+        w = self._straight(points_px) @ self.matrix[2, :2] + 1.0
+        grown = 1.0 if self.lens is None else self.lens.area_factor(points_px)
+        return np.asarray(np.sqrt(grown * np.linalg.det(self.matrix) / np.abs(w) ** 3))
+
+    def _straight(self, points_px: ArrayLike) -> Points:
+        """Return (n, 2) pixel positions as they would lie without the lens's distortion."""
         points = np.asarray(points_px, dtype=np.float64).reshape(-1, 2)
-        w = points @ self.matrix[2, :2] + 1.0
-        return np.asarray(np.sqrt(np.linalg.det(self.matrix) / np.abs(w) ** 3))
+        return points if self.lens is None else self.lens.straighten(points)
 
     def as_dict(self) -> dict[str, Any]:
         """Return the scale as plain values for a file."""
-        return {
+        values = {
             "matrix": self.matrix.tolist(),
             "source": self.source,
             "relative_uncertainty": self.relative_uncertainty,
             "note": self.note,
         }
+        return values if self.lens is None else {**values, "lens": self.lens.as_dict()}
 
     @classmethod
     def from_dict(cls, values: dict[str, Any]) -> Scale:
@@ -108,6 +119,7 @@ class Scale:
             values["source"],
             float(values["relative_uncertainty"]),
             str(values["note"]),
+            None if values.get("lens") is None else Lens.from_dict(values["lens"]),
         )
 
 
