@@ -210,10 +210,12 @@ def told(taught: Taught) -> str:
         parts.append("the range of sizes")
     if taught.direction is not None:
         parts.append("the direction of colour")
+    if taught.calibration is not None:
+        parts.append("what a doubt is worth")
     more = (
         "" if taught.calibration is not None else " 30 spots are needed to learn more than sizes."
     )
-    what = "nothing that is better than what was known" if not parts else _listed(parts)
+    what = "nothing" if not parts else _listed(parts)
     return (
         f"Learned from {photographs} photograph{'' if photographs == 1 else 's'}"
         f" ({lessons.real} real spots, {lessons.placed} of them placed; {lessons.struck} struck):"
