@@ -1,7 +1,8 @@
 """Contrast map -> candidate regions: cut at many levels, with holes filled and touching ones split.
 
 No single cut is right for every object, so each level's regions, whole and split, all go into one
-pool; what they look like is measured in `regions` and judged in `doubt`.
+pool; what they look like is measured in `regions` and judged in `doubt`. A dim object beside a
+bright one stands out at no level, but against its surroundings.
 """
 
 from __future__ import annotations
@@ -14,8 +15,12 @@ from numpy.typing import NDArray
 
 from detect.constants import pooled
 from detect.contrast import Contrast, Map, Mask
+from detect.ground import blur
 from detect.regions import Candidates, Column, Labels, join, measure_regions
 from detect.splitting import split_regions
+
+# Reach of the surroundings against which objects are cut out, as shares of a middling diameter.
+SURROUNDINGS = (0.5, 1.0)
 
 
 def find_candidates(
@@ -25,6 +30,8 @@ def find_candidates(
     smallest_px: float,
     largest_px: float,
     cuts: Column | None = None,
+    surroundings: Sequence[float] = (),
+    together: float = 0.95,
 ) -> Candidates:
     """Cut the map at several levels and collect every region that could be an object.
 
@@ -38,6 +45,11 @@ def find_candidates(
         Range of diameters in pixels of the map.
     cuts : ndarray or None
         Levels at which the map is cut; None takes those of `cut_levels`.
+    surroundings : sequence of float
+        Standard deviations of Gaussian means, as shares of the middle of the range, above which
+        the map is cut as well.
+    together : float
+        Peaks of one region stay one while the relief between them keeps this share of the lower.
 
     Returns
     -------
@@ -53,20 +65,35 @@ def find_candidates(
     crest = cv2.GaussianBlur(contrast.map, (0, 0), max(0.15 * smallest_px, 0.5))
     crest = np.sqrt(np.maximum(crest, 0.0))
     parts: list[Candidates] = []
-    for level in cut_levels([contrast], [inside]) if cuts is None else cuts:
-        mask = _clean((smooth > level) & inside, largest_px)
-        for labels, count, neck in _whole_and_split(mask, crest, smallest_px, largest_px):
+    levels = cut_levels([contrast], [inside]) if cuts is None else cuts
+    around = _surroundings(contrast.map, surroundings, np.sqrt(smallest_px * largest_px))
+    for level, floor in _floors(levels, around):
+        mask = _clean((smooth > floor) & inside, largest_px)
+        for labels, count, neck in _whole_and_split(mask, crest, smallest_px, largest_px, together):
             parts.append(
                 measure_regions(
                     labels,
                     count,
                     contrast.map,
                     neck=neck,
+                    level=level,
                     smallest_px=smallest_px,
                     largest_px=largest_px,
                 )
             )
     return join(parts)
+
+
+def _surroundings(map_: Map, shares: Sequence[float], middle_px: float) -> list[Map]:
+    """Return means of the map, without what lies below the ground, over the surroundings."""
+    above = np.maximum(map_, 0.0) if shares else map_
+    return [blur(above, share * middle_px) for share in shares]
+
+
+def _floors(levels: Column, around: Sequence[Map]) -> Iterator[tuple[float | None, float | Map]]:
+    """Each level as it is, and each mean no lower than the lowest level."""
+    yield from ((float(level), float(level)) for level in levels)
+    yield from ((None, np.maximum(mean, np.float32(levels[0]))) for mean in around)
 
 
 def cut_levels(
@@ -152,7 +179,7 @@ def _without_giants(mask: NDArray[np.uint8], largest_px: float) -> NDArray[np.ui
 
 
 def _whole_and_split(
-    mask: NDArray[np.uint8], crest: Map, smallest_px: float, largest_px: float
+    mask: NDArray[np.uint8], crest: Map, smallest_px: float, largest_px: float, together: float
 ) -> Iterator[tuple[Labels, int, Column]]:
     """Labels of the connected regions, then of their pieces by shape, then by shape and contrast."""
     count, labels, stats, _ = cv2.connectedComponentsWithStats(mask, connectivity=4)
@@ -175,6 +202,7 @@ def _whole_and_split(
             relief=relief,
             smallest_px=smallest_px,
             largest_px=largest_px,
+            together=together,
         )
         if pieces is not None:
             yield pieces

@@ -20,9 +20,15 @@ FEATURES = (
     "long",
     "clear",
     "neck",
+    "cut",
+    "frame",
+    "local",
     "star",
     "around",
 )
+# A region with more of its boundary than this on the picture's edge is cut off by it; that it is
+# small then counts by half.
+_CUT_OFF, _EXCUSE = 0.05, 0.5
 
 
 @dataclass(frozen=True, slots=True)
@@ -50,6 +56,12 @@ class DoubtModel:
         Weight of the log of the edge step in units of the ground's noise.
     neck : float
         Weight of the width of the neck to the nearest kin over the own width.
+    cut : float
+        Weight of how far from half its mean contrast the region was cut.
+    frame : float
+        Weight of the share of the boundary on the edge of the picture.
+    local : float
+        Weight of having been cut out against its surroundings.
     star, around : float
         Weights of how leaves radiate from the centre and how far around it; plants only.
 
@@ -68,6 +80,9 @@ class DoubtModel:
     long: float = 0.0
     clear: float = 0.0
     neck: float = 0.0
+    cut: float = 0.0
+    frame: float = 0.0
+    local: float = 0.0
     star: float = 0.0
     around: float = 0.0
 
@@ -78,18 +93,22 @@ class DoubtModel:
 
 
 # Fitted by tests/benchmarks/fit_doubt.py: GENERAL on hand-marked photographs of five subjects, the
-# kinds on drawn scenes of their own (seeds 1000-1099), held near GENERAL by a ridge.
+# kinds on drawn scenes of their own (seeds 1000-1099), held near GENERAL by a ridge: LESIONS near it as
+# it is, COLONIES and SEEDLINGS near what it was before `cut`, `frame` and `local` were measured.
 GENERAL = DoubtModel(
-    intercept=2.236,
-    size=-1.201,
-    open=0.000,
-    faint=-0.183,
-    slope=1.350,
-    rough=-11.540,
-    texture=-1.289,
+    intercept=1.589,
+    size=-1.161,
+    open=1.391,
+    faint=-0.178,
+    slope=0.774,
+    rough=-11.452,
+    texture=-2.096,
     long=0.000,
     clear=0.000,
-    neck=-0.546,
+    neck=-0.436,
+    cut=0.998,
+    frame=-0.165,
+    local=-0.104,
     star=0.000,
     around=0.000,
 )
@@ -104,6 +123,9 @@ COLONIES = DoubtModel(
     long=-5.530,
     clear=1.037,
     neck=-0.048,
+    cut=0.000,
+    frame=0.000,
+    local=0.000,
     star=0.000,
     around=0.000,
 )
@@ -118,20 +140,26 @@ SEEDLINGS = DoubtModel(
     long=-3.456,
     clear=-0.196,
     neck=-3.839,
+    cut=0.000,
+    frame=0.000,
+    local=0.000,
     star=10.820,
     around=-3.289,
 )
 LESIONS = DoubtModel(
-    intercept=0.758,
-    size=-2.382,
-    open=0.566,
-    faint=-0.056,
-    slope=0.892,
-    rough=-19.119,
-    texture=-6.273,
-    long=-2.547,
-    clear=1.830,
-    neck=-0.776,
+    intercept=0.506,
+    size=-2.460,
+    open=0.910,
+    faint=0.294,
+    slope=0.428,
+    rough=-18.036,
+    texture=-7.447,
+    long=-2.520,
+    clear=2.173,
+    neck=-0.496,
+    cut=-0.039,
+    frame=-3.687,
+    local=-0.104,
     star=0.000,
     around=0.000,
 )
@@ -166,17 +194,19 @@ def features(
 
     Returns
     -------
-    ndarray of shape (n, 9)
+    ndarray of shape (n, 12)
         Columns in the order of `FEATURES`, without the last two.
     """
     middle = 0.5 * np.log(smallest_px * largest_px)
     half = 0.5 * np.log(largest_px / smallest_px) + 0.2
-    size = np.minimum(np.abs(np.log(candidates.diameter) - middle) / half, 2.5)
+    size = (np.log(candidates.diameter) - middle) / half
+    # What the picture's edge cuts off is larger than it looks.
+    size = np.where((size < 0) & (candidates.frame > _CUT_OFF), _EXCUSE * size, size)
     usual = usual_step(candidates) if step is None else step
     relative = np.log(np.maximum(candidates.step, 1e-6) / usual)
     return np.column_stack(
         [
-            size,
+            np.minimum(np.abs(size), 2.5),
             candidates.open,
             np.clip(relative, -3.0, 0.0) ** 2,
             np.clip(candidates.slope, -1.0, 3.0),
@@ -185,6 +215,9 @@ def features(
             np.minimum(np.log(candidates.elongation), 1.5),
             np.clip(np.log(np.maximum(candidates.step, 1e-3) / noise), -1.0, 5.0),
             np.minimum(candidates.neck, 1.0),
+            np.minimum(np.abs(candidates.height - 0.5), 1.0),
+            candidates.frame,
+            candidates.local,
         ]
     )
 

@@ -152,13 +152,13 @@ def _reach(away2: Sequence[Map], usable: Sequence[Mask]) -> float:
 
 def _smooth_ratio(values: Map, weight: Map, sigma: float, fallback: Map) -> Map:
     """Gaussian mean of (h, w, 3) values under weights; `fallback` where no weight reaches."""
-    top = _blur(values * weight[..., None], sigma)
-    bottom = _blur(weight, sigma)[..., None]
+    top = blur(values * weight[..., None], sigma)
+    bottom = blur(weight, sigma)[..., None]
     tiny = 1e-4
     return np.asarray((top + tiny * fallback) / (bottom + tiny), dtype=np.float32)
 
 
-def _blur(values: Map, sigma: float) -> Map:
+def blur(values: Map, sigma: float) -> Map:
     """Gaussian blur; wide ones on a reduced map, where they are exact enough and cheap."""
     reduce = int(max(1, min(sigma // 4, min(values.shape[:2]) // 4)))
     if reduce == 1:

@@ -8,7 +8,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from detect.candidates import cut_levels, find_candidates
+from detect.candidates import SURROUNDINGS, cut_levels, find_candidates
 from detect.choice import choose
 from detect.constants import Constants
 from detect.contrast import Colour, Contrast, Mask, Sought, contrast_maps
@@ -23,6 +23,10 @@ _USUAL_COLOUR: dict[Kind, Colour] = {"seedlings": "green"}
 _CALMING: dict[Kind, float] = {"lesions": 1.0}
 # Candidates are looked for a little beyond the range: too small a range costs more than too wide.
 _BELOW, _ABOVE = 0.7, 1.4
+# Kinds whose objects are cut out against their surroundings too.
+_LOCALLY: tuple[Kind, ...] = ("spots",)
+# How deep the relief between two peaks must dip to part them: glare on a dish dips a little.
+_TOGETHER: dict[Kind, float] = {"colonies": 0.95, "seedlings": 0.95, "lesions": 0.97, "spots": 0.97}
 # Below this evidence for one side, both are tried.
 _SURE = 0.6
 # A region whose mean contrast is less than this many times the noise is noise.
@@ -38,7 +42,7 @@ class Judgement:
     contrast : Contrast
         The map as it is, before leaves are fused to plants.
     candidates : Candidates
-    measured : ndarray of shape (n, 9) or (n, 11)
+    measured : ndarray of shape (n, 12) or (n, 14)
         Features of the doubt model; for plants also how the leaves are arranged.
     doubt : ndarray of shape (n,)
     """
@@ -220,7 +224,7 @@ def _judge(
         else tuple(cut_levels(same, insides) for same in zip(*maps, strict=True))
     )
     candidates = [
-        _candidates(looked_at, inside, cuts, smallest_px, largest_px)
+        _candidates(looked_at, inside, cuts, smallest_px, largest_px, options.kind)
         for looked_at, inside in zip(maps, insides, strict=True)
     ]
     least = _least_contrast(contrasts[0], _colour(options))
@@ -275,6 +279,7 @@ def _candidates(
     cuts: Sequence[NDArray[np.float64]],
     smallest_px: float,
     largest_px: float,
+    kind: Kind,
 ) -> Candidates:
     """Collect the candidates of all maps of one view."""
     return join(
@@ -285,6 +290,8 @@ def _candidates(
                 smallest_px=_BELOW * smallest_px,
                 largest_px=_ABOVE * largest_px,
                 cuts=levels,
+                surroundings=SURROUNDINGS if kind in _LOCALLY else (),
+                together=_TOGETHER[kind],
             )
             for looked_at, levels in zip(maps, cuts, strict=True)
         ]

@@ -39,6 +39,13 @@ class Candidates:
         Standard deviation of contrast inside, as a share of its mean.
     neck : ndarray of shape (n,)
         Width of the neck to the nearest kin over the region's own width; 0 for whole regions.
+    height : ndarray of shape (n,)
+        Level at which the region was cut, as a share of the mean contrast inside; a half for
+        regions cut out against their surroundings.
+    frame : ndarray of shape (n,)
+        Share of the boundary that lies on the edge of the map: the region goes on beyond.
+    local : ndarray of shape (n,)
+        1 where the region was cut out against its surroundings, 0 where at a level.
     """
 
     x: Column
@@ -54,6 +61,9 @@ class Candidates:
     rough: Column
     texture: Column
     neck: Column
+    height: Column
+    frame: Column
+    local: Column
 
     def __len__(self) -> int:
         return int(self.x.size)
@@ -99,6 +109,7 @@ def measure_regions(
     contrast: Map,
     *,
     neck: Column,
+    level: float | None,
     smallest_px: float,
     largest_px: float,
 ) -> Candidates:
@@ -114,12 +125,16 @@ def measure_regions(
         The signed contrast map.
     neck : ndarray of shape (count,)
         Width of each label's neck over its own width.
+    level : float or None
+        Level at which the regions were cut; None where they were cut out against their
+        surroundings.
     smallest_px, largest_px : float
         Regions under half the smallest or over 1.7 times the largest diameter are left out.
 
     Returns
     -------
     Candidates
+        What the edge of the map cuts off has no say in the measures of the boundary.
     """
     width = labels.shape[1]
     at = np.flatnonzero(labels)
@@ -137,9 +152,12 @@ def measure_regions(
     diameter = 2.0 * np.sqrt(area / np.pi)
     sxx, syy = sxx + 1 / 12, syy + 1 / 12
     edge = _boundary(labels, label, x, y)
-    outside = _outside(edge, mx, my, diameter, mean, sxx, syy, sxy, contrast, count)
+    free, frame = _off_the_frame(edge, labels, count)
+    outside = _outside(free, mx, my, diameter, mean, sxx, syy, sxy, contrast, count)
+    height = np.full(count, 0.5) if level is None else level / np.maximum(mean, 1e-6)
+    local = np.full(count, float(level is None))
     keep = (diameter >= 0.5 * smallest_px) & (diameter <= 1.7 * largest_px) & (area > 0)
-    columns = (mx, my, area, sxx, syy, sxy, mean, *outside, texture, neck)
+    columns = (mx, my, area, sxx, syy, sxy, mean, *outside, texture, neck, height, frame, local)
     return Candidates(*(column[keep] for column in columns))
 
 
@@ -155,6 +173,17 @@ def _boundary(
     for shift in (1, -1, w, -w):
         edge |= flat[here + shift] != label
     return label[edge], x[edge].astype(np.float64), y[edge].astype(np.float64)
+
+
+def _off_the_frame(
+    edge: tuple[Labels, Column, Column], labels: Labels, count: int
+) -> tuple[tuple[Labels, Column, Column], Column]:
+    """Boundary off the edge of the map, and the share of each label's boundary that is on it."""
+    label, x, y = edge
+    rows, columns = labels.shape
+    on = (x == 0) | (y == 0) | (x == columns - 1) | (y == rows - 1)
+    share = np.bincount(label, on, count) / np.maximum(np.bincount(label, minlength=count), 1)
+    return (label[~on], x[~on], y[~on]), share
 
 
 def _outside(

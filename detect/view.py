@@ -85,9 +85,10 @@ def view_of(photograph: Photograph, area: StudyArea, *, shrink: float) -> View:
         If fewer than three columns or rows of the photograph lie in the area's box.
     """
     x0, y0, x1, y1 = area.polygon.bounds
-    left, top = max(0, int(np.floor(x0))), max(0, int(np.floor(y0)))
-    right = min(photograph.width, int(np.ceil(x1)) + 1)
-    bottom = min(photograph.height, int(np.ceil(y1)) + 1)
+    # Pixel k reaches from k - 0.5 to k + 0.5; what only touches the box stays out.
+    left, top = max(0, int(np.floor(x0 + 0.5))), max(0, int(np.floor(y0 + 0.5)))
+    right = min(photograph.width, int(np.ceil(x1 - 0.5)) + 1)
+    bottom = min(photograph.height, int(np.ceil(y1 - 0.5)) + 1)
     if right - left < 3 or bottom - top < 3:
         raise AreaWrong("The study area lies outside the photograph; check its coordinates.")
     lab = to_lab(photograph.pixels(shrink=shrink, box=(left, top, right, bottom)))

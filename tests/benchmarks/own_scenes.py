@@ -10,6 +10,7 @@ from __future__ import annotations
 import argparse
 import sys
 from dataclasses import replace
+from functools import partial
 from pathlib import Path
 
 import numpy as np
@@ -31,7 +32,8 @@ def radii(
     return values
 
 
-def dish(seed: int) -> object:
+def dish(seed: int, crowd: int | None = None) -> object:
+    """A dish of a drawn number of colonies, or of `crowd` small ones at random."""
     rng = np.random.default_rng([seed, 1])
     base = rng.choice(list(trial.dishes().values()))
     n = int(
@@ -40,10 +42,11 @@ def dish(seed: int) -> object:
             p=[0.1, 0.1, 0.1, 0.15, 0.15, 0.1, 0.1, 0.1, 0.1],
         )
     )
+    n = n if crowd is None else crowd
     median = float(rng.uniform(0.8, 1.6)) if n <= 120 else float(rng.uniform(0.72, 0.85))
     kind = str(rng.choice(["random", "clumped", "even"])) if n else "none"
     if n > 120:
-        kind = "random"
+        kind = "random" if crowd is None else "few"  # so many never pass for a clear example
     sizes = radii(rng, n, median, float(rng.uniform(0.15, 0.35)), 0.62, 2.6 if n <= 120 else 1.2)
     plan = replace(base.plan, kind=kind, radii_mm=sizes, clumps=9, clump_mm=5.2)
     clutter = replace(
@@ -109,12 +112,13 @@ def main() -> None:
     parser.add_argument("--first", type=int, required=True)
     for name in ("dishes", "plots", "leaves"):
         parser.add_argument(f"--{name}", type=int, default=0)
+    parser.add_argument("--crowded", type=int, help="colonies on every dish")
     chosen = parser.parse_args()
     truth = chosen.out / "truth"
     (truth / "outlines").mkdir(parents=True, exist_ok=True)
     rows = []
     for name, make, count in (
-        ("dish", dish, chosen.dishes),
+        ("dish", partial(dish, crowd=chosen.crowded), chosen.dishes),
         ("plot", plot, chosen.plots),
         ("leaf", leaf, chosen.leaves),
     ):

@@ -2,10 +2,11 @@
 
 from __future__ import annotations
 
+import cv2
 import numpy as np
 import pytest
 
-from detect.candidates import _clean, find_candidates
+from detect.candidates import SURROUNDINGS, _clean, find_candidates
 from detect.contrast import Contrast
 from detect.regions import Candidates
 
@@ -58,6 +59,26 @@ def test_touching_discs_are_in_the_pool_one_by_one_and_together(apart: float) ->
     middle = np.abs(found.x - (90 + 7.5 * apart)) < 1.5
     assert (middle & (found.elongation > 1.4) & (found.neck == 0)).any()
     assert (found.neck > 0).any()
+
+
+@pytest.mark.parametrize("height", [12.0, 16.0])
+def test_a_dim_disc_on_the_slope_of_a_bright_one_stands_out_against_its_surroundings(
+    height: float,
+) -> None:
+    bright = cv2.GaussianBlur(discs((100, 80, 14, 60.0)), (0, 0), 5.0)
+    dim = cv2.GaussianBlur(discs((124, 80, 9, height)), (0, 0), 1.5)
+    contrast = Contrast(bright + dim, 0.5, 0.5, 2.0, np.array([1.0, 0, 0]), 1.0)
+    inside = np.ones(bright.shape, bool)
+    levels = find_candidates(contrast, inside, smallest_px=12, largest_px=40)
+    assert best(levels, 124, 80, 9)[0] > 9
+    both = find_candidates(
+        contrast, inside, smallest_px=12, largest_px=40, surroundings=SURROUNDINGS
+    )
+    off, wrong = best(both, 124, 80, 9)
+    assert off < 1.0
+    assert wrong < 0.12
+    assert set(both.local) == {0.0, 1.0}
+    assert set(levels.local) == {0.0}
 
 
 def test_a_round_hole_is_filled_so_that_a_ring_is_one() -> None:

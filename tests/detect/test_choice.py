@@ -20,7 +20,7 @@ def ellipses(n: int, seed: int, *, frame: float = 120.0) -> tuple[Candidates, np
     sxx = (long**2 * c**2 + short**2 * s**2) / 4
     syy = (long**2 * s**2 + short**2 * c**2) / 4
     sxy = (long**2 - short**2) * c * s / 4
-    rest = [np.ones(n)] * 7
+    rest = [np.ones(n)] * 10
     x, y = rng.uniform(0, frame, (2, n))
     found = Candidates(x, y, np.pi * long * short, sxx, syy, sxy, *rest)
     return found, np.round(rng.uniform(0, 1, n), 2)

@@ -28,6 +28,9 @@ def table(n: int, **columns: object) -> Candidates:
         "rough": 0.03,
         "texture": 0.1,
         "neck": 0.0,
+        "height": 0.5,
+        "frame": 0.0,
+        "local": 0.0,
     }
     given = usual | columns
     return Candidates(
@@ -43,13 +46,13 @@ def test_doubt_is_the_logistic_of_a_weighted_sum() -> None:
 
 
 def test_features_left_out_count_as_nothing() -> None:
-    row = np.full((1, 9), 0.2)
+    row = np.full((1, 12), 0.2)
     padded = np.column_stack([row, np.zeros((1, 2))])
     assert doubt_of(row, GENERAL) == pytest.approx(doubt_of(padded, GENERAL))
 
 
 def test_even_absurd_features_give_a_probability() -> None:
-    doubt = doubt_of(np.array([[1e6] * 9, [-1e6] * 9]), GENERAL)
+    doubt = doubt_of(np.array([[1e6] * 12, [-1e6] * 12]), GENERAL)
     assert ((doubt >= 0) & (doubt <= 1)).all()
 
 
@@ -62,16 +65,25 @@ def test_features_by_hand() -> None:
         syy=np.r_[[25.0] * 5, 25.0],
     )
     got = features(given, noise=2.0, smallest_px=10, largest_px=40)
-    assert got.shape == (6, 9)
+    assert got.shape == (6, 12)
     half = math.log(2) + 0.2
     # Diameter 20 is the middle of 10..40; diameter 40 is one half range away.
-    assert got[0] == pytest.approx([0, 1, 0, 1, 0.03, 0.1, 0, math.log(5), 0])
-    assert got[5] == pytest.approx(
-        [math.log(2) / half, 1, math.log(2) ** 2, 1, 0.03, 0.1, math.log(4), math.log(2.5), 0]
-    )
-    assert list(FEATURES[:9]) == [
-        *("size", "open", "faint", "slope", "rough", "texture", "long", "clear", "neck")
+    assert got[0] == pytest.approx([0, 1, 0, 1, 0.03, 0.1, 0, math.log(5), 0, 0, 0, 0])
+    large = [math.log(2) / half, 1, math.log(2) ** 2, 1, 0.03, 0.1, math.log(4), math.log(2.5)]
+    assert got[5] == pytest.approx([*large, 0, 0, 0, 0])
+    assert list(FEATURES[:12]) == [
+        *("size", "open", "faint", "slope", "rough", "texture", "long", "clear", "neck"),
+        *("cut", "frame", "local"),
     ]
+
+
+def test_what_the_frame_cuts_off_is_excused_for_half_its_smallness() -> None:
+    area = np.pi / 4 * np.r_[10.0, 10.0, 40.0] ** 2
+    given = table(3, area=area, frame=[0.0, 0.3, 0.3], height=[0.5, 0.2, 0.9], local=[1, 0, 0])
+    got = features(given, noise=1.0, smallest_px=10, largest_px=40)
+    far = math.log(2) / (math.log(2) + 0.2)
+    assert got[:, 0] == pytest.approx([far, far / 2, far])
+    assert got[:, 9:12] == pytest.approx(np.array([[0, 0, 1], [0.3, 0.3, 0], [0.4, 0.3, 0]]))
 
 
 def test_the_usual_step_is_that_of_well_shaped_regions() -> None:
@@ -99,4 +111,4 @@ def test_ragged_joined_and_oddly_sized_regions_are_more_doubtful(
 
 def test_weights_come_in_the_order_of_the_features() -> None:
     weights = {name: float(k) for k, name in enumerate(FEATURES)}
-    assert DoubtModel(intercept=9.0, **weights).weights.tolist() == list(map(float, range(11)))
+    assert DoubtModel(intercept=9.0, **weights).weights.tolist() == list(map(float, range(14)))

@@ -29,7 +29,7 @@ def region(
         (a**2 * s**2 + b**2 * c**2) / 4,
         (a**2 - b**2) * c * s / 4,
     )
-    columns = (80.0, 60.0, np.pi * a * b, *moments, height, *[0.0] * 6)
+    columns = (80.0, 60.0, np.pi * a * b, *moments, height, *[0.0] * 9)
     return Candidates(*(np.array([v]) for v in columns))
 
 

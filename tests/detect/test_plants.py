@@ -55,7 +55,7 @@ def pairs(apart: float) -> np.ndarray:
 def circles(*rows: tuple[float, float, float]) -> Candidates:
     """Regions that are discs x, y, r."""
     x, y, r = np.array(rows, float).reshape(-1, 3).T
-    rest = [np.ones(x.size)] * 7
+    rest = [np.ones(x.size)] * 10
     return Candidates(x, y, np.pi * r**2, r**2 / 4, r**2 / 4, 0 * r, *rest)
 
 

@@ -10,7 +10,9 @@ from detect.regions import Candidates, join, measure_regions
 HEIGHT, WIDTH = 140, 200
 
 
-def measured(*shapes: np.ndarray, contrast: np.ndarray | None = None) -> Candidates:
+def measured(
+    *shapes: np.ndarray, contrast: np.ndarray | None = None, level: float | None = 0.5
+) -> Candidates:
     labels = np.zeros((HEIGHT, WIDTH), np.int32)
     for k, shape in enumerate(shapes):
         labels[shape] = k + 1
@@ -21,6 +23,7 @@ def measured(*shapes: np.ndarray, contrast: np.ndarray | None = None) -> Candida
         len(shapes) + 1,
         contrast.astype(np.float32),
         neck=np.zeros(len(shapes) + 1),
+        level=level,
         smallest_px=4,
         largest_px=100,
     )
@@ -85,6 +88,24 @@ def test_half_a_disc_is_open_on_one_side_only() -> None:
     assert found.step[0] == pytest.approx(8.0)
 
 
+def test_the_edge_of_the_map_is_no_edge_of_what_it_cuts_off() -> None:
+    half = measured(ellipse(100, 0, 30, 30))
+    whole = measured(ellipse(100, 70, 30, 30))
+    # Half a disc of radius r: the arc is pi r, the cut 2 r; staircases count 4-neighbours.
+    assert half.frame[0] == pytest.approx(61 / (61 + 4 * 30 / np.sqrt(2)), rel=0.05)
+    assert half.open[0] == pytest.approx(1.0)
+    assert half.slope[0] == pytest.approx(whole.slope[0], abs=0.02)
+    assert whole.frame[0] == 0.0
+
+
+def test_the_height_of_a_cut_is_its_level_over_the_mean_inside() -> None:
+    disc = ellipse(100, 70, 20, 20)
+    cut = measured(disc, contrast=np.where(disc, 8.0, 1.0), level=2.0)
+    assert (cut.height[0], cut.local[0]) == (pytest.approx(0.25), 0.0)
+    local = measured(disc, contrast=np.where(disc, 8.0, 1.0), level=None)
+    assert (local.height[0], local.local[0]) == (0.5, 1.0)
+
+
 def test_texture_is_the_relative_spread_inside() -> None:
     disc = ellipse(100, 70, 30, 30)
     values = 10 + np.random.default_rng(1).normal(0, 2, disc.shape)
@@ -108,6 +129,7 @@ def test_regions_of_impossible_size_are_left_out() -> None:
         4,
         (labels > 0).astype(np.float32),
         neck=np.array([0.0, 0.1, 0.2, 0.3]),
+        level=None,
         smallest_px=8,
         largest_px=20,
     )

@@ -30,7 +30,7 @@ def test_working_positions_return_to_the_photograph(shrink: float) -> None:
     photograph = photograph_of(ramps, bits=16)
     area = area_of(shapely.box(50.2, 40.7, 310.5, 250.1))
     view = view_of(photograph, area, shrink=shrink)
-    small = photograph.pixels(shrink=shrink, box=(50, 40, 312, 252))
+    small = photograph.pixels(shrink=shrink, box=(50, 41, 311, 251))
     height, width = view.lab.shape[:2]
     at = grid(view, height, width)
     assert np.abs(at[:, 0] - 400 * small[..., 0].ravel()).max() < 0.6 / shrink
@@ -73,3 +73,9 @@ def test_the_whole_frame_is_the_whole_grid() -> None:
     view = view_of(photograph, frame_area(photograph.width, photograph.height), shrink=1.0)
     assert view.inside.shape == (photograph.height, photograph.width)
     assert view.inside.all()
+
+
+def test_the_view_holds_the_pixels_that_the_area_reaches_into_and_no_more() -> None:
+    view = view_of(plain_noise(), area_of(shapely.box(50.2, 40.7, 210.5, 150.6)), shrink=1.0)
+    assert (view.left, view.top) == (50, 41)
+    assert view.inside.shape == (152 - 41, 211 - 50)
