@@ -88,7 +88,7 @@ class CalibrationOptions:
     -----
     The defaults were chosen on five hand-marked subjects, each left out of all fitting: thirty of
     its spots at random calibrated the rest, 200 times over. The log loss of the rest is level
-    (within 0.001) for intercepts of 0.25 to 0.75 and slopes of 0.1 to 0.3; a stiffer intercept
+    (within 0.003) for intercepts of 0.25 to 0.75 and slopes of 0.1 to 0.3; a stiffer intercept
     leaves a subject that differs much as it was, a freer one follows the chance of thirty spots.
     """
 
