@@ -59,7 +59,7 @@ def photograph_jpeg(photograph: Photograph, *, longest_side: int = LONGEST_SIDE)
         Quality 82, or lower (58 at least) where a rough texture would take more than 350 kB.
     """
     shrink = min(1.0, longest_side / max(photograph.width, photograph.height))
-    pixels = np.round(photograph.pixels(shrink=shrink) * 255.0).astype(np.uint8)
+    pixels = np.round(photograph.pixels(shrink=shrink, quick=True) * 255.0).astype(np.uint8)
     for quality in range(_BEST_QUALITY, _LEAST_QUALITY - 1, -6):
         settings = [cv2.IMWRITE_JPEG_QUALITY, quality, cv2.IMWRITE_JPEG_OPTIMIZE, 1]
         done, encoded = cv2.imencode(".jpg", cv2.cvtColor(pixels, cv2.COLOR_RGB2BGR), settings)

@@ -28,6 +28,7 @@ _SOURCES = {
     "plates": "from the four corner plates of a plot, found in the picture",
     "fiducials": "from the four fiducial marks of a plot, found in the picture",
     "height": "from the camera's height, focal length and sensor",
+    "georeference": "from the raster's own georeference",
 }
 _CLASSES_READ = 12  # frequencies of more classes are not read out
 

@@ -174,6 +174,39 @@ def polygon_area(path: Path, width: int, height: int, *, inset_px: float = 0.0) 
     return _stepped_in(area.polygon, "polygon", area.note, inset_px)
 
 
+def area_with_data(area: StudyArea, seen: BaseGeometry | None) -> StudyArea:
+    """Return a study area without what of its picture holds no data.
+
+    Parameters
+    ----------
+    area : StudyArea
+    seen : shapely geometry or None
+        The part of the picture that holds data, in pixels; None where all of it does.
+
+    Returns
+    -------
+    StudyArea
+
+    Raises
+    ------
+    AreaWrong
+        If nothing of the area holds data.
+    """
+    if seen is None or seen.covers(area.polygon):
+        return area
+    parts = [
+        part
+        for part in shapely.get_parts(area.polygon.intersection(seen))
+        if part.geom_type in ("Polygon", "MultiPolygon") and part.area > 0
+    ]
+    if not parts:
+        raise AreaWrong(
+            "The study area lies where the raster holds no data; check its coordinates."
+        )
+    note = f"{area.note}, without what holds no data"
+    return StudyArea(shapely.union_all(parts), area.kind, note)
+
+
 def _stepped_in(outline: BaseGeometry, kind: AreaKind, note: str, inset_px: float) -> StudyArea:
     """Step an outline inwards and say so in the note."""
     if not (np.isfinite(inset_px) and inset_px >= 0):

@@ -75,7 +75,7 @@ def shrunk(photograph: Photograph, longest_side: int) -> tuple[Array, float]:
     Of 16 bits that are hardly used (a 12-bit camera's), the used part is stretched.
     """
     factor = min(1.0, longest_side / max(photograph.width, photograph.height))
-    array: Array = photograph.reduced(shrink=factor)
+    array: Array = photograph.reduced(shrink=factor, quick=True)
     if array.dtype == np.uint16:
         top = float(np.percentile(array[::7, ::7], 99.9))
         gain = 1.0 if top > _DIM else 60_000 / max(top, 1.0)

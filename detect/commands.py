@@ -59,6 +59,7 @@ from detect.terminal import (
     show_failures,
     show_path,
     show_table,
+    tiles_on_terminal,
 )
 
 
@@ -138,11 +139,14 @@ def detect(
         request = replace(request, taught=_learned(reviewed, out))
     _show_overruled(request)
     tasks = [DetectTask(path, request, out, keep_amendments) for path in paths]
-    # Of one photograph the rounds of planted objects are shown, of many the photographs.
+    # Of one photograph the rounds of planted objects or its tiles are shown, of many the photographs.
     rounds = 0 if request.planted is None or len(tasks) > 1 else request.planted.rounds
-    with progress_on_terminal("Planting" if rounds else "Detecting", rounds or len(tasks)) as bar:
-        if rounds:
-            tasks, bar = [replace(task, progress=bar) for task in tasks], None
+    with (
+        progress_on_terminal("Planting" if rounds else "Detecting", rounds or len(tasks)) as bar,
+        tiles_on_terminal("Detecting in tiles") as tiles,
+    ):
+        if len(tasks) == 1:
+            tasks, bar = [replace(tasks[0], progress=bar if rounds else tiles)], None
         processes = workers_for(len(tasks), whole(workers, "--workers"))
         results = do_each(DETECT, tasks, workers=processes, progress=bar)
     done = [result for result in results if not isinstance(result, Failure)]
@@ -206,7 +210,7 @@ class DetectTask:
     request: DetectRequest
     folder: Path
     keep_amendments: bool
-    progress: Progress | None = None
+    progress: Progress | None = None  # of one photograph alone, for it is not sent to others
 
 
 @dataclass(frozen=True, slots=True)

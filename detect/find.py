@@ -3,33 +3,25 @@
 from __future__ import annotations
 
 from dataclasses import dataclass, replace
+from functools import partial
 from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
 
 from detect.area import StudyArea
-from detect.calibration import Calibration
-from detect.choice import choose
 from detect.doubt import MODELS, DoubtModel
 from detect.errors import OptionWrong
 from detect.judge import Judgement, judged
-from detect.outline import settle_outlines
 from detect.own_colour import own_colours
 from detect.photograph import Photograph
-from detect.picture_doubt import (
-    CALIBRATIONS,
-    LOOKED_AT,
-    Evidence,
-    PictureCalibration,
-    evidence_of,
-)
-from detect.plants import settle_plants
+from detect.picture_doubt import CALIBRATIONS, Evidence, PictureCalibration
 from detect.scale import Scale
 from detect.sizes import learn_diameters
 from detect.spots import Spots
 from detect.taught import Taught
-from detect.view import View, view_of
+from detect.tiles import Progress, Task, Tiling, found_in_pieces
+from detect.view import View, grid_of, view_of
 from detect.wanted import DetectOptions, Kind
 
 # Diameters looked for when none are given but a scale is known, in millimetres (common practice).
@@ -54,8 +46,8 @@ class Found:
     spots : Spots
     settings : dict
         Plain values for the sheet: kind, diameters in pixels, direction of the contrast in L*, a*,
-        b*, the ground's noise, the working scale, the highest doubt kept, and the calibration of
-        the doubt.
+        b*, the ground's noise, the working scale, the highest doubt kept, the calibration of the
+        doubt, and the number of tiles where the picture was cut into some.
     evidence : Evidence
         What the picture as a whole says about its spots.
     """
@@ -74,6 +66,8 @@ def find_spots(
     model: DoubtModel | None = None,
     calibration: PictureCalibration | None = None,
     taught: Taught | None = None,
+    tiling: Tiling | None = None,
+    progress: Progress | None = None,
 ) -> Found:
     """Find the objects of a photograph within its study area.
 
@@ -91,6 +85,11 @@ def find_spots(
         What the model's doubt is worth; None takes what goes with the weights.
     taught : Taught or None
         What corrections taught: it completes `options`.
+    tiling : Tiling or None
+        When and how a very large picture is judged in tiles, so that it need not fit into memory;
+        None takes the defaults.
+    progress : callable or None
+        Called with (done, total) after each tile.
 
     Returns
     -------
@@ -106,37 +105,44 @@ def find_spots(
     direction = None if taught is None else taught.direction_for(options)
     options = options if taught is None else taught.completed(options)
     smallest, largest = _diameters(photograph, area, options, scale, model, direction)
-    view, judgement = look_at(
-        photograph, area, options, (smallest, largest), model=model, direction=direction
+    looked_at = _with_its_surroundings(area, largest)
+    grid = grid_of(photograph, looked_at, shrink=_shrink(options.kind, smallest))
+    calibrated = taught is not None and taught.calibration is not None  # it is applied already
+    task = Task(
+        photograph,
+        looked_at,
+        grid,
+        smallest * grid.shrink,
+        largest * grid.shrink,
+        options,
+        model,
+        calibration or (PictureCalibration() if calibrated else CALIBRATIONS[options.kind]),
+        partial(_kept, area=area, kind=options.kind, smallest_px=smallest, largest_px=largest),
+        direction,
+        None if taught is None else partial(_taught_doubt, taught),
     )
-    if taught is not None:
-        colours = own_colours(view.lab, judgement.candidates)
-        judgement = replace(judgement, doubt=taught.doubt(judgement.doubt, colours))
-        if taught.calibration is not None:  # it is applied already
-            calibration = calibration or PictureCalibration()
-
-    def chosen(worth: Calibration, limit: float) -> Spots:
-        rows = choose(judgement.candidates, judgement.doubt, highest_doubt=limit)
-        spots = _spots(view, judgement, rows, worth, plants=options.kind == "seedlings")
-        return _kept(spots, area, options.kind, smallest, largest)
-
-    looked_at = chosen(Calibration(), LOOKED_AT)
-    evidence = evidence_of(2 * looked_at.radius, looked_at.doubt)
-    worth = (calibration or CALIBRATIONS[options.kind]).of(evidence)
+    pieces = found_in_pieces(task, tiling or Tiling(), progress=progress)
+    constants, standard = pieces.yardstick.constants, pieces.standard
     highest = options.highest_doubt
-    limit = options.most_doubt if highest is None else float(worth.inverse.applied(highest))
-    contrast = judgement.contrast
+    if highest is None:
+        highest = round(float(standard.worth.applied(standard.limit)), 6)
     settings = {
         "kind": options.kind,
         "diameter_px": [round(smallest, 2), round(largest, 2)],
         "colour": options.colour,
-        "direction_lab": [round(float(v), 4) for v in contrast.direction],
-        "noise_lab": round(contrast.noise, 4),
-        "working_px_per_px": round(view.shrink, 6),
-        "highest_doubt": round(float(worth.applied(limit)), 6) if highest is None else highest,
-        "doubt_calibration": [round(worth.intercept, 6), round(worth.slope, 6)],
+        "direction_lab": [round(float(v), 4) for v in constants.direction],
+        "noise_lab": round(constants.noise, 4),
+        "working_px_per_px": round(grid.shrink, 6),
+        "highest_doubt": highest,
+        "doubt_calibration": [round(standard.worth.intercept, 6), round(standard.worth.slope, 6)],
     }
-    return Found(chosen(worth, limit), settings, evidence)
+    tiles = {} if pieces.tiles is None else {"tiles": pieces.tiles}
+    return Found(task.kept(pieces.spots), settings | tiles, standard.evidence)
+
+
+def _taught_doubt(taught: Taught, view: View, judgement: Judgement) -> NDArray[np.float64]:
+    """Return the doubt that corrections taught, of the candidates of a view."""
+    return taught.doubt(judgement.doubt, own_colours(view.lab, judgement.candidates))
 
 
 def look_at(
@@ -167,15 +173,20 @@ def look_at(
     tuple of View and Judgement
     """
     smallest, largest = diameters_px
-    working = _WORKING_PX_PLANTS if options.kind == "seedlings" else _WORKING_PX
     looked_at = _with_its_surroundings(area, largest)
-    view = view_of(photograph, looked_at, shrink=min(1.0, working / smallest))
+    view = view_of(photograph, looked_at, shrink=_shrink(options.kind, smallest))
     small, large = smallest * view.shrink, largest * view.shrink
     return view, judged(view, small, large, options, model, direction=direction)
 
 
+def _shrink(kind: Kind, smallest_px: float) -> float:
+    """How far a photograph is reduced, so that the smallest object stays large enough."""
+    working = _WORKING_PX_PLANTS if kind == "seedlings" else _WORKING_PX
+    return min(1.0, working / smallest_px)
+
+
 def _kept(
-    spots: Spots, area: StudyArea, kind: Kind, smallest_px: float, largest_px: float
+    spots: Spots, *, area: StudyArea, kind: Kind, smallest_px: float, largest_px: float
 ) -> Spots:
     """Return the spots centred in the area and, for a kind, near the sizes asked for; in order."""
     spots = spots.where(area.contains(spots.centres))
@@ -232,29 +243,3 @@ def _diameters(
             " the photograph from closer."
         )
     return max(smallest, 2.0), largest
-
-
-def _spots(
-    view: View,
-    judgement: Judgement,
-    rows: NDArray[np.intp],
-    worth: Calibration,
-    *,
-    plants: bool,
-) -> Spots:
-    """Turn chosen regions into spots in photograph pixels."""
-    contrast, chosen = judgement.contrast, judgement.candidates.where(rows)
-    if plants:
-        centres, radius = settle_plants(chosen, contrast.map, contrast.threshold)
-    else:
-        centres = np.column_stack([chosen.x, chosen.y])
-        radius = np.sqrt(chosen.area / np.pi) * settle_outlines(chosen, contrast.map)
-    x, y = view.to_photograph(centres[:, 0], centres[:, 1])
-    return Spots.found_at(
-        x,
-        y,
-        radius / view.shrink,
-        contrast=chosen.contrast / contrast.noise,
-        fill=chosen.fill,
-        doubt=worth.applied(judgement.doubt[rows]),
-    )

@@ -62,7 +62,7 @@ def draw_overlay(
     """
     # By a whole number, which is several times as fast.
     shrink = 1.0 / math.ceil(max(photograph.width, photograph.height) / longest_side)
-    picture = in_8_bits(photograph.reduced(shrink=shrink))
+    picture = in_8_bits(photograph.reduced(shrink=shrink, quick=True))
     stroke = max(1, round(max(picture.shape[:2]) / 1000))
     draw_lines(picture, dashes(area, shrink, 9.0 * stroke), _OUTLINE, stroke, closed=False)
     # Pixel centres are at whole numbers, so the picture's corner is at -0.5 and stays there.

@@ -7,18 +7,26 @@ import re
 from collections.abc import Callable
 from dataclasses import dataclass
 from pathlib import Path
-from typing import Any
+from typing import TYPE_CHECKING, Any, TypeAlias
 
 import cv2
 import numpy as np
 from numpy.typing import NDArray
 
+from detect.averages import averaged_cells
 from detect.containers import EXPORT, RAW_ADVICE, Claim, read_claim
 from detect.errors import PhotographUnreadable, RequestWrong
 from detect.phone import decode_phone_picture, is_phone_picture, read_phone_picture
+from detect.raster import RasterPixels, is_raster, read_raster, unread_georeference
+
+if TYPE_CHECKING:
+    from shapely.geometry.base import BaseGeometry
+
+    from detect.georeference import Georeference
 
 PixelsFloat = NDArray[np.float32]
 StoredPixels = NDArray[np.uint8] | NDArray[np.uint16]
+Readable: TypeAlias = "StoredPixels | RasterPixels"
 
 IMAGE_SUFFIXES = (".jpg", ".jpeg", ".png", ".tif", ".tiff", ".bmp")
 PHONE_SUFFIXES = (".heic", ".heif")
@@ -44,26 +52,34 @@ class Photograph:
         Where the file is.
     sha256 : str
         Identity of the file's bytes, in hexadecimal.
-    stored : ndarray of shape (height, width, 3), uint8 or uint16
-        Red, green and blue as the file holds them, turned upright.
+    stored : ndarray or RasterPixels of shape (height, width, 3), uint8 or uint16
+        Red, green and blue as the file holds them, turned upright; of a very large or georeferenced
+        raster they stay on disk, and parts are read by two slices.
     taken : str or None
         When it was taken, as the camera wrote it (ISO 8601), if it did.
     notes : tuple of str
         What was knowingly left aside in reading, such as a colour profile.
+    georeference : Georeference or None
+        Where on Earth it lies, if the file says so.
+    seen : shapely geometry or None
+        The part that holds data, in pixels; None where all of it does.
     """
 
     path: Path
     sha256: str
-    stored: StoredPixels
+    stored: Readable
     taken: str | None = None
     notes: tuple[str, ...] = ()
+    georeference: Georeference | None = None
+    seen: BaseGeometry | None = None
 
     def __post_init__(self) -> None:
         if self.stored.ndim != 3 or self.stored.shape[2] != 3:
             raise ValueError(f"stored must be (height, width, 3), not {self.stored.shape}")
         if self.stored.dtype not in (np.uint8, np.uint16):
             raise ValueError(f"stored must be uint8 or uint16, not {self.stored.dtype}")
-        self.stored.setflags(write=False)
+        if isinstance(self.stored, np.ndarray):
+            self.stored.setflags(write=False)
 
     @property
     def name(self) -> str:
@@ -81,7 +97,11 @@ class Photograph:
         return int(self.stored.shape[0])
 
     def pixels(
-        self, *, shrink: float = 1.0, box: tuple[int, int, int, int] | None = None
+        self,
+        *,
+        shrink: float = 1.0,
+        box: tuple[int, int, int, int] | None = None,
+        quick: bool = False,
     ) -> PixelsFloat:
         """Return the pixels as red, green, blue in 0..1, made smaller by area averages.
 
@@ -91,16 +111,22 @@ class Photograph:
             Factor from 0 (excluded) to 1 by which width and height are multiplied.
         box : tuple of int or None
             Left, top, right, bottom of the part wanted (right and bottom excluded); None for all.
+        quick : bool
+            Good enough to be looked at: a raster's own reduced copies are used where it has some.
 
         Returns
         -------
         ndarray of shape (round(height * shrink), round(width * shrink), 3), float32
         """
-        array = self.reduced(shrink=shrink, box=box)
+        array = self.reduced(shrink=shrink, box=box, quick=quick)
         return array.astype(np.float32) * np.float32(1.0 / np.iinfo(array.dtype).max)
 
     def reduced(
-        self, *, shrink: float = 1.0, box: tuple[int, int, int, int] | None = None
+        self,
+        *,
+        shrink: float = 1.0,
+        box: tuple[int, int, int, int] | None = None,
+        quick: bool = False,
     ) -> StoredPixels:
         """Return what `pixels` returns, as whole numbers of the depth that the file holds.
 
@@ -110,16 +136,24 @@ class Photograph:
             Factor from 0 (excluded) to 1 by which width and height are multiplied.
         box : tuple of int or None
             Left, top, right, bottom of the part wanted (right and bottom excluded); None for all.
+        quick : bool
+            Good enough to be looked at: a raster's own reduced copies are used where it has some.
 
         Returns
         -------
         ndarray of shape (round(height * shrink), round(width * shrink), 3), uint8 or uint16
         """
         left, top, right, bottom = box or (0, 0, self.width, self.height)
-        array: StoredPixels = self.stored[top:bottom, left:right]
-        height, width = array.shape[:2]
+        width, height = right - left, bottom - top
         size = (max(1, round(width * shrink)), max(1, round(height * shrink)))
-        return array if shrink >= 1.0 else _averaged(array, size)
+        if shrink >= 1.0:
+            return self.stored[top:bottom, left:right]
+        if isinstance(self.stored, np.ndarray):
+            return _averaged(self.stored[top:bottom, left:right], size)
+        if quick and self.stored.has_copies:
+            return self.stored.copied(left, top, right, bottom, size)
+        spans = ((0, size[0]), (0, size[1]))
+        return averaged_cells(self.stored, (left, top), (width, height, *size), *spans)
 
 
 def read_photograph(path: Path) -> Photograph:
@@ -144,13 +178,33 @@ def read_photograph(path: Path) -> Photograph:
         bytes can hold or more than `MOST_PIXELS`, or is smaller than `SMALLEST_SIDE`.
     """
     try:
+        if is_raster(path):
+            return _raster(path)
         data = _bytes_of(path)
         claim = read_phone_picture(data) if is_phone_picture(data) else read_claim(data)
         _check_size(claim, len(data))
         stored = _decode(claim)
     except PhotographUnreadable as trouble:
         raise PhotographUnreadable(f"{path.name}: {trouble}.") from trouble
-    return Photograph(path, hashlib.sha256(data).hexdigest(), stored, claim.taken, claim.notes)
+    notes = (*claim.notes, *unread_georeference(path))
+    return Photograph(path, hashlib.sha256(data).hexdigest(), stored, claim.taken, notes)
+
+
+def _raster(path: Path) -> Photograph:
+    """Open a raster whose pixels stay on disk."""
+    raster = read_raster(path)
+    _check_side(raster.pixels.shape[1], raster.pixels.shape[0])
+    with path.open("rb") as file:
+        identity = hashlib.file_digest(file, "sha256").hexdigest()
+    return Photograph(
+        path,
+        identity,
+        raster.pixels,
+        raster.taken,
+        raster.notes,
+        raster.georeference,
+        raster.seen,
+    )
 
 
 def find_photographs(folder: Path) -> list[Path]:
@@ -219,13 +273,19 @@ def _bytes_of(path: Path) -> bytes:
         ) from error
 
 
+def _check_side(width: int, height: int) -> None:
+    """Refuse a picture too small to count in."""
+    if min(width, height) < SMALLEST_SIDE:
+        raise PhotographUnreadable(
+            f"the picture has {width} x {height} pixels, too small to count in;"
+            f" at least {SMALLEST_SIDE} each way are needed"
+        )
+
+
 def _check_size(claim: Claim, file_size: int) -> None:
     """Refuse sizes that are of no use, or that the bytes cannot hold, before memory is taken."""
     size = f"{claim.width} x {claim.height} pixels"
-    if min(claim.width, claim.height) < SMALLEST_SIDE:
-        raise PhotographUnreadable(
-            f"the picture has {size}, too small to count in; at least {SMALLEST_SIDE} each way are needed"
-        )
+    _check_side(claim.width, claim.height)
     if claim.width * claim.height > MOST_PIXELS:
         raise PhotographUnreadable(
             f"the picture has {size}, more than {MOST_PIXELS // 10**6} million; cut it into parts"

@@ -12,6 +12,7 @@ from typing import Any
 
 from detect.area import (
     StudyArea,
+    area_with_data,
     dish_area,
     frame_area,
     leaf_area,
@@ -20,7 +21,7 @@ from detect.area import (
 )
 from detect.batch import Progress
 from detect.dish import Dish, find_dish
-from detect.errors import OptionWrong
+from detect.errors import OptionWrong, PhotographUnreadable
 from detect.lengths import Length
 from detect.lens import Lens
 from detect.photograph import Photograph, read_photograph
@@ -147,7 +148,8 @@ def detect_photograph(
     request : DetectRequest
         What to find, at which scale, and where.
     progress : callable, optional
-        Called with (done, total) after each round of planted objects.
+        Called with (done, total) after each round of planted objects if some are asked for, else
+        after each tile of a photograph that is cut into some.
 
     Returns
     -------
@@ -166,9 +168,17 @@ def detect_photograph(
     request.scale.check_positions(photograph)
     cut = request.area.cut_dish or "refuse"
     dish = find_dish(photograph, cut=cut) if request.needs_dish else None
-    scale = request.scale.resolve(photograph, dish)
+    scale = request.scale.resolve(photograph, dish) or _own_scale(photograph)
     area = _study_area(photograph, request, scale, dish)
-    found = find_spots(photograph, area, request.options, scale=scale, taught=request.taught)
+    area = area_with_data(area, photograph.seen)
+    found = find_spots(
+        photograph,
+        area,
+        request.options,
+        scale=scale,
+        taught=request.taught,
+        progress=progress if request.planted is None else None,
+    )
     settings = {
         "request": request.as_dict(),
         "detector": found.settings,
@@ -199,6 +209,16 @@ def detect_photograph(
 def tool_version() -> str:
     """Return the version of this program."""
     return version("strewn")
+
+
+def _own_scale(photograph: Photograph) -> Scale | None:
+    """Return the scale that a georeferenced raster brings along."""
+    if photograph.georeference is None:
+        return None
+    try:
+        return photograph.georeference.scale()
+    except PhotographUnreadable as trouble:
+        raise PhotographUnreadable(f"{photograph.name}: {trouble}.") from trouble
 
 
 def _study_area(

@@ -20,7 +20,15 @@ if TYPE_CHECKING:
     from detect.dish import Dish
 
 ScaleSource = Literal[
-    "mm-per-pixel", "line", "ruler", "dish", "corners", "plates", "fiducials", "height"
+    "mm-per-pixel",
+    "line",
+    "ruler",
+    "dish",
+    "corners",
+    "plates",
+    "fiducials",
+    "height",
+    "georeference",
 ]
 Points = NDArray[np.float64]
 

@@ -8,16 +8,19 @@ from numpy.typing import NDArray
 from detect.area import StudyArea
 from detect.choice import choose
 from detect.doubt import DoubtModel
-from detect.judge import judged
+from detect.judge import judged_together
 from detect.photograph import Photograph
 from detect.regions import Column
-from detect.view import view_of
 from detect.wanted import DetectOptions
+from detect.windows import views_that_teach
 
 # Octaves of diameter start here, in photograph pixels, or at this share of the area's short side.
 _SMALLEST_PX, _SMALLEST_SHARE = 5.0, 1 / 400
 _LARGEST_SHARE = 0.45
 _WORKING_PX = 8.0
+# Of a very large picture the octaves begin where they do in one of this short side, and from
+# more working pixels than these windows spread over it teach in place of the whole.
+_USUAL_SHORT_PX, _TAUGHT_BY = 6000.0, 20_000_000
 
 
 def learn_diameters(
@@ -54,7 +57,7 @@ def learn_diameters(
     """
     x0, y0, x1, y1 = area.polygon.bounds
     short = min(x1 - x0, y1 - y0)
-    lowest = max(_SMALLEST_PX, _SMALLEST_SHARE * short)
+    lowest = max(_SMALLEST_PX, _SMALLEST_SHARE * min(short, _USUAL_SHORT_PX))
     count = max(1, int(np.floor(np.log2(_LARGEST_SHARE * short / lowest))))
     found = [
         _octave(photograph, area, options, model, direction, lowest * 2.0**k) for k in range(count)
@@ -81,9 +84,14 @@ def _octave(
     smallest: float,
 ) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
     """Diameters (photograph pixels) found in one octave, and what each is worth."""
-    view = view_of(photograph, area, shrink=min(1.0, _WORKING_PX / smallest))
-    low = smallest * view.shrink
-    judgement = judged(view, low, 2.0 * low, options, model, direction=direction)
-    rows = choose(judgement.candidates, judgement.doubt, highest_doubt=0.6)
-    diameter = judgement.candidates.diameter[rows] / view.shrink
-    return diameter, (0.6 - judgement.doubt[rows]) * diameter**1.5
+    shrink = min(1.0, _WORKING_PX / smallest)
+    low = smallest * shrink
+    views = views_that_teach(photograph, area, shrink, 2.0 * low, _TAUGHT_BY)
+    low = smallest * views[0].shrink
+    judgements, _ = judged_together(views, low, 2.0 * low, options, model, direction=direction)
+    diameters, weights = [], []
+    for judgement in judgements:
+        rows = choose(judgement.candidates, judgement.doubt, highest_doubt=0.6)
+        diameters.append(judgement.candidates.diameter[rows] / views[0].shrink)
+        weights.append((0.6 - judgement.doubt[rows]) * diameters[-1] ** 1.5)
+    return np.concatenate(diameters), np.concatenate(weights)

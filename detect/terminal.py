@@ -5,7 +5,7 @@ from __future__ import annotations
 import shlex
 import sys
 from collections.abc import Iterator, Sequence
-from contextlib import contextmanager
+from contextlib import ExitStack, contextmanager
 from pathlib import Path
 
 import typer
@@ -85,6 +85,21 @@ def progress_on_terminal(what: str, total: int) -> Iterator[Progress | None]:
             bar.update(task, completed=done, total=total)
 
         yield advance
+
+
+@contextmanager
+def tiles_on_terminal(what: str) -> Iterator[Progress | None]:
+    """Give a callback that draws a bar from its first call on, or None where nobody watches."""
+    with ExitStack() as stack:
+        drawn: list[Progress | None] = []
+
+        def advance(done: int, total: int) -> None:
+            if not drawn:
+                drawn.append(stack.enter_context(progress_on_terminal(what, total)))
+            if drawn[0] is not None:
+                drawn[0](done, total)
+
+        yield advance if sys.stderr.isatty() else None
 
 
 def number_text(value: float | None, digits: int = 3) -> str:

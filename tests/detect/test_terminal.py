@@ -15,6 +15,7 @@ from detect.terminal import (
     progress_on_terminal,
     show_failures,
     show_table,
+    tiles_on_terminal,
 )
 
 
@@ -101,3 +102,16 @@ def test_a_bar_is_drawn_on_a_terminal_alone(monkeypatch: pytest.MonkeyPatch) -> 
         assert progress is not None
         progress(2, 2)
     assert "2/2" in watched.getvalue()
+
+
+def test_a_bar_of_tiles_is_drawn_once_there_are_some(monkeypatch: pytest.MonkeyPatch) -> None:
+    with tiles_on_terminal("Detecting in tiles") as progress:
+        assert progress is None
+    watched = Watched()
+    monkeypatch.setattr(sys, "stderr", watched)
+    with tiles_on_terminal("Detecting in tiles") as progress:
+        assert progress is not None
+        assert watched.getvalue() == ""
+        progress(1, 3)
+        progress(3, 3)
+    assert "3/3" in watched.getvalue()
