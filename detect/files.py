@@ -145,6 +145,8 @@ def csv_text(
 
 def _cell(value: Cell, digits: int | None) -> str:
     """Write one cell as text."""
+    if type(value) is float:  # first, for large tables are made of them
+        return _number(value, digits)
     if isinstance(value, np.generic):
         return _cell(value.item(), digits)
     if value is None:
@@ -160,10 +162,14 @@ def _cell(value: Cell, digits: int | None) -> str:
 
 def _number(value: float, digits: int | None) -> str:
     """Write a floating point number as text; nothing for NaN, no sign for zero."""
+    if digits is not None:
+        text = f"{value:.{digits}g}"  # mostly enough, and faster than to read it back
+        if digits <= 15 and "." in text and "e" not in text:
+            return text
     if math.isnan(value):
         return ""
     if digits is not None and math.isfinite(value):
-        value = float(f"{value:.{digits}g}")
+        value = float(text)
     return repr(value + 0.0)
 
 

@@ -201,24 +201,21 @@ def points_csv(sheet: Sheet) -> str:
     unknown = np.full(len(spots), np.nan)
     mm = np.column_stack([unknown, unknown]) if scale is None else scale.to_mm(spots.centres)
     factor = unknown if scale is None else scale.mm_per_px(spots.centres)
-    rows = [
-        (
-            spots.id[i],
-            spots.x[i],
-            spots.y[i],
-            mm[i, 0],
-            mm[i, 1],
-            spots.radius[i],
-            spots.radius[i] * factor[i],
-            spots.area[i] * factor[i] ** 2,
-            spots.contrast[i],
-            spots.doubt[i],
-            "found" if spots.found[i] else "placed",
-            "counted" if spots.counted[i] else "struck",
-        )
-        for i in range(len(spots))
-    ]
-    return csv_text(_POINT_COLUMNS, rows, digits=7)
+    columns = (
+        spots.id,
+        spots.x.tolist(),
+        spots.y.tolist(),
+        mm[:, 0].tolist(),
+        mm[:, 1].tolist(),
+        spots.radius.tolist(),
+        (spots.radius * factor).tolist(),
+        (spots.area * factor**2).tolist(),
+        spots.contrast.tolist(),
+        spots.doubt.tolist(),
+        np.where(spots.found, "found", "placed").tolist(),
+        np.where(spots.counted, "counted", "struck").tolist(),
+    )
+    return csv_text(_POINT_COLUMNS, zip(*columns, strict=True), digits=7)
 
 
 def current_state(sheet: Sheet, amendments: Sequence[Amendment]) -> Sheet:
@@ -242,31 +239,34 @@ def current_state(sheet: Sheet, amendments: Sequence[Amendment]) -> Sheet:
         If an amendment names a spot the sheet has not, places one under a taken id, or leaves
         the photograph.
     """
-    rows = [
-        {name: getattr(sheet.spots, name)[i] for name in _SPOT_COLUMNS}
-        for i in range(len(sheet.spots))
-    ]
-    by_id = {str(row["id"]): row for row in rows}
+    if not amendments:
+        return sheet
+    columns: dict[str, list[Any]] = {
+        name: list(getattr(sheet.spots, name)) for name in _SPOT_COLUMNS
+    }
+    at = {name: row for row, name in enumerate(sheet.spots.id)}
     for amendment in amendments:
-        _check_applies(sheet, amendment, by_id)
-        _apply(amendment, by_id)
-    columns: list[Any] = [tuple(by_id)]
-    columns += [np.array([row[name] for row in by_id.values()]) for name in _SPOT_COLUMNS[1:]]
-    return replace(sheet, spots=Spots(*columns))
+        _check_applies(sheet, amendment, at)
+        _apply(amendment, columns, at)
+    names = tuple(columns.pop("id"))
+    return replace(sheet, spots=Spots(names, **{k: np.array(v) for k, v in columns.items()}))
 
 
-def _apply(amendment: Amendment, by_id: dict[str, dict[str, Any]]) -> None:
-    """Apply one amendment that has been checked."""
+def _apply(amendment: Amendment, columns: dict[str, list[Any]], at: dict[str, int]) -> None:
+    """Apply one amendment that has been checked to columns of spots, each found by its id."""
     if amendment.what == "place":
-        fresh = {"contrast": np.nan, "fill": 1.0, "doubt": 0.0, "found": False}
-        by_id[amendment.spot] = {"id": amendment.spot, **fresh}
-    row = by_id[amendment.spot]
-    if amendment.what in ("place", "move"):
-        row |= {"x": amendment.x, "y": amendment.y}
+        at[amendment.spot] = len(at)
+        fresh = {"id": amendment.spot, "contrast": np.nan, "fill": 1.0, "doubt": 0.0}
+        for name, column in columns.items():
+            column.append(fresh.get(name, False))
+    row = at[amendment.spot]
+    if amendment.x is not None:
+        columns["x"][row], columns["y"][row] = amendment.x, amendment.y
     if amendment.radius is not None:
-        row |= {"radius": amendment.radius, "area": math.pi * amendment.radius**2}
+        columns["radius"][row] = amendment.radius
+        columns["area"][row] = math.pi * amendment.radius**2
     if amendment.what in ("strike", "restore", "place"):
-        row["counted"] = amendment.what != "strike"
+        columns["counted"][row] = amendment.what != "strike"
 
 
 def _check_applies(sheet: Sheet, amendment: Amendment, known: dict[str, Any]) -> None:
@@ -303,17 +303,22 @@ def _sheet_text(sheet: Sheet) -> str:
         "spot_columns": list(_SPOT_COLUMNS),
     }
     lines = [f"{json.dumps(name)}: {_json(value)}" for name, value in parts.items()]
-    rows = ",\n".join(_json(row) for row in _spot_rows(sheet.spots))
-    return "{\n" + ",\n".join(lines) + ',\n"spots": [\n' + rows + "\n]\n}\n"
+    return "{\n" + ",\n".join(lines) + ',\n"spots": [\n' + _spots_text(sheet.spots) + "\n]\n}\n"
 
 
-def _spot_rows(spots: Spots) -> list[list[Any]]:
-    """Return the spots row by row as plain values, None for what was not measured."""
-    columns = [getattr(spots, name) for name in _SPOT_COLUMNS]
-    plain = [list(columns[0]), *(column.tolist() for column in columns[1:])]
-    return [
-        [None if value != value else value for value in row] for row in zip(*plain, strict=True)
-    ]
+def _spots_text(spots: Spots) -> str:
+    """Write a line per spot, with null for what was not measured."""
+    plain: list[Sequence[Any]] = [spots.id]
+    for name in _SPOT_COLUMNS[1:]:
+        column = getattr(spots, name)
+        values = column.tolist()
+        if np.isnan(column).any():
+            values = [None if value != value else value for value in values]
+        plain.append(values)
+    rows = list(zip(*plain, strict=True))
+    text = _json(rows)[1:-1].replace("], [", "],\n[")
+    # Only an id that holds such brackets makes this differ from a line for each.
+    return text if text.count("\n") == max(0, len(rows) - 1) else ",\n".join(map(_json, rows))
 
 
 def _sheet_from(values: dict[str, Any]) -> Sheet:
@@ -321,11 +326,14 @@ def _sheet_from(values: dict[str, Any]) -> Sheet:
     if tuple(values["spot_columns"]) != _SPOT_COLUMNS:
         raise ValueError(f"spot columns {values['spot_columns']}")
     rows = values["spots"]
-    if any(len(row) != len(_SPOT_COLUMNS) for row in rows):
+    if set(map(len, rows)) - {len(_SPOT_COLUMNS)}:
         raise ValueError("a spot has too few or too many values")
-    columns: list[Any] = [tuple(str(row[0]) for row in rows)]
-    for k in range(1, len(_SPOT_COLUMNS)):
-        columns.append(np.array([np.nan if row[k] is None else row[k] for row in rows]))
+    names, *others = zip(*rows, strict=True) if rows else [()] * len(_SPOT_COLUMNS)
+    columns: list[Any] = [tuple(map(str, names))]
+    for known in others:
+        if None in known:
+            known = tuple(np.nan if value is None else value for value in known)
+        columns.append(np.array(known))
     return Sheet(
         values["schema"],
         str(values["tool_version"]),

@@ -143,3 +143,13 @@ def test_no_cell_begins_like_a_formula(text: str) -> None:
     cell = list(csv.reader(io.StringIO(csv_text(["a"], [[text]]), newline="")))[-1]
     assert cell == [] or not cell[0].startswith(("=", "@", "\t", "\r", "\n"))
     assert cell == [] or not cell[0].startswith(("+", "-")) or np.isfinite(float(cell[0]))
+
+
+@pytest.mark.parametrize("digits", [1, 7, 12, 17])
+def test_numbers_are_what_reads_back_at_these_digits_however_they_are_written(digits: int) -> None:
+    rng = np.random.default_rng(digits)
+    values = [*(rng.normal(size=400) * 10.0 ** rng.integers(-9, 20, 400)).tolist()]
+    values += [0.0, -0.0, 1.0, -3.0, 1234567.8, 99999999.5, 0.0001, 0.00001, 1e15, 1e16, 1e22]
+    text = csv_text(["v"], [[value] for value in values], digits=digits)
+    plainly = [repr(float(f"{value:.{digits}g}") + 0.0) for value in values]
+    assert text.splitlines()[1:] == plainly

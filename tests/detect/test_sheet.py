@@ -332,3 +332,40 @@ def test_impossible_results_of_planted_objects_are_damage(tmp_path: Path) -> Non
     path.write_text(text.replace('"found": 81', '"found": 91'), encoding="utf-8")
     with pytest.raises(SheetUnreadable, match=r"is damaged \(found 91 of 90 copies\)"):
         read_sheet(path)
+
+
+def test_an_id_with_brackets_and_a_spot_not_measured_are_written_a_line_each(
+    tmp_path: Path,
+) -> None:
+    spots = Spots.found_at([1.0, 2.0, 3.0], [4.0, 5.0, 6.0], [2.0, 2.0, 2.0])
+    spots = replace(spots, id=("1", "a], [b", "3"), contrast=np.array([1.5, np.nan, 2.5]))
+    sheet = a_sheet(spots)
+    path = write_sheet(sheet, tmp_path)
+    lines = path.read_text().split('"spots": [\n')[1].splitlines()
+    assert [line[:6] for line in lines[:3]] == ['["1", ', '["a], ', '["3", ']
+    again = read_sheet(path).spots
+    assert again.id == spots.id
+    assert np.array_equal(again.contrast, spots.contrast, equal_nan=True)
+
+
+def test_amendments_change_their_spots_and_no_others() -> None:
+    n = 50
+    spots = Spots.found_at(np.arange(n) + 1.0, np.full(n, 9.0), np.full(n, 2.0))
+    sheet = a_sheet(spots)
+    assert current_state(sheet, ()) is sheet
+    log = (
+        Amendment("a", "2026-01-01T00:00:00Z", "me", "strike", "7"),
+        Amendment("b", "2026-01-01T00:00:00Z", "me", "move", "9", x=3.5, y=4.5),
+        Amendment("c", "2026-01-01T00:00:00Z", "me", "place", "p1", x=1.0, y=2.0, radius=3.0),
+        Amendment("d", "2026-01-01T00:00:00Z", "me", "resize", "p1", radius=4.0),
+    )
+    state = current_state(sheet, log).spots
+    assert state.id == (*spots.id, "p1")
+    assert np.flatnonzero(~state.counted).tolist() == [6]
+    assert (state.x[8], state.y[8]) == (3.5, 4.5)
+    assert (state.x[-1], state.y[-1], state.radius[-1]) == (1.0, 2.0, 4.0)
+    assert state.area[-1] == pytest.approx(np.pi * 16)
+    assert not state.found[-1]
+    others = np.setdiff1d(np.arange(n), [8])
+    assert np.array_equal(state.x[others], spots.x[others])
+    assert np.array_equal(state.radius[:n], spots.radius)
