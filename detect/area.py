@@ -15,9 +15,11 @@ from shapely.geometry.base import BaseGeometry
 
 from detect.errors import AreaWrong
 from detect.leaf import find_leaf
+from detect.on_map import named_map
 
 if TYPE_CHECKING:
     from detect.dish import Dish
+    from detect.georeference import Georeference
     from detect.photograph import Photograph
 
 AreaKind = Literal["dish", "plot", "leaf", "frame", "polygon"]
@@ -135,18 +137,28 @@ def frame_area(width: int, height: int, *, inset_px: float = 0.0) -> StudyArea:
     return _stepped_in(box(-0.5, -0.5, width - 0.5, height - 0.5), "frame", "whole frame", inset_px)
 
 
-def polygon_area(path: Path, width: int, height: int, *, inset_px: float = 0.0) -> StudyArea:
+def polygon_area(
+    path: Path,
+    width: int,
+    height: int,
+    *,
+    inset_px: float = 0.0,
+    georeference: Georeference | None = None,
+) -> StudyArea:
     """Read a study area drawn by hand.
 
     Parameters
     ----------
     path : Path
         A GeoJSON file with one Polygon or MultiPolygon (alone, as a Feature, or as the only one of
-        a FeatureCollection) in pixel coordinates, x right and y down.
+        a FeatureCollection) in pixel coordinates, x right and y down; or in the coordinates of a
+        georeferenced raster's map, if the file names that map in a member "crs".
     width, height : int
         Size of the picture, in which the outline must lie.
     inset_px : float
         How far the edge steps inwards.
+    georeference : Georeference or None
+        Of the picture.
 
     Returns
     -------
@@ -155,14 +167,23 @@ def polygon_area(path: Path, width: int, height: int, *, inset_px: float = 0.0) 
     Raises
     ------
     AreaWrong
-        If the file cannot be read, holds no such outline, the outline crosses itself or leaves
+        If the file cannot be read, is on another map than the picture, holds no such outline, the outline crosses itself or leaves
         the picture, or the inset is negative or swallows it.
 
     References
     ----------
     RFC 7946, "The GeoJSON format" (2016), section 3.
     """
-    outline = _one_polygon(_json_of(path), path.name)
+    values = _json_of(path)
+    outline = _one_polygon(values, path.name)
+    told = named_map(values)
+    if told is not None and georeference is not None:
+        if told != georeference.name:
+            raise AreaWrong(
+                f"The polygon in {path.name} is on the map {told}, but the raster on"
+                f" {georeference.name}; export it on the raster's map."
+            )
+        outline = shapely.transform(outline, georeference.to_px)
     area = StudyArea(outline, "polygon", f"polygon from {path.name}")
     frame = box(-0.5, -0.5, width - 0.5, height - 0.5)
     if not frame.buffer(1e-6).covers(outline):

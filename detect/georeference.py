@@ -45,6 +45,11 @@ class Georeference:
     factor: float = 1.0
     spread: float = 0.0
 
+    @property
+    def is_named(self) -> bool:
+        """Whether its coordinate reference system has a number by which it is looked up."""
+        return self.name.startswith("EPSG:")
+
     def to_map(self, points_px: ArrayLike) -> NDArray[np.float64]:
         """Map (n, 2) pixel positions to map coordinates."""
         points = np.asarray(points_px, dtype=np.float64).reshape(-1, 2)

@@ -14,6 +14,7 @@ from detect.amendments import Amendment, amendments_path, read_amendments
 from detect.errors import AmendmentsPresent, PhotographFailed
 from detect.files import write_bytes_atomically, write_text_atomically
 from detect.matching import match_spots
+from detect.on_map import points_geojson
 from detect.overlay import overlay_jpeg
 from detect.photograph import Photograph, read_photograph
 from detect.sheet import Sheet, current_state, points_csv, read_sheet, sheet_path, write_sheet
@@ -88,8 +89,11 @@ def write_detection(
 
 
 def write_views(photograph: Photograph, state: Sheet, folder: Path) -> None:
-    """Write the table of points and the overlay of a sheet with its hand edits applied."""
+    """Write table of points, overlay and, on a map, layer of a sheet with its hand edits applied."""
     write_text_atomically(folder / f"{state.stem}.points.csv", points_csv(state))
+    if photograph.georeference is not None:
+        layer = points_geojson(state, photograph.georeference)
+        write_text_atomically(folder / f"{state.stem}.points.geojson", layer)
     picture = overlay_jpeg(photograph, state.area, state.spots)
     write_bytes_atomically(folder / f"{state.stem}.overlay.jpg", picture)
 

@@ -245,7 +245,13 @@ def _whole_area(
     """Return the area asked for, `inset_px` pixels inwards."""
     where = request.where
     if isinstance(where, Path):
-        return polygon_area(where, photograph.width, photograph.height, inset_px=inset_px)
+        return polygon_area(
+            where,
+            photograph.width,
+            photograph.height,
+            inset_px=inset_px,
+            georeference=photograph.georeference,
+        )
     if where == "dish" and dish is not None:
         return dish_area(dish, inset_px=inset_px, width=photograph.width, height=photograph.height)
     if where == "plot" and scale is not None:

@@ -78,7 +78,7 @@ def main() -> None:
     state = timed("apply 100 amendments", lambda: current_state(again, strikes))
     text = timed("its table of points", lambda: points_csv(state))
     assert text.count("struck") == len(strikes)
-    profile = cProfile.Profile()
+    profile = cProfile.Profile(time.process_time)
     begun = time.process_time()
     profile.runcall(analyse_sheet, state, (), None, grid=GridOptions(), trial=Trial())
     print(f"{'analyse it, pictures and report':34s}{time.process_time() - begun:7.2f} s (profiled)")
