@@ -24,7 +24,7 @@ import numpy as np
 ROOT = Path(__file__).resolve().parents[2]
 sys.path.insert(0, str(ROOT))
 
-from detect.accuracy import match_spots
+from detect.matching import match_spots
 
 BLOCK, CELL = 512, 128  # pixels; one plant at most in each cell, so no block needs to know others
 RADIUS = (13.0, 22.0)
