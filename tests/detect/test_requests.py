@@ -105,7 +105,10 @@ def test_the_area_goes_with_the_scale_unless_named(values: dict[str, Any], where
             "HEIGHT needs FOCAL_LENGTH and SENSOR_WIDTH beside it; give all three",
         ),
         ({"sensor_width": "13mm", "focal_length": "9mm"}, "FOCAL_LENGTH needs HEIGHT beside it"),
-        ({"scale_uncertainty": "1%"}, "SCALE_UNCERTAINTY has no scale to be the uncertainty of"),
+        (
+            {"scale_uncertainty": "1%"},
+            "SCALE_UNCERTAINTY says more about a scale, but none is given",
+        ),
         ({"scale_uncertainty": "1", "mm_per_pixel": 1}, "must be a share of a length such as 1%"),
         ({"scale_uncertainty": 0.01, "mm_per_pixel": 1}, "such as 1%, not 0.01"),
         ({"scale_uncertainty": "100%", "mm_per_pixel": 1}, "such as 1%, not '100%'"),
