@@ -13,6 +13,7 @@ from __future__ import annotations
 import argparse
 import math
 import sys
+import tempfile
 import time
 from dataclasses import dataclass, replace
 from pathlib import Path
@@ -156,13 +157,16 @@ def measured(shot: Shot, dish: Dish) -> dict[str, Any]:
     radius = math.sqrt(true.semi_a * true.semi_b)
     scale = scale_from_dish(dish, 2 * dishes.INNER_MM)
     rms, most = distances_off(scale, camera)
+    flat, _ = distances_off(scale_from_dish(replace(dish, far=(0.0, 0.0)), 86.0), camera)
     return {
         "diameter": 100 * (dish.inner.mean_radius / radius - 1),
         "u": 100 * scale.relative_uncertainty,
         "centre": 100 * math.hypot(dish.inner.cx - true.cx, dish.inner.cy - true.cy) / radius,
         "rms": rms,
         "most": most,
-        "notes": "; ".join(getattr(dish, "notes", ())),
+        "flat": flat,
+        "tilt": camera.tilt_deg,
+        "notes": "; ".join(dish.notes),
     }
 
 
@@ -190,6 +194,14 @@ def report(rows: list[dict[str, Any]], refused: int) -> None:
             f" {np.median(centre):.2f} %; distances: rms {np.median([r['rms'] for r in kind]):.2f} %"
             f" (median dish), {max(r['rms'] for r in kind):.2f} % (worst dish)"
         )
+    for low, high in ((0, 7), (7, 14), (14, 20)):
+        part = [row for row in rows if low <= row["tilt"] < high]
+        if part:
+            print(
+                f"tilt {low} to {high} degrees: {len(part)} dishes; distances rms"
+                f" {np.median([r['rms'] for r in part]):.2f} % (median dish),"
+                f" {np.median([r['flat'] for r in part]):.2f} % without the tilt's perspective"
+            )
     print(f"refused or not found: {refused}")
 
 
@@ -205,7 +217,7 @@ def main() -> None:
     parser.add_argument("--keep", type=Path, help="folder for the pictures")
     parser.add_argument("--draw-only", action="store_true")
     asked = parser.parse_args()
-    folder = asked.keep or Path(__import__("tempfile").mkdtemp())
+    folder = asked.keep or Path(tempfile.mkdtemp())
     folder.mkdir(parents=True, exist_ok=True)
     tilts = MOST_TILT * (np.random.default_rng(5).permutation(asked.count) + 0.5) / asked.count
     rows, refused, spent = [], 0, 0.0
