@@ -10,6 +10,7 @@ from pathlib import Path
 import numpy as np
 import shapely
 from numpy.typing import NDArray
+from shapely.geometry.base import BaseGeometry
 
 from detect.amendments import amendments_path, read_amendments
 from detect.errors import NothingLearned
@@ -68,7 +69,9 @@ class Reviewed:
         second = (at, y0, x1, y1) if across == 0 else (x0, at, x1, y1)
         one, other = (
             replace(self, sheet=replace(self.sheet, area=replace(self.sheet.area, polygon=part)))
-            for part in (polygon.intersection(shapely.box(*box)) for box in (first, second))
+            for part in (
+                _polygons(polygon.intersection(shapely.box(*box))) for box in (first, second)
+            )
         )
         return one, other
 
@@ -121,6 +124,12 @@ def gather_reviewed(folder: Path, *, unchanged: bool = False) -> tuple[list[Revi
             " (30 to learn more than sizes); review more photographs."
         )
     return reviewed, len(paths) - len(reviewed)
+
+
+def _polygons(geometry: BaseGeometry) -> BaseGeometry:
+    """Return the polygons of a geometry, without the lines and points of a grazing cut."""
+    parts = shapely.get_parts(geometry)
+    return shapely.union_all([part for part in parts if part.geom_type == "Polygon"])
 
 
 def _reviewed(path: Path) -> Reviewed:

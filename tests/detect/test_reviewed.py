@@ -8,6 +8,7 @@ from pathlib import Path
 
 import numpy as np
 import pytest
+import shapely
 
 from detect.amendments import Amendment, amendments_path, append_amendment
 from detect.errors import NothingLearned, RequestWrong
@@ -66,6 +67,23 @@ def test_two_halves_make_the_whole(detected: tuple[Path, Sheet], tmp_path: Path)
     assert areas[0].intersection(areas[1]).area == 0
     assert len(one.real) + len(other.real) == 21
     assert min(len(one.real) + len(one.struck), len(other.real) + len(other.struck)) >= 12
+
+
+def test_halves_of_a_ragged_area_are_areas(detected: tuple[Path, Sheet], tmp_path: Path) -> None:
+    reviewed_by_truth(detected, tmp_path)
+    reviewed = only(tmp_path)
+    spots = np.vstack([reviewed.real, reviewed.struck])
+    at = float(np.median(spots[:, 0])) + 0.01
+    # A bay that holds no spot, and whose bottom lies on the line between the halves.
+    y = np.sort(spots[spots[:, 0] > at, 1])
+    k = int(np.argmax(np.diff(y)))
+    bay = [(419.5, y[k] + 1), (at, y[k] + 1), (at, y[k + 1] - 1), (419.5, y[k + 1] - 1)]
+    ragged = shapely.Polygon([(-0.5, -0.5), (419.5, -0.5), *bay, (419.5, 319.5), (-0.5, 319.5)])
+    area = replace(reviewed.sheet.area, polygon=ragged)
+    halves = replace(reviewed, sheet=replace(reviewed.sheet, area=area)).halves()
+    parts = [half.sheet.area.polygon for half in halves]
+    assert {part.geom_type for part in parts} <= {"Polygon", "MultiPolygon"}
+    assert sum(part.area for part in parts) == pytest.approx(ragged.area)
 
 
 def test_sheets_nobody_amended_are_left_out(detected: tuple[Path, Sheet], tmp_path: Path) -> None:
