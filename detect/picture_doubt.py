@@ -113,8 +113,8 @@ class PictureCalibration:
 # Fitted by tests/benchmarks/calibrate_doubt.py: "spots" on hand-marked photographs of five subjects,
 # the kinds on drawn scenes of their own (seeds 1000-1099), held near it.
 CALIBRATIONS: dict[Kind, PictureCalibration] = {
-    "spots": PictureCalibration(intercept=0.769, slope=1.479, spread=1.288, wavering=0.446),
-    "colonies": PictureCalibration(intercept=2.63, slope=1.643, spread=1.287, wavering=0.657),
-    "seedlings": PictureCalibration(intercept=2.226, slope=1.043, spread=1.499, wavering=0.469),
-    "lesions": PictureCalibration(intercept=0.775, slope=2.026, spread=1.321, wavering=0.478),
+    "spots": PictureCalibration(intercept=0.268, slope=1.349, spread=2.008, wavering=0.219),
+    "colonies": PictureCalibration(intercept=2.117, slope=1.667, spread=1.99, wavering=0.478),
+    "seedlings": PictureCalibration(intercept=1.276, slope=1.043, spread=2.164, wavering=0.149),
+    "lesions": PictureCalibration(intercept=1.161, slope=1.975, spread=2.122, wavering=0.227),
 }
