@@ -165,6 +165,8 @@ def detect_photograph(
     from detect.find import find_spots  # loads scipy, which help can do without
 
     photograph = read_photograph(path)
+    if request.planted is not None:  # copies are planted in memory: what is too large is told now
+        photograph = replace(photograph, stored=photograph.stored.copy())
     request.scale.check_positions(photograph)
     cut = request.area.cut_dish or "refuse"
     dish = find_dish(photograph, cut=cut) if request.needs_dish else None

@@ -18,6 +18,7 @@ from detect.find import find_spots
 from detect.lengths import Length
 from detect.photograph import Photograph, read_photograph
 from detect.raster import RasterPixels
+from detect.requests import detect_photograph, parse_request
 from detect.tiles import Tiling
 from detect.wanted import DetectOptions
 from tests.scenes import SpotScene, scattered
@@ -247,8 +248,11 @@ def test_copies_are_planted_only_in_what_fits_into_memory(
     photograph = read_photograph(saved(tmp_path / "a.tif", PICTURE))
     assert np.array_equal(photograph.stored.copy(), PICTURE)
     monkeypatch.setattr(raster, "LARGE", 1000)
-    with pytest.raises(PhotographUnreadable, match="too many to plant objects in; leave --planted"):
+    told = "130 x 90 pixels are too many to plant objects in; leave --planted"
+    with pytest.raises(PhotographUnreadable, match=told):
         photograph.stored.copy()
+    with pytest.raises(PhotographUnreadable, match=told):
+        detect_photograph(tmp_path / "a.tif", parse_request({"planted": 2, "mm_per_pixel": 1.0}))
 
 
 @pytest.mark.parametrize("tiling", [None, Tiling(0, 240, 10**9)])
