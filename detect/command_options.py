@@ -257,7 +257,7 @@ def with_rounds(words: list[str]) -> list[str]:
     Examples
     --------
     >>> with_rounds(["--planted", "dish.jpg"]), with_rounds(["--planted", "5", "dish.jpg"])
-    (['--planted=10', 'dish.jpg'], ['--planted', '5', 'dish.jpg'])
+    (['--planted=8', 'dish.jpg'], ['--planted', '5', 'dish.jpg'])
     """
     usual = f"--planted={PlantedOptions().rounds}"
     following = [*words[1:], ""]

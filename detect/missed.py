@@ -98,11 +98,11 @@ def recall_of(trials: Trials, spots: Spots) -> Recall:
     [2]_, [3]_, 4 objects at most; each weighs by 1 less its doubt, and the recall is the sum of
     weights over that of weights by 1/p. Where a spot is smaller, larger, fainter or stronger than
     nineteen in twenty copies, the nearest size and contrast that was measured stands in.
-    The standard error is the jackknife's over rounds [4]_. The interval is Wilson's [5]_ with an
-    effective number of trials m' where 1/m' = 1/m + 1/n: m is R (1 - R) over the squared standard
-    error, but no more than the number of copies, and n the number of spots; and half an object
-    wider on either side, since objects are whole. It is thus meant for the share found of the
-    objects in this very photograph, which itself varies by chance.
+    The standard error is the jackknife's over rounds [4]_. The interval is for the share found of
+    the objects in this very photograph, which itself varies by chance: of N objects (n over the
+    recall R) a beta-binomial number [5]_ is found, its chance drawn from what m trials leave
+    open, Beta(m R + 1/2, m (1 - R) + 1/2), where m is R (1 - R) over the squared standard error,
+    but no more than the number of copies.
     Objects that look unlike every spot found have no copy and no say.
 
     References
@@ -114,8 +114,9 @@ def recall_of(trials: Trials, spots: Spots) -> Recall:
     .. [3] Alho JM (1990). Logistic regression in capture-recapture models. Biometrics 46, 623-635.
     .. [4] Tukey JW (1958). Bias and confidence in not quite large samples. Annals of Mathematical
        Statistics 29, 614.
-    .. [5] Wilson EB (1927). Probable inference, the law of succession, and statistical inference.
-       Journal of the American Statistical Association 22, 209-212.
+    .. [5] Skellam JG (1948). A probability distribution derived from the binomial distribution by
+       regarding the probability of success as variable between the sets of trials. Journal of the
+       Royal Statistical Society B 10, 257-261.
     """
     rounds = np.unique(trials.round)
     if len(spots) == 0 or rounds.size < 2:
@@ -126,13 +127,25 @@ def recall_of(trials: Trials, spots: Spots) -> Recall:
     error = math.sqrt((k - 1) / k * float(((np.array(left_out) - np.mean(left_out)) ** 2).sum()))
     spread = value * (1.0 - value)
     trusted = float(len(trials)) if error == 0 else min(float(len(trials)), spread / error**2)
-    low, high = wilson(value, 1.0 / (1.0 / max(trusted, 1.0) + 1.0 / len(spots)))
-    half = 0.5 / len(spots)
-    return Recall(value, max(0.0, low - half), min(1.0, high + half), error)
+    low, high = _foreseen(value, max(trusted, 1.0), round(len(spots) / value))
+    return Recall(value, min(low, value), max(high, value), error)
+
+
+def _foreseen(share: float, trials: float, objects: int) -> tuple[float, float]:
+    """Return limits that hold the share found of so many objects with 95 % probability."""
+    from scipy.stats import betabinom
+
+    law = betabinom(objects, trials * share + 0.5, trials * (1.0 - share) + 0.5)
+    return float(law.ppf(0.025) / objects), float(law.ppf(0.975) / objects)
 
 
 def wilson(share: float, trials: float) -> tuple[float, float]:
-    """Return the 95 % interval of a share seen in a number of trials (Wilson 1927).
+    """Return the 95 % interval of a share seen in a number of trials.
+
+    References
+    ----------
+    Wilson EB (1927). Probable inference, the law of succession, and statistical inference. Journal
+    of the American Statistical Association 22, 209-212.
 
     Examples
     --------

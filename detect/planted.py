@@ -29,14 +29,14 @@ class PlantedOptions:
         If a value is impossible.
     """
 
-    rounds: int = 10
+    rounds: int = 8
     seed: int = 1
 
     def __post_init__(self) -> None:
         if not FEWEST_ROUNDS <= self.rounds <= MOST_ROUNDS:
             raise OptionWrong(
                 f"Planted objects take {FEWEST_ROUNDS} to {MOST_ROUNDS:,} rounds, not {self.rounds};"
-                " 10 is usual."
+                " 8 is usual."
             )
         if not 0 <= self.seed <= _MOST_SEED:
             raise OptionWrong(f"The seed must be a whole number of 0 or more, not {self.seed}.")

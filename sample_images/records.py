@@ -134,6 +134,7 @@ def write_trial(path: Path, rows: list[dict[str, str]]) -> None:
         writer.writerows(rows)
 
 
+CROWDED = "dish_02"
 RECIPE_HEAD = f"""\
 # How to treat the photographs of this folder. Lengths carry their unit; pixel positions are x (right),
 # y (down) from the centre of the top left pixel.
@@ -193,5 +194,10 @@ def write_recipe(path: Path, shots: dict[str, Shot]) -> None:
             parts.append(
                 f'[photographs."{name}.jpg"]\n# the two ends of the banded bar\nline = [{listed}]\n'
                 f'line_length = "{leaves.BAR_MM:g}mm"\n'
+            )
+        elif name == CROWDED:
+            parts.append(
+                f'[photographs."{name}.jpg"]\n# the crowded dish: copies of its spots are set into it, to measure what is missed\n'
+                "planted = true\n"
             )
     path.write_text("\n".join(parts), encoding="utf-8", newline="\n")

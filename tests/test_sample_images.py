@@ -199,7 +199,7 @@ def test_recipe_holds_what_a_careful_person_reads_off() -> None:
             assert np.allclose(noted["line"], true_ends, atol=0.051)
             assert noted["line_length"] == "50mm"
         else:
-            assert noted == {}
+            assert set(noted) <= {"planted"}
 
 
 @pytest.mark.parametrize("name", [n for n in NAMES if not n.startswith("dish")])

@@ -1,6 +1,6 @@
 """Print what planted objects say of recall and blind distance, against drawn truth.
 
-    python tests/benchmarks/planted_objects.py FOLDER ... [--rounds 10] [--only dish] [--pairs 4]
+    python tests/benchmarks/planted_objects.py FOLDER ... [--rounds 8] [--only dish] [--pairs 4]
 
 Each FOLDER was drawn by `own_scenes.py`. Every scene is detected with the options of the sample's
 recipe and measured with planted objects; the recall they give stands beside the true one, which is
@@ -43,7 +43,7 @@ from patterns import Ground, Plan
 from detect.accuracy import match_spots, read_truth
 from detect.blind import blind_distance
 from detect.errors import DetectError
-from detect.planted import BlindDistance, Planted
+from detect.planted import BlindDistance, Planted, PlantedOptions
 from detect.requests import detect_photograph, parse_request
 from detect.truth import Truth
 
@@ -241,14 +241,17 @@ def summary(seen: list[Seen]) -> None:
 def main() -> None:
     parser = argparse.ArgumentParser(description=__doc__.splitlines()[0])
     parser.add_argument("folders", type=Path, nargs="*")
-    parser.add_argument("--rounds", type=int, default=10)
+    parser.add_argument("--rounds", type=int, default=PlantedOptions().rounds)
     parser.add_argument("--only", default="")
     parser.add_argument("--pairs", type=int, default=0, help="scenes of pairs drawn, of each kind")
     parser.add_argument("--first", type=int, default=2900, help="first seed of the scenes of pairs")
+    parser.add_argument("--leave-out", default="", help="kind of scene that is passed over")
     chosen = parser.parse_args()
     seen = []
     for folder in chosen.folders:
         for row in rows_of(folder, chosen.only):
+            if chosen.leave_out and row["photograph"].startswith(chosen.leave_out):
+                continue
             result = look(folder, row, chosen.rounds)
             if result is not None and result.n >= FEWEST_OBJECTS:
                 seen.append(result)

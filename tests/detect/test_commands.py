@@ -382,14 +382,14 @@ def test_planted_may_stand_without_its_number(
 
     monkeypatch.setattr("detect.commands.detect_photograph", noted)
     assert detect(*words, photo, out=tmp_path / "out").exit_code == 0
-    assert asked == [PlantedOptions(rounds=10)]
+    assert asked == [PlantedOptions(rounds=8)]
 
 
 @pytest.mark.parametrize(
     ("value", "message"),
     [
-        ("1", "Planted objects take 2 to 1,000 rounds, not 1; 10 is usual."),
-        ("2000", "Planted objects take 2 to 1,000 rounds, not 2000; 10 is usual."),
+        ("1", "Planted objects take 2 to 1,000 rounds, not 1; 8 is usual."),
+        ("2000", "Planted objects take 2 to 1,000 rounds, not 2000; 8 is usual."),
     ],
 )
 def test_impossible_rounds_are_refused(
@@ -405,5 +405,5 @@ def test_rounds_that_are_no_number_are_refused(photo: Path, tmp_path: Path) -> N
     result = detect(photo, "--planted=many", out=tmp_path / "out")
     assert result.exit_code == 2
     assert result.stderr == (
-        "Error: --planted must be a whole number of rounds such as 10, or true, not 'many'.\n"
+        "Error: --planted must be a whole number of rounds such as 8, or true, not 'many'.\n"
     )

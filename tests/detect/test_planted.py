@@ -82,7 +82,7 @@ def test_a_result_without_what_it_rests_on_is_refused() -> None:
 
 @pytest.mark.parametrize("rounds", [1, 0, -3, 1001])
 def test_rounds_that_tell_nothing_or_never_end_are_refused(rounds: int) -> None:
-    with pytest.raises(OptionWrong, match=rf"take 2 to 1,000 rounds, not {rounds}; 10 is usual"):
+    with pytest.raises(OptionWrong, match=rf"take 2 to 1,000 rounds, not {rounds}; 8 is usual"):
         PlantedOptions(rounds=rounds)
 
 
@@ -92,4 +92,4 @@ def test_a_negative_seed_is_refused() -> None:
 
 
 def test_the_usual_rounds_are_those_the_sentences_name() -> None:
-    assert PlantedOptions().rounds == 10
+    assert PlantedOptions().rounds == 8

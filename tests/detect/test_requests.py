@@ -244,7 +244,7 @@ def test_no_dish_in_the_picture_fails_the_photograph(tmp_path: Path) -> None:
 
 
 @pytest.mark.parametrize(
-    ("value", "rounds"), [(True, 10), (7, 7), ("7", 7), (False, None), (None, None)]
+    ("value", "rounds"), [(True, 8), (7, 7), ("7", 7), (False, None), (None, None)]
 )
 def test_planted_objects_are_asked_for_by_true_or_a_number(value: Any, rounds: int | None) -> None:
     request = parse_request({"planted": value})
@@ -254,7 +254,7 @@ def test_planted_objects_are_asked_for_by_true_or_a_number(value: Any, rounds: i
 
 @pytest.mark.parametrize("value", ["yes", 2.5, -3, [2], "1e3"])
 def test_other_words_for_planted_objects_are_refused(value: Any) -> None:
-    with pytest.raises(OptionWrong, match="planted must be a whole number of rounds such as 10"):
+    with pytest.raises(OptionWrong, match="planted must be a whole number of rounds such as 8"):
         parse_request({"planted": value})
 
 
