@@ -20,7 +20,7 @@ ALONE = 2.0
 CLOSEST, WIDEST = 0.3, 1.6
 # Copies of a round: at most this many or this share of the count, and this share of the area.
 _AT_LEAST, _OF_COUNT, _OF_AREA = 20, 0.1, 0.02
-# Free way between two units of a round, in diameters of the largest spot.
+# Free way between two units of a round, in diameters of a spot larger than nine in ten.
 _FREE = 2.0
 _TRIES = 60
 # How far a stamp may be enlarged, made smaller, and changed in contrast.
@@ -163,7 +163,7 @@ def place(
     rows: list[tuple[float, ...]] = []
     stamps: list[Stamp] = []
     taken = np.empty((0, 3))
-    free = 2.0 * _FREE * float(spots.radius.max())
+    free = 2.0 * _FREE * float(np.quantile(spots.radius, 0.9))
     units = 0
     for wish in wishes:
         for _ in range(_TRIES):
