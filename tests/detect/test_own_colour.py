@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from dataclasses import fields
+
 import numpy as np
 import pytest
 
@@ -15,8 +17,10 @@ def ellipse(x: float, y: float, long: float, short: float, turn: float) -> Candi
     sxx = 0.25 * ((long * c) ** 2 + (short * s) ** 2)
     syy = 0.25 * ((long * s) ** 2 + (short * c) ** 2)
     sxy = 0.25 * (long**2 - short**2) * c * s
-    rest = [np.array([1.0])] * 7
-    return Candidates(*(np.array([v]) for v in (x, y, np.pi * long * short, sxx, syy, sxy)), *rest)
+    known = {"x": x, "y": y, "area": np.pi * long * short, "sxx": sxx, "syy": syy, "sxy": sxy}
+    return Candidates(
+        **{each.name: np.array([known.get(each.name, 1.0)]) for each in fields(Candidates)}
+    )
 
 
 def test_a_linear_picture_gives_its_value_at_the_centre() -> None:

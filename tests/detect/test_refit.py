@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import replace
+from dataclasses import fields, replace
 
 import numpy as np
 import pytest
@@ -35,9 +35,8 @@ def lesson(n: int, *, seed: int, rough_false: float = 0.0, red_false: float = 0.
     real = np.arange(n) % 2 == 0
     x, y = 50.0 * np.arange(n), np.full(n, 40.0)
     one: Column = np.ones(n)
-    candidates = Candidates(
-        x, y, 80 * one, 6.4 * one, 6.4 * one, 0 * one, 20 * one, 20 * one, one, one, one, one, one
-    )
+    known = {"x": x, "y": y, "area": 80 * one, "sxx": 6.4 * one, "syy": 6.4 * one, "sxy": 0 * one}
+    candidates = Candidates(**{each.name: known.get(each.name, one) for each in fields(Candidates)})
     measured = rng.normal([0.3, 1, 0, 1.3, 0.05, 0.1, 0.1, 2.5, 0], 0.02, (n, 9))
     measured[~real, FEATURES.index("rough")] += rough_false
     colours = rng.normal([50.0, 10.0, 5.0], 2.0, (n, 3))
