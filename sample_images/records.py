@@ -181,7 +181,7 @@ def write_recipe(path: Path, shots: dict[str, Shot]) -> None:
     """Write `survey.toml`: the sets, and what a careful person would read off each photograph."""
     parts = [RECIPE_HEAD]
     for name, shot in shots.items():
-        if name not in READ_OFF:
+        if name not in (*READ_OFF, CROWDED):
             continue
         if isinstance(shot, Plot):
             listed = ", ".join(f"[{x:.1f}, {y:.1f}]" for x, y in corners_px(shot))
