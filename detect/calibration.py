@@ -152,7 +152,7 @@ def fit_calibration(
     Examples
     --------
     >>> calibration = fit_calibration([0.1] * 40, [True] * 20 + [False] * 20)
-    >>> 0.3 < calibration.applied([0.1])[0] < 0.5
+    >>> 0.3 < calibration.applied([0.1]).item() < 0.5
     True
     """
     options = options or CalibrationOptions()

@@ -24,7 +24,7 @@ def distances_apart(xy: NDArray[np.float64], radius: NDArray[np.float64]) -> NDA
     Examples
     --------
     >>> distances_apart(np.array([[0.0, 0.0], [6.0, 0.0], [60.0, 0.0]]), np.array([2.0, 1.0, 1.0]))
-    array([ 2.,  2., 27.])
+    array([ 2.,  2., 20.])
     """
     from scipy.spatial import cKDTree
 
