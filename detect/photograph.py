@@ -149,7 +149,7 @@ class Photograph:
         if shrink >= 1.0:
             return self.stored[top:bottom, left:right]
         if isinstance(self.stored, np.ndarray):
-            return _averaged(self.stored[top:bottom, left:right], size)
+            return _averaged(self.stored[top:bottom, left:right], size, quick=quick)
         if quick and self.stored.has_copies:
             return self.stored.copied(left, top, right, bottom, size)
         spans = ((0, size[0]), (0, size[1]))
@@ -296,12 +296,17 @@ def _check_size(claim: Claim, file_size: int) -> None:
         )
 
 
-def _averaged(array: StoredPixels, size: tuple[int, int]) -> StoredPixels:
-    """Average areas down to a size (width, height), large ones by halves first, which is faster."""
+def _averaged(array: StoredPixels, size: tuple[int, int], *, quick: bool) -> StoredPixels:
+    """Average areas down to a size (width, height), large ones by halves first, which is faster.
+
+    What is left after the halves is at least a factor of 2, or of 1 where `quick` will do: of few
+    pixels some would be averaged and others not.
+    """
     height, width = array.shape[:2]
+    least = 1 if quick else 2
     while height % 2 == width % 2 == 0:
         half = (width // 2, height // 2)
-        if half != size and (2 * size[0] > half[0] or 2 * size[1] > half[1]):
+        if half != size and (least * size[0] > half[0] or least * size[1] > half[1]):
             break
         # Halfway between four pixels linear interpolation is their average.
         array = cv2.resize(array, half, interpolation=cv2.INTER_LINEAR)

@@ -18,6 +18,7 @@ from typing import Any
 
 import cv2
 import numpy as np
+from numpy.lib.stride_tricks import sliding_window_view
 from numpy.typing import NDArray
 
 Array = NDArray[Any]
@@ -32,7 +33,6 @@ _STRONG = 3.0  # an edge is fully strong at so many times the ordinary slope
 _ON_RING = 0.003  # an edge so near a ring lies on it
 _DARK = 16.0
 _EVERY = 6  # rays used while searching
-_AT_ONCE = 32  # shapes
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -269,20 +269,19 @@ def best_rings(
         The shapes with their mean distance first.
     """
     rows = np.arange(0, RAYS, _EVERY)
-    wide = edges.slopes[rows]
-    bends = np.round(SHAPES[rows, 1:] @ shapes.T / edges.step).astype(np.int64).T
+    bends = np.round(SHAPES[rows, 1:] @ shapes.T / edges.step).astype(np.int64)
     room = int(np.abs(bends).max()) + 1
-    padded = np.pad(wide, ((0, 0), (room, room))).ravel()
-    width = wide.shape[1] + 2 * room
     first, last = np.searchsorted(edges.distances, between)
     columns = np.arange(first, max(last, first + 1))
-    starts = bends + (np.arange(rows.size) * width + room)
-    strengths, at = np.empty(len(shapes)), np.empty(len(shapes), int)
-    for k in range(0, len(shapes), _AT_ONCE):
-        block = slice(k, k + _AT_ONCE)
-        mean = np.abs(padded[starts[block, :, None] + columns].mean(1))
-        at[block] = mean.argmax(1)
-        strengths[block] = mean.max(1)
+    padded = np.pad(edges.slopes[rows], ((0, 0), (room, room)))
+    total = np.zeros((len(shapes), columns.size), padded.dtype)
+    # Row by row, what each shape sees of a ray is one stretch of it.
+    stretches = sliding_window_view(padded, columns.size, axis=1)
+    for ray, start in zip(stretches, bends + (first + room), strict=True):
+        total += ray[start]
+    mean = np.abs(total) / len(rows)
+    at = mean.argmax(1)
+    strengths = mean[np.arange(len(shapes)), at]
     return strengths, np.column_stack([edges.distances[columns[at]], shapes])
 
 

@@ -80,13 +80,31 @@ def _peaks(
 ) -> tuple[Column, Column, Column, NDArray[np.intp]]:
     """Local maxima of the relief, far enough inside: x, y, height and the region of each."""
     top = cv2.dilate(relief, np.ones((3, 3), np.uint8))
-    is_peak = ((relief >= top) & (distance > lowest) & (labels > 0)).astype(np.uint8)
-    count, _, _, centres = cv2.connectedComponentsWithStats(is_peak, connectivity=8)
-    x, y = np.rint(centres[1:count]).T.astype(np.intp)
+    x, y = _middles((relief >= top) & (distance > lowest) & (labels > 0))
     inside = labels[y, x] > 0
     x, y = x[inside], y[inside]
     height = relief[y, x].astype(np.float64)
     return x.astype(np.float64), y.astype(np.float64), height, labels[y, x].astype(np.intp)
+
+
+def _middles(marked: NDArray[np.bool_]) -> tuple[NDArray[np.intp], NDArray[np.intp]]:
+    """Middle pixel, x and y, of each connected group (8 neighbours) of a few marked pixels."""
+    at = np.flatnonzero(marked)
+    y, x = np.divmod(at, marked.shape[1])
+    if not at.size:
+        return x, y
+    links = [np.zeros((2, 0), np.intp)]
+    for step in (1, marked.shape[1] - 1, marked.shape[1], marked.shape[1] + 1):
+        next_one = np.searchsorted(at, at + step).clip(max=at.size - 1)
+        beside = (at[next_one] == at + step) & (np.abs(x[next_one] - x) <= 1)
+        beside &= y[next_one] - y <= 1
+        links.append(np.stack([np.flatnonzero(beside), next_one[beside]]))
+    i, j = np.concatenate(links, axis=1)
+    graph = coo_array((np.ones(i.size), (i, j)), shape=(at.size, at.size))
+    group = connected_components(graph, directed=False)[1]
+    n = np.bincount(group)
+    mx, my = (np.rint(np.bincount(group, v) / n).astype(np.intp) for v in (x, y))
+    return mx, my
 
 
 def _joined(

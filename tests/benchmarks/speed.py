@@ -36,7 +36,8 @@ def draw(photo: Path) -> None:
 
     small = cv2.imread(str(ROOT / "sample_images" / "dish_02.jpg"))
     grown = (MEGAPIXELS * 1e6 / (small.shape[0] * small.shape[1])) ** 0.5
-    large = cv2.resize(small, None, fx=grown, fy=grown, interpolation=cv2.INTER_CUBIC)
+    sides = [16 * round(grown * n / 16) for n in small.shape[1::-1]]  # as cameras' are
+    large = cv2.resize(small, sides, interpolation=cv2.INTER_CUBIC)
     noise = np.random.default_rng(1).normal(0, 3.0, large.shape).astype(np.float32)
     noisy = np.clip(np.round(large + noise), 0, 255).astype(np.uint8)
     assert cv2.imwrite(str(photo), noisy, [cv2.IMWRITE_JPEG_QUALITY, 90])

@@ -297,11 +297,12 @@ def test_averages_by_halves_are_averages(
     x, y = np.meshgrid(np.arange(192), np.arange(128))
     ramp = np.repeat((40 + x // 2 + y // 2)[..., None], 3, axis=2).astype(depth)
     photograph = Photograph(tmp_path / "a.png", "0" * 64, ramp)
-    reduced = photograph.reduced(shrink=sides[0] / 192)
-    assert reduced.shape == (sides[1], sides[0], 3)
     column, row = (np.arange(n) + 0.5 for n in sides)
     expected = 40 + (column * 192 / sides[0] - 1 + (row[:, None] * 128 / sides[1] - 1)) / 2
-    np.testing.assert_allclose(reduced[..., 1], expected, atol=1.01)
+    for quick in (False, True):
+        reduced = photograph.reduced(shrink=sides[0] / 192, quick=quick)
+        assert reduced.shape == (sides[1], sides[0], 3)
+        np.testing.assert_allclose(reduced[..., 1], expected, atol=1.01)
 
 
 @pytest.mark.parametrize("depth", [np.uint8, np.uint16])

@@ -8,7 +8,7 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from detect.splitting import _near_pairs, nearest_by_power, split_regions
+from detect.splitting import _middles, _near_pairs, nearest_by_power, split_regions
 
 
 def split(discs: list[tuple[float, float, float]]) -> tuple[np.ndarray, np.ndarray | None]:
@@ -97,3 +97,19 @@ def test_kin_are_sought_among_the_nearest_only_so_that_noise_stays_cheap() -> No
         (a, b) for a in range(12) for b in range(a + 1, 12) if np.hypot(*(few[a] - few[b])) <= 25.0
     }
     assert {*zip(i.tolist(), j.tolist(), strict=True)} == plain
+
+
+@given(
+    st.integers(0, 2**32 - 1),
+    st.tuples(st.integers(1, 30), st.integers(2, 30)),
+    st.sampled_from([0.0, 0.02, 0.1, 0.3]),
+)
+@settings(max_examples=100, deadline=None)
+def test_middles_of_groups_are_those_of_connected_components(
+    seed: int, shape: tuple[int, int], share: float
+) -> None:
+    marked = np.random.default_rng(seed).random(shape) < share
+    count, _, _, centres = cv2.connectedComponentsWithStats(marked.astype(np.uint8), connectivity=8)
+    x, y = _middles(marked)
+    expected = np.rint(centres[1:count]).astype(int)
+    assert sorted(zip(x.tolist(), y.tolist(), strict=True)) == sorted(map(tuple, expected.tolist()))

@@ -39,6 +39,20 @@ def test_working_positions_return_to_the_photograph(shrink: float) -> None:
     assert view.shrink == pytest.approx(shrink, rel=0.02)
 
 
+def test_a_strongly_reduced_view_has_even_sides_and_its_place() -> None:
+    """An even number of pixels is averaged several times as fast; the frame may leave an odd one."""
+    y, x = np.mgrid[:301, :401]
+    photograph = photograph_of(np.dstack([x / 401, y / 301, np.zeros_like(x)]), bits=16)
+    view = view_of(photograph, area_of(shapely.box(50.2, 40.7, 310.5, 250.1)), shrink=0.2)
+    height, width = view.lab.shape[:2]
+    assert (width / view.shrink_x, height / view.shrink_y) == pytest.approx((262, 210))
+    small = photograph.pixels(shrink=0.2, box=(50, 41, 312, 251))
+    at = grid(view, height, width)
+    assert np.abs(at[:, 0] - 401 * small[..., 0].ravel()).max() < 0.1
+    whole = view_of(photograph, frame_area(401, 301), shrink=0.2)
+    assert (whole.lab.shape[1] / whole.shrink_x, whole.left) == pytest.approx((401, 0))
+
+
 def test_the_mask_is_the_area_with_its_holes() -> None:
     hole = shapely.Point(150, 120).buffer(30)
     outline = shapely.Polygon([(20, 30), (300, 10), (280, 200), (60, 220)]).difference(hole)
