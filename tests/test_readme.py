@@ -14,6 +14,7 @@ from typer.core import TyperGroup
 from typer.testing import CliRunner
 
 from analyse.cli import app
+from analyse.recipe import KEYS
 from detect.amendments import read_amendments
 from tests.conftest import SAMPLE, Surveyed
 
@@ -72,12 +73,27 @@ def test_exactly_two_commands_lead_from_nothing_to_verdict_and_tests() -> None:
     assert blocks(README)[:2] == [first, second]
 
 
-def test_the_line_that_strikes_a_spot_is_one(tmp_path: Path) -> None:
+def test_the_lines_that_strike_and_place_a_spot_are_such(tmp_path: Path) -> None:
     (block,) = re.findall(r"```json\n(.*?)```", README, flags=re.DOTALL)
     log = tmp_path / "a.amendments.jsonl"
     log.write_text(block, encoding="utf-8")
-    (amendment,) = read_amendments(log)
-    assert (amendment.what, amendment.spot) == ("strike", "12")
+    struck, placed = read_amendments(log)
+    assert (struck.what, struck.spot) == ("strike", "12")
+    assert (placed.what, placed.x, placed.y, placed.radius) == ("place", 640.5, 480, 12)
+
+
+def test_keys_of_recipes_named_in_the_text_exist() -> None:
+    named = [text.split(" = ")[0] for text in inline(README) if re.match(r"[a-z_]+ = ", text)]
+    assert len(named) >= 5
+    assert [name for name in named if name not in KEYS] == []
+
+
+def test_every_option_that_is_a_key_too_is_named_as_the_text_says() -> None:
+    told = {"dish-mm": "dish", "ruler-mm": "ruler", "line-mm": "line_length"}
+    beside = {"learn", "learn-unchanged", "out", "workers", "keep-amendments", "help"}
+    options = {name.removeprefix("--") for o in COMMANDS["detect"].params for name in o.opts}
+    options -= {"photographs", *beside}
+    assert [o for o in sorted(options) if told.get(o, o.replace("-", "_")) not in KEYS] == []
 
 
 def test_the_first_command_ends_as_the_readme_says(sample_survey: Surveyed) -> None:
