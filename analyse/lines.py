@@ -8,6 +8,7 @@ from collections.abc import Sequence
 import typer
 
 from analyse.findings import Findings
+from analyse.unseen import planted_sentence
 from analyse.verdict import p_text
 from detect.terminal import number_text, show_table
 
@@ -32,6 +33,8 @@ def show_findings(findings: Sequence[Findings]) -> None:
         f" clumped, below it where even; - where none can be given. Seed {findings[0].seed},"
         f" {findings[0].simulated.simulations:,} simulations."
     )
+    for line in _planted(findings):
+        typer.echo(line)
     for note in _notes(findings):
         typer.echo(f"Note: {note}", err=True)
 
@@ -56,6 +59,17 @@ def _p(value: float) -> str:
     if math.isnan(value):
         return number_text(None)
     return p_text(value).removeprefix("p ").removeprefix("= ")
+
+
+def _planted(findings: Sequence[Findings]) -> list[str]:
+    """Return what planted objects say of each photograph, or where it stands if of many."""
+    said = [(each.name, planted_sentence(each.pattern)) for each in findings]
+    told = [f"{name}: {sentence}" for name, sentence in said if sentence]
+    if len(told) <= _MOST_NOTES:
+        return told
+    return [
+        f"What planted objects say of {len(told)} photographs stands in the report and summary.csv."
+    ]
 
 
 def _notes(findings: Sequence[Findings]) -> list[str]:

@@ -47,6 +47,8 @@ def explain(trouble: Exception) -> str:
     """Say what a trouble found, as part of a sentence."""
     if isinstance(trouble, UnicodeDecodeError):
         return "it is not text"
+    if isinstance(trouble, json.JSONDecodeError):
+        return f"it is no JSON at character {trouble.colno}"
     if isinstance(trouble, KeyError):
         return f"{trouble.args[0]!r} is missing"
     return str(trouble).rstrip(".")
@@ -92,10 +94,15 @@ class Amendment:
         for name in ("id", "time", "who", "spot"):
             text = getattr(self, name)
             if not (isinstance(text, str) and text.strip()):
-                raise ValueError(f"{name} must be a text, not {text!r}")
+                raise ValueError(f"{name} must be a text in quotes, not {text!r}")
         if self.what not in get_args(AmendmentKind):
             raise ValueError(f"the change {self.what!r} is not known")
-        datetime.fromisoformat(self.time)
+        try:
+            datetime.fromisoformat(self.time)
+        except ValueError as trouble:
+            raise ValueError(
+                f"time must be a date and time such as 2026-05-04T10:00, not {self.time!r}"
+            ) from trouble
         for name in ("x", "y", "radius"):
             _check_number(self.what, name, getattr(self, name))
 

@@ -271,9 +271,9 @@ def _why_no_four(squares: Sequence[Square], plot: str, name: str) -> str:
             f" at the corners of a plot of {plot} and are alike; check the plot's size, clear what"
             " covers a plate, or give the corners' positions."
         )
-    seen = f"only at {places}" if likely else "none"
+    seen = f"{len(likely)} can be seen in {name} (only at {places})"
     return (
-        f"Four corner plates are needed and {len(likely)} can be seen in {name} ({seen});"
+        f"Four corner plates are needed and {seen if likely else f'none can be seen in {name}'};"
         " photograph all four whole, or give the corners' positions."
     )
 

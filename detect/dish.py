@@ -259,7 +259,7 @@ def _outside_frame(inner: Ellipse, photograph: Photograph, cut: CutDish) -> floa
         raise AreaNotFound(
             f"The dish in {photograph.name} is cut by the frame ({100 * outside:.0f} % of its inner"
             " edge lie outside); photograph it whole, choose another area, or ask for cut dishes"
-            " to be used."
+            " to be used (--cut-dish use)."
         )
     if outside > MOST_CUT:
         raise AreaNotFound(

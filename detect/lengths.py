@@ -77,7 +77,9 @@ class Length:
         return self.to_mm() / mm_per_px
 
 
-def parse_length(text: str, *, name: str, unit: LengthUnit | None = None) -> Length:
+def parse_length(
+    text: str, *, name: str, unit: LengthUnit | None = None, example: LengthUnit = "mm"
+) -> Length:
     """Read one length such as "10mm".
 
     Parameters
@@ -88,6 +90,8 @@ def parse_length(text: str, *, name: str, unit: LengthUnit | None = None) -> Len
         What the length is for, as it appears in the message.
     unit : {"px", "mm", "cm", "m"} or None
         Unit of a bare number; None refuses bare numbers.
+    example : {"px", "mm", "cm", "m"}
+        Unit that such a length usually has, shown where it is missing.
 
     Returns
     -------
@@ -101,7 +105,7 @@ def parse_length(text: str, *, name: str, unit: LengthUnit | None = None) -> Len
     match = re.fullmatch(rf"\s*({_NUMBER}){_UNIT}", text)
     if match is None:
         raise OptionWrong(f"{name} must be a length such as 10mm, not {text!r}.")
-    return _length(match[1], match[2] or unit, name, text)
+    return _length(match[1], match[2] or unit, name, text, example)
 
 
 def parse_pair(text: str, *, name: str, separator: Literal["-", "x"]) -> tuple[Length, Length]:
@@ -142,7 +146,9 @@ def parse_pair(text: str, *, name: str, separator: Literal["-", "x"]) -> tuple[L
     return first, second
 
 
-def _length(number: str, unit: str | None, name: str, text: str) -> Length:
+def _length(
+    number: str, unit: str | None, name: str, text: str, example: LengthUnit = "mm"
+) -> Length:
     """One checked length, with the option's name in the complaint."""
     value = float(number)
     if not (math.isfinite(value) and value > 0):
@@ -151,6 +157,6 @@ def _length(number: str, unit: str | None, name: str, text: str) -> Length:
         raise OptionWrong(f"{name} must lie between {SHORTEST:g} and {LONGEST:g}, not at {text!r}.")
     if unit is None:
         raise OptionWrong(
-            f"{name} needs a unit: {text!r} could be px or mm; write {text.strip()}mm."
+            f"{name} needs a unit: {text!r} could be px, mm, cm or m; write {text.strip()}{example}."
         )
     return Length(value, unit)  # type: ignore[arg-type]  # the pattern admits known units only

@@ -69,6 +69,13 @@ def _length(value: Any, name: str) -> Length:
     return parse_length(value if isinstance(value, str) else repr(value), name=name)
 
 
+def _height(value: Any, name: str) -> Length:
+    """Read the height of a camera, which is told in metres more often than not."""
+    if isinstance(value, Length):
+        return value
+    return parse_length(value if isinstance(value, str) else repr(value), name=name, example="m")
+
+
 def _range(value: Any, name: str) -> tuple[Length, Length]:
     """Read a range of lengths."""
     return parse_pair(value if isinstance(value, str) else repr(value), name=name, separator="-")
@@ -152,7 +159,9 @@ def _percent(value: Any, name: str) -> float:
     text = value.strip() if isinstance(value, str) else ""
     share = _finite(text[:-1]) / 100 if text.endswith("%") else math.nan
     if not 0 < share < 1:
-        raise OptionWrong(f"{name} must be a share of a length such as 1%, not {value!r}.")
+        raise OptionWrong(
+            f"{name} must be a share of a length above 0% and below 100% such as 1%, not {value!r}."
+        )
     return share
 
 
@@ -169,7 +178,7 @@ READERS: dict[str, Callable[[Any, str], Any]] = {
     "ruler": _length,
     "corners": _corners,
     "plot": _sides,
-    "height": _length,
+    "height": _height,
     "focal_length": _length,
     "sensor_width": _length,
     "lens": _lens,

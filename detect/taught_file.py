@@ -8,6 +8,7 @@ from hashlib import sha256
 from pathlib import Path
 from typing import Any
 
+from detect.amendments import explain
 from detect.calibration import Calibration
 from detect.doubt import FEATURES, DoubtModel
 from detect.errors import DetectError, TaughtUnreadable
@@ -126,6 +127,10 @@ def read_taught(path: Path) -> Taught:
     except ValueError as trouble:
         raise TaughtUnreadable(_damaged(path, trouble)) from trouble
     schema = values.get("schema")
+    if schema is None:
+        raise TaughtUnreadable(
+            f"{path.name} holds nothing that was learned; name a {TAUGHT_NAME} that --learn wrote."
+        )
     if schema != SCHEMA:
         raise TaughtUnreadable(
             f"{path.name} has schema {schema!r}, but this version reads {SCHEMA};"
@@ -181,8 +186,7 @@ def _axes_from(values: dict[str, Any]) -> tuple[float, float, float]:
 
 def _damaged(path: Path, trouble: Exception) -> str:
     """Say what is damaged about a file, and what to do."""
-    reason = f"{trouble.args[0]!r} is missing" if isinstance(trouble, KeyError) else str(trouble)
-    return f"{path.name} is damaged ({reason.rstrip('.')}); learn again with --learn."
+    return f"{path.name} is damaged ({explain(trouble)}); learn again with --learn."
 
 
 def _quoted(text: str) -> str:

@@ -181,7 +181,7 @@ def test_rings_need_a_dish(sheets: Path, tmp_path: Path) -> None:
     [
         (["--quadrat", "-5mm"], "--quadrat must be positive and finite, not '-5mm'."),
         (["--quadrat", "nanmm"], "--quadrat must be positive and finite, not 'nanmm'."),
-        (["--quadrat", "5"], "--quadrat needs a unit: '5' could be px or mm; write 5mm."),
+        (["--quadrat", "5"], "--quadrat needs a unit: '5' could be px, mm, cm or m; write 5mm."),
         (["--grid", "5"], "--grid must be two whole numbers such as 5x5, not '5'."),
         (
             ["--grid", "5x5", "--quadrat", "5mm"],

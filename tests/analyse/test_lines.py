@@ -2,11 +2,16 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
+
 import numpy as np
 import pytest
 
 from analyse.findings import Findings, analyse_points
 from analyse.lines import show_findings
+from analyse.unseen import planted_sentence
+from detect.planted import Planted
+from tests.analyse.finished import findings_of, scattered, sheet_of
 
 
 def a_finding(name: str, n: int, *, twice: int = 0) -> Findings:
@@ -48,3 +53,16 @@ def test_many_notes_are_told_flag_by_flag(capsys: pytest.CaptureFixture[str]) ->
 def test_the_seed_is_told(capsys: pytest.CaptureFixture[str]) -> None:
     show_findings([a_finding("a.jpg", 200)])
     assert capsys.readouterr().out.endswith(" Seed 1, 99 simulations.\n")
+
+
+def test_what_planted_objects_say_is_told_of_few_and_pointed_to_of_many(
+    capsys: pytest.CaptureFixture[str],
+) -> None:
+    unset = Planted(10, 1, note="Planted objects could not be set: reason.")
+    each = findings_of(replace(sheet_of(scattered(40)), planted=unset))
+    assert planted_sentence(each.pattern) == unset.note
+    show_findings([each, a_finding("b.jpg", 200)])
+    assert capsys.readouterr().out.splitlines()[-1] == f"{each.name}: {unset.note}"
+    show_findings([each] * 7)
+    last = capsys.readouterr().out.splitlines()[-1]
+    assert last == "What planted objects say of 7 photographs stands in the report and summary.csv."

@@ -60,7 +60,7 @@ def test_a_pair_is_read(text: str, separator: str, expected: tuple[Length, Lengt
         ("", "--quadrat must be a length such as 10mm, not ''."),
         ("ten", "--quadrat must be a length such as 10mm, not 'ten'."),
         ("10 miles", "--quadrat must be a length such as 10mm, not '10 miles'."),
-        ("10", "--quadrat needs a unit: '10' could be px or mm; write 10mm."),
+        ("10", "--quadrat needs a unit: '10' could be px, mm, cm or m; write 10mm."),
         ("nan", "--quadrat must be positive and finite, not 'nan'."),
         ("1e300mm", "--quadrat must lie between 1e-06 and 1e+09, not at '1e300mm'."),
         ("1e-7m", "--quadrat must lie between 1e-06 and 1e+09, not at '1e-7m'."),

@@ -104,14 +104,18 @@ def test_the_area_goes_with_the_scale_unless_named(values: dict[str, Any], where
             {"height": "30m"},
             "HEIGHT needs FOCAL_LENGTH and SENSOR_WIDTH beside it; give all three",
         ),
+        ({"height": "30"}, "HEIGHT needs a unit: '30' could be px, mm, cm or m; write 30m[.]"),
         ({"sensor_width": "13mm", "focal_length": "9mm"}, "FOCAL_LENGTH needs HEIGHT beside it"),
         (
             {"scale_uncertainty": "1%"},
             "SCALE_UNCERTAINTY says more about a scale, but none is given",
         ),
-        ({"scale_uncertainty": "1", "mm_per_pixel": 1}, "must be a share of a length such as 1%"),
+        ({"scale_uncertainty": "1", "mm_per_pixel": 1}, "must be a share of a length above 0%"),
         ({"scale_uncertainty": 0.01, "mm_per_pixel": 1}, "such as 1%, not 0.01"),
-        ({"scale_uncertainty": "100%", "mm_per_pixel": 1}, "such as 1%, not '100%'"),
+        (
+            {"scale_uncertainty": "100%", "mm_per_pixel": 1},
+            "above 0% and below 100% such as 1%, not '100%'",
+        ),
         ({"scale_uncertainty": "nan%", "mm_per_pixel": 1}, "such as 1%, not 'nan%'"),
         ({"corners": [[1, 2], [3, 4]]}, r"CORNERS must be 8 numbers with commas between, not \[\["),
         ({"plot": "1000mm"}, "PLOT must be two lengths with a unit such as 1000x750mm"),
@@ -268,5 +272,5 @@ def test_a_cut_dish_is_used_on_request_and_every_output_is_told(tmp_path: Path) 
     assert "of the dish's edge lie beyond the frame" in sheet.area.note
     assert len(sheet.settings["dish"]) == 1
     assert sheet.settings["request"]["cut_dish"] == "use"
-    with pytest.raises(AreaNotFound, match="is cut by the frame"):
+    with pytest.raises(AreaNotFound, match=r"is cut by the frame .* \(--cut-dish use\)[.]$"):
         detect_photograph(path, parse_request({**values, "cut_dish": "refuse"}))

@@ -66,3 +66,8 @@ def test_plates_found_give_the_scale_and_the_area(tmp_path: Path) -> None:
         ScaleNotFound, match="Four corner plates are needed and 2 can be seen in plot"
     ):
         detect_photograph(path, parse_request(values))
+    cv2.imwrite(str(path), np.full_like(page, 120))
+    with pytest.raises(
+        ScaleNotFound, match=r"needed and none can be seen in plot[.]\w+; photograph"
+    ):
+        detect_photograph(path, parse_request(values))

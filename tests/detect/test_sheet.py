@@ -121,7 +121,10 @@ def test_a_missing_sheet_says_so(tmp_path: Path) -> None:
 @pytest.mark.parametrize(
     ("text", "message"),
     [
-        (b"{", r"a\.sheet\.json is damaged \(Expecting .*\); restore a copy or detect again\."),
+        (
+            b"{",
+            r"a\.sheet\.json is damaged \(it is no JSON at character 2\); restore a copy or detect again\.",
+        ),
         (b"\xff\xfe", r"is damaged \(it is not text\); restore"),
         (b"[1]", "is no sheet: it has no schema number"),
         (b"{}", "is no sheet: it has no schema number"),
@@ -234,10 +237,10 @@ def test_an_edit_that_does_not_fit_is_refused(edit: Amendment, message: str) -> 
     ("values", "message"),
     [
         ({"what": "paint"}, "the change 'paint' is not known"),
-        ({"id": " "}, "id must be a text, not ' '"),
-        ({"who": ""}, "who must be a text"),
-        ({"spot": 3}, "spot must be a text, not 3"),
-        ({"time": "yesterday"}, "yesterday"),
+        ({"id": " "}, "id must be a text in quotes, not ' '"),
+        ({"who": ""}, "who must be a text in quotes"),
+        ({"spot": 3}, "spot must be a text in quotes, not 3"),
+        ({"time": "yesterday"}, "time must be a date and time such as .* not 'yesterday'"),
         ({"what": "move", "x": 1.0}, "'move' needs y"),
         ({"what": "strike", "radius": 1.0}, "'strike' takes no radius"),
         ({"what": "resize", "radius": -1.0}, "radius must be positive, not -1.0"),
