@@ -16,7 +16,7 @@ from detect.readers import AreaWord, CutDish, MarkKind
 from detect.wanted import DetectOptions, Kind
 
 WHAT, SCALE, AREA, OUTPUT = "What to find", "Scale", "Study area", "Output"
-TRUST = "What is missed"
+TRUST, LEARNING = "What is missed", "Learning from corrections"
 OUT = Path("strewn-out")
 _DEFAULTS = DetectOptions()
 _SPELLED = {"dish": "--dish-mm", "line_length": "--line-mm", "ruler": "--ruler-mm"}
@@ -77,14 +77,14 @@ LearnUnchangedOption = Annotated[
     typer.Option(
         "--learn-unchanged",
         help="Learn from the sheets nobody amended as well: they were looked at and are all right.",
-        rich_help_panel=WHAT,
+        rich_help_panel=LEARNING,
     ),
 ]
 TaughtOption = Annotated[
     str | None,
     _option(
         "--taught",
-        WHAT,
+        LEARNING,
         "Detect as an earlier --learn taught; other options given here win over it.",
         "FILE",
     ),
@@ -96,7 +96,7 @@ LearnOption = Annotated[
         help="Learn first from the sheets in this folder that a person has corrected.",
         metavar="DIR",
         show_default=False,
-        rich_help_panel=WHAT,
+        rich_help_panel=LEARNING,
     ),
 ]
 MmPerPixelOption = Annotated[

@@ -12,6 +12,8 @@ from pathlib import Path
 
 import numpy as np
 import pytest
+import typer.main
+from typer.core import TyperGroup
 from typer.testing import CliRunner, Result
 
 from analyse.cli import app, main
@@ -552,3 +554,31 @@ def test_main_ends_as_a_program_does(
         main()
     assert end.value.code == 0
     assert capsys.readouterr().out == f"strewn {tool_version()}\n"
+
+
+def test_a_survey_takes_every_option_that_says_how_to_detect() -> None:
+    group = typer.main.get_command(app)
+    assert isinstance(group, TyperGroup)
+    names = {
+        command: {name for option in group.commands[command].params for name in option.opts}
+        for command in ("detect", "survey")
+    }
+    assert names["detect"] - names["survey"] == {"photographs", "--learn", "--learn-unchanged"}
+
+
+@pytest.mark.parametrize(
+    ("options", "message"),
+    [
+        (("--ruler-mm", "50", "--mm-per-pixel", "1"), "--mm-per-pixel and --ruler-mm both tell"),
+        (("--height", "30"), "--height needs a unit: '30' could be px, mm, cm or m; write 30m."),
+        (("--scale-uncertainty", "1%"), "--scale-uncertainty says more about a scale"),
+        (("--lens", "nothere", "--mm-per-pixel", "1"), "--lens names nothere, which does not"),
+        (("--taught", "none.toml"), "none.toml cannot be read"),
+    ],
+)
+def test_a_survey_refuses_by_the_option_s_name(
+    beds: Path, options: tuple[str, ...], message: str
+) -> None:
+    result = survey(beds, *options)
+    assert result.exit_code == 2
+    assert message in result.stderr
