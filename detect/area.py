@@ -187,10 +187,13 @@ def polygon_area(
     area = StudyArea(outline, "polygon", f"polygon from {path.name}")
     frame = box(-0.5, -0.5, width - 0.5, height - 0.5)
     if not frame.buffer(1e-6).covers(outline):
-        seen = ", ".join(f"{bound:g}" for bound in outline.bounds)
+        left, top, right, bottom = (f"{bound:.10g}" for bound in outline.bounds)
+        what = "draw it in pixels of this picture"
+        if georeference is not None and told is None:
+            what += f", or name its map in the file as a GeoJSON's crs ({georeference.name})"
         raise AreaWrong(
-            f"The polygon in {path.name} reaches from x, y to x, y of {seen}, out of the picture of"
-            f" {width} x {height} pixels; draw it in pixels of this picture."
+            f"The polygon in {path.name} reaches from {left} to {right} in x and from {top} to"
+            f" {bottom} in y, out of the picture of {width} x {height} pixels; {what}."
         )
     return _stepped_in(area.polygon, "polygon", area.note, inset_px)
 
@@ -238,7 +241,7 @@ def _stepped_in(outline: BaseGeometry, kind: AreaKind, note: str, inset_px: floa
     inner = outline.buffer(-inset_px)
     if inner.is_empty:
         raise AreaWrong(
-            f"The inset of {inset_px:g} pixels leaves nothing of the {kind}; give a smaller one."
+            f"The inset of {inset_px:.4g} pixels leaves nothing of the {kind}; give a smaller one."
         )
     return StudyArea(inner, kind, f"{note}, inset by {inset_px:.1f} pixels")
 

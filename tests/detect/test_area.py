@@ -17,6 +17,7 @@ from shapely.geometry import LineString, MultiPolygon, Polygon, box, mapping
 from detect.area import StudyArea, dish_area, frame_area, leaf_area, plot_area, polygon_area
 from detect.dish import Dish, Ellipse
 from detect.errors import AreaWrong
+from detect.georeference import Georeference
 from tests.scenes import LEAVES
 
 DISH = Dish(Ellipse(200.0, 150.0, 100.0, 96.0, 20.0), None, 0.98)
@@ -149,8 +150,8 @@ WRONG = {
     ),
     "outside": (
         of([10, 10], [160, 10], [160, 40], [10, 10]),
-        "The polygon in area.geojson reaches from x, y to x, y of 10, 10, 160, 40, out of the "
-        "picture of 100 x 80 pixels; draw it in pixels of this picture.",
+        "The polygon in area.geojson reaches from 10 to 160 in x and from 10 to 40 in y, out "
+        "of the picture of 100 x 80 pixels; draw it in pixels of this picture.",
     ),
 }
 
@@ -161,6 +162,18 @@ def test_each_wrong_polygon_file_is_told(case: str, tmp_path: Path) -> None:
     with pytest.raises(AreaWrong) as caught:
         polygon_area(saved(tmp_path, value), 100, 80)
     assert message in str(caught.value)
+
+
+def test_a_polygon_that_does_not_name_the_raster_s_map_is_told_to(tmp_path: Path) -> None:
+    far = saved(tmp_path, of([500001, 5199995], [500007, 5199995], [500007, 5199999]))
+    placed = Georeference(np.array([[0.01, 0, 500000], [0, -0.01, 5200000]]), "EPSG:32632")
+    with pytest.raises(AreaWrong) as caught:
+        polygon_area(far, 900, 700, georeference=placed)
+    assert str(caught.value) == (
+        "The polygon in area.geojson reaches from 500001 to 500007 in x and from 5199995 to 5199999"
+        " in y, out of the picture of 900 x 700 pixels; draw it in pixels of this picture, or name"
+        " its map in the file as a GeoJSON's crs (EPSG:32632)."
+    )
 
 
 def test_a_missing_polygon_file_and_a_folder_are_told(tmp_path: Path) -> None:
