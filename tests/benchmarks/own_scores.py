@@ -17,7 +17,8 @@ from typing import Any
 
 sys.path.insert(0, str(Path(__file__).resolve().parents[2]))
 
-from detect.accuracy import Accuracy, pooled, score_sheet
+from detect.accuracy import Accuracy, pooled
+from detect.compared import compare_sheet
 from detect.errors import DetectError
 from detect.requests import detect_photograph, parse_request
 from detect.truth import read_truth
@@ -47,7 +48,7 @@ def scores_of(folder: Path) -> dict[str, list[Accuracy]]:
         truth = read_truth(folder / "truth" / f"{photo.stem}.csv")
         try:
             _, sheet = detect_photograph(photo, parse_request(asked(row)))
-            score = score_sheet(sheet, truth)
+            score = compare_sheet(sheet, truth).accuracy
         except DetectError as trouble:
             print(f"{photo.name}: {trouble}", file=sys.stderr)
             score = Accuracy(photo.name, len(truth.xy), 0, 0)
