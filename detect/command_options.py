@@ -171,7 +171,8 @@ AreaOption = Annotated[
     _option(
         "--area",
         AREA,
-        f"Where objects count: {_words(AreaWord)}, or a GeoJSON file with a polygon in pixels, or on the raster's own map.",
+        f"Where objects count: {_words(AreaWord)}, or a GeoJSON file with a polygon in pixels, or on"
+        " the raster's own map.",
         "WHERE",
         "dish with --dish-mm, plot with --corners, else frame",
     ),

@@ -323,7 +323,7 @@ def _decode(claim: Claim) -> StoredPixels:
         if claim.by_phone:
             array = decode_phone_picture(claim.data)
         else:
-            array = cv2.imdecode(np.frombuffer(claim.data, dtype=np.uint8), _FLAGS)
+            array = _decode_silently(claim.data)
     except cv2.error:
         array = None
     if array is None or array.shape[:2] != (claim.height, claim.width):
@@ -336,6 +336,16 @@ def _decode(claim: Claim) -> StoredPixels:
     code = cv2.COLOR_GRAY2RGB if turned.ndim == 2 else cv2.COLOR_BGR2RGB
     stored: StoredPixels = cv2.cvtColor(turned, code)
     return stored
+
+
+def _decode_silently(data: bytes) -> Any:
+    """Decode without the decoder's own remarks on tags it does not know, which help nobody."""
+    logging: Any = cv2.utils.logging
+    before = logging.setLogLevel(logging.LOG_LEVEL_ERROR)
+    try:
+        return cv2.imdecode(np.frombuffer(data, dtype=np.uint8), _FLAGS)
+    finally:
+        logging.setLogLevel(before)
 
 
 # Exif's eight turns (Exif 2.32, tag 0112 hex), each undone.
