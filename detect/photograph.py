@@ -320,10 +320,7 @@ def _decode(claim: Claim) -> StoredPixels:
     """Decode, make three channels, and stand the picture upright."""
     array: Any
     try:
-        if claim.by_phone:
-            array = decode_phone_picture(claim.data)
-        else:
-            array = _decode_silently(claim.data)
+        array = decode_phone_picture(claim.data) if claim.by_phone else _decode_silently(claim.data)
     except cv2.error:
         array = None
     if array is None or array.shape[:2] != (claim.height, claim.width):
