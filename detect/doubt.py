@@ -25,6 +25,9 @@ FEATURES = (
     "local",
     "star",
     "around",
+    "gathered",
+    "several",
+    "apart",
 )
 # A region with more of its boundary than this on the picture's edge is cut off by it; that it is
 # small then counts by half.
@@ -64,6 +67,12 @@ class DoubtModel:
         Weight of having been cut out against its surroundings.
     star, around : float
         Weights of how leaves radiate from the centre and how far around it; plants only.
+    gathered, several : float
+        Weights of how many leaves were given to a plant of that centre, and of how many further
+        plants' centres lie inside; plants only.
+    apart : float
+        Weight of being a plant put together from single leaves; plants only. Of such a plant
+        `rough`, `texture`, `long` and `cut` say nothing and are 0.
 
     References
     ----------
@@ -85,6 +94,9 @@ class DoubtModel:
     local: float = 0.0
     star: float = 0.0
     around: float = 0.0
+    gathered: float = 0.0
+    several: float = 0.0
+    apart: float = 0.0
 
     @property
     def weights(self) -> NDArray[np.float64]:
@@ -130,21 +142,24 @@ COLONIES = DoubtModel(
     around=0.000,
 )
 SEEDLINGS = DoubtModel(
-    intercept=8.308,
-    size=-1.183,
-    open=0.357,
-    faint=-0.034,
-    slope=-0.078,
-    rough=-13.807,
-    texture=-0.944,
-    long=-3.456,
-    clear=-0.196,
-    neck=-3.839,
+    intercept=1.938,
+    size=-1.281,
+    open=1.588,
+    faint=0.014,
+    slope=-1.396,
+    rough=-12.942,
+    texture=-2.274,
+    long=-5.535,
+    clear=0.941,
+    neck=-2.046,
     cut=0.000,
     frame=0.000,
     local=0.000,
-    star=10.820,
-    around=-3.289,
+    star=6.556,
+    around=0.732,
+    gathered=2.786,
+    several=-0.061,
+    apart=-6.051,
 )
 LESIONS = DoubtModel(
     intercept=0.506,
@@ -195,7 +210,7 @@ def features(
     Returns
     -------
     ndarray of shape (n, 12)
-        Columns in the order of `FEATURES`, without the last two.
+        Columns in the order of `FEATURES`, without those of plants only.
     """
     middle = 0.5 * np.log(smallest_px * largest_px)
     half = 0.5 * np.log(largest_px / smallest_px) + 0.2

@@ -12,9 +12,17 @@ from detect.candidates import SURROUNDINGS, cut_levels, find_candidates
 from detect.choice import choose
 from detect.constants import Constants
 from detect.contrast import Colour, Contrast, Mask, Sought, contrast_maps
-from detect.doubt import DoubtModel, doubt_of, features, usual_step
-from detect.plants import fused, leaf_axes, rosette_features
-from detect.regions import Candidates, join
+from detect.doubt import FEATURES, DoubtModel, doubt_of, features, usual_step
+from detect.gathering import Gathered, gather
+from detect.leaves import find_blades
+from detect.plants import (
+    agreement,
+    fused,
+    leaf_axes,
+    plant_regions,
+    rosette_features,
+)
+from detect.regions import Candidates, join, measure_regions
 from detect.view import View
 from detect.wanted import DetectOptions, Kind
 
@@ -31,6 +39,10 @@ _TOGETHER: dict[Kind, float] = {"colonies": 0.95, "seedlings": 0.95, "lesions": 
 _SURE = 0.6
 # A region whose mean contrast is less than this many times the noise is noise.
 LEAST_CONTRAST = 3.5
+# A plant put together from leaves stands out, at its edge, by this many times the noise at least.
+_LEAST_STEP = 0.8
+# What says nothing about leaves that lie apart.
+_OF_ONE_PIECE = [FEATURES.index(name) for name in ("rough", "texture", "long", "cut")]
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -42,7 +54,7 @@ class Judgement:
     contrast : Contrast
         The map as it is, before leaves are fused to plants.
     candidates : Candidates
-    measured : ndarray of shape (n, 12) or (n, 14)
+    measured : ndarray of shape (n, 12) or (n, 17)
         Features of the doubt model; for plants also how the leaves are arranged.
     doubt : ndarray of shape (n,)
     """
@@ -229,9 +241,15 @@ def _judge(
     ]
     least = _least_contrast(contrasts[0], _colour(options))
     candidates = [each.where(each.contrast >= least) for each in candidates]
+    cut = [len(each) for each in candidates]
+    gathered: list[Gathered | None] = [None] * len(views)
+    if plants:
+        for k, view in enumerate(views):
+            gathered[k], regions = _gathered(view, contrasts[k], maps[k], smallest_px, largest_px)
+            candidates[k] = join([candidates[k], regions])
     step = known.step if known else usual_step(join(candidates))
     judgements = []
-    for contrast, each in zip(contrasts, candidates, strict=True):
+    for contrast, each, by_leaf, n in zip(contrasts, candidates, gathered, cut, strict=True):
         measured = features(
             each,
             noise=contrast.noise,
@@ -239,9 +257,11 @@ def _judge(
             largest_px=largest_px,
             step=step,
         )
-        if plants:
+        if by_leaf is not None:
             rosettes = rosette_features(each, leaf_axes(contrast, smallest_px))
-            measured = np.column_stack([measured, rosettes])
+            apart = np.arange(len(each)) >= n
+            measured = np.column_stack([measured, rosettes, agreement(each, by_leaf), apart])
+            measured[n:, _OF_ONE_PIECE] = 0.0
         judgements.append(Judgement(contrast, each, measured, doubt_of(measured, model)))
     return judgements, known or Yardstick(flipped, constants, cuts, step)
 
@@ -296,6 +316,29 @@ def _candidates(
             for looked_at, levels in zip(maps, cuts, strict=True)
         ]
     )
+
+
+def _gathered(
+    view: View,
+    contrast: Contrast,
+    fused_maps: Sequence[Contrast],
+    smallest_px: float,
+    largest_px: float,
+) -> tuple[Gathered, Candidates]:
+    """Give the leaves to plants, and measure these like the other candidates."""
+    blades = find_blades(contrast, view.lab, view.inside, smallest_px)
+    plants = gather(blades, smallest_px, largest_px)
+    regions = measure_regions(
+        plant_regions(blades, plants, view.inside, smallest_px),
+        len(plants) + 1,
+        fused_maps[0].map,
+        neck=np.zeros(len(plants) + 1),
+        level=contrast.threshold,
+        smallest_px=_BELOW * smallest_px,
+        largest_px=_ABOVE * largest_px,
+    )
+    # A fused map is smoother than the noise was measured on; coarse grain stays below this.
+    return plants, regions.where(regions.step >= _LEAST_STEP * contrast.noise)
 
 
 def _least_contrast(contrast: Contrast, colour: Colour) -> float:

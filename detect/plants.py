@@ -8,9 +8,12 @@ import cv2
 import numpy as np
 from numpy.typing import NDArray
 from scipy import ndimage
+from scipy.spatial import cKDTree
 
-from detect.contrast import Contrast, Map
-from detect.regions import Candidates
+from detect.contrast import Contrast, Map, Mask
+from detect.gathering import Gathered
+from detect.leaves import Blades
+from detect.regions import Candidates, Labels
 from detect.splitting import nearest_by_power
 
 # Leaves of one plant are fused by blurs of these shares of the smallest diameter, after the
@@ -22,6 +25,10 @@ _RAYS, _STEPS = 24, np.arange(0.2, 1.5, 0.1)
 # How far leaves radiate, and what that counts for: a compact plant as much as a usual rosette.
 _COMPACT = ([-0.6, -0.35, -0.2, 1.0], [0.15, -0.2, -0.2, 1.0])
 _ROUNDS, _PLANT_REACH = 2, 1.6
+# Ground this near to a plant's leaves, as a share of the smallest diameter, goes with them.
+_GROWN = 0.3
+# A plant so long over its width keeps its place when its pixels are gathered.
+_LONG = 1.8
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -129,6 +136,68 @@ def rosette_features(candidates: Candidates, leaves: Leaves) -> NDArray[np.float
     return np.column_stack([star, around])
 
 
+def plant_regions(blades: Blades, gathered: Gathered, inside: Mask, smallest_px: float) -> Labels:
+    """Label each plant's leaves and the ground between and close around them.
+
+    Parameters
+    ----------
+    blades : Blades
+    gathered : Gathered
+    inside : ndarray of bool
+        The study area on the same map.
+    smallest_px : float
+        Smallest plant's diameter in pixels of the map.
+
+    Returns
+    -------
+    ndarray of shape (height, width), int32
+        0 for ground, k + 1 for plant k: the pixels nearer than 0.15 of the smallest diameter to one
+        of its leaves, and to no other plant's; and what those enclose.
+    """
+    plant = np.r_[-1, gathered.owner].astype(np.int32) + 1
+    leaf = plant[blades.labels]
+    if len(gathered) == 0:
+        return np.zeros_like(leaf)
+    distance, nearest = cv2.distanceTransformWithLabels(
+        (leaf == 0).astype(np.uint8), cv2.DIST_L2, 5, labelType=cv2.DIST_LABEL_PIXEL
+    )
+    reach = _GROWN * smallest_px
+    close = (distance <= reach).astype(np.uint8)
+    back = cv2.distanceTransform(close, cv2.DIST_L2, 5) > 0.5 * reach
+    of_label = np.zeros(int(nearest.max()) + 1, dtype=np.int32)
+    of_label[nearest[leaf > 0]] = leaf[leaf > 0]
+    return np.where((leaf > 0) | (back & inside), of_label[nearest], 0).astype(np.int32)
+
+
+def agreement(candidates: Candidates, gathered: Gathered) -> NDArray[np.float64]:
+    """Compare candidates with the plants that leaves were given to.
+
+    Parameters
+    ----------
+    candidates : Candidates
+    gathered : Gathered
+
+    Returns
+    -------
+    ndarray of shape (n, 2)
+        `gathered`: how many leaves the plant explains whose centre is next to the candidate's, up
+        to 3, less the further the centres lie apart; 0 from half a radius. `several`: how many
+        further plants have their centre well inside the candidate, up to 2.
+    """
+    if len(candidates) == 0 or len(gathered) == 0:
+        return np.zeros((len(candidates), 2))
+    radius = 0.5 * candidates.diameter
+    at = np.column_stack([candidates.x, candidates.y])
+    tree = cKDTree(np.column_stack([gathered.x, gathered.y]))
+    distance, nearest = tree.query(at)
+    near = np.maximum(1.0 - (distance / (0.5 * radius)) ** 2, 0.0)
+    within = tree.query_ball_point(at, 0.8 * radius, return_length=True)
+    several = np.clip(within - 1, 0, 2)
+    return np.column_stack(
+        [near * np.sqrt(np.minimum(gathered.explained[nearest] / 3.0, 1.0)), several]
+    )
+
+
 def settle_plants(
     regions: Candidates, contrast: Map, threshold: float
 ) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
@@ -153,10 +222,12 @@ def settle_plants(
     Notes
     -----
     Two rounds: each leaf pixel goes to the plant with least (distance^2 - radius^2), if that lies
-    within 1.6 radii; then each plant moves to the mean of its pixels.
+    within 1.6 radii (of a long region, half lengths); then each plant moves to the mean
+    of its pixels, but for long ones, whose tips lie among other plants' leaves.
     """
     centres = np.column_stack([regions.x, regions.y])
     reach = 0.5 * regions.diameter
+    extent = reach * np.sqrt(regions.elongation)
     n = len(regions)
     if n == 0:
         return centres, reach
@@ -165,9 +236,10 @@ def settle_plants(
     count = np.zeros(n)
     for _ in range(_ROUNDS if len(leaf) else 0):
         owner = nearest_by_power(leaf, centres, reach)
-        near = np.hypot(*(leaf - centres[owner]).T) < _PLANT_REACH * reach[owner]
+        near = np.hypot(*(leaf - centres[owner]).T) < _PLANT_REACH * extent[owner]
         count = np.bincount(owner[near], minlength=n).astype(np.float64)
         total = [np.bincount(owner[near], leaf[near, axis], n) for axis in (0, 1)]
         mean = np.column_stack(total) / np.maximum(count, 1.0)[:, None]
-        centres = np.where(count[:, None] > 0, mean, centres)
+        moves = (count > 0) & (regions.elongation < _LONG)
+        centres = np.where(moves[:, None], mean, centres)
     return centres, np.where(count > 0, np.sqrt(count / np.pi), reach)

@@ -111,4 +111,4 @@ def test_ragged_joined_and_oddly_sized_regions_are_more_doubtful(
 
 def test_weights_come_in_the_order_of_the_features() -> None:
     weights = {name: float(k) for k, name in enumerate(FEATURES)}
-    assert DoubtModel(intercept=9.0, **weights).weights.tolist() == list(map(float, range(14)))
+    assert DoubtModel(intercept=9.0, **weights).weights.tolist() == list(map(float, range(17)))
