@@ -47,8 +47,8 @@ CARRIED = ("size", "open", "faint", "slope", "rough", "texture", "neck", "cut", 
 # rounds, as the weights decide who wins. Of plants only; of the others it was not tried.
 WINNERS_WEIGH, WINNERS_ROUNDS = 40.0, 3
 OTHER_SEEDS, OTHER_SHARE = range(1000, 1004), 0.2
-BARE_SEEDS, BARE_SHARE = range(1000, 1012), 0.2
-BESIDE_SEEDS, BESIDE_SHARE = range(1000, 1016), 0.25
+BARE_SEEDS, BARE_SHARE = range(1000, 1012), 0.1
+BESIDE_SEEDS, BESIDE_SHARE = range(1000, 1016), 0.2
 NOT_OF_PLANTS = ("cut", "frame", "local")
 DIAMETERS: dict[Kind, str] = {"colonies": "1.2-6mm", "seedlings": "12-36mm", "lesions": "1.4-5mm"}
 
