@@ -50,6 +50,8 @@ _SIZED, _FAR, _NEAREST = 0.06, 3.5, 24
 _GRID, _RING_STEP, _REACH = 0.09, 0.16, 1.7
 # More plants than so many in one clump are not tried against others: that would take too long.
 _ROUNDS, _STARTS, _TRIED = 3, (1, 2, 4), 200
+# A clump of more leaves than so many is grain or a closed canopy: no plants are told in it.
+_CANOPY = 1500
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -119,6 +121,8 @@ def gather(blades: Blades, smallest_px: float, largest_px: float) -> Gathered:
     for rows in _clumps(plant, leaf, len(imagined) + alone.size, len(blades)):
         plants, p = np.unique(plant[rows], return_inverse=True)
         leaves, q = np.unique(leaf[rows], return_inverse=True)
+        if leaves.size > _CANOPY:
+            continue
         own, explained = _fewest(p, q, saving[rows])
         owner[leaves] = np.where(own >= 0, plants[own], -1)
         best[leaves] = explained
