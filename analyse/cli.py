@@ -288,6 +288,13 @@ def survey(
             workers=workers_for(len(paths), whole(workers, "--workers")),
             progress=progress,
         )
+    lenses = {
+        own.request.scale.lens
+        for path, result in zip(paths, results, strict=True)
+        if isinstance(own := plans[path.name], Plan) and not isinstance(result, Failure)
+    }
+    if len(lenses) == 1:
+        commands.write_lens(lenses.pop(), out)
     _finish(results, out, trial)
 
 

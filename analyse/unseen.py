@@ -41,7 +41,8 @@ def planted_sentence(pattern: Pattern | None) -> str:
         said.append(
             f"Of {planted.copies:,} copies of its own spots set into the photograph,"
             f" {planted.found:,} were found again; weighted to the sizes, contrasts and crowding"
-            f" seen, {share:.0f} % of such objects are found (95 % limits {low:.0f} to"
+            " seen (copies set closer to others than its spots lie weigh less),"
+            f" {share:.0f} % of such objects are found (95 % limits {low:.0f} to"
             f" {high:.0f} %)."
         )
     if planted.blind is not None:

@@ -263,9 +263,17 @@ def with_rounds(words: list[str]) -> list[str]:
     usual = f"--planted={PlantedOptions().rounds}"
     following = [*words[1:], ""]
     return [
-        usual if word == "--planted" and not after.lstrip("+-").isdigit() else word
+        usual if word == "--planted" and not _is_rounds(after) else word
         for word, after in zip(words, following, strict=True)
     ]
+
+
+def _is_rounds(word: str) -> bool:
+    """Whether a word is meant as a number of rounds: a number, or a bare word that is no file."""
+    path = Path(word)
+    file = path.suffix and not path.suffix[1:].isdigit()
+    bare = word not in ("", ".", "..") and not word.startswith("-") and path.name == word
+    return word.lstrip("+-").isdigit() or bool(bare and not file and not path.exists())
 
 
 def spelled(key: str) -> str:

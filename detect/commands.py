@@ -44,6 +44,7 @@ from detect.command_options import (
 from detect.errors import OptionWrong
 from detect.files import make_folder, write_text_atomically
 from detect.gather import gather_photographs
+from detect.lens import Lens
 from detect.outcome import write_detection
 from detect.overlay import DOUBTFUL
 from detect.readers import whole
@@ -133,8 +134,6 @@ def detect(
     )
     paths = gather_photographs(photographs)
     make_folder(out)
-    if request.scale.lens is not None:
-        write_text_atomically(out / "lens.toml", request.scale.lens.as_toml())
     if reviewed is not None:
         request = replace(request, taught=_learned(reviewed, out))
     _show_overruled(request)
@@ -153,6 +152,7 @@ def detect(
     failures = [result for result in results if isinstance(result, Failure)]
     show_table(("photograph", "spots", "doubtful", "scale"), [line.cells() for line in done])
     if done:
+        write_lens(request.scale.lens, out)
         show_path("Sheets, points and overlays", out)
         folder = quoted(out)
         typer.echo(
@@ -179,6 +179,12 @@ def _reviewed(
         sheets = "1 sheet" if left_out == 1 else f"{left_out} sheets"
         typer.echo(f"Nothing is learned from {sheets} that nobody has amended.", err=True)
     return reviewed
+
+
+def write_lens(lens: Lens | None, folder: Path) -> None:
+    """Write the lens that was used, if any, to be given the next time."""
+    if lens is not None:
+        write_text_atomically(folder / "lens.toml", lens.as_toml())
 
 
 def _learned(reviewed: list[Reviewed], out: Path) -> Taught:

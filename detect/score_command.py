@@ -118,7 +118,7 @@ def _score_cells(each: Compared) -> tuple[str, ...]:
         number_text(row.precision),
         number_text(row.recall),
         number_text(row.f1),
-        f"{row.count_error:+d}",
+        f"{row.count_error:+d}" if row.count_error else "0",
         *(number_text(value) for value in figures),
         number_text(reliability(doubt, false).error, 2),
     )

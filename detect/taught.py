@@ -182,7 +182,7 @@ class Taught:
     def overruled(self, asked: DetectOptions) -> tuple[str, ...]:
         """Return the names of what was learned and will not be used, for a person asked otherwise."""
         names = []
-        if asked.diameter is not None and self.diameter not in (None, asked.diameter):
+        if self.sized and asked.diameter not in (None, self.diameter):
             names.append("diameter")
         if _names_colour(asked) and (
             self.direction is not None

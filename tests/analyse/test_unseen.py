@@ -22,7 +22,8 @@ from tests.detect.test_planted import MEASURED
 
 SAID = (
     "Of 90 copies of its own spots set into the photograph, 81 were found again; weighted to the"
-    " sizes, contrasts and crowding seen, 90 % of such objects are found (95 % limits 82 to 95 %)."
+    " sizes, contrasts and crowding seen (copies set closer to others than its spots lie weigh"
+    " less), 90 % of such objects are found (95 % limits 82 to 95 %)."
     " Two closer than 0.80 of their radii's sum are mostly seen as one"
 )
 NAMES = ("planted_recall", "planted_recall_low", "planted_recall_high", "blind_distance")

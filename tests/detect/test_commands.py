@@ -13,6 +13,7 @@ import pytest
 from typer.testing import CliRunner, Result
 
 from analyse.cli import app
+from detect.command_options import with_rounds
 from detect.planted import PlantedOptions
 from detect.requests import DetectRequest, detect_photograph
 from detect.sheet import Amendment, amendments_path, append_amendment, read_sheet
@@ -72,6 +73,20 @@ def test_without_a_scale_it_works_in_pixels_and_says_so(photo: Path, tmp_path: P
     row = (tmp_path / "out" / "bed_1.points.csv").read_text().splitlines()[1].split(",")
     assert row[3:5] == ["", ""]
     assert row[6:8] == ["", ""]
+
+
+@pytest.mark.parametrize("word", ["many", "0.5"])
+def test_a_word_after_planted_that_is_no_file_is_told(
+    word: str, photo: Path, tmp_path: Path
+) -> None:
+    result = detect(photo, "--planted", word, out=tmp_path / "out")
+    assert result.exit_code == 2
+    assert f"--planted must be a whole number of rounds such as 8, or true, not '{word}'." in (
+        result.stderr
+    )
+    assert with_rounds(["--planted", "bed.jpg"]) == ["--planted=8", "bed.jpg"]
+    assert with_rounds(["--planted", str(photo)]) == ["--planted=8", str(photo)]
+    assert with_rounds(["bed.jpg", "--planted"]) == ["bed.jpg", "--planted=8"]
 
 
 def test_a_folder_is_done_in_natural_order(tmp_path: Path) -> None:

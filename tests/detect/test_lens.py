@@ -330,9 +330,26 @@ def test_detect_writes_the_lens_it_used(tmp_path: Path) -> None:
     result = CliRunner().invoke(app, [*words, str(tmp_path / "mine.toml")])
     assert result.exit_code == 0, result.stderr
     assert read_lens(tmp_path / "out" / "lens.toml") == lens
+    survey = ["survey", str(tmp_path), "--out", str(tmp_path / "surveyed"), *asked]
+    result = CliRunner().invoke(app, [*survey, str(tmp_path / "mine.toml"), "--simulations", "99"])
+    assert result.exit_code == 0, result.stderr
+    assert read_lens(tmp_path / "surveyed" / "lens.toml") == lens
     result = CliRunner().invoke(app, [*words, str(tmp_path / "none.toml")])
     assert result.exit_code == 2
     assert "--lens names" in result.stderr
+
+
+@pytest.mark.parametrize("command", ["detect", "survey"])
+def test_a_lens_that_fits_no_photograph_is_not_written(command: str, tmp_path: Path) -> None:
+    write_discs(tmp_path / "a.png", scattered(5, seed=3))
+    other = Lens(0.02, 0.0, discs.HEIGHT, 2 * discs.HEIGHT, 0.1, 3)
+    (tmp_path / "mine.toml").write_text(other.as_toml(), encoding="utf-8")
+    asked = ["--mm-per-pixel", "0.2", "--lens", str(tmp_path / "mine.toml")]
+    words = [command, str(tmp_path), "--out", str(tmp_path / "out"), *asked]
+    result = CliRunner().invoke(app, words)
+    assert result.exit_code == 2
+    assert "another shape" in result.stderr
+    assert not (tmp_path / "out" / "lens.toml").exists()
 
 
 def test_a_request_remembers_its_lens(tmp_path: Path) -> None:

@@ -75,7 +75,7 @@ def test_scores_are_printed_and_written(beds: Path, tmp_path: Path) -> None:
     lines = [line.split() for line in result.stdout.splitlines()]
     assert lines[0][:6] == ["photograph", "truth", "found", "precision", "recall", "F1"]
     assert lines[0][6:] == ["count", "error", "RMSE", "px", "RMSE", "mm", "AUC", "ECE"]
-    assert lines[1][:7] == ["bed_1.png", "24", "24", "1", "1", "1", "+0"]
+    assert lines[1][:7] == ["bed_1.png", "24", "24", "1", "1", "1", "0"]
     assert float(lines[1][8]) == pytest.approx(0.5 * float(lines[1][7]), rel=0.01)
     assert lines[2][:5] == ["bed_2.png", "24", "23", "1", "0.958"]
     assert lines[2][6] == "-1"

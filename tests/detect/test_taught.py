@@ -141,7 +141,9 @@ def test_what_a_person_asks_for_wins() -> None:
     )
     assert TAUGHT.completed(own) == own
     assert TAUGHT.direction_for(own) is None
-    assert TAUGHT.overruled(own) == ("diameter", "colour", "highest_doubt")
+    assert replace(TAUGHT, sized=True).overruled(own) == ("diameter", "colour", "highest_doubt")
+    # The reviewed sheets' own diameters were asked for then: they were not learned.
+    assert TAUGHT.overruled(own) == ("colour", "highest_doubt")
     assert TAUGHT.overruled(DetectOptions(polarity="dark")) == ("polarity",)
     green = replace(TAUGHT, direction=None, colour="green")
     assert green.completed(plain).colour == "green"
