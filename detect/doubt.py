@@ -23,6 +23,8 @@ FEATURES = (
     "cut",
     "frame",
     "local",
+    "misfit",
+    "freed",
     "star",
     "around",
     "gathered",
@@ -32,6 +34,8 @@ FEATURES = (
 # A region with more of its boundary than this on the picture's edge is cut off by it; that it is
 # small then counts by half.
 _CUT_OFF, _EXCUSE = 0.05, 0.5
+# What the picture's edge cuts off counts only where so much of the rest of its boundary is open.
+_LEAST_OPEN = 0.4
 
 
 @dataclass(frozen=True, slots=True)
@@ -65,6 +69,10 @@ class DoubtModel:
         Weight of the share of the boundary on the edge of the picture.
     local : float
         Weight of having been cut out against its surroundings.
+    misfit : float
+        Weight of the size's distance times roughness: of both together, which either alone overstates.
+    freed : float
+        Weight of the open share of what was cut out against its surroundings.
     star, around : float
         Weights of how leaves radiate from the centre and how far around it; plants only.
     gathered, several : float
@@ -92,6 +100,8 @@ class DoubtModel:
     cut: float = 0.0
     frame: float = 0.0
     local: float = 0.0
+    misfit: float = 0.0
+    freed: float = 0.0
     star: float = 0.0
     around: float = 0.0
     gathered: float = 0.0
@@ -105,22 +115,25 @@ class DoubtModel:
 
 
 # Fitted by tests/benchmarks/fit_doubt.py: GENERAL on hand-marked photographs of five subjects, the
-# kinds on drawn scenes of their own (seeds 1000-1099), held near GENERAL by a ridge: LESIONS near it as
-# it is, COLONIES and SEEDLINGS near what it was before `cut`, `frame` and `local` were measured.
+# kinds on drawn scenes of their own (seeds 1000-1099), held near GENERAL by a ridge: LESIONS near what
+# it was with `cut`, `frame` and `local`, COLONIES and SEEDLINGS near what it was before `cut`, `frame` and `local` were measured,
+# all three before `misfit` and `freed`.
 GENERAL = DoubtModel(
-    intercept=1.589,
-    size=-1.161,
-    open=1.391,
-    faint=-0.178,
-    slope=0.774,
-    rough=-11.452,
-    texture=-2.096,
+    intercept=1.908,
+    size=-1.624,
+    open=1.175,
+    faint=-0.194,
+    slope=0.831,
+    rough=-13.653,
+    texture=-2.058,
     long=0.000,
     clear=0.000,
-    neck=-0.436,
-    cut=0.998,
-    frame=-0.165,
-    local=-0.104,
+    neck=-0.405,
+    cut=0.967,
+    frame=0.000,
+    local=-0.560,
+    misfit=3.772,
+    freed=0.692,
     star=0.000,
     around=0.000,
 )
@@ -138,6 +151,8 @@ COLONIES = DoubtModel(
     cut=0.000,
     frame=0.000,
     local=0.000,
+    misfit=0.000,
+    freed=0.000,
     star=0.000,
     around=0.000,
 )
@@ -155,6 +170,8 @@ SEEDLINGS = DoubtModel(
     cut=0.000,
     frame=0.000,
     local=0.000,
+    misfit=0.000,
+    freed=0.000,
     star=5.478,
     around=0.322,
     gathered=2.917,
@@ -175,6 +192,8 @@ LESIONS = DoubtModel(
     cut=-0.039,
     frame=-3.687,
     local=-0.104,
+    misfit=0.000,
+    freed=0.000,
     star=0.000,
     around=0.000,
 )
@@ -209,7 +228,7 @@ def features(
 
     Returns
     -------
-    ndarray of shape (n, 12)
+    ndarray of shape (n, 14)
         Columns in the order of `FEATURES`, without those of plants only.
     """
     middle = 0.5 * np.log(smallest_px * largest_px)
@@ -219,13 +238,15 @@ def features(
     size = np.where((size < 0) & (candidates.frame > _CUT_OFF), _EXCUSE * size, size)
     usual = usual_step(candidates) if step is None else step
     relative = np.log(np.maximum(candidates.step, 1e-6) / usual)
+    distance = np.minimum(np.abs(size), 2.5)
+    rough = np.minimum(candidates.rough, 0.5)
     return np.column_stack(
         [
-            np.minimum(np.abs(size), 2.5),
+            distance,
             candidates.open,
             np.clip(relative, -3.0, 0.0) ** 2,
             np.clip(candidates.slope, -1.0, 3.0),
-            np.minimum(candidates.rough, 0.5),
+            rough,
             np.minimum(candidates.texture, 1.5),
             np.minimum(np.log(candidates.elongation), 1.5),
             np.clip(np.log(np.maximum(candidates.step, 1e-3) / noise), -1.0, 5.0),
@@ -233,8 +254,26 @@ def features(
             np.minimum(np.abs(candidates.height - 0.5), 1.0),
             candidates.frame,
             candidates.local,
+            distance * rough,
+            candidates.local * candidates.open,
         ]
     )
+
+
+def shows_itself(candidates: Candidates) -> NDArray[np.bool_]:
+    """Tell which candidates show enough of an outline to be judged by it.
+
+    Parameters
+    ----------
+    candidates : Candidates
+
+    Returns
+    -------
+    ndarray of bool, shape (n,)
+        False where the picture's edge cuts a region off and most of its other boundary borders on
+        more of the same: a strip of ground in a corner looks so.
+    """
+    return np.asarray((candidates.frame <= _CUT_OFF) | (candidates.open >= _LEAST_OPEN))
 
 
 def usual_step(candidates: Candidates) -> float:

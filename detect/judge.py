@@ -12,7 +12,7 @@ from detect.candidates import SURROUNDINGS, cut_levels, find_candidates
 from detect.choice import choose
 from detect.constants import Constants
 from detect.contrast import Colour, Contrast, Mask, Sought, contrast_maps
-from detect.doubt import FEATURES, DoubtModel, doubt_of, features, usual_step
+from detect.doubt import FEATURES, DoubtModel, doubt_of, features, shows_itself, usual_step
 from detect.gathering import Gathered, gather
 from detect.leaves import find_blades
 from detect.plants import (
@@ -42,7 +42,7 @@ LEAST_CONTRAST = 3.5
 # A plant put together from leaves stands out, at its edge, by this many times the noise at least.
 _LEAST_STEP = 0.8
 # What says nothing about leaves that lie apart.
-_OF_ONE_PIECE = [FEATURES.index(name) for name in ("rough", "texture", "long", "cut")]
+_OF_ONE_PIECE = [FEATURES.index(name) for name in ("rough", "texture", "long", "cut", "misfit")]
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -54,7 +54,7 @@ class Judgement:
     contrast : Contrast
         The map as it is, before leaves are fused to plants.
     candidates : Candidates
-    measured : ndarray of shape (n, 12) or (n, 17)
+    measured : ndarray of shape (n, 14) or (n, 19)
         Features of the doubt model; for plants also how the leaves are arranged.
     doubt : ndarray of shape (n,)
     """
@@ -240,7 +240,7 @@ def _judge(
         for looked_at, inside in zip(maps, insides, strict=True)
     ]
     least = _least_contrast(contrasts[0], _colour(options))
-    candidates = [each.where(each.contrast >= least) for each in candidates]
+    candidates = [each.where((each.contrast >= least) & shows_itself(each)) for each in candidates]
     cut = [len(each) for each in candidates]
     gathered: list[Gathered | None] = [None] * len(views)
     if plants:

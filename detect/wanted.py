@@ -19,7 +19,7 @@ _MOST_DOUBT: dict[Kind, float] = {
     "colonies": 0.43,
     "seedlings": 0.6,
     "lesions": 0.43,
-    "spots": 0.45,
+    "spots": 0.51,
 }
 
 
