@@ -70,7 +70,7 @@ class DoubtModel:
     local : float
         Weight of having been cut out against its surroundings.
     misfit : float
-        Weight of the size's distance times roughness: of both together, which either alone overstates.
+        Weight of the size's distance times roughness: together they say less than each alone.
     freed : float
         Weight of the open share of what was cut out against its surroundings.
     star, around : float
@@ -116,8 +116,8 @@ class DoubtModel:
 
 # Fitted by tests/benchmarks/fit_doubt.py: GENERAL on hand-marked photographs of five subjects, the
 # kinds on drawn scenes of their own (seeds 1000-1099), held near GENERAL by a ridge: LESIONS near what
-# it was with `cut`, `frame` and `local`, COLONIES and SEEDLINGS near what it was before `cut`, `frame` and `local` were measured,
-# all three before `misfit` and `freed`.
+# it was with `cut`, `frame` and `local`, COLONIES and SEEDLINGS near what it was before, all three
+# before `misfit` and `freed` were measured.
 GENERAL = DoubtModel(
     intercept=1.908,
     size=-1.624,

@@ -201,7 +201,8 @@ def judge_side(
     Returns
     -------
     Judgement
-        Without the regions whose mean contrast is below `LEAST_CONTRAST` times the noise.
+        Without the regions whose mean contrast is below `LEAST_CONTRAST` times the noise, and those
+        the picture's edge cuts off that show too little of an outline.
     """
     judgements, _ = _judge(
         [view], smallest_px, largest_px, options, model, flipped=flipped, direction=direction

@@ -8,7 +8,16 @@ from dataclasses import fields
 import numpy as np
 import pytest
 
-from detect.doubt import FEATURES, GENERAL, MODELS, DoubtModel, doubt_of, features, usual_step
+from detect.doubt import (
+    FEATURES,
+    GENERAL,
+    MODELS,
+    DoubtModel,
+    doubt_of,
+    features,
+    shows_itself,
+    usual_step,
+)
 from detect.regions import Candidates
 
 
@@ -46,13 +55,13 @@ def test_doubt_is_the_logistic_of_a_weighted_sum() -> None:
 
 
 def test_features_left_out_count_as_nothing() -> None:
-    row = np.full((1, 12), 0.2)
+    row = np.full((1, 14), 0.2)
     padded = np.column_stack([row, np.zeros((1, 2))])
     assert doubt_of(row, GENERAL) == pytest.approx(doubt_of(padded, GENERAL))
 
 
 def test_even_absurd_features_give_a_probability() -> None:
-    doubt = doubt_of(np.array([[1e6] * 12, [-1e6] * 12]), GENERAL)
+    doubt = doubt_of(np.array([[1e6] * 14, [-1e6] * 14]), GENERAL)
     assert ((doubt >= 0) & (doubt <= 1)).all()
 
 
@@ -65,15 +74,15 @@ def test_features_by_hand() -> None:
         syy=np.r_[[25.0] * 5, 25.0],
     )
     got = features(given, noise=2.0, smallest_px=10, largest_px=40)
-    assert got.shape == (6, 12)
+    assert got.shape == (6, 14)
     half = math.log(2) + 0.2
     # Diameter 20 is the middle of 10..40; diameter 40 is one half range away.
-    assert got[0] == pytest.approx([0, 1, 0, 1, 0.03, 0.1, 0, math.log(5), 0, 0, 0, 0])
+    assert got[0] == pytest.approx([0, 1, 0, 1, 0.03, 0.1, 0, math.log(5), *[0] * 6])
     large = [math.log(2) / half, 1, math.log(2) ** 2, 1, 0.03, 0.1, math.log(4), math.log(2.5)]
-    assert got[5] == pytest.approx([*large, 0, 0, 0, 0])
-    assert list(FEATURES[:12]) == [
+    assert got[5] == pytest.approx([*large, 0, 0, 0, 0, 0.03 * large[0], 0])
+    assert list(FEATURES[:14]) == [
         *("size", "open", "faint", "slope", "rough", "texture", "long", "clear", "neck"),
-        *("cut", "frame", "local"),
+        *("cut", "frame", "local", "misfit", "freed"),
     ]
 
 
@@ -84,6 +93,13 @@ def test_what_the_frame_cuts_off_is_excused_for_half_its_smallness() -> None:
     far = math.log(2) / (math.log(2) + 0.2)
     assert got[:, 0] == pytest.approx([far, far / 2, far])
     assert got[:, 9:12] == pytest.approx(np.array([[0, 0, 1], [0.3, 0.3, 0], [0.4, 0.3, 0]]))
+    assert got[:, 12] == pytest.approx(0.03 * got[:, 0])
+    assert got[:, 13] == pytest.approx([1, 0, 0])
+
+
+def test_what_the_frame_cuts_off_must_show_an_outline() -> None:
+    given = table(4, frame=[0.0, 0.3, 0.3, 0.04], open=[0.0, 0.39, 0.41, 0.0])
+    assert shows_itself(given).tolist() == [True, False, True, True]
 
 
 def test_the_usual_step_is_that_of_well_shaped_regions() -> None:
@@ -111,4 +127,4 @@ def test_ragged_joined_and_oddly_sized_regions_are_more_doubtful(
 
 def test_weights_come_in_the_order_of_the_features() -> None:
     weights = {name: float(k) for k, name in enumerate(FEATURES)}
-    assert DoubtModel(intercept=9.0, **weights).weights.tolist() == list(map(float, range(17)))
+    assert DoubtModel(intercept=9.0, **weights).weights.tolist() == list(map(float, range(19)))

@@ -67,7 +67,7 @@ def test_columns_go_together(kind: Kind) -> None:
     judgement = side(view, flipped=False, kind=kind)
     n = len(judgement.candidates)
     assert n > 20
-    assert judgement.measured.shape == (n, 17 if kind == "seedlings" else 12)
+    assert judgement.measured.shape == (n, 19 if kind == "seedlings" else 14)
     assert judgement.doubt.shape == (n,)
     assert ((judgement.doubt >= 0) & (judgement.doubt <= 1)).all()
 
