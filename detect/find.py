@@ -30,6 +30,7 @@ _USUAL_MM: dict[Kind, tuple[float, float]] = {
     "seedlings": (8.0, 60.0),
     "lesions": (0.8, 8.0),
 }
+_DIGITS = 9  # of a diameter in pixels: 2.4 mm at 0.1 mm per pixel are 24 px and no hair less
 # The working map is reduced until the smallest object measures this many pixels; leaves need more.
 _WORKING_PX, _WORKING_PX_PLANTS = 8.0, 16.0
 # A colony, seedling or lesion is no smaller or larger than these multiples of the range asked for:
@@ -221,9 +222,9 @@ def _diameters(
     if scale is not None:
         mm_per_px = float(scale.mm_per_px([area.polygon.centroid.coords[0]])[0])
     if options.diameter is not None:
-        smallest, largest = (length.to_px(mm_per_px) for length in options.diameter)
+        smallest, largest = (round(d.to_px(mm_per_px), _DIGITS) for d in options.diameter)
     elif mm_per_px is not None and options.kind in _USUAL_MM:
-        smallest, largest = (d / mm_per_px for d in _USUAL_MM[options.kind])
+        smallest, largest = (round(d / mm_per_px, _DIGITS) for d in _USUAL_MM[options.kind])
     else:
         smallest, largest = learn_diameters(photograph, area, options, model, direction=direction)
     x0, y0, x1, y1 = area.polygon.bounds

@@ -104,8 +104,8 @@ class PictureCalibration:
 # Fitted by tests/benchmarks/calibrate_doubt.py: "spots" on hand-marked photographs of five subjects,
 # the kinds on drawn scenes of their own (seeds 1000-1099), held near it.
 CALIBRATIONS: dict[Kind, PictureCalibration] = {
-    "spots": PictureCalibration(intercept=0.569, slope=1.422, spread=1.95),
-    "colonies": PictureCalibration(intercept=0.542, slope=1.783, spread=1.905),
-    "seedlings": PictureCalibration(intercept=1.013, slope=1.066, spread=2.112),
-    "lesions": PictureCalibration(intercept=1.056, slope=2.121, spread=2.039),
+    "spots": PictureCalibration(intercept=0.589, slope=1.423, spread=1.842),
+    "colonies": PictureCalibration(intercept=0.529, slope=1.783, spread=1.799),
+    "seedlings": PictureCalibration(intercept=0.321, slope=1.568, spread=1.908),
+    "lesions": PictureCalibration(intercept=1.053, slope=2.119, spread=1.933),
 }
