@@ -63,6 +63,8 @@ from detect.terminal import (
     tiles_on_terminal,
 )
 
+_MOST_NOTES = 6  # on the terminal
+
 
 def detect(
     photographs: Annotated[
@@ -153,6 +155,7 @@ def detect(
     show_table(("photograph", "spots", "doubtful", "scale"), [line.cells() for line in done])
     if done:
         write_lens(request.scale.lens, out)
+        _show_notes(done)
         show_path("Sheets, points and overlays", out)
         folder = quoted(out)
         typer.echo(
@@ -208,6 +211,16 @@ def _show_overruled(request: DetectRequest) -> None:
         typer.echo(f"{spelled(name)} as given is used instead of what was learned.", err=True)
 
 
+def _show_notes(done: list[DetectLine]) -> None:
+    """Say on stderr what is to be known of single photographs; of many, that the sheets say it."""
+    notes = [f"{line.name}: {note}" for line in done for note in line.notes]
+    for note in notes[:_MOST_NOTES]:
+        typer.echo(f"Note: {note}", err=True)
+    if len(notes) > _MOST_NOTES:
+        more = len(notes) - _MOST_NOTES
+        typer.echo(f"Note: {more} more such note{'s' * (more > 1)} in the sheets.", err=True)
+
+
 @dataclass(frozen=True, slots=True)
 class DetectTask:
     """One photograph to be detected, and where its results go."""
@@ -227,13 +240,15 @@ class DetectLine:
     spots: int
     doubtful: int
     scale: str
+    notes: tuple[str, ...] = ()  # on its file, what was taught, and its dish
 
     @classmethod
     def of(cls, state: Sheet) -> DetectLine:
         """Return the line of a sheet with its hand edits applied."""
         counted = state.spots.where(state.spots.counted)
         doubtful = int((counted.doubt > DOUBTFUL).sum())
-        return cls(state.photograph.name, len(counted), doubtful, scale_text(state))
+        notes = (*state.settings.get("notes", ()), *state.settings.get("dish", ()))
+        return cls(state.photograph.name, len(counted), doubtful, scale_text(state), notes)
 
     def cells(self) -> tuple[str, str, str, str]:
         """Return the cells of its line."""

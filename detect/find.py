@@ -36,6 +36,10 @@ _WORKING_PX, _WORKING_PX_PLANTS = 8.0, 16.0
 # A colony, seedling or lesion is no smaller or larger than these multiples of the range asked for:
 # what is larger is a glare, what is smaller a torn leaf or a speck.
 _AT_LEAST, _AT_MOST = 0.6, 1.2
+_ALL_LEFT_OUT = (
+    "What was taught leaves out every candidate in this photograph; look at it, and teach with more"
+    " photographs or detect without --taught"
+)
 
 
 @dataclass(frozen=True, slots=True)
@@ -144,6 +148,35 @@ def find_spots(
 def _taught_doubt(taught: Taught, view: View, judgement: Judgement) -> NDArray[np.float64]:
     """Return the doubt that corrections taught, of the candidates of a view."""
     return taught.doubt(judgement.doubt, own_colours(view.lab, judgement.candidates))
+
+
+def left_out_by_teaching(
+    photograph: Photograph,
+    area: StudyArea,
+    options: DetectOptions,
+    *,
+    scale: Scale | None,
+    taught: Taught,
+) -> tuple[str, ...]:
+    """Say, of a photograph in which a taught detector found nothing, whether it did so for that.
+
+    Parameters
+    ----------
+    photograph : Photograph
+    area : StudyArea
+    options : DetectOptions
+        As a person asked.
+    scale : Scale or None
+    taught : Taught
+
+    Returns
+    -------
+    tuple of str
+        A note where spots of that size are found without what was taught; else empty.
+    """
+    sized = replace(options, diameter=options.diameter or taught.diameter)
+    untaught = find_spots(photograph, area, sized, scale=scale)
+    return (_ALL_LEFT_OUT,) if len(untaught.spots) else ()
 
 
 def look_at(

@@ -162,7 +162,10 @@ def detect_photograph(
     RequestWrong
         If what is asked does not fit it.
     """
-    from detect.find import find_spots  # loads scipy, which help can do without
+    from detect.find import (
+        find_spots,
+        left_out_by_teaching,
+    )  # loads scipy, which help can do without
 
     photograph = read_photograph(path)
     if request.planted is not None:  # copies are planted in memory: what is too large is told now
@@ -181,10 +184,15 @@ def detect_photograph(
         taught=request.taught,
         progress=progress if request.planted is None else None,
     )
+    notes = photograph.notes
+    if request.taught is not None and len(found.spots) == 0:
+        notes += left_out_by_teaching(
+            photograph, area, request.options, scale=scale, taught=request.taught
+        )
     settings = {
         "request": request.as_dict(),
         "detector": found.settings,
-        "notes": list(photograph.notes),
+        "notes": list(notes),
     }
     if dish is not None and dish.notes:
         settings["dish"] = list(dish.notes)

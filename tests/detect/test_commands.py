@@ -10,6 +10,7 @@ from pathlib import Path
 import cv2
 import numpy as np
 import pytest
+from PIL import Image
 from typer.testing import CliRunner, Result
 
 from analyse.cli import app
@@ -73,6 +74,25 @@ def test_without_a_scale_it_works_in_pixels_and_says_so(photo: Path, tmp_path: P
     row = (tmp_path / "out" / "bed_1.points.csv").read_text().splitlines()[1].split(",")
     assert row[3:5] == ["", ""]
     assert row[6:8] == ["", ""]
+
+
+@pytest.mark.parametrize(
+    ("count", "more"), [(2, []), (7, ["Note: 1 more such note in the sheets."])]
+)
+def test_what_is_to_be_known_of_a_file_is_said_once_and_of_many_files_in_the_sheets(
+    count: int, more: list[str], tmp_path: Path
+) -> None:
+    photo = write_discs(tmp_path / "discs.png", PLACES)
+    (tmp_path / "in").mkdir()
+    for k in range(count):
+        Image.open(photo).convert("CMYK").save(tmp_path / "in" / f"bed_{k}.jpg", quality=95)
+    result = detect(tmp_path / "in", out=tmp_path / "out")
+    assert result.exit_code == 0
+    note = "printing colours (CMYK) turned into RGB without a profile"
+    told = [f"Note: bed_{k}.jpg: {note}" for k in range(min(count, 6))]
+    assert result.stderr.splitlines() == told + more
+    sheet = read_sheet(tmp_path / "out" / f"bed_{count - 1}.sheet.json")
+    assert sheet.settings["notes"] == [note]
 
 
 @pytest.mark.parametrize("word", ["many", "0.5"])

@@ -203,7 +203,7 @@ def run(*arguments: object) -> Result:
 
 def test_the_command_says_which_options_win_over_what_was_learned(tmp_path: Path) -> None:
     photo = write_discs(tmp_path / "a.png", scattered(24, seed=4))
-    taught = written(tmp_path, taught_text(replace(TAUGHT, direction=None)))
+    taught = written(tmp_path, taught_text(replace(TAUGHT, direction=None, sized=True)))
     given = ("detect", photo, "--taught", taught, "--out", tmp_path / "out")
     quiet = run(*given)
     assert (quiet.exit_code, quiet.stderr) == (0, "")
@@ -215,6 +215,26 @@ def test_the_command_says_which_options_win_over_what_was_learned(tmp_path: Path
     missing = run("detect", photo, "--taught", tmp_path / "b.toml", "--out", tmp_path / "out")
     assert missing.exit_code == 2
     assert "name a taught.toml that --learn wrote" in " ".join(missing.stderr.split())
+
+
+def test_a_photograph_in_which_what_was_taught_leaves_nothing_is_told(tmp_path: Path) -> None:
+    photo = write_discs(tmp_path / "a.png", scattered(24, seed=4))
+    write_discs(tmp_path / "bare.png", [])
+    wary = replace(TAUGHT, direction=None, model=replace(GENERAL, intercept=-9.0))
+    taught = written(tmp_path, taught_text(wary))
+    out = tmp_path / "out"
+    for options in ((), ("--diameter", DIAMETER)):
+        done = run(
+            "detect", photo, tmp_path / "bare.png", "--taught", taught, *options, "--out", out
+        )
+        assert done.exit_code == 0, done.stderr
+        note = (
+            "What was taught leaves out every candidate in this photograph; look at it, and teach"
+            " with more photographs or detect without --taught"
+        )
+        assert done.stderr == f"Note: a.png: {note}\n"
+        assert read_sheet(out / "a.sheet.json").settings["notes"] == [note]
+        assert read_sheet(out / "bare.sheet.json").settings["notes"] == []
 
 
 def test_a_recipe_names_the_file_beside_it(tmp_path: Path) -> None:
