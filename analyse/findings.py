@@ -151,6 +151,7 @@ def analyse_pattern(
     if pattern.unit == "mm":
         density = density_per_cm2(len(pattern), area, pattern.relative_uncertainty)
     values = {name: getattr(pattern, name) for name in ("outside", "duplicates", "doubtful")}
+    values["dish_notes"] = "; ".join(pattern.dish_notes)
     subject = _Subject(
         pattern.name,
         pattern.unit,

@@ -12,8 +12,7 @@ LARGE_CLIPPED = 0.5  # share of the study area in quadrats that are not whole: o
 
 FLAGS: dict[str, str] = {
     "uncalibrated": "No scale is known: lengths are in pixels, and no density is given.",
-    "dish_unsure": "The dish is cut by the frame, not the only one, or its edge not the only one that fits:"
-    " see the note on the study area.",
+    "dish_unsure": "Of the dish: {dish_notes}.",
     "exact_scale": "The scale was given without its uncertainty: the limits of the density count it as"
     " exact.",
     "unreviewed": "No person has checked these spots: everything here rests on the detector alone.",

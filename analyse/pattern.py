@@ -70,6 +70,8 @@ class Pattern:
         What planted objects showed of the detector, where they were set.
     blind : float
         How near two usual spots may lie to be seen as one, in `unit`; NaN where not measured.
+    dish_notes : tuple of str
+        What makes the dish unsure.
 
     Raises
     ------
@@ -92,6 +94,7 @@ class Pattern:
     outside: int
     planted: Planted | None = None
     blind: float = math.nan
+    dish_notes: tuple[str, ...] = ()
 
     def __post_init__(self) -> None:
         points = np.array(self.points, dtype=np.float64).reshape(-1, 2)
@@ -213,7 +216,8 @@ def pattern_from_sheet(sheet: Sheet, amendments: Sequence[Amendment] = ()) -> Pa
         points, area = sheet.scale.to_mm(points), shapely.transform(area, sheet.scale.to_mm)
     flags = _point_flags(points, outside, spots.doubt)
     flags += _scale_flags(sheet.scale)
-    flags += ("dish_unsure",) if sheet.settings.get("dish") else ()
+    dish_notes = tuple(sheet.settings.get("dish", ()))
+    flags += ("dish_unsure",) if dish_notes else ()
     flags += () if amendments else ("unreviewed",)
     return Pattern(
         sheet.photograph.name,
@@ -229,6 +233,7 @@ def pattern_from_sheet(sheet: Sheet, amendments: Sequence[Amendment] = ()) -> Pa
         outside,
         sheet.planted,
         _blind(sheet),
+        dish_notes,
     )
 
 

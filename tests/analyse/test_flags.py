@@ -17,6 +17,7 @@ VALUES = {
     "doubtful": 4,
     "outside": 3,
     "duplicates": 2,
+    "dish_notes": "several round things are seen",
 }
 
 

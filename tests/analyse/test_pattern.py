@@ -11,6 +11,7 @@ import pytest
 import shapely
 
 from analyse.errors import TableWrong
+from analyse.findings import analyse_pattern
 from analyse.pattern import Circle, Pattern, pattern_from_sheet, read_points
 from detect.area import StudyArea
 from detect.errors import AreaWrong
@@ -88,6 +89,13 @@ def test_notes_on_the_dish_become_a_flag() -> None:
     noted = replace(empty, settings={"dish": ["several round things are seen"]})
     assert pattern_from_sheet(noted).flags == ("dish_unsure", "unreviewed")
     assert pattern_from_sheet(empty).flags == ("unreviewed",)
+
+
+def test_the_flag_of_the_dish_quotes_its_notes_alone() -> None:
+    notes = ["several round things are seen", "9 % of the dish's edge lie beyond the frame"]
+    found = analyse_pattern(pattern_from_sheet(replace(sheet(), settings={"dish": notes})))
+    told = [said for said in found.flag_sentences if "dish" in said]
+    assert told == [f"Of the dish: {notes[0]}; {notes[1]}."]
 
 
 def test_no_spots_are_a_pattern_of_length_0() -> None:
