@@ -7,7 +7,7 @@ near each other; the few that together explain the leaves best are kept.
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Any
 
 import numpy as np
@@ -50,8 +50,9 @@ _SIZED, _FAR, _NEAREST = 0.06, 3.5, 24
 _GRID, _RING_STEP, _REACH = 0.09, 0.16, 1.7
 # More plants than so many in one clump are not tried against others: that would take too long.
 _ROUNDS, _STARTS, _TRIED = 3, (1, 2, 4), 200
-# A clump of more leaves than so many is grain or a closed canopy: no plants are told in it.
-_CANOPY = 1500
+# A clump of more leaves, or of more pairs of near leaves, than so many is ground or a closed canopy:
+# no plants are told in it. Neither in clumps of more leaves that plants could still share.
+_CANOPY, _CANOPY_PAIRS, _SHARED = 300, 2000, 600
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -110,6 +111,30 @@ def gather(blades: Blades, smallest_px: float, largest_px: float) -> Gathered:
        Hough transforms. IEEE Transactions on Pattern Analysis and Machine Intelligence 34(9),
        1773-1784.
     """
+    told = np.flatnonzero(~_in_canopy(blades, smallest_px, largest_px))
+    owner, best = np.full(len(blades), -1), np.zeros(len(blades))
+    owner[told], best[told] = _given(_only(blades, told), smallest_px, largest_px)
+    return _gathered(blades, owner, best)
+
+
+def _only(blades: Blades, rows: _Rows) -> Blades:
+    names = ("x", "y", "area", "long", "short", "cosine", "sine", "hue")
+    return replace(blades, **{name: getattr(blades, name)[rows] for name in names})
+
+
+def _in_canopy(blades: Blades, smallest_px: float, largest_px: float) -> NDArray[np.bool_]:
+    """Leaves of clumps, joined by pairs of near leaves, that are too large to tell plants in."""
+    i, j = _near(blades, smallest_px, largest_px)
+    size = (len(blades), len(blades))
+    clump = connected_components(coo_array((np.ones(i.size), (i, j)), shape=size), directed=False)[
+        1
+    ]
+    leaves, pairs = np.bincount(clump), np.bincount(clump[i], minlength=len(blades))
+    return np.asarray((leaves[clump] > _CANOPY) | (pairs[clump] > _CANOPY_PAIRS))
+
+
+def _given(blades: Blades, smallest_px: float, largest_px: float) -> tuple[_Rows, Column]:
+    """Plant of each leaf (-1: none) and what of it is explained."""
     imagined = _imagined(blades, smallest_px, largest_px)
     plant, leaf, saving = _savings(blades, imagined, smallest_px)
     disc = np.pi / 4 * np.array([smallest_px, largest_px]) ** 2
@@ -121,12 +146,12 @@ def gather(blades: Blades, smallest_px: float, largest_px: float) -> Gathered:
     for rows in _clumps(plant, leaf, len(imagined) + alone.size, len(blades)):
         plants, p = np.unique(plant[rows], return_inverse=True)
         leaves, q = np.unique(leaf[rows], return_inverse=True)
-        if leaves.size > _CANOPY:
+        if leaves.size > _SHARED:
             continue
         own, explained = _fewest(p, q, saving[rows])
         owner[leaves] = np.where(own >= 0, plants[own], -1)
         best[leaves] = explained
-    return _gathered(blades, owner, best)
+    return owner, best
 
 
 def _gathered(blades: Blades, owner: _Rows, best: Column) -> Gathered:
@@ -151,7 +176,7 @@ def _imagined(blades: Blades, smallest_px: float, largest_px: float) -> NDArray[
     """Centre and ring of the plants that any two leaves suggest, as rows x, y, distance."""
     low, high = _BELOW * smallest_px / 2, _ABOVE * largest_px / 2
     least = _SIZED * np.pi / 4 * smallest_px**2
-    i, j = _pairs(blades, 2 * high * _SLIMMEST, least)
+    i, j = _near(blades, smallest_px, largest_px)
     at = np.column_stack([blades.x, blades.y])
     step = at[j] - at[i]
     apart = np.maximum(np.hypot(*step.T), 1e-6)
@@ -193,9 +218,10 @@ def _with_rings(
     return np.column_stack([centre[rings[:, 0]], np.exp(rings[:, 1] * _RING_STEP)])
 
 
-def _pairs(blades: Blades, farthest: float, least: float) -> tuple[_Rows, _Rows]:
+def _near(blades: Blades, smallest_px: float, largest_px: float) -> tuple[_Rows, _Rows]:
     """Pairs of leaves near enough, for their lengths, to be of one plant."""
-    sized = np.flatnonzero(blades.area >= least)
+    farthest = _ABOVE * largest_px * _SLIMMEST
+    sized = np.flatnonzero(blades.area >= _SIZED * np.pi / 4 * smallest_px**2)
     at = np.column_stack([blades.x, blades.y])[sized]
     if len(at) < 2:
         return np.zeros(0, np.intp), np.zeros(0, np.intp)
