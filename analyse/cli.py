@@ -285,7 +285,7 @@ def survey(
             out,
             trial=trial,
             keep_amendments=keep_amendments,
-            workers=workers_for(len(paths), whole(workers, "--workers")),
+            workers=workers_for(whole(workers, "--workers")),
             progress=progress,
         )
     lenses = {

@@ -75,23 +75,23 @@ class Each(Generic[Item, Result]):
             return Failure(self.name(item), sentence)
 
 
-def workers_for(n_photographs: int, wanted: int | None = None) -> int:
-    """Return the processes wanted, or what suits this computer: its cores, 8 at most, none idle."""
+def workers_for(wanted: int | None = None) -> int:
+    """Return the cores wanted, or what this computer lends us: all its cores, 8 at most."""
     if wanted is not None:
         return wanted
     allowed = getattr(os, "sched_getaffinity", None)
     cores = len(allowed(0)) if allowed else (os.cpu_count() or 1)
-    return max(1, min(cores, n_photographs, _MOST_WORKERS))
+    return min(cores, _MOST_WORKERS)
 
 
 def do_each(
     each: Each[Item, Result],
     items: Sequence[Item],
     *,
-    workers: int = 1,
+    workers: int | None = None,
     progress: Progress | None = None,
 ) -> list[Result | Failure]:
-    """Do each photograph, on several cores if asked.
+    """Do each photograph, on as many cores as asked and no more.
 
     Parameters
     ----------
@@ -99,9 +99,11 @@ def do_each(
         What to do with one.
     items : sequence
         What describes each photograph; sent to other processes.
-    workers : int
-        Number of processes, at least 1; with more than one, the program that calls must be
-        importable (its own start behind ``if __name__ == "__main__"``).
+    workers : int or None
+        Cores to use, at least 1: one photograph on each, and what is left over when there are
+        fewer photographs goes to OpenCV's threads. With more than one, the program that calls
+        must be importable (its own start behind ``if __name__ == "__main__"``). None does them
+        here, with OpenCV as it is.
     progress : callable, optional
         Called with (done, total) whenever one is done.
 
@@ -115,10 +117,26 @@ def do_each(
     RequestWrong
         If `workers` is less than 1, or the system ended a process (mostly for want of memory).
     """
+    if workers is None:
+        return _here(each, items, progress)
     if workers < 1:
         raise RequestWrong(f"--workers must be 1 or more, not {workers}.")
-    if workers > 1 and len(items) > 1:
-        return _on_many(each, items, min(workers, len(items)), progress)
+    processes = max(1, min(workers, len(items)))
+    threads = workers // processes
+    if processes > 1:
+        return _on_many(each, items, processes, threads, progress)
+    before = cv2.getNumThreads()
+    cv2.setNumThreads(threads)
+    try:
+        return _here(each, items, progress)
+    finally:
+        cv2.setNumThreads(before)
+
+
+def _here(
+    each: Each[Item, Result], items: Sequence[Item], progress: Progress | None
+) -> list[Result | Failure]:
+    """Do each item in this process."""
     results: list[Result | Failure] = []
     for item in items:
         results.append(each(item))
@@ -127,11 +145,15 @@ def do_each(
 
 
 def _on_many(
-    each: Each[Item, Result], items: Sequence[Item], workers: int, progress: Progress | None
+    each: Each[Item, Result],
+    items: Sequence[Item],
+    processes: int,
+    threads: int,
+    progress: Progress | None,
 ) -> list[Result | Failure]:
     """Do each item on several processes, which start afresh so that no state leaks into them."""
     pool = ProcessPoolExecutor(
-        workers, mp_context=get_context("spawn"), initializer=_begin, initargs=(workers,)
+        processes, mp_context=get_context("spawn"), initializer=_begin, initargs=(threads,)
     )
     try:
         futures: list[Future[Result | Failure]] = [pool.submit(each, item) for item in items]
@@ -146,10 +168,10 @@ def _on_many(
         pool.shutdown(wait=True, cancel_futures=True)
 
 
-def _begin(workers: int) -> None:
-    """Make a fresh process share the cores, and leave an interruption to its parent."""
+def _begin(threads: int) -> None:
+    """Make a fresh process keep to its cores, and leave an interruption to its parent."""
     signal.signal(signal.SIGINT, signal.SIG_IGN)
-    cv2.setNumThreads(max(1, workers_for(_MOST_WORKERS) // workers))
+    cv2.setNumThreads(threads)
 
 
 def _tell(progress: Progress | None, done: int, total: int) -> None:

@@ -203,7 +203,9 @@ OutOption = Annotated[
 ]
 WorkersOption = Annotated[
     str | None,
-    _option("--workers", OUTPUT, "Photographs done at a time.", "N", "one per core, 8 at most"),
+    _option(
+        "--workers", OUTPUT, "Processor cores to use, a photograph on each.", "N", "all, 8 at most"
+    ),
 ]
 KeepOption = Annotated[
     bool,

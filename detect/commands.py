@@ -148,8 +148,8 @@ def detect(
     ):
         if len(tasks) == 1:
             tasks, bar = [replace(tasks[0], progress=bar if rounds else tiles)], None
-        processes = workers_for(len(tasks), whole(workers, "--workers"))
-        results = do_each(DETECT, tasks, workers=processes, progress=bar)
+        cores = workers_for(whole(workers, "--workers"))
+        results = do_each(DETECT, tasks, workers=cores, progress=bar)
     done = [result for result in results if not isinstance(result, Failure)]
     failures = [result for result in results if isinstance(result, Failure)]
     show_table(("photograph", "spots", "doubtful", "scale"), [line.cells() for line in done])

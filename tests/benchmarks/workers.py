@@ -4,7 +4,7 @@
 
 The folder holds N copies of the sample's crowded dish enlarged to 6 megapixels, each with noise of
 its own. What is timed is `strewn detect FOLDER` as a person runs it, in a process of its own, start
-and end included; runs with one and two workers take turns, so that a busy machine harms both. Below
+and end included; a worker is one core (OpenCV's threads keep to it), as `--workers` says; runs with one and two workers take turns, so that a busy machine harms both. Below
 it stands what the machine itself allows: the same ratio for two processes that only decode.
 """
 

@@ -5,6 +5,7 @@ from __future__ import annotations
 import os
 from pathlib import Path
 
+import cv2
 import pytest
 
 from detect.batch import Each, Failure, do_each, workers_for
@@ -75,11 +76,25 @@ def test_no_workers_are_refused(workers: int) -> None:
         do_each(EACH, [1], workers=workers)
 
 
-def test_workers_for_suit_computer_and_task() -> None:
-    assert workers_for(1) == 1
-    assert workers_for(0) == 1
-    assert 1 <= workers_for(1000) <= 8
-    assert workers_for(1, 12) == 12
+def test_workers_are_the_cores_of_the_computer_unless_named() -> None:
+    assert 1 <= workers_for() <= 8
+    assert workers_for(12) == 12
+
+
+def _threads(item: int) -> int:
+    return cv2.getNumThreads()
+
+
+THREADS = Each(_threads, str)
+
+
+@pytest.mark.parametrize(
+    ("items", "workers", "threads"), [(1, 1, 1), (3, 1, 1), (1, 4, 4), (2, 2, 1), (2, 4, 2)]
+)
+def test_no_more_cores_are_used_than_asked_for(items: int, workers: int, threads: int) -> None:
+    before = cv2.getNumThreads()
+    assert do_each(THREADS, range(items), workers=workers) == [threads] * items
+    assert cv2.getNumThreads() == before
 
 
 def test_the_name_before_a_reason_is_not_repeated() -> None:
