@@ -45,3 +45,29 @@ class DrawnFrequencies:
     classes: tuple[str, ...]
     observed: NDArray[np.float64]
     expected: NDArray[np.float64]
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class DrawnCurve:
+    """What a curve with its global band shows, in the coordinates of its axes.
+
+    Parameters
+    ----------
+    x, observed, central, low, high : ndarray of shape (k,)
+        The curve of the photograph, the mean of the simulations, and the band.
+    outside : ndarray of shape (m,)
+        Those x at which the curve is drawn strong, because it leaves the band.
+    mark : (float, float)
+        The greatest departure.
+    label : str
+        Where that is; empty if it lies within the band.
+    """
+
+    x: NDArray[np.float64]
+    observed: NDArray[np.float64]
+    central: NDArray[np.float64]
+    low: NDArray[np.float64]
+    high: NDArray[np.float64]
+    outside: NDArray[np.float64]
+    mark: tuple[float, float]
+    label: str

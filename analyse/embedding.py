@@ -34,13 +34,13 @@ def svg_bytes(figure: Figure) -> bytes:
     Returns
     -------
     bytes
-        Without date, program name and document type; coordinates to a hundredth of a point; text
-        stays text and is set in the reader's own system font.
+        Without date, program name, document type and names that nothing refers to; coordinates to
+        a hundredth of a point; text stays text and is set in the reader's own system font.
     """
     text = re.sub(r"<!DOCTYPE.*?>\n?|<!--.*?-->\n?", "", svg_text(figure), flags=re.DOTALL)
     text = re.sub(r'(?<= d=")[^"]*', lambda path: _rounded(path[0]), text)
     text = re.sub(r"'DejaVu Sans'(?:, [^;\"]*)?(?=[;\"])", _FONTS, text)
-    return text.encode("utf-8")
+    return _tightened(text).encode("utf-8")
 
 
 def photograph_jpeg(photograph: Photograph, *, longest_side: int = LONGEST_SIDE) -> bytes:
@@ -81,3 +81,15 @@ def _rounded(path: str) -> str:
     return re.sub(
         r"-?\d+\.\d+", lambda number: f"{float(number[0]):.2f}".rstrip("0").rstrip("."), path
     )
+
+
+def _tightened(text: str) -> str:
+    """Return the same drawing in fewer bytes: one rule for the font, no idle names, turns or spaces."""
+    text = text.replace(f"font-family: {_FONTS}; ", "").replace(f"; font-family: {_FONTS}", "")
+    text = text.replace("</style>", f" text{{font-family: {_FONTS}}}</style>", 1)
+    named = set(re.findall(r"#([\w.-]+)", text))
+    text = re.sub(r' id="([^"]*)"', lambda name: name[0] if name[1] in named else "", text)
+    text = re.sub(r' transform="rotate\(-?0 [^"]*\)"', "", text)
+    text = re.sub(r' (?:x|y)="[^"]*', lambda place: _rounded(place[0]), text)
+    text = re.sub(r'(?<= d=")[^"]*', lambda path: re.sub(r"\s*([A-Za-z])\s*", r"\1", path[0]), text)
+    return re.sub(r">\s+<", "><", text)

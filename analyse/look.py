@@ -11,7 +11,9 @@ from typing import Any
 
 INK, SOFT, RULE, HALO = "#1b2429", "#55616a", "#c9d1d5", "#10181c"
 COUNTED, DOUBTFUL_COLOUR, PLACED, STRUCK = "#00dec8", "#ffb428", "#ce92ff", "#dedede"
-OBSERVED, EXPECTED = "#8fbcbb", "#8a3b0a"
+OBSERVED, EXPECTED, SPREAD = "#8fbcbb", "#8a3b0a", "#1d4f87"
+BAND, BAND_EDGE = "#dfe7e9", "#9fb0b8"  # what chance alone gives
+CLUMPED, EVEN = "#8a3b0a", "#1d4f87"  # a curve beyond its band, also drawn broad
 RESIDUAL_LIMIT = 4.0  # the colours of the map end here, on every photograph alike
 NOTABLE = 2.0  # quadrats whose residual is beyond this are outlined
 MOST_SINGLE_COUNTS = 41  # beyond counts of 0 to 40 the picture of frequencies pools
