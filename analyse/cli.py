@@ -165,6 +165,14 @@ def analyse(
             rich_help_panel=TABLES,
         ),
     ] = None,
+    transect: Annotated[
+        bool,
+        typer.Option(
+            "--transect",
+            help="The rows of a column count are contiguous quadrats, in their order along a line.",
+            rich_help_panel=TABLES,
+        ),
+    ] = False,
     quadrat: QuadratOption = None,
     grid: GridOption = None,
     rings: RingsOption = None,
@@ -177,7 +185,7 @@ def analyse(
 
     laid = grid_from({"quadrat": quadrat, "grid": grid, "rings": rings}, named=spelled)
     trial = _with_chance(Trial(), seed, simulations)
-    tasks = gather_inputs(Given(inputs or [], counts or [], area, unit, laid, trial))
+    tasks = gather_inputs(Given(inputs or [], counts or [], area, unit, laid, trial, transect))
     make_folder(out)
     with progress_on_terminal("Analysing", len(tasks)) as progress:
         results = do_each(ANALYSE, tasks, progress=progress)

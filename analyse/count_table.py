@@ -11,6 +11,7 @@ from numpy.typing import NDArray
 
 from analyse.errors import TableWrong
 from analyse.rows import Row, read_rows, whole_in
+from detect.errors import OptionWrong
 from detect.lengths import Length
 
 
@@ -53,7 +54,7 @@ class CountTable:
         object.__setattr__(self, "counts", counts)
 
 
-def read_counts(path: Path, *, side: Length | None = None) -> CountTable:
+def read_counts(path: Path, *, side: Length | None = None, transect: bool = False) -> CountTable:
     """Read a table of counts: a column `count`, or a bare rectangle of whole numbers.
 
     Parameters
@@ -62,6 +63,9 @@ def read_counts(path: Path, *, side: Length | None = None) -> CountTable:
         A CSV file. With a header, one row per quadrat; without, contiguous quadrats.
     side : Length or None
         Side of a quadrat, where it is known.
+    transect : bool
+        Whether the rows of a column `count` are contiguous quadrats in their order along a line,
+        which makes them a rectangle of one row.
 
     Returns
     -------
@@ -69,6 +73,8 @@ def read_counts(path: Path, *, side: Length | None = None) -> CountTable:
 
     Raises
     ------
+    OptionWrong
+        If a rectangle of several rows and columns is called a transect.
     TableWrong
         If a count is no whole number of 0 or more, rows differ in length, or there are fewer
         than 2 quadrats.
@@ -78,9 +84,14 @@ def read_counts(path: Path, *, side: Length | None = None) -> CountTable:
     if "count" in names:
         column = names.index("count")
         counts = [whole_in(row, column, "count") for row in rows[1:]]
-        shape = None
+        shape = (1, len(counts)) if transect else None
     else:
         counts, shape = _rectangle_of_counts(path, rows)
+        if transect and 1 not in shape:
+            raise OptionWrong(
+                f"--transect cannot apply to {path.name}, a grid of {shape[0]} x {shape[1]}"
+                " contiguous quadrats; leave it out."
+            )
     if len(counts) < 2:
         raise TableWrong(
             f"{path.name} holds {len(counts)} quadrat{'s' * (len(counts) != 1)};"

@@ -13,6 +13,8 @@ from numpy.typing import ArrayLike, NDArray
 from shapely.geometry.base import BaseGeometry
 
 from analyse.chance import SEED, SIMULATIONS, check_seed
+from analyse.contiguous import FEWEST_QUADRATS as FEWEST_IN_ORDER
+from analyse.contiguous import Blocks, block_variances
 from analyse.density import Limits, density_per_cm2
 from analyse.dispersion import (
     Dispersion,
@@ -296,7 +298,18 @@ def _judged(subject: _Subject, seed: int, simulations: int) -> Findings:
         flag_values=values,
         seed=seed,
         settings=subject.settings | {"simulations": simulations, "level": LEVEL},
+        blocks=_blocks(subject, seed, simulations),
     )
+
+
+def _blocks(subject: _Subject, seed: int, simulations: int) -> Blocks | None:
+    """Return the block variances of a table of contiguous quadrats."""
+    rows, columns = subject.settings["rows"], subject.settings["columns"]
+    counted = subject.counts.counts
+    if subject.pattern is not None or rows is None or counted.size < FEWEST_IN_ORDER:
+        return None
+    rng = stream(seed, f"{subject.name}, blocks")
+    return block_variances(counted.reshape(rows, columns), rng=rng, simulations=simulations)
 
 
 def _seen(

@@ -41,6 +41,8 @@ class Input:
         Unit of a table of points.
     counts : bool
         Whether it is a table of counts.
+    transect : bool
+        Whether its counts stand in the order of a line of quadrats.
     """
 
     path: Path
@@ -49,6 +51,7 @@ class Input:
     area: BaseGeometry | None = None
     unit: TableUnit = "mm"
     counts: bool = False
+    transect: bool = False
 
 
 @dataclass(frozen=True, slots=True)
@@ -69,6 +72,8 @@ class Given:
         How to lay the quadrats.
     trial : Trial
         Seed and number of simulations.
+    transect : bool
+        Whether the tables of counts are transects.
     """
 
     paths: Sequence[Path]
@@ -77,6 +82,7 @@ class Given:
     unit: str | None = None
     grid: GridOptions = field(default_factory=GridOptions)
     trial: Trial = field(default_factory=Trial)
+    transect: bool = False
 
 
 def gather_inputs(given: Given) -> list[Input]:
@@ -111,7 +117,7 @@ def gather_inputs(given: Given) -> list[Input]:
     chosen = (given.grid, given.trial)
     inputs = [Input(path, *chosen) for path in gather_sheets(others)]
     inputs += [Input(path, *chosen, area, unit) for path in tables]
-    inputs += [Input(path, *chosen, counts=True) for path in given.counts]
+    inputs += [Input(path, *chosen, counts=True, transect=given.transect) for path in given.counts]
     _check_names(inputs)
     return inputs
 
@@ -119,7 +125,7 @@ def gather_inputs(given: Given) -> list[Input]:
 def analyse_input(each: Input) -> Analysed:
     """Read and analyse one file."""
     if each.counts:
-        table = read_counts(each.path, side=each.grid.side)
+        table = read_counts(each.path, side=each.grid.side, transect=each.transect)
         return analyse_table(table, grid=each.grid, trial=each.trial)
     if each.area is not None:
         points = read_points(each.path, area=each.area, unit=each.unit)
@@ -157,6 +163,8 @@ def _check_options(given: Given, tables: Sequence[Path], others: Sequence[Path])
                 f"{name} {value} is for tables of points; a sheet has its own, and counts have"
                 " none. Leave it out."
             )
+    if given.transect and not given.counts:
+        raise OptionWrong("--transect is for tables of counts; give them with --counts.")
     for name, way in (("--grid", given.grid.shape), ("--rings", given.grid.rings)):
         if way is not None and given.counts:
             raise OptionWrong(

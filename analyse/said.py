@@ -9,6 +9,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from analyse.columns import hold_columns
+from analyse.contiguous import Blocks
 from analyse.density import Limits
 from analyse.dispersion import Dispersion
 from analyse.flags import flag_sentences
@@ -65,6 +66,8 @@ class Findings:
         Seed of the simulations.
     settings : dict
         How the quadrats were laid and the test was done; plain values.
+    blocks : Blocks or None
+        Block variances of a table of contiguous quadrats: a grid, or a transect.
     """
 
     name: str
@@ -87,6 +90,7 @@ class Findings:
     flag_values: dict[str, Any]
     seed: int
     settings: dict[str, Any]
+    blocks: Blocks | None = None
 
     def __post_init__(self) -> None:
         hold_columns(self, ("expected", "residuals"), length=len(self.counts))

@@ -7,6 +7,7 @@ from collections.abc import Iterator, Mapping, Sequence
 
 from scipy import special
 
+from analyse.block_rows import block_rows
 from analyse.dispersion import (
     Dispersion,
     normal_deviate,
@@ -310,6 +311,7 @@ _PARTS = (
     _simulated_rows,
     _poisson_rows,
     _planted_rows,
+    block_rows,
 )
 
 
