@@ -55,6 +55,12 @@ class Dispersion:
     p_even: float
     p_two_sided: float
 
+    def __repr__(self) -> str:
+        return (
+            f"<Dispersion: VMR {self.vmr:.4g} of {self.n} points in {self.q} quadrats, chi-square"
+            f" p = {self.p_two_sided:.3g} two-sided>"
+        )
+
 
 def dispersion(counts: ArrayLike) -> Dispersion:
     """Return the variance-to-mean ratio of counts in equal quadrats, and its chi-square test.

@@ -2,50 +2,21 @@
 
 from __future__ import annotations
 
-import math
-import zlib
 from collections.abc import Sequence
-from dataclasses import dataclass
 from typing import Any
 
 import numpy as np
-from numpy.typing import ArrayLike, NDArray
+from numpy.typing import ArrayLike
 from shapely.geometry.base import BaseGeometry
 
-from analyse.chance import SEED, SIMULATIONS, check_seed
-from analyse.contiguous import FEWEST_QUADRATS as FEWEST_IN_ORDER
-from analyse.contiguous import Blocks, block_variances
-from analyse.density import Limits, density_per_cm2
-from analyse.dispersion import (
-    Dispersion,
-    clipped_dispersion,
-    dispersion,
-    expected_counts,
-    residuals,
-)
+from analyse.chance import SEED, SIMULATIONS
+from analyse.density import density_per_cm2
 from analyse.errors import GridWrong
-from analyse.flags import count_flags
-from analyse.models import LARGEST_COUNT, PoissonFit, poisson_frequencies
-from analyse.nulls import least_chi2, simulated_p
-from analyse.pattern import CountTable, Pattern, Unit
+from analyse.judging import Subject, judged
+from analyse.judging import stream as stream
+from analyse.pattern import CountTable, Pattern
 from analyse.quadrats import GridOptions, QuadratCounts, count_in_quadrats, lay_grid
 from analyse.said import Findings as Findings
-from analyse.verdict import LEVEL, Verdict, decide, detectable, sentence
-
-
-@dataclass(frozen=True, slots=True, eq=False)
-class _Subject:
-    """What is known of a photograph or table before any test."""
-
-    name: str
-    unit: Unit | None
-    area: float | None
-    pattern: Pattern | None
-    counts: QuadratCounts
-    density: Limits | None
-    flags: tuple[str, ...]
-    flag_values: dict[str, Any]
-    settings: dict[str, Any]
 
 
 def analyse_points(
@@ -154,7 +125,7 @@ def analyse_pattern(
         density = density_per_cm2(len(pattern), area, pattern.relative_uncertainty)
     values = {name: getattr(pattern, name) for name in ("outside", "duplicates", "doubtful")}
     values["dish_notes"] = "; ".join(pattern.dish_notes)
-    subject = _Subject(
+    subject = Subject(
         pattern.name,
         pattern.unit,
         area,
@@ -165,7 +136,7 @@ def analyse_pattern(
         values,
         settings,
     )
-    return _judged(subject, seed, simulations)
+    return judged(subject, seed, simulations)
 
 
 def analyse_counts(
@@ -213,7 +184,7 @@ def analyse_counts(
         "columns": table.columns,
         "joined": 0,
     }
-    subject = _Subject(
+    subject = Subject(
         table.name,
         None if side is None else "mm",
         area,
@@ -224,30 +195,7 @@ def analyse_counts(
         {},
         settings,
     )
-    return _judged(subject, seed, simulations)
-
-
-def stream(seed: int, name: str) -> np.random.Generator:
-    """Return the source of randomness of one photograph, which no other one disturbs.
-
-    Parameters
-    ----------
-    seed : int
-        0 or more.
-    name : str
-        File name of the photograph or table.
-
-    Returns
-    -------
-    numpy.random.Generator
-
-    Raises
-    ------
-    OptionWrong
-        If the seed is negative.
-    """
-    check_seed(seed)
-    return np.random.default_rng([seed, zlib.crc32(name.encode("utf-8"))])
+    return judged(subject, seed, simulations)
 
 
 def _counted_side(table: CountTable) -> float | None:
@@ -257,74 +205,3 @@ def _counted_side(table: CountTable) -> float | None:
             f"--quadrat {table.side} is in pixels; give the side of a counted quadrat in mm."
         )
     return None if table.side is None else table.side.to_mm()
-
-
-def _judged(subject: _Subject, seed: int, simulations: int) -> Findings:
-    """Test counts and put the findings together."""
-    x, areas, is_whole = subject.counts.counts, subject.counts.area, subject.counts.whole
-    expected = expected_counts(x, areas)
-    everything = dispersion(x) if areas is None else clipped_dispersion(x, areas)
-    whole = dispersion(x[is_whole]) if is_whole.sum() >= 2 else None
-    weights = np.ones(x.size) if areas is None else areas
-    rng = stream(seed, subject.name)
-    simulated = simulated_p(x, weights, simulations=simulations, rng=rng)
-    verdict = decide(everything.n, everything.q, simulated)
-    values = subject.flag_values | {
-        "n": everything.n,
-        "q": everything.q,
-        "whole": int(is_whole.sum()),
-        "mean_expected": everything.mean,
-        "clipped_percent": 100 * subject.counts.clipped_share,
-    }
-    seen = _seen(verdict, everything, weights)
-    return Findings(
-        name=subject.name,
-        n=everything.n,
-        unit=subject.unit,
-        area=subject.area,
-        pattern=subject.pattern,
-        counts=subject.counts,
-        expected=expected,
-        residuals=residuals(x, expected),
-        dispersion_whole=whole,
-        dispersion_all=everything,
-        simulated=simulated,
-        density=subject.density,
-        poisson=_frequencies(x[is_whole]),
-        verdict=verdict,
-        sentence=sentence(verdict, everything, whole, simulated, seen),
-        detectable=seen,
-        flags=subject.flags + count_flags(values),
-        flag_values=values,
-        seed=seed,
-        settings=subject.settings | {"simulations": simulations, "level": LEVEL},
-        blocks=_blocks(subject, seed, simulations),
-    )
-
-
-def _blocks(subject: _Subject, seed: int, simulations: int) -> Blocks | None:
-    """Return the block variances of a table of contiguous quadrats."""
-    rows, columns = subject.settings["rows"], subject.settings["columns"]
-    counted = subject.counts.counts
-    if subject.pattern is not None or rows is None or counted.size < FEWEST_IN_ORDER:
-        return None
-    rng = stream(seed, f"{subject.name}, blocks")
-    return block_variances(counted.reshape(rows, columns), rng=rng, simulations=simulations)
-
-
-def _seen(
-    verdict: Verdict, everything: Dispersion, areas: NDArray[np.float64]
-) -> tuple[float, float]:
-    """Return the VMR that would have been seen; NaN for what n points cannot show."""
-    if verdict == "too few to tell":
-        return math.nan, math.nan
-    low, high = detectable(everything.df)
-    possible = low * everything.df >= least_chi2(everything.n, areas)
-    return low if possible else math.nan, high
-
-
-def _frequencies(counts: NDArray[np.int64]) -> PoissonFit | None:
-    """Return the frequencies of counts in whole quadrats, where they can be given."""
-    if counts.size < 2 or counts.max() > LARGEST_COUNT:
-        return None
-    return poisson_frequencies(counts)

@@ -57,6 +57,10 @@ class PoissonFit:
             raise ValueError("classes, observed and expected differ in length")
         hold_columns(self, ("frequencies", "poisson", "observed", "expected"))
 
+    def __repr__(self) -> str:
+        fit = f"chi-square {self.chi2:.4g} on {self.df} df, p = {self.p:.3g}"
+        return f"<PoissonFit: mean {self.mean:.4g}, {len(self.classes)} classes, {fit}>"
+
     @property
     def labels(self) -> tuple[str, ...]:
         """Return the classes in words: "0", "1-2", "3 or more"."""

@@ -119,6 +119,12 @@ class Pattern:
     def __len__(self) -> int:
         return len(self.points)
 
+    def __repr__(self) -> str:
+        return (
+            f"<Pattern {self.name}: {len(self)} points in a {self.area_kind} of"
+            f" {self.area.area:.4g} {self.unit}2>"
+        )
+
     @classmethod
     def of(
         cls,

@@ -84,6 +84,11 @@ class Grid:
     def __len__(self) -> int:
         return len(self.polygons)
 
+    def __repr__(self) -> str:
+        made = f"{self.rows} x {self.columns} {self.shape}"
+        side = "" if self.side is None else f" of {self.side:g} {self.unit}"
+        return f"<Grid {made}{side}: {len(self)} quadrats, {int(self.whole.sum())} whole>"
+
 
 @dataclass(frozen=True, slots=True, eq=False)
 class QuadratCounts:
@@ -117,6 +122,12 @@ class QuadratCounts:
 
     def __len__(self) -> int:
         return len(self.counts)
+
+    def __repr__(self) -> str:
+        return (
+            f"<QuadratCounts: {int(self.counts.sum())} points in {len(self)} quadrats,"
+            f" {int(self.whole.sum())} whole>"
+        )
 
     @property
     def clipped_share(self) -> float:

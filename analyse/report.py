@@ -71,6 +71,9 @@ class RenderedPage:
     words: dict[str, Any]
     figures: dict[str, bytes]
 
+    def __repr__(self) -> str:
+        return f"<RenderedPage {self.name}: figures {', '.join(self.figures)}>"
+
 
 def page_figures(page: ReportPage) -> dict[str, bytes]:
     """Draw the figures of a page.

@@ -95,6 +95,9 @@ class Findings:
     def __post_init__(self) -> None:
         hold_columns(self, ("expected", "residuals"), length=len(self.counts))
 
+    def __repr__(self) -> str:
+        return f"<Findings {self.name}: {self.verdict}, {self.n} in {len(self.counts)} quadrats>"
+
     @property
     def flag_sentences(self) -> tuple[str, ...]:
         """The flags as sentences."""

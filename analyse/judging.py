@@ -1,0 +1,158 @@
+"""The counts of one photograph or table judged: every test done, and the findings put together."""
+
+from __future__ import annotations
+
+import math
+import zlib
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+from analyse.chance import check_seed
+from analyse.contiguous import FEWEST_QUADRATS as FEWEST_IN_ORDER
+from analyse.contiguous import Blocks, block_variances
+from analyse.density import Limits
+from analyse.dispersion import (
+    Dispersion,
+    clipped_dispersion,
+    dispersion,
+    expected_counts,
+    residuals,
+)
+from analyse.flags import count_flags
+from analyse.models import LARGEST_COUNT, PoissonFit, poisson_frequencies
+from analyse.nulls import least_chi2, simulated_p
+from analyse.pattern import Pattern, Unit
+from analyse.quadrats import QuadratCounts
+from analyse.said import Findings
+from analyse.verdict import LEVEL, Verdict, decide, detectable, sentence
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Subject:
+    """What is known of a photograph or table before any test."""
+
+    name: str
+    unit: Unit | None
+    area: float | None
+    pattern: Pattern | None
+    counts: QuadratCounts
+    density: Limits | None
+    flags: tuple[str, ...]
+    flag_values: dict[str, Any]
+    settings: dict[str, Any]
+
+
+def judged(subject: Subject, seed: int, simulations: int) -> Findings:
+    """Test counts and put the findings together.
+
+    Parameters
+    ----------
+    subject : Subject
+        What is known before any test.
+    seed : int
+        Seed of the simulations, 0 or more.
+    simulations : int
+        How many.
+
+    Returns
+    -------
+    Findings
+
+    Raises
+    ------
+    OptionWrong
+        If the seed or the number of simulations is out of range.
+    """
+    x, areas, is_whole = subject.counts.counts, subject.counts.area, subject.counts.whole
+    expected = expected_counts(x, areas)
+    everything = dispersion(x) if areas is None else clipped_dispersion(x, areas)
+    whole = dispersion(x[is_whole]) if is_whole.sum() >= 2 else None
+    weights = np.ones(x.size) if areas is None else areas
+    rng = stream(seed, subject.name)
+    simulated = simulated_p(x, weights, simulations=simulations, rng=rng)
+    verdict = decide(everything.n, everything.q, simulated)
+    values = subject.flag_values | {
+        "n": everything.n,
+        "q": everything.q,
+        "whole": int(is_whole.sum()),
+        "mean_expected": everything.mean,
+        "clipped_percent": 100 * subject.counts.clipped_share,
+    }
+    seen = _seen(verdict, everything, weights)
+    return Findings(
+        name=subject.name,
+        n=everything.n,
+        unit=subject.unit,
+        area=subject.area,
+        pattern=subject.pattern,
+        counts=subject.counts,
+        expected=expected,
+        residuals=residuals(x, expected),
+        dispersion_whole=whole,
+        dispersion_all=everything,
+        simulated=simulated,
+        density=subject.density,
+        poisson=_frequencies(x[is_whole]),
+        verdict=verdict,
+        sentence=sentence(verdict, everything, whole, simulated, seen),
+        detectable=seen,
+        flags=subject.flags + count_flags(values),
+        flag_values=values,
+        seed=seed,
+        settings=subject.settings | {"simulations": simulations, "level": LEVEL},
+        blocks=_blocks(subject, seed, simulations),
+    )
+
+
+def stream(seed: int, name: str) -> np.random.Generator:
+    """Return the source of randomness of one photograph, which no other one disturbs.
+
+    Parameters
+    ----------
+    seed : int
+        0 or more.
+    name : str
+        File name of the photograph or table.
+
+    Returns
+    -------
+    numpy.random.Generator
+
+    Raises
+    ------
+    OptionWrong
+        If the seed is negative.
+    """
+    check_seed(seed)
+    return np.random.default_rng([seed, zlib.crc32(name.encode("utf-8"))])
+
+
+def _blocks(subject: Subject, seed: int, simulations: int) -> Blocks | None:
+    """Return the block variances of a table of contiguous quadrats."""
+    rows, columns = subject.settings["rows"], subject.settings["columns"]
+    counted = subject.counts.counts
+    if subject.pattern is not None or rows is None or counted.size < FEWEST_IN_ORDER:
+        return None
+    rng = stream(seed, f"{subject.name}, blocks")
+    return block_variances(counted.reshape(rows, columns), rng=rng, simulations=simulations)
+
+
+def _seen(
+    verdict: Verdict, everything: Dispersion, areas: NDArray[np.float64]
+) -> tuple[float, float]:
+    """Return the VMR that would have been seen; NaN for what n points cannot show."""
+    if verdict == "too few to tell":
+        return math.nan, math.nan
+    low, high = detectable(everything.df)
+    possible = low * everything.df >= least_chi2(everything.n, areas)
+    return low if possible else math.nan, high
+
+
+def _frequencies(counts: NDArray[np.int64]) -> PoissonFit | None:
+    """Return the frequencies of counts in whole quadrats, where they can be given."""
+    if counts.size < 2 or counts.max() > LARGEST_COUNT:
+        return None
+    return poisson_frequencies(counts)
