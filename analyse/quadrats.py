@@ -21,6 +21,7 @@ from analyse.pattern import Circle, Unit
 
 GridShape = Literal["square", "rectangle", "sectors"]
 _SLACK = 1e-3  # of a cell: how far an area may overhang the last cell before another is laid
+_ROUNDED = 1 - 1e-9  # what keeps just the share below which cells are joined is left alone
 _NEARLY_WHOLE = 0.998  # share of a full cell from which a cell is called whole
 _EQUAL_SECTORS = 0.01  # how far a whole sector may differ from its share of the dish
 
@@ -252,7 +253,7 @@ def _clipped(
     sizes = shapely.area(shapes)
     sizes[sizes < 1e-9 * full] = 0.0
     whole = sizes >= _NEARLY_WHOLE * full
-    home = joined(lattice, area, sizes, whole, options.join_below * full)
+    home = joined(lattice, area, sizes, whole, options.join_below * full * _ROUNDED)
     kind: GridShape = "rectangle" if side is None else "square"
     return _assembled(lattice, shapes, home, whole, side, kind, full, unit)
 

@@ -1,95 +1,18 @@
-"""Random points and random counts, exact enumeration, and p values that are uniform at random."""
+"""Random points: uniform in any area, by whichever way they are drawn."""
 
 from __future__ import annotations
 
-import itertools
-import math
+import pickle
 
 import numpy as np
 import pytest
 import shapely
-from hypothesis import given, settings
-from hypothesis import strategies as st
 from scipy import stats
 from shapely.geometry.base import BaseGeometry
 
-from analyse.dispersion import clipped_dispersion
-from analyse.errors import TooFewQuadrats
-from analyse.nulls import (
-    least_chi2,
-    multinomial_counts,
-    random_points,
-    simulated_chi2,
-    simulated_p,
-)
-from analyse.quadrats import GridOptions, count_in_quadrats, lay_grid
-from detect.errors import OptionWrong
-from tests.analyse import published
-
-RAGGED = shapely.Polygon(
-    [(0, 0), (40, 8), (90, -10), (100, 50), (70, 60), (95, 100), (30, 90), (10, 60), (-15, 40)],
-    [[(40, 30), (60, 30), (60, 55), (40, 50)]],
-)
-AREAS = {
-    "square": shapely.box(0, 0, 100, 100),
-    "circle": shapely.Point(50, 50).buffer(50, quad_segs=90),
-    "ragged with a hole": RAGGED,
-}
-
-
-@pytest.mark.parametrize("area", AREAS.values(), ids=AREAS)
-def test_simulated_p_is_uniform_at_random(area: BaseGeometry) -> None:
-    """500 random patterns: the p of each side, and both, follow the uniform distribution."""
-    n, p = 240, []
-    grid = lay_grid(area, n)
-    for seed in range(500):
-        rng = np.random.default_rng([seed, 77])
-        counts = count_in_quadrats(random_points(area, n, rng), grid)
-        test = simulated_p(counts, grid.area, simulations=199, rng=rng)
-        p.append((test.p_clumped, test.p_even, test.p_two_sided))
-    for side in np.array(p).T:
-        assert stats.kstest(side, "uniform").pvalue > 0.01
-    assert np.mean(np.array(p)[:, 2] <= 0.05) <= 0.075
-
-
-def test_published_patterns() -> None:
-    """Ripley (1977): redwood seedlings are clumped, biological cells evenly spaced."""
-    for name, window, side in (
-        ("redwood", published.REDWOOD_WINDOW, "p_clumped"),
-        ("cells", published.CELLS_WINDOW, "p_even"),
-    ):
-        points = published.points(name)
-        grid = lay_grid(shapely.box(*window), len(points), GridOptions(shape=(5, 5)))
-        counts = count_in_quadrats(points, grid)
-        test = simulated_p(counts, grid.area, simulations=1999, rng=np.random.default_rng(1))
-        assert getattr(test, side) < 0.005
-
-
-def exact_p(counts: list[int], areas: list[float]) -> tuple[float, float]:
-    """Return the exact upper and lower p of X2, over every way n points can fall."""
-    n, shares = sum(counts), np.array(areas) / sum(areas)
-    seen = clipped_dispersion(counts, areas).chi2
-    upper = lower = 0.0
-    for fall in itertools.product(range(n + 1), repeat=len(counts)):
-        if sum(fall) == n:
-            chance = float(stats.multinomial.pmf(fall, n, shares))
-            chi2 = clipped_dispersion(fall, areas).chi2
-            upper += chance * (chi2 >= seen - 1e-9)
-            lower += chance * (chi2 <= seen + 1e-9)
-    return min(1.0, upper), min(1.0, lower)
-
-
-@pytest.mark.parametrize("counts", [[3, 0, 1, 1], [0, 1, 2, 2], [5, 0, 0, 0], [1, 1, 1, 2]])
-@pytest.mark.parametrize("areas", [[1, 2, 3, 4], [1, 1, 1, 1]])
-def test_simulation_against_exact_enumeration(counts: list[int], areas: list[float]) -> None:
-    simulations = 20_000
-    upper, lower = exact_p(counts, areas)
-    rng = np.random.default_rng(42)
-    test = simulated_p(counts, areas, simulations=simulations, rng=rng)
-    for seen, exact in ((test.p_clumped, upper), (test.p_even, lower)):
-        error = math.sqrt(exact * (1 - exact) / simulations)
-        assert seen == pytest.approx(exact, abs=4 * error + 2 / simulations)
-    assert test.p_two_sided == min(1.0, 2 * min(test.p_clumped, test.p_even))
+from analyse.nulls import CompleteRandomness, Null, random_points
+from analyse.quadrats import count_in_quadrats, lay_grid
+from tests.analyse.areas import AREAS, RAGGED
 
 
 def test_random_points_fall_by_area_in_and_around_a_hole() -> None:
@@ -113,95 +36,6 @@ def test_random_points_in_a_sliver_and_in_parts() -> None:
     assert np.mean(points[:, 0] > 5) == pytest.approx(0.75, abs=0.02)
 
 
-def test_multinomial_counts_are_those_of_random_points() -> None:
-    """Mean, variance and the law of one cell, drawn either way."""
-    grid, n, times = lay_grid(RAGGED, 40), 40, 3000
-    rng = np.random.default_rng(12)
-    placed = np.array(
-        [count_in_quadrats(random_points(RAGGED, n, rng), grid) for _ in range(times)]
-    )
-    drawn = multinomial_counts(n, grid.area, times, rng)
-    assert (drawn.sum(axis=1) == n).all()
-    spread = np.sqrt(2 * drawn.var(axis=0) / times)
-    assert np.abs(placed.mean(axis=0) - drawn.mean(axis=0)).max() < 5 * spread.max()
-    assert placed.var(axis=0) == pytest.approx(drawn.var(axis=0), rel=0.2)
-    k = int(np.argmax(grid.area))
-    table = np.array([np.bincount(np.minimum(x[:, k], 6), minlength=7) for x in (placed, drawn)])
-    assert stats.chi2_contingency(table[:, table.sum(axis=0) > 9]).pvalue > 0.001
-
-
-@given(
-    st.integers(1, 60),
-    st.lists(st.floats(0.1, 10), min_size=2, max_size=8),
-    st.integers(0, 2**32),
-)
-@settings(max_examples=50, deadline=None)
-def test_fast_statistics_equal_the_plain_definition(n: int, areas: list[float], seed: int) -> None:
-    fast = np.concatenate([*simulated_chi2(n, areas, 20, np.random.default_rng(seed))])
-    draws = multinomial_counts(n, areas, 20, np.random.default_rng(seed))
-    plain = [clipped_dispersion(x, areas).chi2 for x in draws]
-    assert fast == pytest.approx(plain, rel=1e-9, abs=1e-9)
-
-
-def test_batches_do_not_change_the_values(monkeypatch: pytest.MonkeyPatch) -> None:
-    whole = np.concatenate([*simulated_chi2(30, [1, 2, 3], 250, np.random.default_rng(4))])
-    monkeypatch.setattr("analyse.nulls._CELLS_AT_ONCE", 21)
-    pieces = [*simulated_chi2(30, [1, 2, 3], 250, np.random.default_rng(4))]
-    assert [len(piece) for piece in pieces[:2]] == [7, 7]
-    assert np.concatenate(pieces).tolist() == whole.tolist()
-
-
-def test_p_is_never_zero_and_ties_count_as_extreme() -> None:
-    """Phipson and Smyth (2010): p of (b + 1) / (m + 1); every draw of one point ties."""
-    test = simulated_p([200, 0, 0, 0], [1, 1, 1, 1], rng=np.random.default_rng(1))
-    assert test.p_clumped == 1 / 1000
-    assert test.p_two_sided == 2 / 1000
-    assert test.p_even == 1.0
-    tied = simulated_p([1, 0, 0], [1, 1, 1], rng=np.random.default_rng(1))
-    assert (tied.p_clumped, tied.p_even, tied.p_two_sided) == (1.0, 1.0, 1.0)
-    uneven = simulated_p([1, 0, 0], [0.1, 0.1 * 3, 0.3], rng=np.random.default_rng(1))
-    assert uneven.p_clumped == pytest.approx(1 / 7, abs=0.05)
-
-
-def test_rounding_breaks_no_tie() -> None:
-    """Two ways to the same X2 in quadrats of nearly equal floating areas stay tied."""
-    areas = [0.1 + 0.2, 0.3, 0.3]
-    test = simulated_p([1, 0, 0], areas, rng=np.random.default_rng(1))
-    assert test.p_clumped == test.p_even == 1.0
-
-
-def test_nothing_is_tested_without_points() -> None:
-    test = simulated_p([0, 0, 0], [1, 1, 1], rng=np.random.default_rng(1))
-    assert all(map(math.isnan, (test.statistic, test.p_clumped, test.p_even, test.p_two_sided)))
-    assert test.simulations == 999
-
-
-def test_huge_counts() -> None:
-    rng = np.random.default_rng(6)
-    counts = rng.multinomial(10**12, [0.25] * 4)
-    assert simulated_p(counts, [1] * 4, rng=rng).p_two_sided > 0.01
-    assert simulated_p([10**11, 10**11 + 10**7], [1, 1], rng=rng).p_clumped == 0.001
-
-
-def test_the_same_seed_gives_the_same_p() -> None:
-    one, two = (
-        simulated_p([4, 1, 0, 7], [1, 2, 2, 3], rng=np.random.default_rng(3)) for _ in range(2)
-    )
-    assert one == two
-
-
-@pytest.mark.parametrize("simulations", [0, 98, 1_000_001])
-def test_an_unusable_number_of_simulations_is_refused(simulations: int) -> None:
-    message = f"between 99 and 1,000,000, not at {simulations}; 999 serves most purposes"
-    with pytest.raises(OptionWrong, match=message):
-        simulated_p([1, 2], [1, 1], simulations=simulations, rng=np.random.default_rng(1))
-
-
-def test_one_quadrat_is_refused() -> None:
-    with pytest.raises(TooFewQuadrats, match="at least 2 quadrats, not 1"):
-        simulated_p([3], [1], rng=np.random.default_rng(1))
-
-
 def test_impossible_random_points_are_refused() -> None:
     with pytest.raises(ValueError, match="must be 0 or more, not -1"):
         random_points(RAGGED, -1, np.random.default_rng(1))
@@ -210,13 +44,75 @@ def test_impossible_random_points_are_refused() -> None:
     assert random_points(RAGGED, 0, np.random.default_rng(1)).shape == (0, 2)
 
 
-@pytest.mark.parametrize("areas", [[1, 1, 1, 1], [1, 2, 3, 4], [0.25, 1, 1, 0.3], [9, 1, 1, 1]])
-@pytest.mark.parametrize("n", [1, 2, 3, 5, 8])
-def test_least_chi2_against_every_way_the_points_can_fall(areas: list[float], n: int) -> None:
-    falls = (f for f in itertools.product(range(n + 1), repeat=len(areas)) if sum(f) == n)
-    least = min(clipped_dispersion(fall, areas).chi2 for fall in falls)
-    assert least_chi2(n, areas) == pytest.approx(least, abs=1e-9)
+@pytest.mark.parametrize("area", AREAS.values(), ids=AREAS)
+def test_complete_randomness_is_uniform(area: BaseGeometry) -> None:
+    """Counts of 200,000 points against areas: in clipped cells, and in halves of a fine lattice."""
+    n, null = 200_000, CompleteRandomness(area)
+    points = null.draw(n, np.random.default_rng(8))
+    assert points.shape == (n, 2)
+    assert shapely.intersects_xy(area, points[:, 0], points[:, 1]).all()
+    grid = lay_grid(area, 400)
+    counts = count_in_quadrats(points, grid)
+    assert stats.chisquare(counts, n * grid.area / area.area).pvalue > 0.001
+    for step in (1.5625, 3.1):  # whatever lattice was used to draw must not show
+        part = ((points - area.bounds[:2]) / step % 1 * 4).astype(int)
+        share = np.bincount(part[:, 0] * 4 + part[:, 1], minlength=16)
+        reference = random_points(area, n, np.random.default_rng(9))
+        part = ((reference - area.bounds[:2]) / step % 1 * 4).astype(int)
+        other = np.bincount(part[:, 0] * 4 + part[:, 1], minlength=16)
+        assert stats.chi2_contingency([share, other]).pvalue > 0.001
 
 
-def test_least_chi2_is_left_aside_where_it_cannot_matter() -> None:
-    assert least_chi2(0, [1, 1]) == least_chi2(10**12, [1, 2]) == 0.0
+def test_points_near_the_outline_are_as_many_as_its_strip_is_wide() -> None:
+    """The strip on both sides of outline and hole, where points are tested one by one."""
+    strip = RAGGED.buffer(0).boundary.buffer(0.4).intersection(RAGGED)
+    points = CompleteRandomness(RAGGED).draw(300_000, np.random.default_rng(10))
+    near = int(shapely.contains_xy(strip, points[:, 0], points[:, 1]).sum())
+    share = strip.area / RAGGED.area
+    assert stats.binomtest(near, 300_000, share).pvalue > 0.001
+
+
+def test_points_drawn_one_after_another_are_independent() -> None:
+    """No point knows the one before it: places of pairs of neighbours in the order of drawing."""
+    points = CompleteRandomness(AREAS["circle"]).draw(100_000, np.random.default_rng(11))
+    side = (points > 50).astype(int) @ [1, 2]
+    table = np.bincount(side[:-1:2] * 4 + side[1::2], minlength=16).reshape(4, 4)
+    assert stats.chi2_contingency(table).pvalue > 0.001
+
+
+def test_a_sliver_and_an_area_in_parts_are_drawn_in() -> None:
+    sliver = shapely.Polygon([(0, 0), (1000, 1000), (1000, 1000.5)])
+    points = CompleteRandomness(sliver).draw(5000, np.random.default_rng(2))
+    assert shapely.intersects_xy(sliver, points[:, 0], points[:, 1]).all()
+    # The width grows with x, so the share left of the middle is a quarter.
+    assert stats.binomtest(int((points[:, 0] < 500).sum()), 5000, 0.25).pvalue > 0.001
+    parts = shapely.MultiPolygon([shapely.box(0, 0, 1, 1), shapely.box(9, 0, 12, 1)])
+    points = CompleteRandomness(parts).draw(8000, np.random.default_rng(3))
+    assert stats.binomtest(int((points[:, 0] > 5).sum()), 8000, 0.75).pvalue > 0.001
+
+
+def test_an_outline_of_many_corners_is_cut_up_as_well() -> None:
+    turn = np.linspace(0, 2 * np.pi, 20_000, endpoint=False)
+    far = 40 + 0.3 * np.sin(900 * turn)
+    leaf = shapely.Polygon(np.column_stack([far * np.cos(turn), 0.5 * far * np.sin(turn)]))
+    points = CompleteRandomness(leaf).draw(20_000, np.random.default_rng(4))
+    assert shapely.intersects_xy(leaf, points[:, 0], points[:, 1]).all()
+    core = leaf.buffer(-1)
+    inside = int(shapely.contains_xy(core, points[:, 0], points[:, 1]).sum())
+    assert stats.binomtest(inside, 20_000, core.area / leaf.area).pvalue > 0.001
+
+
+def test_a_law_gives_the_same_points_for_the_same_seed_wherever_it_was_made() -> None:
+    null: Null = CompleteRandomness(RAGGED)
+    drawn = null.draw(50, np.random.default_rng(5)).tolist()
+    for other in (CompleteRandomness(RAGGED), pickle.loads(pickle.dumps(null))):
+        assert other.draw(50, np.random.default_rng(5)).tolist() == drawn
+    assert null.name == "complete spatial randomness"
+    assert null.draw(0, np.random.default_rng(5)).shape == (0, 2)
+
+
+def test_impossible_laws_and_draws_are_refused() -> None:
+    with pytest.raises(ValueError, match="the area encloses nothing"):
+        CompleteRandomness(shapely.Polygon())
+    with pytest.raises(ValueError, match="must be 0 or more, not -1"):
+        CompleteRandomness(RAGGED).draw(-1, np.random.default_rng(1))

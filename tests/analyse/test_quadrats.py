@@ -313,3 +313,12 @@ def test_counts_without_grid_and_their_checks() -> None:
 
     with pytest.raises(ValueError, match=r"x has shape \(2,\) for"):
         replace(grid, x=np.zeros(2))
+
+
+def test_a_quadrat_of_just_a_quarter_is_joined_in_no_unit() -> None:
+    """Rounding made some units join what keeps exactly the least share, and others not."""
+    whole, notch = shapely.box(0, 0, 8, 8), shapely.box(4, 4, 8, 8) - shapely.box(4, 4, 6, 6)
+    for factor in (1.0, 0.1, 0.3, 0.7, 1.1, 1000 / 3):
+        area = shapely.transform(whole - notch, lambda xy, factor=factor: xy * factor)
+        grid = lay_grid(area, 9, GridOptions(shape=(2, 2)))
+        assert (len(grid), grid.joined) == (4, 0)
