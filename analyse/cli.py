@@ -139,7 +139,8 @@ def analyse(
         list[Path] | None,
         typer.Option(
             "--counts",
-            help="A table of counts: a column count, or a bare rectangle of whole numbers.",
+            help="A table of counts: a column count (beside a column frequency: one row per count and"
+            " how many quadrats held it), or a bare rectangle of whole numbers.",
             metavar="CSV",
             show_default=False,
             rich_help_panel=TABLES,

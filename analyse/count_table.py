@@ -1,4 +1,4 @@
-"""Counts of a table that has no points: a column of counts, or a grid of contiguous quadrats."""
+"""Counts of a table that has no points: a column, a table of frequencies, or a grid of quadrats."""
 
 from __future__ import annotations
 
@@ -13,6 +13,9 @@ from analyse.errors import TableWrong
 from analyse.rows import Row, read_rows, whole_in
 from detect.errors import OptionWrong
 from detect.lengths import Length
+
+FREQUENCY_COLUMNS = ("frequency", "frequencies", "freq")
+MOST_COUNTED_QUADRATS = 1_000_000  # a table of frequencies that stands for more is a slip
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -55,12 +58,14 @@ class CountTable:
 
 
 def read_counts(path: Path, *, side: Length | None = None, transect: bool = False) -> CountTable:
-    """Read a table of counts: a column `count`, or a bare rectangle of whole numbers.
+    """Read a table of counts: a column `count`, also with `frequency`, or a bare rectangle.
 
     Parameters
     ----------
     path : Path
-        A CSV file. With a header, one row per quadrat; without, contiguous quadrats.
+        A CSV file. With a column `count` alone, one row per quadrat; with `frequency` (or `freq`)
+        beside it, one row per value and how many quadrats held it; without a header, contiguous
+        quadrats.
     side : Length or None
         Side of a quadrat, where it is known.
     transect : bool
@@ -74,14 +79,24 @@ def read_counts(path: Path, *, side: Length | None = None, transect: bool = Fals
     Raises
     ------
     OptionWrong
-        If a rectangle of several rows and columns is called a transect.
+        If a rectangle of several rows and columns, or a table of frequencies, is called a
+        transect.
     TableWrong
-        If a count is no whole number of 0 or more, rows differ in length, or there are fewer
-        than 2 quadrats.
+        If a count is no whole number of 0 or more, a value stands twice in a table of
+        frequencies, rows differ in length, or there are fewer than 2 quadrats.
     """
     rows = read_rows(path)
     names = [cell.lower() for cell in rows[0].cells]
-    if "count" in names:
+    often = next((name for name in FREQUENCY_COLUMNS if name in names), None)
+    shape: tuple[int, int] | None = None
+    if often is not None:
+        if transect:
+            raise OptionWrong(
+                f"--transect cannot apply to {path.name}, a table of frequencies, which does not"
+                " tell the order of its quadrats; leave it out."
+            )
+        counts = _counts_from_frequencies(path, rows, names, often)
+    elif "count" in names:
         column = names.index("count")
         counts = [whole_in(row, column, "count") for row in rows[1:]]
         shape = (1, len(counts)) if transect else None
@@ -99,6 +114,33 @@ def read_counts(path: Path, *, side: Length | None = None, transect: bool = Fals
         )
     columns = None if shape is None else shape[1]
     return CountTable(path.name, np.array(counts), shape and shape[0], columns, side)
+
+
+def _counts_from_frequencies(
+    path: Path, rows: Sequence[Row], names: Sequence[str], often: str
+) -> list[int]:
+    """Return the counts that a table of frequencies stands for, in rising order."""
+    if "count" not in names:
+        raise TableWrong(
+            f"{path.name} has a column {often!r} but no column 'count' (its columns:"
+            f" {', '.join(rows[0].cells)}); name the column of values count."
+        )
+    seen: dict[int, int] = {}
+    for row in rows[1:]:
+        count = whole_in(row, names.index("count"), "count")
+        if count in seen:
+            raise TableWrong(
+                f"{row.where}, column count: {count} stands twice; give each count one row with"
+                " all its quadrats."
+            )
+        seen[count] = whole_in(row, names.index(often), often)
+    quadrats = sum(seen.values())
+    if quadrats > MOST_COUNTED_QUADRATS:
+        raise TableWrong(
+            f"{path.name} stands for {quadrats:,} quadrats, more than {MOST_COUNTED_QUADRATS:,};"
+            f" check the column {often}."
+        )
+    return [count for count in sorted(seen) for _ in range(seen[count])]
 
 
 def _rectangle_of_counts(path: Path, rows: Sequence[Row]) -> tuple[list[int], tuple[int, int]]:

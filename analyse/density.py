@@ -7,7 +7,7 @@ from dataclasses import dataclass
 
 from scipy import special
 
-_CM2 = 100.0  # square millimetres in a square centimetre
+CM2 = 100.0  # square millimetres in a square centimetre
 
 
 @dataclass(frozen=True, slots=True)
@@ -93,11 +93,36 @@ def density_per_cm2(n: int, area_mm2: float, relative_uncertainty: float) -> Lim
     >>> round(d.value, 3), round(d.low, 3), round(d.high, 3)
     (1.0, 0.811, 1.221)
     """
-    count = garwood_limits(n)
-    of_area = float(special.ndtri(0.5 + count.level / 2)) * 2 * relative_uncertainty
-    per = _CM2 / area_mm2
-    if n == 0:
-        return Limits(0.0, 0.0, count.high * math.exp(of_area) * per, count.level)
-    low = n * math.exp(-math.hypot(math.log(n / count.low), of_area))
-    high = n * math.exp(math.hypot(math.log(count.high / n), of_area))
-    return Limits(n * per, low * per, high * per, count.level)
+    return widened(garwood_limits(n), CM2 / area_mm2, relative_uncertainty)
+
+
+def widened(limits: Limits, factor: float, relative_uncertainty: float) -> Limits:
+    """Return limits of a count as those of a density, widened by the scale's uncertainty.
+
+    Parameters
+    ----------
+    limits : Limits
+        Of a count or a mean count, 0 or more.
+    factor : float
+        One over the area they stand for.
+    relative_uncertainty : float
+        Standard uncertainty of a length, as a fraction of it; see `density_per_cm2`.
+
+    Returns
+    -------
+    Limits
+
+    Examples
+    --------
+    >>> round(widened(Limits(4.0, 2.0, 8.0, 0.95), 0.5, 0.0).high, 6)
+    4.0
+    """
+    value, low, high = limits.value, limits.low, limits.high
+    of_area = float(special.ndtri(0.5 + limits.level / 2)) * 2 * relative_uncertainty
+    if value == 0:
+        return Limits(0.0, 0.0, high * math.exp(of_area) * factor, limits.level)
+    if low > 0:
+        low = value * math.exp(-math.hypot(math.log(value / low), of_area))
+    if math.isfinite(high):
+        high = value * math.exp(math.hypot(math.log(high / value), of_area))
+    return Limits(value * factor, low * factor, high * factor, limits.level)

@@ -235,6 +235,45 @@ def normal_deviate(chi2: float, df: int) -> float:
     return math.sqrt(2 * chi2) - math.sqrt(2 * df - 1)
 
 
+def vmr_standard_error(q: int) -> float:
+    """Return the standard error of the variance-to-mean ratio at random, sqrt(2 / (q - 1)).
+
+    Parameters
+    ----------
+    q : int
+        Quadrats, at least 2.
+
+    Returns
+    -------
+    float
+
+    Raises
+    ------
+    TooFewQuadrats
+        If there are fewer than 2 quadrats.
+
+    Notes
+    -----
+    The standard error of a chi-square over its degrees of freedom. Given S points the exact
+    variance is 2 (1 - 1 / S) / (q - 1) (Haldane 1940), so that the form serves from some tens of
+    points on. Older texts also use sqrt(2 q) / (q - 1) (Blackman), which is a little larger.
+
+    References
+    ----------
+    Bartlett, M. S., as quoted by Greig-Smith, P. (1983). Quantitative Plant Ecology, 3rd edition.
+    Blackwell, Oxford.
+    Haldane, J. B. S. (1940). The mean and variance of chi-square, when used as a test of
+    homogeneity, when expectations are small. Biometrika 31, 346-355.
+
+    Examples
+    --------
+    >>> vmr_standard_error(51)
+    0.2
+    """
+    _enough(q)
+    return math.sqrt(2 / (q - 1))
+
+
 def checked_counts(counts: ArrayLike) -> NDArray[np.int64]:
     """Return counts as whole numbers, or refuse them.
 

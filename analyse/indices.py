@@ -4,43 +4,10 @@ from __future__ import annotations
 
 import math
 
-import numpy as np
 from numpy.typing import ArrayLike
 
-from analyse.dispersion import checked_counts, dispersion
-
-
-def morisita_index(counts: ArrayLike) -> float:
-    """Return Morisita's index, q sum x(x - 1) / (S (S - 1)): 1 at random, q if all are in one.
-
-    Parameters
-    ----------
-    counts : array_like of int, shape (q,)
-        One count per quadrat.
-
-    Returns
-    -------
-    float
-        NaN with fewer than 2 points.
-
-    Raises
-    ------
-    ValueError
-        If a count is negative or no whole number.
-
-    References
-    ----------
-    Morisita, M. (1959). Measuring of the dispersion of individuals and analysis of the
-    distributional patterns. Memoirs of the Faculty of Science, Kyushu University, E 2, 215-235.
-
-    Examples
-    --------
-    >>> morisita_index([5, 0, 0, 0])
-    4.0
-    """
-    x = checked_counts(counts).astype(np.float64)
-    total = x.sum()
-    return float(x.size * (x * (x - 1)).sum() / (total * (total - 1))) if total > 1 else math.nan
+from analyse.dispersion import dispersion
+from analyse.morisita import morisita_index as morisita_index
 
 
 def mean_crowding(counts: ArrayLike) -> float:
@@ -74,6 +41,44 @@ def mean_crowding(counts: ArrayLike) -> float:
     """
     d = dispersion(counts)
     return d.mean + d.vmr - 1
+
+
+def patchiness(counts: ArrayLike) -> float:
+    """Return patchiness, mean crowding over the mean: 1 at random, and 1 + 1 / k when clumped.
+
+    Parameters
+    ----------
+    counts : array_like of int, shape (q,)
+        One count per quadrat.
+
+    Returns
+    -------
+    float
+        NaN without points. k is that of the moments, m^2 / (s^2 - m).
+
+    Raises
+    ------
+    TooFewQuadrats
+        If there are fewer than 2 quadrats.
+    ValueError
+        If a count is negative or no whole number.
+
+    Notes
+    -----
+    Unlike the variance-to-mean ratio it stays the same when a share of the points is removed at
+    random, for instance by death or by a detector that misses some.
+
+    References
+    ----------
+    Lloyd, M. (1967). Mean crowding. Journal of Animal Ecology 36, 1-30.
+
+    Examples
+    --------
+    >>> patchiness([4, 0, 0, 0])
+    4.0
+    """
+    d = dispersion(counts)
+    return (d.mean + d.vmr - 1) / d.mean if d.n > 0 else math.nan
 
 
 def cluster_size_index(counts: ArrayLike) -> float:

@@ -11,6 +11,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from analyse.chance import check_seed
+from analyse.clumped_density import clumped_in_quadrats
 from analyse.contiguous import FEWEST_QUADRATS as FEWEST_IN_ORDER
 from analyse.contiguous import Blocks, block_variances
 from analyse.density import Limits
@@ -21,10 +22,12 @@ from analyse.dispersion import (
     expected_counts,
     residuals,
 )
+from analyse.fits import clumped_law
 from analyse.flags import count_flags
-from analyse.models import LARGEST_COUNT, PoissonFit, poisson_frequencies
+from analyse.models import PoissonFit, poisson_frequencies
 from analyse.nulls import least_chi2, simulated_p
 from analyse.pattern import Pattern, Unit
+from analyse.pooling import LARGEST_COUNT
 from analyse.quadrats import QuadratCounts
 from analyse.said import Findings
 from analyse.verdict import LEVEL, Verdict, decide, detectable, sentence
@@ -43,6 +46,11 @@ class Subject:
     flags: tuple[str, ...]
     flag_values: dict[str, Any]
     settings: dict[str, Any]
+
+    @property
+    def relative_uncertainty(self) -> float:
+        """Standard uncertainty of a length; a table of counts gives the side as exact."""
+        return 0.0 if self.pattern is None else self.pattern.relative_uncertainty
 
 
 def judged(subject: Subject, seed: int, simulations: int) -> Findings:
@@ -73,6 +81,11 @@ def judged(subject: Subject, seed: int, simulations: int) -> Findings:
     weights = np.ones(x.size) if areas is None else areas
     rng = stream(seed, subject.name)
     simulated = simulated_p(x, weights, simulations=simulations, rng=rng)
+    clumped_mean, clumped_density = clumped_in_quadrats(
+        subject.counts,
+        rng=stream(seed, f"{subject.name}, bootstrap of quadrats"),
+        relative_uncertainty=None if subject.density is None else subject.relative_uncertainty,
+    )
     verdict = decide(everything.n, everything.q, simulated)
     values = subject.flag_values | {
         "n": everything.n,
@@ -104,6 +117,9 @@ def judged(subject: Subject, seed: int, simulations: int) -> Findings:
         seed=seed,
         settings=subject.settings | {"simulations": simulations, "level": LEVEL},
         blocks=_blocks(subject, seed, simulations),
+        negative_binomial=clumped_law(x[is_whole]),
+        clumped_mean=clumped_mean,
+        clumped_density=clumped_density,
     )
 
 

@@ -2,8 +2,7 @@
 
 from __future__ import annotations
 
-import math
-from collections.abc import Iterable, Sequence
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -13,10 +12,14 @@ from scipy import special
 from analyse.columns import hold_columns
 from analyse.dispersion import checked_counts
 from analyse.errors import TooFewQuadrats
-
-CountClass = tuple[int, int | None]
-SMALLEST_EXPECTED = 1.0
-LARGEST_COUNT = 10_000
+from analyse.pooling import (
+    LARGEST_COUNT,
+    SMALLEST_EXPECTED,
+    CountClass,
+    class_labels,
+    compare_classes,
+    pooled,
+)
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -64,7 +67,7 @@ class PoissonFit:
     @property
     def labels(self) -> tuple[str, ...]:
         """Return the classes in words: "0", "1-2", "3 or more"."""
-        return tuple(_label(low, high) for low, high in self.classes)
+        return class_labels(self.classes)
 
 
 def poisson_frequencies(
@@ -116,26 +119,56 @@ def poisson_frequencies(
     >>> fit.labels, fit.df
     (('0', '1', '2', '3 or more'), 2)
     """
+    x = countable(counts)
+    mean, top = float(x.mean()), int(x.max())
+    frequencies = np.bincount(x)
+    poisson = x.size * poisson_law(mean, np.arange(top + 1))
+
+    def share(low: int, high: int | None) -> float:
+        return poisson_share(mean, low, high)
+
+    if pool_classes is None:
+        pool_classes = pooled(share, int(mean), x.size, smallest_expected, top)
+    fit = compare_classes(frequencies, pool_classes, share, fitted=1)
+    return PoissonFit(
+        mean,
+        frequencies,
+        poisson,
+        fit.classes,
+        fit.observed,
+        fit.expected,
+        fit.chi2,
+        fit.df,
+        fit.p,
+    )
+
+
+def countable(counts: ArrayLike) -> NDArray[np.int64]:
+    """Return counts whose frequencies can be given, or refuse them.
+
+    Parameters
+    ----------
+    counts : array_like of int, shape (q,)
+        One count per quadrat, at least 2 and none above 10,000.
+
+    Returns
+    -------
+    ndarray of int64, shape (q,)
+
+    Raises
+    ------
+    TooFewQuadrats
+        If there are fewer than 2 counts.
+    ValueError
+        If a count is impossible or above 10,000.
+    """
     x = checked_counts(counts)
     if x.size < 2:
         raise TooFewQuadrats(f"Frequencies need at least 2 quadrats, not {x.size}; count more.")
     top = int(x.max())
     if top > LARGEST_COUNT:
         raise ValueError(f"a count of {top} is above {LARGEST_COUNT}: too many classes")
-    mean = float(x.mean())
-    frequencies = np.bincount(x)
-    poisson = x.size * poisson_law(mean, np.arange(top + 1))
-    if pool_classes is None:
-        pool_classes = pooled(mean, x.size, smallest_expected, top)
-    _check_classes(pool_classes)
-    observed = np.array([_seen(frequencies, low, high) for low, high in pool_classes])
-    expected = x.size * np.array([_share(mean, low, high) for low, high in pool_classes])
-    df = len(pool_classes) - 2
-    usable = df >= 1 and bool((expected > 0).all())
-    chi2 = float(((observed - expected) ** 2 / expected).sum()) if usable else math.nan
-    p = float(special.chdtrc(df, chi2)) if usable else math.nan
-    classes = tuple((int(low), high) for low, high in pool_classes)
-    return PoissonFit(mean, frequencies, poisson, classes, observed, expected, chi2, df, p)
+    return x
 
 
 def poisson_law(mean: float, values: ArrayLike) -> NDArray[np.float64]:
@@ -161,81 +194,30 @@ def poisson_law(mean: float, values: ArrayLike) -> NDArray[np.float64]:
     return np.asarray(np.exp(special.xlogy(k, mean) - mean - special.gammaln(k + 1)))
 
 
-def pooled(mean: float, q: int, smallest: float, top: int) -> tuple[CountClass, ...]:
-    """Return classes pooled from both tails towards the mode until each expects enough quadrats.
+def poisson_share(mean: float, low: int, high: int | None) -> float:
+    """Return the Poisson probability of a class of counts, both ends included.
 
     Parameters
     ----------
     mean : float
-        Mean of the law.
-    q : int
-        Quadrats.
-    smallest : float
-        Quadrats each class must expect.
-    top : int
-        Largest count seen; no class starts above it plus one.
+        Mean of the law, 0 or more.
+    low : int
+        Lowest count.
+    high : int or None
+        Highest count; None for no end.
 
     Returns
     -------
-    tuple of (low, high)
+    float
+
+    Examples
+    --------
+    >>> round(poisson_share(1.0, 1, None), 3)
+    0.632
     """
-    mode = int(mean)
-    ends = [*range(max(top, mode) + 1), None]
-    expected = [q * _share(mean, k, end) for k, end in enumerate(ends)]
-    left, spare = _gathered(range(mode + 1), expected, smallest)
-    right, more = _gathered(range(len(ends) - 1, mode, -1), expected, smallest)
-    middle = [*spare, *more]
-    if sum(expected[k] for k in middle) >= smallest or not (left or right):
-        left.append(middle)
-    else:
-        (left or right)[-1].extend(middle)
-    starts = sorted(min(group) for group in [*left, *right] if group)
-    return (*zip(starts, [start - 1 for start in starts[1:]], strict=False), (starts[-1], None))
-
-
-def _gathered(
-    values: Iterable[int], expected: Sequence[float], smallest: float
-) -> tuple[list[list[int]], list[int]]:
-    """Group values in order until each group expects enough; return the groups and what is left."""
-    groups: list[list[int]] = []
-    group: list[int] = []
-    for value in values:
-        group.append(value)
-        if sum(expected[k] for k in group) >= smallest:
-            groups.append(group)
-            group = []
-    return groups, group
-
-
-def _share(mean: float, low: int, high: int | None) -> float:
-    """Return the Poisson probability of a class."""
     below = float(special.pdtr(low - 1, mean)) if low > 0 else 0.0
     if high is None:
         return float(special.pdtrc(low - 1, mean)) if low > 0 else 1.0
     if high == low:
         return float(poisson_law(mean, low))
     return float(special.pdtr(high, mean)) - below
-
-
-def _seen(frequencies: NDArray[np.int64], low: int, high: int | None) -> int:
-    """Return how many quadrats fall in a class."""
-    return int(frequencies[low : None if high is None else high + 1].sum())
-
-
-def _check_classes(classes: Sequence[CountClass]) -> None:
-    """Refuse classes that do not cover 0, 1, 2, ... once."""
-    starts = [low for low, _ in classes]
-    ends = [high for _, high in classes]
-    joined = all(
-        high is not None and low <= high and high + 1 == after
-        for low, high, after in zip(starts, ends, starts[1:], strict=False)
-    )
-    if not classes or starts[0] != 0 or ends[-1] is not None or not joined:
-        raise ValueError("classes must run from 0 upwards without a gap, the last without an end")
-
-
-def _label(low: int, high: int | None) -> str:
-    """Return a class in words."""
-    if high is None:
-        return f"{low} or more"
-    return str(low) if low == high else f"{low}-{high}"

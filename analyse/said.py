@@ -8,10 +8,12 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
+from analyse.clumped_density import ClumpedLimits
 from analyse.columns import hold_columns
 from analyse.contiguous import Blocks
 from analyse.density import Limits
 from analyse.dispersion import Dispersion
+from analyse.fits import NegativeBinomialFit
 from analyse.flags import flag_sentences
 from analyse.models import PoissonFit
 from analyse.nulls import SimulatedTest
@@ -68,6 +70,13 @@ class Findings:
         How the quadrats were laid and the test was done; plain values.
     blocks : Blocks or None
         Block variances of a table of contiguous quadrats: a grid, or a transect.
+    negative_binomial : NegativeBinomialFit or None
+        Law of clumped counts fitted to whole quadrats; None where `poisson` is or without points.
+    clumped_mean : ClumpedLimits or None
+        Mean count of a full quadrat, over all quadrats by area, with limits that allow for
+        clumping; where `density` is None it is the only estimate of how many there are.
+    clumped_density : ClumpedLimits or None
+        The same per square centimetre, to stand beside `density`; None where that is.
     """
 
     name: str
@@ -91,6 +100,9 @@ class Findings:
     seed: int
     settings: dict[str, Any]
     blocks: Blocks | None = None
+    negative_binomial: NegativeBinomialFit | None = None
+    clumped_mean: ClumpedLimits | None = None
+    clumped_density: ClumpedLimits | None = None
 
     def __post_init__(self) -> None:
         hold_columns(self, ("expected", "residuals"), length=len(self.counts))

@@ -8,6 +8,7 @@ from collections.abc import Iterator, Mapping, Sequence
 from scipy import special
 
 from analyse.block_rows import block_rows
+from analyse.count_rows import COUNT_SUMMARY_COLUMNS, count_rows, count_summary_cells
 from analyse.dispersion import (
     Dispersion,
     normal_deviate,
@@ -84,6 +85,7 @@ SUMMARY_COLUMNS = [
     "planted_recall_high",
     "blind_distance",
     "blind_distance_mm",
+    *COUNT_SUMMARY_COLUMNS,
 ]
 TEST_COLUMNS = ["photograph", "statistic", "value", "low", "high", "p", "method", "n", "notes"]
 _FISHER = "index of dispersion, chi-square (Fisher, Thornton and Mackenzie 1922)"
@@ -223,6 +225,7 @@ def _summary(each: Findings) -> list[Cell]:
         " ".join(each.flags),
         each.sentence,
         *planted_cells(each.pattern),
+        *count_summary_cells(each),
     ]
 
 
@@ -311,6 +314,7 @@ _PARTS = (
     _simulated_rows,
     _poisson_rows,
     _planted_rows,
+    count_rows,
     block_rows,
 )
 

@@ -9,6 +9,7 @@ import pytest
 
 from analyse.count_table import CountTable, read_counts
 from analyse.errors import TableWrong
+from detect.errors import OptionWrong
 from detect.lengths import Length
 from tests.analyse import published
 
@@ -33,6 +34,19 @@ def test_a_rectangle_of_counts(tmp_path: Path) -> None:
     assert read.side == Length(5, "cm")
 
 
+@pytest.mark.parametrize("often", ["frequency", "Freq", "frequencies"])
+def test_a_table_of_frequencies(tmp_path: Path, often: str) -> None:
+    """One row per count, in any order, with how many quadrats held it; 0 quadrats are allowed."""
+    read = read_counts(table(tmp_path, f"series,count,{often}\na,2,1\na,0,3\na,1,0\na,5,2\n"))
+    assert (read.counts.tolist(), read.rows, read.columns) == ([0, 0, 0, 2, 5, 5], None, None)
+
+
+def test_frequencies_tell_no_order(tmp_path: Path) -> None:
+    path = table(tmp_path, "count,frequency\n0,3\n1,2\n")
+    with pytest.raises(OptionWrong, match=r"--transect cannot apply to bed.csv, a table of freq"):
+        read_counts(path, transect=True)
+
+
 def test_student_map(tmp_path: Path) -> None:
     """ "Student" (1907), Table I: 20 x 20 squares, 1872 cells."""
     read = read_counts(published.DATA / "student_grid.csv")
@@ -51,6 +65,24 @@ def test_student_map(tmp_path: Path) -> None:
         ("1,2\n3,\n", r"bed.csv, row 2, column 2, is empty"),
         ("1,2\n3\n", r"bed.csv, row 2 holds 1 counts, but row 1 holds 2; .* rows of one length"),
         ("1,2\n3,4,5\n", r"bed.csv, row 2 holds 3 counts, but row 1 holds 2"),
+        (
+            "value,frequency\n0,3\n",
+            r"has a column 'frequency' but no column 'count' .*name the column of",
+        ),
+        ("count,frequency\n0,3\n1,-2\n", r"row 3, column frequency: '-2' is not a count"),
+        ("count,frequency\n0,3\n1,0.5\n", r"row 3, column frequency: '0.5' is not a count"),
+        ("count,frequency\n0,3\n1.5,2\n", r"row 3, column count: '1.5' is not a count"),
+        ("count,frequency\n0,3\n1,\n", r"row 3, column frequency, is empty; fill it in"),
+        (
+            "count,frequency\n0,3\n1,2\n0,4\n",
+            r"row 4, column count: 0 stands twice; give each count",
+        ),
+        (
+            "count,frequency\n0,900000\n1,900000\n",
+            r"stands for 1,800,000 quadrats, more than 1,000,000",
+        ),
+        ("count,frequency\n0,0\n1,0\n", r"bed.csv holds 0 quadrats; dispersion needs"),
+        ("count,frequency\n4,1\n", r"bed.csv holds 1 quadrat; dispersion needs"),
         ("count\n", r"bed.csv holds 0 quadrats; dispersion needs counts of at least 2"),
         ("count\n7\n", r"bed.csv holds 1 quadrat; dispersion needs"),
         ("7\n", r"bed.csv holds 1 quadrat; dispersion needs"),

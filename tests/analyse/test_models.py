@@ -11,7 +11,8 @@ from hypothesis import strategies as st
 from scipy import stats
 
 from analyse.errors import TooFewQuadrats
-from analyse.models import CountClass, poisson_frequencies, poisson_law
+from analyse.models import poisson_frequencies, poisson_law
+from analyse.pooling import CountClass
 from tests.analyse import published
 
 
