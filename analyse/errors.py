@@ -4,6 +4,7 @@
     ├── TableWrong          a points or counts table cannot be read as one
     ├── GridWrong           the quadrats asked for do not fit the study area
     ├── TooFewQuadrats      a test needs more quadrats than there are
+    ├── AreaUnfit           a method is not made for an area of this shape
     └── RecipeWrong         the recipe of a survey cannot be followed
 
 All of them are wrong requests (exit 2). A message says what is wrong, the value seen, and what to do.
@@ -26,6 +27,10 @@ class GridWrong(AnalyseError):
 
 class TooFewQuadrats(AnalyseError):
     """A test needs more quadrats than there are."""
+
+
+class AreaUnfit(AnalyseError):
+    """A method is not made for an area of this shape; the message names one that is."""
 
 
 class RecipeWrong(AnalyseError):
