@@ -58,10 +58,10 @@ class BlockVariance:
 
     def __repr__(self) -> str:
         if not len(self):
-            return f"BlockVariance({self.method}, no sizes)"
+            return f"<BlockVariance {self.method}: no sizes>"
         return (
-            f"BlockVariance({self.method}, sizes {self.sizes[0]} to {self.sizes[-1]},"
-            f" peak {self.values.max():.4g} at {self.peak})"
+            f"<BlockVariance {self.method}: sizes {self.sizes[0]} to {self.sizes[-1]},"
+            f" peak {self.values.max():.4g} at {self.peak}>"
         )
 
     @property

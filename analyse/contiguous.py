@@ -53,7 +53,7 @@ class MergedBlocks:
     left_out: int
 
     def __repr__(self) -> str:
-        return f"MergedBlocks(size {self.size}, q {self.counts.q}, VMR {self.counts.vmr:.3f})"
+        return f"<MergedBlocks of {self.size}: {self.counts.q} blocks, VMR {self.counts.vmr:.3f}>"
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -90,7 +90,9 @@ class Blocks:
 
     def __repr__(self) -> str:
         tested = "" if self.test is None else f", p = {self.test.p:.3g}"
-        return f"Blocks({self.layout} of {self.rows} x {self.columns}, peak {self.peak}{tested})"
+        return (
+            f"<Blocks of a {self.layout} of {self.rows} x {self.columns}: peak {self.peak}{tested}>"
+        )
 
     @property
     def largest(self) -> int:
@@ -154,7 +156,7 @@ def block_variances(
     >>> blocks.peak, blocks.test.p
     (4, 0.001)
     >>> blocks
-    Blocks(transect of 1 x 32, peak 4, p = 0.001)
+    <Blocks of a transect of 1 x 32: peak 4, p = 0.001>
     """
     check_simulations(simulations)
     grid = contiguous(counts)

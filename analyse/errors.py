@@ -5,6 +5,7 @@
     ├── GridWrong           the quadrats asked for do not fit the study area
     ├── TooFewQuadrats      a test needs more quadrats than there are
     ├── AreaUnfit           a method is not made for an area of this shape
+    ├── TrendNotFound       no slope of the density fits, or it cannot be judged
     └── RecipeWrong         the recipe of a survey cannot be followed
 
 All of them are wrong requests (exit 2). A message says what is wrong, the value seen, and what to do.
@@ -31,6 +32,10 @@ class TooFewQuadrats(AnalyseError):
 
 class AreaUnfit(AnalyseError):
     """A method is not made for an area of this shape; the message names one that is."""
+
+
+class TrendNotFound(AnalyseError):
+    """No slope of the density fits the points, or too few quadrats are there to judge it."""
 
 
 class RecipeWrong(AnalyseError):

@@ -30,6 +30,7 @@ from analyse.pattern import Pattern, Unit
 from analyse.pooling import LARGEST_COUNT
 from analyse.quadrats import QuadratCounts
 from analyse.said import Findings
+from analyse.trends import Trends, pattern_trends, table_trends
 from analyse.verdict import LEVEL, Verdict, decide, detectable, sentence
 
 
@@ -120,6 +121,7 @@ def judged(subject: Subject, seed: int, simulations: int) -> Findings:
         negative_binomial=clumped_law(x[is_whole]),
         clumped_mean=clumped_mean,
         clumped_density=clumped_density,
+        trend=_trends(subject, seed, simulations),
     )
 
 
@@ -144,6 +146,18 @@ def stream(seed: int, name: str) -> np.random.Generator:
     """
     check_seed(seed)
     return np.random.default_rng([seed, zlib.crc32(name.encode("utf-8"))])
+
+
+def _trends(subject: Subject, seed: int, simulations: int) -> Trends | None:
+    """Return the gradients of the density of a pattern, or of a table of contiguous quadrats."""
+    rng = stream(seed, f"{subject.name}, trend")
+    counts, settings = subject.counts, subject.settings
+    if subject.pattern is not None:
+        return pattern_trends(subject.pattern, counts, simulations=simulations, rng=rng)
+    if settings["rows"] is None:
+        return None
+    shape = (settings["rows"], settings["columns"])
+    return table_trends(counts, shape, side=settings["side"], simulations=simulations, rng=rng)
 
 
 def _blocks(subject: Subject, seed: int, simulations: int) -> Blocks | None:

@@ -19,6 +19,7 @@ from analyse.models import PoissonFit
 from analyse.nulls import SimulatedTest
 from analyse.pattern import Pattern, Unit
 from analyse.quadrats import QuadratCounts
+from analyse.trends import Trends
 from analyse.verdict import Verdict
 
 
@@ -77,6 +78,9 @@ class Findings:
         clumping; where `density` is None it is the only estimate of how many there are.
     clumped_density : ClumpedLimits or None
         The same per square centimetre, to stand beside `density`; None where that is.
+    trend : Trends or None
+        Gradients of the density, tested so that clumping alone is not taken for one; None with
+        fewer than 10 points, and for counts whose places are unknown.
     """
 
     name: str
@@ -103,6 +107,7 @@ class Findings:
     negative_binomial: NegativeBinomialFit | None = None
     clumped_mean: ClumpedLimits | None = None
     clumped_density: ClumpedLimits | None = None
+    trend: Trends | None = None
 
     def __post_init__(self) -> None:
         hold_columns(self, ("expected", "residuals"), length=len(self.counts))

@@ -20,6 +20,7 @@ from analyse.indices import (
     mean_crowding,
     morisita_index,
 )
+from analyse.trend_rows import trend_rows
 from analyse.unseen import planted_cells, planted_rows
 from analyse.verdict import POWER
 from detect.files import Cell, csv_text
@@ -315,6 +316,7 @@ _PARTS = (
     _poisson_rows,
     _planted_rows,
     count_rows,
+    trend_rows,
     block_rows,
 )
 

@@ -234,8 +234,8 @@ def test_huge_counts_do_not_overflow() -> None:
 def test_short_lines() -> None:
     assert two_term_variance([3, 1]).values.tolist() == [2.0]
     assert len(three_term_variance([3, 1])) == 0
-    assert repr(three_term_variance([3, 1])) == "BlockVariance(3TLQV, no sizes)"
-    assert repr(two_term_variance(WAVE)) == "BlockVariance(TTLQV, sizes 1 to 16, peak 20 at 4)"
+    assert repr(three_term_variance([3, 1])) == "<BlockVariance 3TLQV: no sizes>"
+    assert repr(two_term_variance(WAVE)) == "<BlockVariance TTLQV: sizes 1 to 16, peak 20 at 4>"
     with pytest.raises(KeyError):
         two_term_variance([3, 1]).at(2)
 

@@ -67,8 +67,8 @@ def test_a_wave_shows_its_scale_and_students_map_none() -> None:
     assert student.sentence.startswith(
         "The order of the counts departs from chance at no size of block (one p for sizes 1 to 5:"
     )
-    assert repr(wave) == "Blocks(transect of 1 x 32, peak 4, p = 0.001)"
-    assert repr(student).startswith("Blocks(grid of 20 x 20, peak 2, p = ")
+    assert repr(wave) == "<Blocks of a transect of 1 x 32: peak 4, p = 0.001>"
+    assert repr(student).startswith("<Blocks of a grid of 20 x 20: peak 2, p = ")
 
 
 def test_a_slow_change_is_not_called_patches() -> None:
@@ -113,7 +113,7 @@ def test_the_order_test_against_all_orders() -> None:
 def test_equal_counts_and_too_many_are_not_tested() -> None:
     assert of([3] * 8).test is None
     assert of([3] * 8).sentence == ""
-    assert repr(of([3] * 8)) == "Blocks(transect of 1 x 8, peak 1)"
+    assert repr(of([3] * 8)) == "<Blocks of a transect of 1 x 8: peak 1>"
     assert of(np.arange(10_001) % 3, simulations=99).test is None
     with pytest.raises(ValueError, match="need at least 4 quadrats"):
         of([1, 2, 3])
