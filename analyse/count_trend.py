@@ -66,7 +66,7 @@ def fit_count_trend(counts: ArrayLike, *, side: float = 1.0) -> Trend:
     mass = np.exp(z @ found.slope - (z @ found.slope).max())
     expected = n * mass / mass.sum()
     partitions = [
-        (np.bincount(block, x).astype(np.int64), np.bincount(block, expected))
+        (np.bincount(block, x).astype(np.int64), np.bincount(block, expected).astype(np.float64))
         for block in _partitions(row, column, grid.shape)
     ]
     half = np.array([[-columns, -rows], [-columns, rows], [columns, -rows], [columns, rows]])

@@ -46,7 +46,8 @@ class Quadrature:
 
     def integrals(self, values: NDArray[np.float64]) -> NDArray[np.float64]:
         """Return the integral over each polygon of a function given by its values at the nodes."""
-        return np.bincount(self.owner, self.weights * values, minlength=self.polygons)
+        sums = np.bincount(self.owner, self.weights * values, minlength=self.polygons)
+        return np.asarray(sums, dtype=np.float64)
 
 
 def quadrature(polygons: Sequence[BaseGeometry]) -> Quadrature:
