@@ -14,12 +14,13 @@ from analyse.pattern import Pattern, pattern_from_sheet
 from analyse.plan import Trial
 from analyse.report import RenderedPage, render_page, write_report
 from analyse.tables import quadrats_csv, summary_csv, tests_csv
+from detect.amended import current_state
 from detect.amendments import Amendment
 from detect.batch import Failure
 from detect.errors import RequestWrong
 from detect.files import write_text_atomically
 from detect.photograph import Photograph
-from detect.sheet import Sheet, current_state
+from detect.sheet import Sheet
 
 
 @dataclass(frozen=True, slots=True)

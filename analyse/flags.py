@@ -16,6 +16,8 @@ FLAGS: dict[str, str] = {
     "exact_scale": "The scale was given without its uncertainty: the limits of the density count it as"
     " exact.",
     "unreviewed": "No person has checked these spots: everything here rests on the detector alone.",
+    "in_review": "These spots are in review: a person has changed or seen them, but they are not marked as"
+    " checked as they stand.",
     "doubtful": "Counted spots that are more likely false than real: {doubtful} of {n};"
     " check them (orange in the pictures).",
     "outside": "Points outside the study area, which were left out: {outside}.",

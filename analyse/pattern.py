@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from pathlib import Path
 from typing import Literal, get_args
 
@@ -19,9 +19,11 @@ from analyse.errors import TableWrong
 from analyse.region import MM_PER_UNIT, TableUnit, check_area, rectangle
 from analyse.region import area_from_option as area_from_option
 from analyse.rows import read_rows, real_in
+from detect.amended import current_state
+from detect.changes import Changes, changes_of
 from detect.planted import Planted
 from detect.scale import Scale
-from detect.sheet import Amendment, Sheet, current_state
+from detect.sheet import Amendment, Sheet
 
 Unit = Literal["mm", "px"]
 DOUBTFUL = 0.5  # a doubt above this is more likely false than real
@@ -59,7 +61,7 @@ class Pattern:
     doubt : ndarray of shape (n,)
         Estimated probability, 0..1, that a point is no real object.
     reviewed : bool
-        Whether a person has been over the points (always so for a table).
+        Whether a person has marked the points as checked (always so for a table).
     flags : tuple of str
         Reasons for care known already (see `analyse.flags.FLAGS`).
     dish : Circle or None
@@ -72,6 +74,8 @@ class Pattern:
         How near two usual spots may lie to be seen as one, in `unit`; NaN where not measured.
     dish_notes : tuple of str
         What makes the dish unsure.
+    changes : Changes
+        What people did to the spots of a photograph, and whether it is marked as checked.
 
     Raises
     ------
@@ -95,6 +99,7 @@ class Pattern:
     planted: Planted | None = None
     blind: float = math.nan
     dish_notes: tuple[str, ...] = ()
+    changes: Changes = field(default_factory=Changes)
 
     def __post_init__(self) -> None:
         points = np.array(self.points, dtype=np.float64).reshape(-1, 2)
@@ -211,8 +216,27 @@ def pattern_from_sheet(sheet: Sheet, amendments: Sequence[Amendment] = ()) -> Pa
     and counted. Straight edges stay straight under the map of a tilted plane, so only the corners
     of the outline are mapped; where a lens bends them, they are mapped in short pieces.
     """
-    state = current_state(sheet, amendments)
-    spots = state.spots.where(state.spots.counted)
+    if not amendments:
+        return pattern_of_state(sheet, Changes())
+    return pattern_of_state(current_state(sheet, amendments), changes_of(sheet, amendments))
+
+
+def pattern_of_state(sheet: Sheet, changes: Changes) -> Pattern:
+    """Return the counted spots of a sheet as it stands.
+
+    Parameters
+    ----------
+    sheet : Sheet
+        With what people changed applied.
+    changes : Changes
+        What that was.
+
+    Returns
+    -------
+    Pattern
+        As `pattern_from_sheet` does.
+    """
+    spots = sheet.spots.where(sheet.spots.counted)
     inside = sheet.area.contains(spots.centres)
     outside, spots = int((~inside).sum()), spots.where(inside)
     points, area = spots.centres, sheet.area.polygon
@@ -224,7 +248,7 @@ def pattern_from_sheet(sheet: Sheet, amendments: Sequence[Amendment] = ()) -> Pa
     flags += _scale_flags(sheet.scale)
     dish_notes = tuple(sheet.settings.get("dish", ()))
     flags += ("dish_unsure",) if dish_notes else ()
-    flags += () if amendments else ("unreviewed",)
+    flags += changes.flags
     return Pattern(
         sheet.photograph.name,
         points,
@@ -233,13 +257,14 @@ def pattern_from_sheet(sheet: Sheet, amendments: Sequence[Amendment] = ()) -> Pa
         sheet.area.kind,
         sheet.scale.relative_uncertainty if sheet.scale else 0.0,
         spots.doubt,
-        bool(amendments),
+        changes.is_checked,
         flags,
         _circle(area) if sheet.area.kind == "dish" else None,
         outside,
         sheet.planted,
         _blind(sheet),
         dish_notes,
+        changes,
     )
 
 

@@ -3,25 +3,23 @@
 from __future__ import annotations
 
 import json
-import math
 import os
-from dataclasses import dataclass, fields
-from datetime import datetime
+import sys
+from collections.abc import Iterator
+from contextlib import contextmanager
+from dataclasses import dataclass
+from io import FileIO
 from pathlib import Path
-from typing import Any, Literal, get_args
+from typing import Any
 
-from detect.errors import SheetUnreadable
+from detect.amendment import Amendment as Amendment
+from detect.amendment import AmendmentKind as AmendmentKind
+from detect.amendment import SchemaNewer
+from detect.errors import FolderNotWritable, LogCorrupt, LogNewer, SheetUnreadable
+from detect.locked import locked
 
 SHEET_SUFFIX = ".sheet.json"
 AMENDMENTS_SUFFIX = ".amendments.jsonl"
-AmendmentKind = Literal["strike", "restore", "place", "move", "resize"]
-_NEEDED: dict[AmendmentKind, tuple[str, ...]] = {
-    "strike": (),
-    "restore": (),
-    "place": ("x", "y", "radius"),
-    "move": ("x", "y"),
-    "resize": ("radius",),
-}
 
 
 def amendments_path(sheet: Path) -> Path:
@@ -39,8 +37,11 @@ def read_record(path: Path) -> bytes:
 
 
 def load_json(text: bytes) -> Any:
-    """Read UTF-8 JSON in which NaN and infinities are refused (ValueError)."""
-    return json.loads(text.decode("utf-8"), parse_constant=_refuse)
+    """Read UTF-8 JSON in which NaN, infinities and endless nesting are refused (ValueError)."""
+    try:
+        return json.loads(text.decode("utf-8"), parse_constant=_refuse)
+    except RecursionError as trouble:
+        raise ValueError("it is nested too deeply") from trouble
 
 
 def explain(trouble: Exception) -> str:
@@ -55,62 +56,25 @@ def explain(trouble: Exception) -> str:
 
 
 @dataclass(frozen=True, slots=True)
-class Amendment:
-    """One change a person made to a sheet.
+class LogPart:
+    """What a log holds from one of its lines on.
 
     Parameters
     ----------
-    id : str
-        Name of this change, made by whoever makes it; a repeated id is one change.
-    time : str
-        When, as ISO 8601.
-    who : str
-        The person.
-    what : {"strike", "restore", "place", "move", "resize"}
-        The kind of change.
-    spot : str
-        Id of the spot changed; for "place", the new spot's own.
-    x, y : float or None
-        New centre in pixels, for "place" and "move".
-    radius : float or None
-        New radius in pixels, for "place" and "resize".
-
-    Raises
-    ------
-    ValueError
-        If a value is missing, impossible, or does not belong to the kind of change.
+    amendments : tuple of Amendment
+        In order, as they stand, repeats included.
+    end : int
+        Where the last whole line ends, in bytes.
+    lines : int
+        How many whole lines there are up to there.
+    torn : bool
+        Whether a last line was cut short in writing; it is left out.
     """
 
-    id: str
-    time: str
-    who: str
-    what: AmendmentKind
-    spot: str
-    x: float | None = None
-    y: float | None = None
-    radius: float | None = None
-
-    def __post_init__(self) -> None:
-        for name in ("id", "time", "who", "spot"):
-            text = getattr(self, name)
-            if not (isinstance(text, str) and text.strip()):
-                raise ValueError(f"{name} must be a text in quotes, not {text!r}")
-        if self.what not in get_args(AmendmentKind):
-            raise ValueError(f"the change {self.what!r} is not known")
-        try:
-            datetime.fromisoformat(self.time)
-        except ValueError as trouble:
-            raise ValueError(
-                f"time must be a date and time such as 2026-05-04T10:00, not {self.time!r}"
-            ) from trouble
-        for name in ("x", "y", "radius"):
-            _check_number(self.what, name, getattr(self, name))
-
-    def line(self) -> str:
-        """Return the amendment as one line of the log."""
-        values = {field.name: getattr(self, field.name) for field in fields(self)}
-        known = {name: value for name, value in values.items() if value is not None}
-        return json.dumps(known, ensure_ascii=False, allow_nan=False) + "\n"
+    amendments: tuple[Amendment, ...]
+    end: int
+    lines: int
+    torn: bool
 
 
 def read_amendments(path: Path) -> tuple[Amendment, ...]:
@@ -128,30 +92,52 @@ def read_amendments(path: Path) -> tuple[Amendment, ...]:
 
     Raises
     ------
-    SheetUnreadable
+    LogCorrupt
         If a line cannot be read, with its number.
+    LogNewer
+        If a line was written by a later version.
+    SheetUnreadable
+        If the file cannot be opened.
     """
     path = amendments_path(path) if path.name.endswith(SHEET_SUFFIX) else path
-    if not path.exists():
-        return ()
     seen: dict[str, Amendment] = {}
-    pieces = read_record(path).split(b"\n")
-    for number, piece in enumerate(pieces, start=1):
-        try:
-            amendment = _amendment_from(piece)
-        except (ValueError, TypeError) as trouble:
-            if number == len(pieces):
-                break
-            raise SheetUnreadable(
-                f"Line {number} of {path.name} cannot be read ({explain(trouble)});"
-                " put that line right or remove it."
-            ) from trouble
-        if seen.setdefault(amendment.id, amendment) != amendment:
-            raise SheetUnreadable(
+    for number, amendment in enumerate(read_log(path).amendments, start=1):
+        if not seen.setdefault(amendment.id, amendment).is_same_as(amendment):
+            raise LogCorrupt(
                 f"Line {number} of {path.name} repeats the id {amendment.id!r} for another change;"
                 " put that line right or remove it."
             )
     return tuple(seen.values())
+
+
+def read_log(path: Path, *, start: int = 0, lines: int = 0) -> LogPart:
+    """Read a log from a byte on, at which a line begins and before which there are `lines` lines.
+
+    Raises
+    ------
+    LogCorrupt, LogNewer, SheetUnreadable
+        As `read_amendments` does.
+    """
+    try:
+        with path.open("rb") as file:
+            file.seek(start)
+            text = file.read()
+    except FileNotFoundError:
+        return LogPart((), 0, 0, False)
+    except OSError as trouble:
+        reason = (trouble.strerror or str(trouble)).lower()
+        raise SheetUnreadable(f"{path.name} cannot be read ({reason}).") from trouble
+    found: list[Amendment] = []
+    *whole, last = text.split(b"\n")
+    end = start + len(text) - len(last)
+    if start > 0 and whole[:1] == [b""]:
+        del whole[0]  # the end of a line that was whole without it
+    for number, piece in enumerate(whole, start=lines + 1):
+        found.append(_amendment_at(piece, number, path.name))
+    if last and _is_whole(last):
+        found.append(_amendment_at(last, lines + len(found) + 1, path.name))
+        return LogPart(tuple(found), end + len(last), lines + len(found), False)
+    return LogPart(tuple(found), end, lines + len(found), bool(last))
 
 
 def append_amendment(path: Path, amendment: Amendment) -> None:
@@ -162,50 +148,130 @@ def append_amendment(path: Path, amendment: Amendment) -> None:
     path : Path
         The log; made if it does not exist. A last line that was cut short is cut away.
     amendment : Amendment
-        The change; `current_state` tells beforehand whether it can be applied.
+        The change; `detect.amended` tells beforehand whether it can be applied.
+
+    Raises
+    ------
+    FolderNotWritable
+        If the disk is full or the log cannot be written; it is as it was before.
     """
-    descriptor = os.open(path, os.O_RDWR | os.O_CREAT | getattr(os, "O_BINARY", 0), 0o666)
-    with os.fdopen(descriptor, "r+b") as file:
-        before = file.read()
-        whole, torn = before[: before.rfind(b"\n") + 1], before[before.rfind(b"\n") + 1 :]
-        if torn:
-            whole += _completed(torn)
-            file.seek(0)
-            file.truncate()
-            file.write(whole)
-        file.write(amendment.line().encode("utf-8"))
-        file.flush()
-        os.fsync(file.fileno())
+    with opened_log(path) as file:
+        append_to(file, path, amendment)
 
 
-def _check_number(what: AmendmentKind, name: str, value: float | None) -> None:
-    """Refuse a number that is missing, impossible, or does not belong to the kind of change."""
-    needed = name in _NEEDED[what]
-    if needed != (value is not None):
-        raise ValueError(f"{what!r} {'needs' if needed else 'takes no'} {name}")
-    if value is None:
-        return
-    if isinstance(value, bool) or not isinstance(value, int | float) or not math.isfinite(value):
-        raise ValueError(f"{name} must be a number, not {value!r}")
-    if name == "radius" and not value > 0:
-        raise ValueError(f"radius must be positive, not {value!r}")
+@contextmanager
+def opened_log(path: Path) -> Iterator[FileIO]:
+    """Open a log for adding, and keep all other processes from it meanwhile.
 
-
-def _amendment_from(line: bytes) -> Amendment:
-    """Read one line of the log."""
-    values = load_json(line)
-    if not isinstance(values, dict):
-        raise ValueError("not an amendment")
-    return Amendment(**values)
-
-
-def _completed(torn: bytes) -> bytes:
-    """Return a last line that has no end, ended if it is whole, else nothing."""
+    Raises
+    ------
+    FolderNotWritable
+        If it cannot be opened.
+    """
+    flags = os.O_RDWR | os.O_CREAT | getattr(os, "O_BINARY", 0)
     try:
-        _amendment_from(torn)
+        # Without a buffer, which would try again to write what a full disk has refused.
+        file = FileIO(os.open(path, flags, 0o666), "r+b")
+    except OSError as trouble:
+        raise _not_written(path, trouble) from trouble
+    with file, locked(file):
+        yield file
+
+
+def append_to(file: FileIO, path: Path, amendment: Amendment) -> int:
+    """Add one amendment to an opened log, force it to the disk, and return where it ends.
+
+    Raises
+    ------
+    FolderNotWritable
+        If the disk is full or the log cannot be written; it is as it was before.
+    """
+    line = amendment.line_of_log().encode("utf-8")
+    end = file.seek(0, os.SEEK_END)
+    try:
+        torn = _last_line(file, end)
+        if torn and _is_whole(torn):
+            line = b"\n" + line
+        elif torn:
+            end -= len(torn)
+            file.truncate(end)
+        file.seek(end)
+        left = memoryview(line)
+        while left:
+            left = left[file.write(left) :]
+        os.fsync(file.fileno())
+        if end == 0:
+            _keep_name(path.parent)
+    except OSError as trouble:
+        _take_back(file, end)
+        raise _not_written(path, trouble) from trouble
+    return end + len(line)
+
+
+def _keep_name(folder: Path) -> None:
+    """Force to the disk that there is a new file in a folder, where that can be asked for."""
+    if sys.platform == "win32":
+        return
+    descriptor = os.open(folder, os.O_RDONLY)
+    try:
+        os.fsync(descriptor)
+    finally:
+        os.close(descriptor)
+
+
+def _take_back(file: FileIO, end: int) -> None:
+    """Cut away what was written of a line; if that fails as well, the line is torn, and known as such."""
+    try:
+        os.ftruncate(file.fileno(), end)
+    except OSError:
+        return
+
+
+def _last_line(file: FileIO, end: int) -> bytes:
+    """Return what stands after the last line's end."""
+    found, at, step = b"", end, 4096
+    while at > 0 and b"\n" not in found:
+        at = max(0, at - step)
+        file.seek(at)
+        found = file.read(end - at)
+        step *= 4
+    return found[found.rfind(b"\n") + 1 :]
+
+
+def _amendment_at(line: bytes, number: int, name: str) -> Amendment:
+    """Read one line of the log."""
+    try:
+        return Amendment.from_dict(load_json(line))
+    except SchemaNewer as trouble:
+        raise LogNewer(
+            f"Line {number} of {name} was written by a later version of strewn ({trouble});"
+            " use that version."
+        ) from trouble
+    except (ValueError, TypeError) as trouble:
+        raise LogCorrupt(
+            f"Line {number} of {name} cannot be read ({explain(trouble)});"
+            " put that line right or remove it."
+        ) from trouble
+
+
+def _is_whole(line: bytes) -> bool:
+    """Tell whether a last line that has no end lacks nothing else."""
+    try:
+        Amendment.from_dict(load_json(line))
+    except SchemaNewer:
+        return True
     except (ValueError, TypeError):
-        return b""
-    return torn + b"\n"
+        return False
+    return True
+
+
+def _not_written(path: Path, trouble: OSError) -> FolderNotWritable:
+    """Say that a change could not be written, and why."""
+    reason = (trouble.strerror or str(trouble)).lower()
+    return FolderNotWritable(
+        f"{path.name} cannot be written to {path.parent} ({reason}); nothing was changed."
+        " Make room, or make the folder writable."
+    )
 
 
 def _refuse(constant: str) -> float:

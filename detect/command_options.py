@@ -76,7 +76,7 @@ LearnUnchangedOption = Annotated[
     bool,
     typer.Option(
         "--learn-unchanged",
-        help="Learn from the sheets nobody amended as well: they were looked at and are all right.",
+        help="Learn from the sheets not marked as checked as well: they were looked at and are right as they stand.",
         rich_help_panel=LEARNING,
     ),
 ]

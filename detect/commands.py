@@ -180,7 +180,7 @@ def _reviewed(
         )
     if left_out:
         sheets = "1 sheet" if left_out == 1 else f"{left_out} sheets"
-        typer.echo(f"Nothing is learned from {sheets} that nobody has amended.", err=True)
+        typer.echo(f"Nothing is learned from {sheets} that nobody has marked as checked.", err=True)
     return reviewed
 
 

@@ -4,6 +4,7 @@
     ├── RequestWrong            the request cannot be carried out as asked (exit 2)
     │   ├── OptionWrong         an option's value is impossible or does not apply
     │   ├── AreaWrong           a study area given by hand cannot be used
+    │   ├── AmendmentRefused    a change does not fit the sheet as it is
     │   ├── TaughtUnreadable    a file of what was learned cannot be used
     │   └── NothingLearned      corrections from which nothing can be learned
     └── PhotographFailed        one photograph cannot be done (exit 1; others go on)
@@ -11,6 +12,8 @@
         ├── AreaNotFound            the dish or leaf cannot be found in the picture
         ├── ScaleNotFound           the marks or the bar of known length cannot be found in the picture
         ├── SheetUnreadable         a sheet, or its amendments, cannot be read
+        │   ├── LogCorrupt          a line of the amendments is no amendment, or does not fit
+        │   └── LogNewer            a line of the amendments is of a later version
         └── AmendmentsPresent       a sheet with hand edits would be overwritten
     FolderNotWritable (a RequestWrong) results cannot be written
 
@@ -34,6 +37,10 @@ class OptionWrong(RequestWrong):
 
 class AreaWrong(RequestWrong):
     """A study area given by hand cannot be used: it crosses itself or misses the picture."""
+
+
+class AmendmentRefused(RequestWrong):
+    """A change does not fit the sheet as it is: no such spot, a taken id, outside the photograph."""
 
 
 class TaughtUnreadable(RequestWrong):
@@ -66,6 +73,14 @@ class ScaleNotFound(PhotographFailed):
 
 class SheetUnreadable(PhotographFailed):
     """A sheet or its amendments cannot be read."""
+
+
+class LogCorrupt(SheetUnreadable):
+    """A line of the amendments cannot be read, or cannot be applied."""
+
+
+class LogNewer(SheetUnreadable):
+    """A line of the amendments was written by a later version."""
 
 
 class AmendmentsPresent(PhotographFailed):

@@ -5,19 +5,28 @@ from __future__ import annotations
 import os
 from collections.abc import Sequence
 from dataclasses import dataclass, replace
+from datetime import UTC, datetime
 from pathlib import Path
 from typing import Any
+from uuid import uuid4
 
 import numpy as np
 
-from detect.amendments import Amendment, amendments_path, read_amendments
+from detect.amended import current_state
+from detect.amendments import (
+    Amendment,
+    amendments_path,
+    append_amendment,
+    read_amendments,
+)
+from detect.changes import changes_of
 from detect.errors import AmendmentsPresent, PhotographFailed
 from detect.files import write_bytes_atomically, write_text_atomically
 from detect.matching import match_spots
 from detect.on_map import points_geojson
 from detect.overlay import overlay_jpeg
 from detect.photograph import Photograph, read_photograph
-from detect.sheet import Sheet, current_state, points_csv, read_sheet, sheet_path, write_sheet
+from detect.sheet import Sheet, points_csv, read_sheet, sheet_path, write_sheet
 from detect.spots import Spots
 
 
@@ -81,7 +90,9 @@ def write_detection(
         )
     sheet = replace(sheet, settings=sheet.settings | {"photograph_at": _way(photograph, folder)})
     if amendments:
-        sheet = carry_over(_same_photograph(path, sheet), sheet, amendments)
+        old = _same_photograph(path, sheet)
+        sheet = carry_over(old, sheet, amendments)
+        amendments = _mark_taken_back(path, old, sheet, amendments)
     outcome = Outcome(sheet, amendments, path)
     write_views(photograph, outcome.state, folder)
     write_sheet(sheet, folder)
@@ -150,16 +161,38 @@ def carry_over(old: Sheet, new: Sheet, amendments: Sequence[Amendment]) -> Sheet
     names: dict[int, str] = {
         int(i): old.spots.id[j] for i, j in zip(match.found, match.truth, strict=True)
     }
-    used = {*old.spots.id, *(amendment.spot for amendment in amendments)}
+    used = {*old.spots.id, *(spot for each in amendments for spot in each.touched)}
     following = 1 + max((int(name) for name in used if name.isdecimal()), default=0)
     for i in range(len(fresh)):
         if i not in names:
             names[i] = str(following)
             following += 1
     renamed = replace(fresh, id=tuple(names[i] for i in range(len(fresh))))
-    touched = {amendment.spot for amendment in amendments}
+    touched = {spot for each in amendments for spot in each.changed}
     lost = [i for i, name in enumerate(old.spots.id) if name in touched - set(renamed.id)]
     return replace(new, spots=_joined(renamed, old.spots.where(lost)))
+
+
+def _mark_taken_back(
+    path: Path, old: Sheet, new: Sheet, amendments: tuple[Amendment, ...]
+) -> tuple[Amendment, ...]:
+    """Take back the mark that a photograph is checked, where a person has not seen what was found now."""
+    if changes_of(old, amendments).checked_by is None or _alike(old, new):
+        return amendments
+    now = datetime.now(UTC).isoformat(timespec="seconds")
+    taken_back = Amendment(f"detected again {uuid4().hex}", now, "strewn detect", "unchecked")
+    append_amendment(amendments_path(path), taken_back)
+    return (*amendments, taken_back)
+
+
+def _alike(one: Sheet, other: Sheet) -> bool:
+    """Whether two sheets have the same spots in the same area."""
+    names = ("x", "y", "radius")
+    return (
+        one.spots.id == other.spots.id
+        and all(np.array_equal(getattr(one.spots, n), getattr(other.spots, n)) for n in names)
+        and one.area.polygon.equals(other.area.polygon)
+    )
 
 
 def _placed(spots: Spots) -> Spots:

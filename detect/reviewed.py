@@ -12,11 +12,13 @@ import shapely
 from numpy.typing import NDArray
 from shapely.geometry.base import BaseGeometry
 
+from detect.amended import current_state
 from detect.amendments import amendments_path, read_amendments
+from detect.changes import changes_of
 from detect.errors import NothingLearned
 from detect.gather import gather_sheets
 from detect.readers import READERS
-from detect.sheet import Sheet, current_state, read_sheet
+from detect.sheet import Sheet, read_sheet
 from detect.wanted import DetectOptions
 
 FEWEST_SPOTS = 10
@@ -88,21 +90,21 @@ def gather_reviewed(folder: Path, *, unchanged: bool = False) -> tuple[list[Revi
     Parameters
     ----------
     folder : Path
-        A folder of sheets, or one sheet; those with amendments count as reviewed.
+        A folder of sheets, or one sheet; those that a person marked as checked count as reviewed.
     unchanged : bool
-        A person has looked at all of them: those without amendments are right as they are.
+        A person has looked at all of them: those not marked as checked are right as they stand.
 
     Returns
     -------
     list of Reviewed
         In natural order.
     int
-        How many sheets were left out, for nobody has amended them.
+        How many sheets were left out, for nobody has marked them as checked.
 
     Raises
     ------
     NothingLearned
-        If no sheet has amendments, the sheets ask for unlike things, a photograph is gone or
+        If no sheet is marked as checked, the sheets ask for unlike things, a photograph is gone or
         changed, or fewer than ten spots were reviewed.
     RequestWrong
         If the folder holds no sheets.
@@ -110,11 +112,11 @@ def gather_reviewed(folder: Path, *, unchanged: bool = False) -> tuple[list[Revi
         If a sheet or its amendments cannot be read.
     """
     paths = gather_sheets([folder])
-    reviewed = [_reviewed(path) for path in paths if unchanged or read_amendments(path)]
+    reviewed = [_reviewed(path) for path in paths if unchanged or _is_checked(path)]
     if not reviewed:
         raise NothingLearned(
-            f"None of the {len(paths)} sheets in {folder} has been reviewed: nothing was struck or"
-            " placed on them. Correct some, or add --learn-unchanged if all are right as they are."
+            f"None of the {len(paths)} sheets in {folder} has been marked as checked. Review some and"
+            " mark them, or add --learn-unchanged if all are right as they stand."
         )
     _check_alike(reviewed)
     spots = sum(len(each.real) + len(each.struck) for each in reviewed)
@@ -130,6 +132,12 @@ def _polygons(geometry: BaseGeometry) -> BaseGeometry:
     """Return the polygons of a geometry, without the lines and points of a grazing cut."""
     parts = shapely.get_parts(geometry)
     return shapely.union_all([part for part in parts if part.geom_type == "Polygon"])
+
+
+def _is_checked(path: Path) -> bool:
+    """Whether a person has marked a sheet as checked, and it is as it was then."""
+    amendments = read_amendments(path)
+    return bool(amendments) and changes_of(read_sheet(path), amendments).is_checked
 
 
 def _reviewed(path: Path) -> Reviewed:

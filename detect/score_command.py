@@ -9,6 +9,7 @@ from typing import Annotated
 
 import typer
 
+from detect.amended import current_state
 from detect.amendments import read_amendments
 from detect.batch import Each, Failure, do_each
 from detect.breakdown import Part, parts_csv, parts_of
@@ -20,7 +21,7 @@ from detect.gather import gather_sheets
 from detect.lengths import Length, parse_length
 from detect.outcome import photograph_of
 from detect.reliability import area_under_curve, reliability, reliability_csv
-from detect.sheet import Sheet, current_state, read_sheet
+from detect.sheet import Sheet, read_sheet
 from detect.terminal import exit_if_failed, number_text, show_failures, show_path, show_table
 from detect.truth import read_truth
 

@@ -3,9 +3,8 @@
 from __future__ import annotations
 
 import json
-import math
 from collections.abc import Sequence
-from dataclasses import dataclass, fields, replace
+from dataclasses import dataclass, fields
 from pathlib import Path
 from typing import Any
 
@@ -190,7 +189,7 @@ def points_csv(sheet: Sheet) -> str:
     Parameters
     ----------
     sheet : Sheet
-        As found, or with amendments applied by `current_state`.
+        As found, or with amendments applied by `detect.amended.current_state`.
 
     Returns
     -------
@@ -216,76 +215,6 @@ def points_csv(sheet: Sheet) -> str:
         np.where(spots.counted, "counted", "struck").tolist(),
     )
     return csv_text(_POINT_COLUMNS, zip(*columns, strict=True), digits=7)
-
-
-def current_state(sheet: Sheet, amendments: Sequence[Amendment]) -> Sheet:
-    """Apply amendments to a sheet: strike, restore, place, move, resize.
-
-    Parameters
-    ----------
-    sheet : Sheet
-        As found.
-    amendments : sequence of Amendment
-        In order.
-
-    Returns
-    -------
-    Sheet
-        The same sheet with its spots changed; spots are never removed, only struck.
-
-    Raises
-    ------
-    SheetUnreadable
-        If an amendment names a spot the sheet has not, places one under a taken id, or leaves
-        the photograph.
-    """
-    if not amendments:
-        return sheet
-    columns: dict[str, list[Any]] = {
-        name: list(getattr(sheet.spots, name)) for name in _SPOT_COLUMNS
-    }
-    at = {name: row for row, name in enumerate(sheet.spots.id)}
-    for amendment in amendments:
-        _check_applies(sheet, amendment, at)
-        _apply(amendment, columns, at)
-    names = tuple(columns.pop("id"))
-    return replace(sheet, spots=Spots(names, **{k: np.array(v) for k, v in columns.items()}))
-
-
-def _apply(amendment: Amendment, columns: dict[str, list[Any]], at: dict[str, int]) -> None:
-    """Apply one amendment that has been checked to columns of spots, each found by its id."""
-    if amendment.what == "place":
-        at[amendment.spot] = len(at)
-        fresh = {"id": amendment.spot, "contrast": np.nan, "fill": 1.0, "doubt": 0.0}
-        for name, column in columns.items():
-            column.append(fresh.get(name, False))
-    row = at[amendment.spot]
-    if amendment.x is not None:
-        columns["x"][row], columns["y"][row] = amendment.x, amendment.y
-    if amendment.radius is not None:
-        columns["radius"][row] = amendment.radius
-        columns["area"][row] = math.pi * amendment.radius**2
-    if amendment.what in ("strike", "restore", "place"):
-        columns["counted"][row] = amendment.what != "strike"
-
-
-def _check_applies(sheet: Sheet, amendment: Amendment, known: dict[str, Any]) -> None:
-    """Refuse an amendment that does not fit the sheet."""
-    if (amendment.what == "place") == (amendment.spot in known):
-        trouble = "already is one" if amendment.what == "place" else "is no such spot"
-        raise SheetUnreadable(
-            f"The amendment {amendment.id!r} of {sheet.photograph.name} would {amendment.what}"
-            f" spot {amendment.spot!r}, but there {trouble}; put its log right."
-        )
-    width, height = sheet.photograph.width, sheet.photograph.height
-    inside = amendment.x is None or (
-        -0.5 <= amendment.x <= width - 0.5 and -0.5 <= (amendment.y or 0.0) <= height - 0.5
-    )
-    if not inside:
-        raise SheetUnreadable(
-            f"The amendment {amendment.id!r} of {sheet.photograph.name} puts a spot at"
-            f" {amendment.x:g}, {amendment.y:g}, outside the photograph; put its log right."
-        )
 
 
 def _sheet_text(sheet: Sheet) -> str:

@@ -23,7 +23,7 @@ def review(
     usual_radius: float = 6.0,
     margin: float = 0.0,
 ) -> None:
-    """Write a sheet and the amendments of a person who knows the truth.
+    """Write a sheet and the amendments of a person who knows the truth, and marks it as checked.
 
     Where a radius is unknown (NaN), `usual_radius` says how near a spot must lie, and what is placed
     is as large as what was found. False spots nearer to the frame than `margin` are let stand.
@@ -38,10 +38,12 @@ def review(
         np.flatnonzero(edge >= margin) if margin else np.arange(len(spots)), match.found
     )
     typical = float(np.median(spots.radius)) if len(spots) else usual_radius
+    changes: list[tuple[str, str | None, dict[str, float]]]
     changes = [("strike", spots.id[i], {}) for i in false]
     for k in np.setdiff1d(np.arange(len(truth)), match.truth):
         r = typical if np.isnan(radius[k]) else float(radius[k])
         x, y = (float(v) for v in np.clip(truth[k], 0, size - 1))
         changes.append(("place", f"p{k}", {"x": x, "y": y, "radius": r}))
+    changes.append(("checked", None, {}))
     for k, (what, spot, values) in enumerate(changes):
         append_amendment(log, Amendment(str(k), "2026-01-01T12:00", "truth", what, spot, **values))

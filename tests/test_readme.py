@@ -73,13 +73,14 @@ def test_exactly_two_commands_lead_from_nothing_to_verdict_and_tests() -> None:
     assert blocks(README)[:2] == [first, second]
 
 
-def test_the_lines_that_strike_and_place_a_spot_are_such(tmp_path: Path) -> None:
+def test_the_lines_that_strike_place_and_check_are_such(tmp_path: Path) -> None:
     (block,) = re.findall(r"```json\n(.*?)```", README, flags=re.DOTALL)
     log = tmp_path / "a.amendments.jsonl"
     log.write_text(block, encoding="utf-8")
-    struck, placed = read_amendments(log)
+    struck, placed, checked = read_amendments(log)
     assert (struck.what, struck.spot) == ("strike", "12")
     assert (placed.what, placed.x, placed.y, placed.radius) == ("place", 640.5, 480, 12)
+    assert checked.what == "checked"
 
 
 def test_keys_of_recipes_named_in_the_text_exist() -> None:

@@ -66,8 +66,15 @@ def test_amendments_are_applied_and_struck_spots_left_out() -> None:
         pytest.approx(p) for p in ([1, 2], [6, 4], [15, 7], [0.5, 0.5])
     ]
     assert pattern.doubt.tolist() == [0, 0.1, 0.9, 0]
-    assert pattern.reviewed
+    assert not pattern.reviewed
     assert "unreviewed" not in pattern.flags
+    assert "in_review" in pattern.flags
+    checked = Amendment("4", "2026-01-01T13:00:00", "B", "checked")
+    pattern = pattern_from_sheet(sheet(), [*changes, checked])
+    assert pattern.reviewed
+    assert {"unreviewed", "in_review"} & set(pattern.flags) == set()
+    assert (pattern.changes.checked_by, pattern.changes.people) == ("B", ("A", "B"))
+    assert (pattern.changes.placed, pattern.changes.struck, pattern.changes.moved) == (1, 1, 1)
 
 
 def test_spots_outside_the_area_are_left_out_and_counted() -> None:

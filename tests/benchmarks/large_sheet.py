@@ -23,18 +23,11 @@ sys.path.insert(0, str(Path(__file__).resolve().parents[2]))
 from analyse.analysis import analyse_sheet
 from analyse.grid_options import GridOptions
 from analyse.plan import Trial
+from detect.amended import current_state
 from detect.amendments import Amendment
 from detect.area import frame_area
 from detect.scale import Scale
-from detect.sheet import (
-    SCHEMA,
-    PhotographIdentity,
-    Sheet,
-    current_state,
-    points_csv,
-    read_sheet,
-    write_sheet,
-)
+from detect.sheet import SCHEMA, PhotographIdentity, Sheet, points_csv, read_sheet, write_sheet
 from detect.spots import Spots
 
 Result = TypeVar("Result")

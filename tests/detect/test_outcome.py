@@ -9,6 +9,7 @@ import numpy as np
 import pytest
 from shapely.geometry import box
 
+from detect.amended import current_state
 from detect.area import StudyArea
 from detect.errors import AmendmentsPresent
 from detect.outcome import carry_over, write_detection
@@ -19,7 +20,6 @@ from detect.sheet import (
     Sheet,
     amendments_path,
     append_amendment,
-    current_state,
     read_sheet,
     sheet_path,
 )

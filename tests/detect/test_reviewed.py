@@ -86,7 +86,9 @@ def test_halves_of_a_ragged_area_are_areas(detected: tuple[Path, Sheet], tmp_pat
     assert sum(part.area for part in parts) == pytest.approx(ragged.area)
 
 
-def test_sheets_nobody_amended_are_left_out(detected: tuple[Path, Sheet], tmp_path: Path) -> None:
+def test_sheets_nobody_marked_as_checked_are_left_out(
+    detected: tuple[Path, Sheet], tmp_path: Path
+) -> None:
     reviewed_by_truth(detected, tmp_path)
     sheet = detected[1]
     for name in ("b.png", "c.png"):
@@ -104,7 +106,9 @@ def test_sheets_that_nobody_reviewed_teach_nothing(
     detected: tuple[Path, Sheet], tmp_path: Path
 ) -> None:
     write_sheet(detected[1], tmp_path)
-    with pytest.raises(NothingLearned, match=r"None of the 1 sheets in .* has been reviewed"):
+    with pytest.raises(
+        NothingLearned, match=r"None of the 1 sheets in .* has been marked as checked"
+    ):
         gather_reviewed(tmp_path)
     empty = tmp_path / "empty"
     empty.mkdir()
@@ -158,6 +162,7 @@ def test_unlike_sheets_are_refused(
     )
     log = amendments_path(write_sheet(other, tmp_path))
     append_amendment(log, Amendment("1", "2026-05-04T10:00", "Ann", "strike", "1"))
+    append_amendment(log, Amendment("2", "2026-05-04T10:01", "Ann", "checked"))
     with pytest.raises(NothingLearned, match=message):
         gather_reviewed(tmp_path)
 

@@ -13,6 +13,7 @@ from hypothesis import given
 from hypothesis import strategies as st
 from shapely.geometry import MultiPolygon, Point, box
 
+from detect.amended import current_state
 from detect.amendments import load_json
 from detect.area import StudyArea
 from detect.errors import SheetUnreadable
@@ -24,7 +25,6 @@ from detect.sheet import (
     Sheet,
     amendments_path,
     append_amendment,
-    current_state,
     points_csv,
     read_amendments,
     read_sheet,
@@ -274,7 +274,7 @@ def test_a_torn_last_line_is_left_out_and_then_cut_away(tmp_path: Path) -> None:
     append_amendment(log, an_edit())
     whole = log.read_bytes()
     for cut in range(1, len(whole) - 1):
-        log.write_bytes(whole + an_edit(name="e2").line().encode()[:cut])
+        log.write_bytes(whole + an_edit(name="e2").line_of_log().encode()[:cut])
         assert read_amendments(log) == (an_edit(),)
     append_amendment(log, an_edit(name="e3"))
     assert read_amendments(log) == (an_edit(), an_edit(name="e3"))
@@ -282,7 +282,7 @@ def test_a_torn_last_line_is_left_out_and_then_cut_away(tmp_path: Path) -> None:
 
 def test_a_last_line_that_only_lacks_its_end_counts(tmp_path: Path) -> None:
     log = tmp_path / "a.amendments.jsonl"
-    log.write_text(an_edit().line().rstrip("\n"))
+    log.write_text(an_edit().line_of_log().rstrip("\n"))
     assert read_amendments(log) == (an_edit(),)
     append_amendment(log, an_edit(name="e2"))
     assert read_amendments(log) == (an_edit(), an_edit(name="e2"))
@@ -291,7 +291,7 @@ def test_a_last_line_that_only_lacks_its_end_counts(tmp_path: Path) -> None:
 @pytest.mark.parametrize("bad", ["{", "[]", '{"id": "x"}', "\0\0", ""])
 def test_a_bad_line_in_the_middle_is_an_error_with_its_number(tmp_path: Path, bad: str) -> None:
     log = tmp_path / "a.amendments.jsonl"
-    log.write_text(an_edit().line() + bad + "\n" + an_edit(name="e2").line())
+    log.write_text(an_edit().line_of_log() + bad + "\n" + an_edit(name="e2").line_of_log())
     message = r"Line 2 of a\.amendments\.jsonl cannot be read \(.*\); put that line right"
     with pytest.raises(SheetUnreadable, match=message):
         read_amendments(log)
@@ -299,13 +299,13 @@ def test_a_bad_line_in_the_middle_is_an_error_with_its_number(tmp_path: Path, ba
 
 def test_a_repeated_edit_counts_once(tmp_path: Path) -> None:
     log = tmp_path / "a.amendments.jsonl"
-    log.write_text(an_edit().line() * 2 + an_edit("restore", name="e2").line())
+    log.write_text(an_edit().line_of_log() * 2 + an_edit("restore", name="e2").line_of_log())
     assert [edit.id for edit in read_amendments(log)] == ["e1", "e2"]
 
 
 def test_one_id_for_two_edits_is_an_error(tmp_path: Path) -> None:
     log = tmp_path / "a.amendments.jsonl"
-    log.write_text(an_edit().line() + an_edit("restore").line())
+    log.write_text(an_edit().line_of_log() + an_edit("restore").line_of_log())
     with pytest.raises(SheetUnreadable, match=r"Line 2 .* repeats the id 'e1' for another change"):
         read_amendments(log)
 

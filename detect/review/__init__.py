@@ -1,0 +1,1 @@
+"""The page on which people check spots, and the server behind it."""

@@ -1,0 +1,54 @@
+"""What a request says, read with suspicion."""
+
+from __future__ import annotations
+
+import math
+from typing import Any
+
+from starlette.requests import Request
+
+from detect.amendments import load_json
+from detect.review.record import MOST_AMENDMENTS
+
+
+class Wrong(Exception):
+    """A request that cannot be answered: status, code and sentence."""
+
+    def __init__(self, status: int, code: str, message: str) -> None:
+        super().__init__(message)
+        self.status, self.code = status, code
+
+
+def asked_changes(body: bytes) -> list[Any]:
+    """Read the changes that a request asks for."""
+    try:
+        values = load_json(body)
+    except ValueError as trouble:
+        raise Wrong(400, "json", "The request is no JSON; nothing was changed.") from trouble
+    asked = values.get("amendments") if isinstance(values, dict) and len(values) == 1 else None
+    if not isinstance(asked, list) or not 1 <= len(asked) <= MOST_AMENDMENTS:
+        raise Wrong(
+            400,
+            "request",
+            f"The request must hold 1 to {MOST_AMENDMENTS} amendments and nothing else;"
+            " nothing was changed.",
+        )
+    return asked
+
+
+def whole_number(text: str | None) -> int:
+    """Read a whole number from an address."""
+    if text is None or not (text.isascii() and text.isdecimal() and len(text) <= 12):
+        raise Wrong(400, "request", "A whole number is missing in the address.")
+    return int(text)
+
+
+def number_within(request: Request, name: str, low: float, high: float) -> float:
+    """Read a number within bounds from an address."""
+    try:
+        value = float(request.query_params.get(name, ""))
+    except ValueError:
+        value = math.nan
+    if not low <= value <= high:
+        raise Wrong(400, "request", f"{name} must be a number from {low:g} to {high:g}.")
+    return value
