@@ -13,6 +13,7 @@ from scipy.spatial import cKDTree
 from shapely.geometry.base import BaseGeometry
 
 from analyse.boundary import Boundary
+from analyse.hopkins_skellam import against_neighbours
 from analyse.nulls import random_points
 from analyse.pair_bins import PairBins
 from analyse.pair_sums import BinnedPairs, DirectPairs, PairSums
@@ -216,15 +217,13 @@ class Ruler:
         scale = 2 * self.area.area**2 / (len(xy) * (len(xy) - 1))
         sums = self.pairs.sums(xy) * scale
         r = self.x["l_function"]
-        apart = float(np.mean(nearest**2))
-        skellam = float(np.mean(empty**2)) / apart if apart > 0 else math.inf
         return np.concatenate(
             [
                 np.sqrt(self._to_k @ sums / math.pi) - r,
                 self._to_g @ sums,
                 self._nearest_neighbour(xy, nearest),
                 self._empty_space(empty),
-                [nearest.mean(), skellam],
+                [nearest.mean(), against_neighbours(empty, nearest)],
             ]
         )
 
