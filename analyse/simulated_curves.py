@@ -2,21 +2,32 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable
-from concurrent.futures import ThreadPoolExecutor
+from collections.abc import Callable, Iterator
+from concurrent.futures import ProcessPoolExecutor
+from concurrent.futures.process import BrokenProcessPool
+from dataclasses import dataclass
+from multiprocessing import get_context
 
 import numpy as np
 from numpy.typing import NDArray
 
 from analyse.chance import check_seed
 from analyse.nulls import Null
+from detect.errors import RequestWrong
 
-Curves = Callable[[NDArray[np.float64]], NDArray[np.float64]]
+Floats = NDArray[np.float64]
+_SHARES = 8  # of the work for each process, so that none waits long for another
 
 
 def simulate_curves(
-    curves: Curves, null: Null, *, n: int, simulations: int, seed: int, workers: int = 1
-) -> NDArray[np.float64]:
+    curves: Callable[[Floats], Floats],
+    null: Null,
+    *,
+    n: int,
+    simulations: int,
+    seed: int,
+    workers: int = 1,
+) -> Floats:
     """Return the curves of patterns drawn under a null.
 
     Parameters
@@ -32,7 +43,9 @@ def simulate_curves(
     seed : int
         0 or more. Simulation i depends on the seed and i alone.
     workers : int
-        How many threads share the work; the result does not depend on it.
+        How many processes share the work; the result does not depend on it. With more than one,
+        `curves` and `null` are sent to them, and the program that calls must be importable (its
+        own start behind ``if __name__ == "__main__"``).
 
     Returns
     -------
@@ -42,6 +55,8 @@ def simulate_curves(
     ------
     OptionWrong
         If the seed is negative.
+    RequestWrong
+        If the system ended a process (mostly for want of memory).
     ValueError
         If there are no simulations or workers, or `curves` does not always give k values.
 
@@ -65,27 +80,70 @@ def simulate_curves(
             f"there must be 1 or more simulations and workers, not {simulations} and {workers}"
         )
 
-    def one(i: int) -> NDArray[np.float64]:
-        return np.asarray(curves(null.draw(n, stream_of(seed, i))), dtype=np.float64)
-
-    first = one(0)
-    found = np.empty((simulations, first.size))
-    found[0] = first
-
-    def fill(rows: range) -> None:
-        for i in rows:
-            values = one(i)
-            if values.shape != first.shape:
-                raise ValueError(f"curves of shape {values.shape} after some of {first.shape}")
-            found[i] = values
-
-    shares = [range(1 + k, simulations, workers) for k in range(workers)]
-    if workers == 1:
-        fill(shares[0])
-    else:
-        with ThreadPoolExecutor(workers) as pool:
-            list(pool.map(fill, shares))
+    work = _Work(curves, null, n, seed)
+    first = work(range(1))
+    found = np.empty((simulations, first.shape[1]))
+    found[:1] = first
+    shares = _shares(simulations, workers)
+    done = map(work, shares) if workers == 1 else _on_many(work, shares, workers)
+    for rows, values in zip(shares, done, strict=True):
+        if values.shape[1:] != first.shape[1:]:
+            raise ValueError(
+                f"the curves of some patterns have {values.shape[1]} values, of others"
+                f" {first.shape[1]}"
+            )
+        found[rows.start : rows.stop] = values
     return found
+
+
+@dataclass(frozen=True, slots=True)
+class _Work:
+    """How the curves of any simulations are found."""
+
+    curves: Callable[[Floats], Floats]
+    null: Null
+    n: int
+    seed: int
+
+    def __call__(self, rows: range) -> Floats:
+        """Return the curves of some simulations, one in a row."""
+        drawn = (self.null.draw(self.n, stream_of(self.seed, i)) for i in rows)
+        return np.stack([np.asarray(self.curves(xy), dtype=np.float64) for xy in drawn])
+
+
+def _shares(simulations: int, workers: int) -> list[range]:
+    """Cut the simulations after the first into shares."""
+    length = max(1, -(-simulations // (workers * _SHARES)))
+    starts = range(1, simulations, length)
+    return [range(start, min(start + length, simulations)) for start in starts]
+
+
+def _on_many(work: _Work, shares: list[range], workers: int) -> Iterator[Floats]:
+    """Do shares on several processes, which start afresh so that no state leaks into them."""
+    processes = min(workers, max(1, len(shares)))
+    with ProcessPoolExecutor(
+        processes, mp_context=get_context("spawn"), initializer=_begin, initargs=(work,)
+    ) as pool:
+        try:
+            yield from pool.map(_one_share, shares)
+        except BrokenProcessPool as trouble:
+            raise RequestWrong(
+                "The system ended a process of the simulations, mostly for want of memory;"
+                " try again with one worker."
+            ) from trouble
+
+
+_begun: list[_Work] = []  # in a process of its own: what it was started for
+
+
+def _begin(work: _Work) -> None:
+    """Keep the work of a fresh process."""
+    _begun[:] = [work]
+
+
+def _one_share(rows: range) -> Floats:
+    """Do one share in a process that has begun."""
+    return _begun[0](rows)
 
 
 def stream_of(seed: int, i: int) -> np.random.Generator:

@@ -10,7 +10,7 @@ from numpy.typing import NDArray
 
 from analyse.nulls import CompleteRandomness
 from analyse.scales import Sides
-from analyse.simulated_curves import simulate_curves, stream_of
+from analyse.simulated_curves import _shares, simulate_curves, stream_of
 from detect.errors import OptionWrong
 from tests.analyse.areas import RAGGED
 
@@ -28,12 +28,13 @@ def test_any_number_of_workers_gives_the_same_bytes() -> None:
         simulate_curves(curves, NULL, n=80, simulations=101, seed=7, workers=k) for k in (1, 2, 3)
     )
     assert one.tobytes() == two.tobytes() == three.tobytes()
+    assert one[0].tobytes() == curves(NULL.draw(80, stream_of(7, 0))).tobytes()
     assert one.shape == (101, len(Sides.of(RAGGED, 80)))
 
 
 def test_a_simulation_depends_on_the_seed_and_its_number_alone() -> None:
     long = simulate_curves(nearest, NULL, n=30, simulations=20, seed=3)
-    short = simulate_curves(nearest, NULL, n=30, simulations=5, seed=3, workers=2)
+    short = simulate_curves(nearest, NULL, n=30, simulations=5, seed=3)
     assert long[:5].tolist() == short.tolist()
     again = nearest(NULL.draw(30, stream_of(3, 17)))
     assert long[17].tolist() == again.tolist()
@@ -42,8 +43,11 @@ def test_a_simulation_depends_on_the_seed_and_its_number_alone() -> None:
     assert len(np.unique(long)) == long.size
 
 
-def test_more_workers_than_simulations() -> None:
-    assert simulate_curves(nearest, NULL, n=5, simulations=2, seed=1, workers=8).shape == (2, 4)
+def test_one_simulation_alone() -> None:
+    assert simulate_curves(nearest, NULL, n=5, simulations=1, seed=1).shape == (1, 4)
+    for workers in (1, 3):
+        shares = _shares(100, workers)
+        assert [i for rows in shares for i in rows] == list(range(1, 100))
 
 
 def test_no_pattern_is_kept() -> None:
@@ -63,9 +67,10 @@ def test_what_cannot_be_simulated_is_refused() -> None:
     with pytest.raises(ValueError, match="not 9 and 0"):
         simulate_curves(nearest, NULL, n=5, simulations=9, seed=1, workers=0)
 
-    def uneven(points: NDArray[np.float64]) -> NDArray[np.float64]:
-        return points[: int(points[0, 0]) + 20, 0]
-
-    for workers in (1, 2):
-        with pytest.raises(ValueError, match=r"curves of shape \(\d+,\) after some of"):
-            simulate_curves(uneven, NULL, n=99, simulations=50, seed=1, workers=workers)
+    starts = iter(range(40))
+    with pytest.raises(
+        ValueError, match="the curves of some patterns have 98 values, of others 99"
+    ):
+        simulate_curves(
+            lambda xy: xy[int(next(starts) > 0) :, 0], NULL, n=99, simulations=8, seed=1
+        )
