@@ -3,13 +3,11 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Callable
 from dataclasses import dataclass
-from typing import Literal
+from typing import Literal, get_args
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
-from scipy.stats import rankdata
 
 from analyse.columns import hold_columns
 
@@ -189,8 +187,8 @@ def global_envelope(
     """
     curves = _all_curves(observed, simulated, name)
     simulations = len(curves) - 1
-    if measure not in _BANDS:
-        raise ValueError(f"measure must be one of {', '.join(_BANDS)}, not {measure!r}")
+    if measure not in get_args(Measure):
+        raise ValueError(f"measure must be one of {', '.join(get_args(Measure))}, not {measure!r}")
     if not (0 < level < 1 and 1 / (simulations + 1) <= level):
         raise ValueError(
             f"{simulations} simulations cannot reach level {level:g};"
@@ -199,8 +197,11 @@ def global_envelope(
     places = np.asarray(x, dtype=np.float64).reshape(-1)
     if places.size != curves.shape[1]:
         raise ValueError(f"{places.size} places for curves of {curves.shape[1]} values")
-    curves = _tied(curves)
-    p, low, high = _BANDS[measure](curves, level)
+    curves, ranks = _tied(curves)
+    if measure == "extreme rank length":
+        p, low, high = _by_rank_length(curves, ranks, level)
+    else:
+        p, low, high = _by_deviation(curves, level)
     central = curves[1:].mean(axis=0)
     return Envelope(
         name, places, curves[0], central, low, high, p, level, simulations, measure
@@ -225,22 +226,27 @@ def _all_curves(observed: ArrayLike, simulated: ArrayLike, name: str) -> Curves:
     return curves
 
 
-def _tied(curves: Curves) -> Curves:
-    """Return the curves with values made equal that differ by rounding alone; the first row stays."""
+def _tied(curves: Curves) -> tuple[Curves, Curves]:
+    """Return the curves with values made equal that differ by rounding alone, and their ranks.
+
+    The first row stays as it is. Equal values share the mean of their ranks.
+    """
+    n = len(curves)
     order = np.argsort(curves, axis=0, kind="stable")
-    ranked = np.take_along_axis(curves, order, axis=0)
-    gap = _TIE * np.abs(ranked[[0, -1]]).max(axis=0)
-    starts = np.ones(ranked.shape, dtype=bool)
-    starts[1:] = np.diff(ranked, axis=0) > gap
-    first = np.maximum.accumulate(np.where(starts, np.arange(len(ranked))[:, None], 0), axis=0)
-    equal = np.empty_like(curves)
-    np.put_along_axis(equal, order, np.take_along_axis(ranked, first, axis=0), axis=0)
-    return np.where(equal == equal[0], curves[0], equal)
+    ordered = np.take_along_axis(curves, order, axis=0)
+    new = np.diff(ordered, axis=0) > _TIE * np.abs(ordered[[0, -1]]).max(axis=0)
+    place, edge = np.arange(n)[:, None], np.ones((1, curves.shape[1]), dtype=bool)
+    first = np.maximum.accumulate(np.where(np.vstack([edge, new]), place, 0), axis=0)
+    last = np.minimum.accumulate(np.where(np.vstack([new, edge]), place, n)[::-1], axis=0)[::-1]
+    equal, ranks = np.empty_like(curves), np.empty_like(curves)
+    np.put_along_axis(equal, order, np.take_along_axis(ordered, first, axis=0), axis=0)
+    np.put_along_axis(ranks, order, (first + last) / 2 + 1, axis=0)
+    return np.where(equal == equal[0], curves[0], equal), ranks
 
 
-def _by_rank_length(curves: Curves, level: float) -> tuple[float, Curves, Curves]:
+def _by_rank_length(curves: Curves, ranks: Curves, level: float) -> tuple[float, Curves, Curves]:
     """Return p and the band of the first curve by extreme rank length."""
-    step = _steps(curves)
+    step = _steps(ranks)
     order = np.argsort(-step, kind="stable")  # least extreme first
     lows = np.minimum.accumulate(curves[order], axis=0)[::-1]
     highs = np.maximum.accumulate(curves[order], axis=0)[::-1]
@@ -252,13 +258,12 @@ def _by_rank_length(curves: Curves, level: float) -> tuple[float, Curves, Curves
     return float(gone[leaves[0]]), lows[last], highs[last]
 
 
-def _steps(curves: Curves) -> NDArray[np.int64]:
+def _steps(ranks: Curves) -> NDArray[np.int64]:
     """Return, from 0 for the most extreme, the place of each curve by extreme rank length."""
-    ranks = rankdata(curves, axis=0)
-    ordered = np.sort(np.minimum(ranks, len(curves) + 1 - ranks), axis=1)
+    ordered = np.sort(np.minimum(ranks, len(ranks) + 1 - ranks), axis=1)
     order = np.lexsort(ordered.T[::-1])
     new = (np.diff(ordered[order], axis=0) != 0).any(axis=1)
-    step = np.empty(len(curves), dtype=np.int64)
+    step = np.empty(len(ranks), dtype=np.int64)
     step[order] = np.concatenate([[0], np.cumsum(new)])
     return step
 
@@ -279,7 +284,7 @@ def _first_outside(curves: Curves, lows: Curves, highs: Curves) -> NDArray[np.in
 
 def _by_deviation(curves: Curves, level: float) -> tuple[float, Curves, Curves]:
     """Return p and the band of the first curve by studentised maximum deviation."""
-    largest = _tied(_largest_deviations(curves)[:, None])[:, 0]
+    largest = _tied(_largest_deviations(curves)[:, None])[0][:, 0]
     share = np.searchsorted(np.sort(-largest), -largest, side="right") / len(curves)
     reach = _left_out(float(largest[share > level].max()), len(curves))
     if math.isinf(reach):  # too many curves stand alone where all others are equal
@@ -309,9 +314,3 @@ def _left_out(z: float, n: int) -> float:
     if left < 1e-9:  # all others are equal
         return math.inf
     return z * n / (n - 1) * math.sqrt((n - 2) / (n - 1) / left)
-
-
-_BANDS: dict[str, Callable[[Curves, float], tuple[float, Curves, Curves]]] = {
-    "extreme rank length": _by_rank_length,
-    "studentised maximum deviation": _by_deviation,
-}
