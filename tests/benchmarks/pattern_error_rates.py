@@ -3,11 +3,10 @@
     python tests/benchmarks/pattern_error_rates.py [--null 2000] [--whole 200] [--power 500]
 
 Null patterns are complete spatial randomness in a square, a dish and a ragged leaf with a hole.
-Under the null all patterns of one area and number have one law, so each is judged against 199
-others drawn at random from the rest of them, by the functions that judge a pattern (that saves
-drawing 199 anew for each; the rates have the same expectation, and slightly more spread than the
-stated error of independent trials). As a check the whole function is then run from end to end, on
-fewer patterns with 99 simulations of their own each.
+Under the null all patterns of one area and number have one law, so instead of drawing 199 for
+each, each is judged against 199 drawn at random from 10,000 further ones, by the functions that
+judge a pattern. As a check the whole function is then run from end to end, on fewer patterns with
+99 simulations of their own each.
 
 The last rows are the quadrat test as asked (simulated) and the classical chi-square, over the
 default quadrats, with the flags that the outputs would carry.
@@ -47,9 +46,11 @@ from analyse.pattern import Pattern
 from analyse.quadrats import QuadratCounts, count_in_quadrats, lay_grid
 from analyse.ruler import Ruler
 from analyse.scales import Sides
+from analyse.simulated_curves import simulate_curves
 from tests.benchmarks.error_rates import AREAS
 
 LEVEL, AGAINST, CLUMP = 0.05, 199, 4.0
+POOL = 10_000  # further patterns that those to judge against are drawn from
 LENGTH: Measure = "extreme rank length"
 DEVIATION: Measure = "studentised maximum deviation"
 Floats = NDArray[np.float64]
@@ -150,23 +151,19 @@ def p_values(curves: Curves, own: Floats, others: Floats) -> dict[str, float]:
 
 
 class Setting:
-    """One area and number of points, with its null patterns."""
+    """One area and number of points, with what many null patterns of it look like."""
 
-    def __init__(self, area: BaseGeometry, n: int, patterns: int, seed: int) -> None:
+    def __init__(self, area: BaseGeometry, n: int, seed: int) -> None:
         self.area, self.n, self.null = area, n, CompleteRandomness(area)
         self.curves = Curves(Ruler.of(area, n), Sides.of(area, n))
         self.grid = lay_grid(area, n)
         self.rng = np.random.default_rng([seed, n, round(area.area)])
-        self.drawn = [self.null.draw(n, self.rng) for _ in range(patterns)]
-        self.values = np.array([self.curves(points) for points in self.drawn])
+        self.pool = simulate_curves(self.curves, self.null, n=n, simulations=POOL, seed=seed)
 
-    def judged(self, points: Floats, values: Floats, but: int | None) -> dict[str, float]:
-        """Every p of a pattern, against null patterns other than number `but`."""
-        many = len(self.values)
-        chosen = self.rng.choice(many if but is None else many - 1, AGAINST, replace=False)
-        if but is not None:
-            chosen = chosen + (chosen >= but)
-        p = p_values(self.curves, values, self.values[chosen])
+    def judged(self, points: Floats) -> dict[str, float]:
+        """Every p of a pattern."""
+        chosen = self.rng.choice(POOL, AGAINST, replace=False)
+        p = p_values(self.curves, self.curves(points), self.pool[chosen])
         counts = count_in_quadrats(points, self.grid)
         test = simulated_p(counts, self.grid.area, simulations=AGAINST, rng=self.rng)
         p["quadrats, simulated"] = test.p_two_sided
@@ -207,13 +204,9 @@ def null_rates(patterns: int, numbers: list[int]) -> None:
     for area_name, area in AREAS.items():
         columns = {}
         for n in numbers:
-            setting = Setting(area, n, patterns, 1)
-            found = [
-                setting.judged(points, values, k)
-                for k, (points, values) in enumerate(
-                    zip(setting.drawn, setting.values, strict=True)
-                )
-            ]
+            setting = Setting(area, n, 1)
+            drawn = (setting.null.draw(n, setting.rng) for _ in range(patterns))
+            found = [setting.judged(points) for points in drawn]
             columns[f"n = {n}"] = rates(found)
             print(f"# {area_name}, n = {n}: {setting.curves.sides},"
                   f" {len(setting.grid)} quadrats by default, flags {setting.flags}")  # fmt: skip
@@ -223,10 +216,10 @@ def null_rates(patterns: int, numbers: list[int]) -> None:
 def whole_rates(patterns: int) -> None:
     """Print the rates of the function itself, simulations and all."""
     columns = {}
-    for area_name, area in AREAS.items():
+    for place, (area_name, area) in enumerate(AREAS.items()):
         null, found = CompleteRandomness(area), []
         for k in range(patterns):
-            points = null.draw(60, np.random.default_rng([9, k]))
+            points = null.draw(60, np.random.default_rng([9, place, k]))
             tests = global_tests(Pattern.of(points, area), simulations=99, seed=k + 1)
             assert tests is not None
             p = {name: envelope.p for name, envelope in tests.envelopes.items()}
@@ -242,20 +235,20 @@ def whole_rates(patterns: int) -> None:
 def power(patterns: int, numbers: list[int]) -> None:
     """Print the rates of patterns that are not random."""
     for n in numbers:
-        setting, columns = Setting(AREAS["dish"], n, 999, 2), {}
+        setting, columns = Setting(AREAS["dish"], n, 2), {}
         for name, law in LAWS.items():
             found = []
             for k in range(patterns):
                 points = law(setting.area, n, np.random.default_rng([3, n, k]))
-                found.append(setting.judged(points, setting.curves(points), None))
+                found.append(setting.judged(points))
             columns[name] = rates(found)
-        tests = list(next(iter(columns.values())))
         print(f"\ndish, n = {n}: share rejected at 5 %, {patterns} patterns each")
-        print(" " * 20 + " ".join(f"{test[:11]:>11}" for test in tests if "dev" not in test))
-        for name, column in columns.items():
-            shares = " ".join(f"{column[test]:11.2f}" for test in tests if "dev" not in test)
-            print(f"{name:20}{shares}", flush=True)
-        show({name.replace(",", "")[:11]: column for name, column in columns.items()}, "all tests")
+        for ending in ("", ", deviation"):
+            tests = [test for test in rates([found[0]]) if ending in test]
+            tests = tests if ending else [test for test in tests if "deviation" not in test]
+            print(f"{'':20}" + "".join(f"{test.removesuffix(ending)[:12]:>13}" for test in tests))
+            for name, column in columns.items():
+                print(f"{name:20}" + "".join(f"{column[test]:13.2f}" for test in tests), flush=True)
 
 
 def main() -> None:
