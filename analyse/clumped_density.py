@@ -26,6 +26,8 @@ FEWEST_RESAMPLED = 6  # quadrats: our own limit
 _MOST = 1e6  # times the estimate: beyond, the data set no upper limit worth the name
 _SHARE_DIGITS = 9  # so that full quadrats are alike whatever the rounding of their areas
 _K_GRID = np.logspace(-6, 9, 181)
+_LOG_STEP = math.log(10) / 12
+_REFINEMENTS = 4  # steps towards the best k between two of the grid
 
 
 @dataclass(frozen=True, slots=True, repr=False)
@@ -245,19 +247,19 @@ class _Profile:
         """Return the greatest gain over k: the best of a grid, and refined between its neighbours."""
         on_grid = self.seen.joint_gain(mean, _K_GRID, self.pairs)
         i = int(np.argmax(on_grid))
-        limit = self.seen.poisson_gain(mean)
+        best = max(self.seen.poisson_gain(mean), float(on_grid[i]))
         if i in (0, len(_K_GRID) - 1):
-            return max(limit, float(on_grid[i]))
-
-        def loss(log_k: float) -> float:
-            k = np.array([math.exp(log_k)])
-            return -float(self.seen.joint_gain(mean, k, np.array([self.seen.pairs(k[0])]))[0])
-
-        between = (math.log(_K_GRID[i - 1]), math.log(_K_GRID[i + 1]))
-        found = optimize.minimize_scalar(
-            loss, bounds=between, method="bounded", options={"xatol": 1e-7}
-        )
-        return max(limit, float(on_grid[i]), -float(found.fun))
+            return best
+        bend = float(on_grid[i - 1] - 2 * on_grid[i] + on_grid[i + 1]) / _LOG_STEP**2
+        if bend >= 0:
+            return best
+        log_k = at = math.log(_K_GRID[i])
+        for _ in range(_REFINEMENTS):
+            slope = self.seen.score(math.exp(log_k), mean) / math.exp(log_k)
+            log_k = min(max(log_k - slope / bend, at - _LOG_STEP), at + _LOG_STEP)
+        k = math.exp(log_k)
+        refined = self.seen.joint_gain(mean, np.array([k]), np.array([self.seen.pairs(k)]))
+        return max(best, float(refined[0]))
 
 
 def _limit(above: Callable[[float], float], at: float, direction: float) -> float:
@@ -269,4 +271,4 @@ def _limit(above: Callable[[float], float], at: float, direction: float) -> floa
             return direction * math.inf
         step *= 2
         near, far = far, at + direction * step
-    return float(optimize.brentq(above, near, far, xtol=1e-10, rtol=1e-12))
+    return float(optimize.brentq(above, near, far, xtol=1e-8, rtol=1e-12))

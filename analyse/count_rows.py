@@ -129,7 +129,7 @@ def _k_rows(fit: NegativeBinomialFit) -> Iterator[list[Cell]]:
     note = "; ".join(part for part in (_k_note(fit), _WHOLE) if part)
     yield ["negative_binomial_k", _finite(fit.k), low, high, None, method, q, note]
     if not fit.poisson_limit:
-        method = "observed information of the likelihood"
+        method = "curvature of the log-likelihood at its top (Fisher 1922)"
         yield ["k_standard_error", fit.k_se, None, None, None, method, q, _WHOLE]
     for name, method in (
         ("k_moments", "m^2 / (s^2 - m) (Anscombe 1950)"),

@@ -105,18 +105,25 @@ class Likelihood:
         """Return sum h(r / k), the part of the likelihood that only k changes."""
         return float((self.weights * _h(self.ratios / k)).sum())
 
-    def score(self, k: float) -> float:
-        """Return k^2 times the derivative of `gain` in k: positive below the best k."""
-        w = float(_w(np.array([self.mean / k]))[0])
+    def score(self, k: float, mean: float | None = None) -> float:
+        """Return k^2 times the likelihood's derivative in k, at the best mean unless one is given.
+
+        It is positive below the best k.
+        """
+        away = 0.0 if mean is None else mean - self.mean
+        u = (self.mean + away) / k
+        w = float(_w(np.array([u]))[0])
         tail = float((self.weights * self.ratios**2 / (k + self.ratios)).sum())
-        return tail - self.excess - self.exposure * k * k * w
+        pull = away * (k * u * u / (1 + u) - away / 2)
+        return tail - self.excess + self.exposure * (pull - k * k * w)
 
     def information(self, k: float) -> float:
-        """Return the observed information of k at its best value: minus the second derivative."""
+        """Return the observed information of k: minus the second derivative of `gain`."""
         u = self.mean / k
         w = float(_w(np.array([u]))[0])
         tail = float((self.weights * (self.ratios / (k + self.ratios)) ** 2).sum())
-        return (tail - self.exposure * (self.mean * u * u / (1 + u) - 2 * k * w)) / (k * k)
+        bend = tail - self.exposure * (self.mean * u * u / (1 + u) - 2 * k * w)
+        return (bend + 2 * self.score(k) / k) / (k * k)
 
     def best_k(self) -> float:
         """Return k of greatest likelihood; `math.inf` where no finite one exists."""

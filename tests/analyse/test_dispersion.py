@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import itertools
 import math
 
 import numpy as np
@@ -16,6 +17,7 @@ from analyse.dispersion import (
     expected_counts,
     normal_deviate,
     residuals,
+    vmr_standard_error,
 )
 from analyse.errors import TooFewQuadrats
 from analyse.indices import greens_index, morisita_index
@@ -203,6 +205,45 @@ def test_not_the_variants_it_is_confused_with() -> None:
     total, q = counts.sum(), counts.size
     pairs = (counts * (counts - 1)).sum()
     assert morisita_index(counts) == pytest.approx(q * pairs / (total * (total - 1)))
+
+
+def test_standard_error_of_the_ratio_and_its_variants() -> None:
+    """sqrt(2 / (q - 1)) (Bartlett), not sqrt(2 q / (q - 1)^2) (Blackman), nor sqrt(2 / q)."""
+    for q in (2, 25, 400):
+        error = vmr_standard_error(q)
+        assert error == pytest.approx(math.sqrt(2 / (q - 1)))
+        assert error < math.sqrt(2 * q / (q - 1) ** 2)
+        assert error > math.sqrt(2 / q)
+    with pytest.raises(TooFewQuadrats, match="at least 2 quadrats, not 1"):
+        vmr_standard_error(1)
+
+
+@pytest.mark.parametrize(("q", "total"), [(2, 7), (3, 5), (4, 4)])
+def test_the_spread_of_the_ratio_by_all_patterns(q: int, total: int) -> None:
+    """All ways to put S points into q quadrats: mean 1, variance 2 (1 - 1 / S) / (q - 1).
+
+    Haldane (1940), Biometrika 31, 346-355; Bartlett's standard error is its limit for many points.
+    """
+    ratios = np.array(
+        [
+            dispersion(np.bincount(homes, minlength=q)).vmr
+            for homes in itertools.product(range(q), repeat=total)
+        ]
+    )
+    assert ratios.mean() == pytest.approx(1)
+    assert ratios.var() == pytest.approx(vmr_standard_error(q) ** 2 * (1 - 1 / total))
+
+
+def test_clarkes_last_square_holds_seven() -> None:
+    """Clarke (1946): 537 hits make it 7; a 5 for "5 or more" gives another mean and ratio."""
+    right = published.counts("clarke1946_5plus_as_7")
+    wrong = np.where(right == 7, 5, right)
+    one, other = dispersion(right), dispersion(wrong)
+    assert (one.n, other.n) == (537, 535)
+    assert (one.mean, one.vmr) == pytest.approx((0.932292, 1.041584), abs=6e-7)
+    assert (other.mean, other.vmr, other.chi2) == pytest.approx(
+        (0.92882, 1.00751, 579.318), abs=6e-4
+    )
 
 
 def test_upper_is_clumped_and_lower_is_even() -> None:

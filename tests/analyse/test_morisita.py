@@ -153,3 +153,27 @@ def test_too_few_points_or_quadrats_have_no_index() -> None:
         seen = morisita(counts)
         assert math.isnan(seen.standardised)
         assert (seen.branch, seen.reason) == (None, reason)
+
+
+@pytest.mark.parametrize(
+    ("df", "lower", "upper"),
+    [
+        (15, 6.262, 27.488),
+        (24, 12.401, 39.364),
+        (35, 20.569, 53.203),
+        (63, 42.950, 86.830),
+        (99, 73.361, 128.422),
+    ],
+)
+def test_critical_values_against_a_printed_table_of_chi_square(
+    df: int, lower: float, upper: float
+) -> None:
+    """Any table of chi-square, .025 and .975: M = (quantile - q + S) / (S - 1) turned round.
+
+    "chi-square .975" in Krebs means the area to the right, the lower value; swapped, M_u and M_c
+    would change places.
+    """
+    total = 40
+    seen = morisita([total] + [0] * df)
+    back = [limit * (total - 1) + df + 1 - total for limit in (seen.even_limit, seen.clumped_limit)]
+    assert back == pytest.approx([lower, upper], abs=6e-4)
