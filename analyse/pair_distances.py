@@ -2,7 +2,8 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+import math
+from collections.abc import Callable, Iterator
 
 import numpy as np
 from numpy.typing import NDArray
@@ -66,6 +67,33 @@ def near_pairs(
         near = np.hypot(step[:, 0], step[:, 1]) <= reach
         if near.any():
             yield order[i[near]], order[j[near]]
+
+
+def pairs_up_to(xy: Floats, distances: Floats) -> Iterator[tuple[Index, Index, Floats]]:
+    """Yield all pairs up to the longest distance, once each, with their distances."""
+    if len(distances):
+        for i, j in near_pairs(xy, float(distances.max())):
+            step = xy[j] - xy[i]
+            yield i, j, np.hypot(step[:, 0], step[:, 1])
+
+
+def sums_up_to(
+    xy: Floats, distances: Floats, weight: Callable[[Floats, Index, Index], Floats]
+) -> Floats:
+    """Return the summed weight of the pairs up to each distance."""
+    ordered = np.argsort(distances)
+    sums = np.zeros(len(distances) + 1)
+    for i, j, d in pairs_up_to(xy, distances):
+        at = np.searchsorted(distances[ordered], d, "left")
+        sums += np.bincount(at, weight(xy[j] - xy[i], i, j), len(sums))
+    found = np.empty(len(distances))
+    found[ordered] = np.cumsum(sums)[:-1]
+    return found
+
+
+def ordered_pairs(xy: Floats) -> float:
+    """Return the number of ordered pairs, NaN where there is none."""
+    return float(len(xy) * (len(xy) - 1)) if len(xy) > 1 else math.nan
 
 
 def _listed(

@@ -7,19 +7,16 @@ pairs and count pairs at distance r itself (<=). With fewer than 2 points all ar
 from __future__ import annotations
 
 import math
-from collections.abc import Callable, Iterator
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
 from analyse.boundary import boundary_distance
-from analyse.errors import AreaUnfit
-from analyse.pair_distances import near_pairs
+from analyse.pair_distances import ordered_pairs, pairs_up_to, sums_up_to
 from analyse.placed import Area, distances_given, placed
-from analyse.set_covariance import longest_useful, rectangle_sides, set_covariance
+from analyse.set_covariance import longest_useful, set_covariance
 
 Floats = NDArray[np.float64]
-Index = NDArray[np.intp]
 
 BANDWIDTH = 0.15  # of the kernel, times 1 / sqrt(density) (Stoyan and Stoyan 1994)
 _LEAST_LEFT = 0.01  # of the area: a step that leaves less has no translation correction
@@ -59,8 +56,8 @@ def k_none(points: ArrayLike, area: Area, r: ArrayLike) -> Floats:
     """
     xy, region = placed(points, area)
     distances = distances_given(r)
-    found = _sums_up_to(xy, distances, lambda step, _i, _j: np.full(len(step), 2.0))
-    return found * (region.area / _ordered(xy))
+    found = sums_up_to(xy, distances, lambda step, _i, _j: np.full(len(step), 2.0))
+    return found * (region.area / ordered_pairs(xy))
 
 
 def k_translation(points: ArrayLike, area: Area, r: ArrayLike) -> Floats:
@@ -106,10 +103,10 @@ def k_translation(points: ArrayLike, area: Area, r: ArrayLike) -> Floats:
     longest = longest_useful(region, covariance, left=_LEAST_LEFT)
     fit = distances <= longest
     found = np.full(len(distances), np.nan)
-    found[fit] = _sums_up_to(
+    found[fit] = sums_up_to(
         xy, distances[fit], lambda step, _i, _j: 2 / covariance.at(step[:, 0], step[:, 1])
     )
-    return found * (region.area**2 / _ordered(xy))
+    return found * (region.area**2 / ordered_pairs(xy))
 
 
 def k_border(points: ArrayLike, area: Area, r: ArrayLike) -> Floats:
@@ -156,7 +153,7 @@ def k_border(points: ArrayLike, area: Area, r: ArrayLike) -> Floats:
     depth = boundary_distance(xy, region)
     last = np.searchsorted(rising, depth, "right")  # a point serves for the distances before this
     change = np.zeros(len(rising) + 1)
-    for i, j, d in _pairs(xy, rising):
+    for i, j, d in pairs_up_to(xy, rising):
         first = np.searchsorted(rising, d, "left")
         for member in (i, j):
             serves = first < last[member]
@@ -167,63 +164,7 @@ def k_border(points: ArrayLike, area: Area, r: ArrayLike) -> Floats:
     np.divide(np.cumsum(change)[:-1], serving, out=mean, where=serving > 0)
     found = np.empty(len(rising))
     found[ordered] = mean
-    return found * (region.area * len(xy) / _ordered(xy))
-
-
-def k_isotropic(points: ArrayLike, area: Area, r: ArrayLike) -> Floats:
-    """Return K with Ripley's isotropic correction, in a rectangle.
-
-    Parameters
-    ----------
-    points : array_like of shape (n, 2)
-        x, y in the unit of the area.
-    area : shapely geometry or four numbers
-        A rectangle along x and y; four numbers are x0, y0, x1, y1.
-    r : array_like of shape (k,)
-        Distances, 0 or more; up to half the shorter side is usual.
-
-    Returns
-    -------
-    ndarray of shape (k,)
-
-    Raises
-    ------
-    AreaUnfit
-        If the area is no rectangle along x and y.
-    ValueError
-        If a point is not finite or outside, or a distance negative.
-
-    Notes
-    -----
-    Each ordered pair weighs 1 / (share of the circle about i through j that lies in the area).
-
-    References
-    ----------
-    Ripley, B. D. (1977). Modelling spatial patterns. Journal of the Royal Statistical Society B
-    39, 172-212.
-    Diggle, P. J. (1983). Statistical Analysis of Spatial Point Patterns. Academic Press, London
-    (the arcs).
-
-    Examples
-    --------
-    >>> k_isotropic([[1, 1], [1, 2]], (0, 0, 4, 4), [1.0]).tolist()
-    [16.0]
-    """
-    xy, region = placed(points, area)
-    distances = distances_given(r)
-    if rectangle_sides(region) is None:
-        raise AreaUnfit(
-            f"Ripley's isotropic correction is for rectangles, not for this {region.geom_type};"
-            " use the translation correction."
-        )
-    x0, y0, x1, y1 = region.bounds
-    low, high = xy - (x0, y0), (x1, y1) - xy
-
-    def weight(step: Floats, i: Index, j: Index) -> Floats:
-        d = np.hypot(step[:, 0], step[:, 1])
-        return _inverse_share(low[i], high[i], d) + _inverse_share(low[j], high[j], d)
-
-    return _sums_up_to(xy, distances, weight) * (region.area / _ordered(xy))
+    return found * (region.area * len(xy) / ordered_pairs(xy))
 
 
 def l_of(k: ArrayLike) -> Floats:
@@ -301,7 +242,7 @@ def pair_correlation(
     covariance = set_covariance(region)
     reach = distances + width
     found = np.zeros(len(distances))
-    for i, j, d in _pairs(xy, reach):
+    for i, j, d in pairs_up_to(xy, reach):
         dx, dy = (xy[j] - xy[i]).T
         weight = 2 / np.maximum(covariance.at(dx, dy), _LEAST_LEFT * region.area)
         for k, at in enumerate(distances):
@@ -309,42 +250,4 @@ def pair_correlation(
             found[k] += float((0.75 / width * (1 - ((d[close] - at) / width) ** 2)) @ weight[close])
     longest = longest_useful(region, covariance, left=_LEAST_LEFT)
     found[reach > longest] = np.nan
-    return found * (region.area**2 / _ordered(xy)) / (2 * math.pi * distances)
-
-
-def _ordered(xy: Floats) -> float:
-    """Return the number of ordered pairs, NaN where there is none."""
-    return float(len(xy) * (len(xy) - 1)) if len(xy) > 1 else math.nan
-
-
-def _pairs(xy: Floats, distances: Floats) -> Iterator[tuple[Index, Index, Floats]]:
-    """Yield all pairs up to the longest distance, once each, with their distances."""
-    if len(distances):
-        for i, j in near_pairs(xy, float(distances.max())):
-            step = xy[j] - xy[i]
-            yield i, j, np.hypot(step[:, 0], step[:, 1])
-
-
-def _sums_up_to(
-    xy: Floats, distances: Floats, weight: Callable[[Floats, Index, Index], Floats]
-) -> Floats:
-    """Return the summed weight of the pairs up to each distance."""
-    ordered = np.argsort(distances)
-    sums = np.zeros(len(distances) + 1)
-    for i, j, d in _pairs(xy, distances):
-        at = np.searchsorted(distances[ordered], d, "left")
-        sums += np.bincount(at, weight(xy[j] - xy[i], i, j), len(sums))
-    found = np.empty(len(distances))
-    found[ordered] = np.cumsum(sums)[:-1]
-    return found
-
-
-def _inverse_share(low: Floats, high: Floats, d: Floats) -> Floats:
-    """Return 1 / (share of the circle of radius d inside), from the distances to the four sides."""
-    radius = np.where(d > 0, d, 1.0)
-    nearness = [np.minimum(side / radius, 1.0) for side in (*low.T, *high.T)]
-    left, bottom, right, top = (np.arccos(np.where(d > 0, side, 1.0)) for side in nearness)
-    outside = 2 * (left + bottom + right + top)
-    for one, other in ((left, bottom), (left, top), (right, bottom), (right, top)):
-        outside -= np.maximum(one + other - math.pi / 2, 0.0)  # beyond a corner counts once
-    return np.asarray(1 / (1 - outside / (2 * math.pi)))
+    return found * (region.area**2 / ordered_pairs(xy)) / (2 * math.pi * distances)

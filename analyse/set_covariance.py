@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import math
 from dataclasses import dataclass, field
+from functools import lru_cache
 
 import numpy as np
 import shapely
@@ -94,6 +95,7 @@ class MaskCovariance:
 SetCovariance = RectangleCovariance | DiscCovariance | MaskCovariance
 
 
+@lru_cache(maxsize=8)
 def set_covariance(area: BaseGeometry) -> SetCovariance:
     """Return the set covariance of an area: in closed form for rectangles and dishes.
 
@@ -113,7 +115,7 @@ def set_covariance(area: BaseGeometry) -> SetCovariance:
     circles' lens. A polygon of 32 sides or more whose outline strays by at most 0.2 % of the
     radius from the circle of equal area counts as a disc. Any other area is laid on a grid of
     512 cells along its longer side, each cell with the exact share that is covered, and the sums
-    of products at all steps come from one Fourier transform.
+    of products at all steps come from one Fourier transform. The last few areas are remembered.
 
     References
     ----------
