@@ -20,6 +20,7 @@ from analyse.indices import (
     mean_crowding,
     morisita_index,
 )
+from analyse.power_rows import power_rows
 from analyse.trend_rows import trend_rows
 from analyse.unseen import planted_cells, planted_rows
 from analyse.verdict import POWER
@@ -316,6 +317,7 @@ _PARTS = (
     _poisson_rows,
     _planted_rows,
     count_rows,
+    power_rows,
     trend_rows,
     block_rows,
 )

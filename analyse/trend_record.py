@@ -11,11 +11,11 @@ from numpy.typing import ArrayLike, NDArray
 from scipy import special
 
 from analyse.columns import hold_columns
+from analyse.power import LEVEL as LEVEL
 from analyse.quadrature import quadrature
 from analyse.trend_fit import Slope, largest_dispersion
 
 TrendKind = Literal["plane", "radial"]
-LEVEL = 0.05
 _TOWARDS = (
     "the right", "the lower right", "the bottom", "the lower left",
     "the left", "the upper left", "the top", "the upper right",

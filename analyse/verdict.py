@@ -5,15 +5,14 @@ from __future__ import annotations
 import math
 from typing import Literal
 
-from scipy import special
-
 from analyse.dispersion import Dispersion
 from analyse.flags import FLAGS as FLAGS
 from analyse.nulls import SimulatedTest
+from analyse.power import LEVEL as LEVEL
+from analyse.power import POWER as POWER
+from analyse.power import detectable as detectable
 
 Verdict = Literal["clumped", "evenly spaced", "no departure from random found", "too few to tell"]
-LEVEL = 0.05
-POWER = 0.80
 FEWEST_SPOTS = 10  # common practice
 FEWEST_QUADRATS = 6  # common practice: more than 5
 
@@ -48,46 +47,6 @@ def decide(n: int, q: int, simulated: SimulatedTest) -> Verdict:
     if simulated.p_two_sided > LEVEL:
         return "no departure from random found"
     return "clumped" if simulated.p_clumped < simulated.p_even else "evenly spaced"
-
-
-def detectable(df: int, *, level: float = LEVEL, power: float = POWER) -> tuple[float, float]:
-    """Return the VMR at or below which, and at or above which, a departure would have been seen.
-
-    Parameters
-    ----------
-    df : int
-        Quadrats - 1.
-    level : float
-        Two-sided level of the test.
-    power : float
-        Wanted probability of seeing the departure.
-
-    Returns
-    -------
-    (low, high) : tuple of float
-        VMR of even and of clumped counts.
-
-    Notes
-    -----
-    With a true ratio V, X2 / V is taken as chi-square on `df` degrees of freedom, so that
-    V = chi2(1 - level / 2) / chi2(1 - power) on the clumped side. An approximation, so that it
-    is said as "about": of negative binomial counts with the VMR for 80 %, the simulated test saw
-    77 to 82 % at a mean count of 5 or more, 75 to 78 % at 2, and 67 to 77 % at 1 (10 to 100
-    quadrats). How even counts can be is bounded by their number: see `analyse.nulls.least_chi2`.
-
-    References
-    ----------
-    Bartlett, M. S. (1936). Some notes on insecticide tests in the laboratory and in the field.
-    Journal of the Royal Statistical Society, Supplement 3, 185-194 (the scaled chi-square).
-
-    Examples
-    --------
-    >>> low, high = detectable(24)
-    >>> round(low, 2), round(high, 2)
-    (0.42, 2.18)
-    """
-    upper, lower = _quantile(df, 1 - level / 2), _quantile(df, level / 2)
-    return lower / _quantile(df, power), upper / _quantile(df, 1 - power)
 
 
 def sentence(
@@ -190,8 +149,3 @@ def _short(ratio: float) -> str:
     if ratio >= 10:
         return f"{ratio:.0f}"
     return f"{ratio:.1f}" if ratio >= 1.1 else f"{ratio:.2f}"
-
-
-def _quantile(df: int, probability: float) -> float:
-    """Return the chi-square value that this share lies below."""
-    return float(special.chdtri(df, 1 - probability))
