@@ -69,7 +69,8 @@ def g_function(points: ArrayLike, area: Area, r: ArrayLike) -> Floats:
         return np.full(len(distances), np.nan)
     left = np.array([eroded_area(region, depth) for depth in inner])
     weight = 1 / np.maximum(left, 1e-9 * region.area)
-    return _up_to(distances, inner, weight) / float(weight.sum())
+    found = _up_to(np.append(distances, np.inf), inner, weight)
+    return found[:-1] / found[-1]
 
 
 def g_border(points: ArrayLike, area: Area, r: ArrayLike) -> Floats:

@@ -256,20 +256,21 @@ class Ruler:
             return np.zeros(len(r))
         inner = nearest[known]
         left = np.maximum(self.boundary.area_beyond(inner), 1e-9 * self.area.area)
-        return _summed(r, inner, 1 / left) / float((1 / left).sum())
+        found = _summed(r, inner, 1 / left)
+        return found[:-1] / found[-1]  # exactly 1 where all lie below, so that ties stay ties
 
     def _empty_space(self, empty: Floats) -> Floats:
         """Return Chiu and Stoyan's estimate of the empty-space function."""
         known = empty <= self.test_depth
         inner = empty[known]
         deeper = len(self._sorted_depth) - np.searchsorted(self._sorted_depth, inner, "left")
-        return _summed(self.x["empty_space"], inner, 1 / deeper)
+        return _summed(self.x["empty_space"], inner, 1 / deeper)[:-1]
 
 
 def _summed(r: Floats, distance: Floats, weight: Floats) -> Floats:
-    """Return the sum of the weights of distances up to each r."""
+    """Return the sum of the weights of distances up to each r, and of all."""
     at = np.searchsorted(r, distance, "left")
-    return np.cumsum(np.bincount(at, weight, len(r) + 1)[: len(r)])
+    return np.cumsum(np.bincount(at, weight, len(r) + 1))
 
 
 def _rng() -> np.random.Generator:

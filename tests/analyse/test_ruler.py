@@ -221,6 +221,19 @@ def test_strange_patterns_give_finite_curves(name: str, pairs: str) -> None:
         assert len(curves) == sum(map(len, ruler.x.values())) + len(SCALARS)
 
 
+@pytest.mark.parametrize("name", AREAS)
+def test_where_all_points_have_a_neighbour_the_function_is_exactly_1(name: str) -> None:
+    """Rounding must not tell patterns apart that are tied."""
+    ruler = Ruler.of(AREAS[name], 50)
+    rng = np.random.default_rng(2)
+    last = [
+        ruler.split(ruler.curves(random_points(AREAS[name], 50, rng)))["nearest_neighbour"][-1]
+        for _ in range(60)
+    ]
+    assert max(last) == 1.0
+    assert last.count(1.0) > 20
+
+
 def test_fewer_than_two_points_are_refused() -> None:
     with pytest.raises(ValueError, match="at least 2 points, not 1"):
         Ruler.of(DISH, 1)
