@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import time
 from collections.abc import Callable, Iterator
 from concurrent.futures import ProcessPoolExecutor
 from concurrent.futures.process import BrokenProcessPool
@@ -16,6 +17,7 @@ from analyse.nulls import Null
 from detect.errors import RequestWrong
 
 Floats = NDArray[np.float64]
+_WORTH_SHARING = 4.0  # seconds of work; less is done before other processes have begun
 _SHARES = 8  # of the work for each process, so that none waits long for another
 
 
@@ -43,7 +45,8 @@ def simulate_curves(
     seed : int
         0 or more. Simulation i depends on the seed and i alone.
     workers : int
-        How many processes share the work; the result does not depend on it. With more than one,
+        How many processes may share the work; one does all where there is too little for others
+        to be started. The result does not depend on it. With more than one,
         `curves` and `null` are sent to them, and the program that calls must be importable (its
         own start behind ``if __name__ == "__main__"``).
 
@@ -84,8 +87,11 @@ def simulate_curves(
     first = work(range(1))
     found = np.empty((simulations, first.shape[1]))
     found[:1] = first
+    start = time.perf_counter()
+    work(range(1))  # once more, for what the first had to prepare
+    alone = workers == 1 or (time.perf_counter() - start) * simulations < _WORTH_SHARING
     shares = _shares(simulations, workers)
-    done = map(work, shares) if workers == 1 else _on_many(work, shares, workers)
+    done = map(work, shares) if alone else _on_many(work, shares, workers)
     for rows, values in zip(shares, done, strict=True):
         if values.shape[1:] != first.shape[1:]:
             raise ValueError(

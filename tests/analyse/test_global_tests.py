@@ -70,7 +70,8 @@ def test_all_tests_come_from_the_same_simulations() -> None:
     assert (tests.null, tests.seed, tests.left_out) == (null.name, 5, ())
 
 
-def test_workers_and_runs_change_no_byte() -> None:
+def test_workers_and_runs_change_no_byte(monkeypatch: pytest.MonkeyPatch) -> None:
+    monkeypatch.setattr("analyse.simulated_curves._WORTH_SHARING", 0.0)
     points = random_points(RAGGED, 60, np.random.default_rng(1))
     one, again, two = (judged(points, RAGGED, seed=3, workers=k) for k in (1, 1, 2))
     for other in (again, two):
