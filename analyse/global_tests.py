@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Mapping
+from collections.abc import Callable, Mapping
 from dataclasses import dataclass
 from types import MappingProxyType
 
@@ -137,6 +137,7 @@ def global_tests(
     workers: int = 1,
     null: Null | None = None,
     measure: Measure = "extreme rank length",
+    progress: Callable[[int, int], None] | None = None,
 ) -> GlobalTests | None:
     """Judge a pattern over all sides of quadrats and all distances, against patterns of chance.
 
@@ -154,6 +155,8 @@ def global_tests(
         What to draw them from; None for complete spatial randomness given the number of points.
     measure : {"extreme rank length", "studentised maximum deviation"}
         How the curves are ordered.
+    progress : callable, optional
+        Called with (done, total) simulations now and then.
 
     Returns
     -------
@@ -198,7 +201,7 @@ def global_tests(
     sides, left_out = _sides(pattern)
     curves = Curves(Ruler.of(pattern.area, n), sides)
     drawn = simulate_curves(
-        curves, law, n=n, simulations=simulations, seed=seed, workers=workers
+        curves, law, n=n, simulations=simulations, seed=seed, workers=workers, progress=progress
     )  # fmt: skip
     seen, simulated = curves.split(curves(pattern.points)), curves.split(drawn)
     envelopes = {}

@@ -18,7 +18,7 @@ from detect.errors import RequestWrong
 
 Floats = NDArray[np.float64]
 _WORTH_SHARING = 4.0  # seconds of work; less is done before other processes have begun
-_SHARES = 8  # of the work for each process, so that none waits long for another
+_SHARES = 20  # of the work for each process, so that none waits long for another
 
 
 def simulate_curves(
@@ -29,6 +29,7 @@ def simulate_curves(
     simulations: int,
     seed: int,
     workers: int = 1,
+    progress: Callable[[int, int], None] | None = None,
 ) -> Floats:
     """Return the curves of patterns drawn under a null.
 
@@ -49,6 +50,8 @@ def simulate_curves(
         to be started. The result does not depend on it. With more than one,
         `curves` and `null` are sent to them, and the program that calls must be importable (its
         own start behind ``if __name__ == "__main__"``).
+    progress : callable, optional
+        Called with (done, total) now and then.
 
     Returns
     -------
@@ -99,6 +102,8 @@ def simulate_curves(
                 f" {first.shape[1]}"
             )
         found[rows.start : rows.stop] = values
+        if progress is not None:
+            progress(rows.stop, simulations)
     return found
 
 

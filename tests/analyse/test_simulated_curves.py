@@ -44,6 +44,15 @@ def test_a_simulation_depends_on_the_seed_and_its_number_alone() -> None:
     assert len(np.unique(long)) == long.size
 
 
+def test_progress_is_told_to_the_end() -> None:
+    told: list[tuple[int, int]] = []
+    simulate_curves(
+        nearest, NULL, n=5, simulations=99, seed=1, progress=lambda *done: told.append(done)
+    )
+    assert told[-1] == (99, 99)
+    assert told == sorted(set(told))
+
+
 def test_one_simulation_alone() -> None:
     assert simulate_curves(nearest, NULL, n=5, simulations=1, seed=1).shape == (1, 4)
     for workers in (1, 3):

@@ -153,16 +153,16 @@ def p_values(curves: Curves, own: Floats, others: Floats) -> dict[str, float]:
 class Setting:
     """One area and number of points, with what many null patterns of it look like."""
 
-    def __init__(self, area: BaseGeometry, n: int, seed: int) -> None:
+    def __init__(self, area: BaseGeometry, n: int, seed: int, pool: int) -> None:
         self.area, self.n, self.null = area, n, CompleteRandomness(area)
         self.curves = Curves(Ruler.of(area, n), Sides.of(area, n))
         self.grid = lay_grid(area, n)
         self.rng = np.random.default_rng([seed, n, round(area.area)])
-        self.pool = simulate_curves(self.curves, self.null, n=n, simulations=POOL, seed=seed)
+        self.pool = simulate_curves(self.curves, self.null, n=n, simulations=pool, seed=seed)
 
     def judged(self, points: Floats) -> dict[str, float]:
         """Every p of a pattern."""
-        chosen = self.rng.choice(POOL, AGAINST, replace=False)
+        chosen = self.rng.choice(len(self.pool), AGAINST, replace=False)
         p = p_values(self.curves, self.curves(points), self.pool[chosen])
         counts = count_in_quadrats(points, self.grid)
         test = simulated_p(counts, self.grid.area, simulations=AGAINST, rng=self.rng)
@@ -204,7 +204,7 @@ def null_rates(patterns: int, numbers: list[int]) -> None:
     for area_name, area in AREAS.items():
         columns = {}
         for n in numbers:
-            setting = Setting(area, n, 1)
+            setting = Setting(area, n, 1, POOL)
             drawn = (setting.null.draw(n, setting.rng) for _ in range(patterns))
             found = [setting.judged(points) for points in drawn]
             columns[f"n = {n}"] = rates(found)
@@ -235,7 +235,7 @@ def whole_rates(patterns: int) -> None:
 def power(patterns: int, numbers: list[int]) -> None:
     """Print the rates of patterns that are not random."""
     for n in numbers:
-        setting, columns = Setting(AREAS["dish"], n, 2), {}
+        setting, columns = Setting(AREAS["dish"], n, 2, POOL // 10), {}
         for name, law in LAWS.items():
             found = []
             for k in range(patterns):
