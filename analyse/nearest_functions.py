@@ -70,7 +70,7 @@ def g_function(points: ArrayLike, area: Area, r: ArrayLike) -> Floats:
     left = np.array([eroded_area(region, depth) for depth in inner])
     weight = 1 / np.maximum(left, 1e-9 * region.area)
     found = _up_to(np.append(distances, np.inf), inner, weight)
-    return found[:-1] / found[-1]
+    return np.asarray(found[:-1] / found[-1])
 
 
 def g_border(points: ArrayLike, area: Area, r: ArrayLike) -> Floats:

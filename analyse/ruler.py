@@ -257,7 +257,9 @@ class Ruler:
         inner = nearest[known]
         left = np.maximum(self.boundary.area_beyond(inner), 1e-9 * self.area.area)
         found = _summed(r, inner, 1 / left)
-        return found[:-1] / found[-1]  # exactly 1 where all lie below, so that ties stay ties
+        return np.asarray(
+            found[:-1] / found[-1]
+        )  # exactly 1 where all lie below, so that ties stay ties
 
     def _empty_space(self, empty: Floats) -> Floats:
         """Return Chiu and Stoyan's estimate of the empty-space function."""

@@ -13,6 +13,7 @@ from analyse.dispersion import (
     Dispersion,
     normal_deviate,
 )
+from analyse.distance_rows import distance_rows
 from analyse.findings import Findings
 from analyse.indices import (
     cluster_size_index,
@@ -319,6 +320,7 @@ _PARTS = (
     count_rows,
     power_rows,
     trend_rows,
+    distance_rows,
     block_rows,
 )
 
