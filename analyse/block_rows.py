@@ -84,11 +84,11 @@ def _variance(blocks: Blocks, variance: BlockVariance) -> Iterator[list[Cell]]:
     for size, value, terms in zip(*columns, strict=True):
         what = f"distance {size}" if variance.method == "PQV" else f"blocks of {size}"
         counted = "df" if variance.method == "nested" else "comparisons"
-        note = f"{what}; {terms} {counted}"
+        note = f"{what}; {terms} {counted if terms != 1 else counted.removesuffix('s')}"
         if variance.method == "nested":
             note += f"; sum of squares {value * terms:.9g}"
         if variance.left_out:
-            note += f"; {variance.left_out} quadrats beyond a power of two left out"
+            note += f"; {_quadrats(variance.left_out)} beyond a power of two left out"
         low, high = band.get(size, (None, None))
         yield [f"{name}_{size}", value, low, high, None, method, variance.used, note]
 
@@ -99,7 +99,7 @@ def _merged(blocks: Blocks, merged: MergedBlocks) -> Iterator[list[Cell]]:
     shape = f"{b}" if blocks.rows == 1 else f"{b}x{b}"
     note = f"quadrats merged to blocks of {shape}; mean {seen.mean:.9g}"
     if merged.left_out:
-        note += f"; {merged.left_out} quadrats at the right and bottom left out"
+        note += f"; {_quadrats(merged.left_out)} at the right and bottom left out"
     for name, value, method in (
         ("vmr", seen.vmr, "variance-to-mean ratio"),
         ("morisita", merged.morisita, "Morisita (1959)"),
@@ -111,3 +111,8 @@ def _merged(blocks: Blocks, merged: MergedBlocks) -> Iterator[list[Cell]]:
         name = f"merged_{shape}_chi2_{side}"
         p = getattr(seen, f"p_{side}")
         yield [name, seen.chi2, None, None, p, method, seen.q, f"df {seen.df}; {note}"]
+
+
+def _quadrats(n: int) -> str:
+    """Return a number of quadrats in words."""
+    return f"{n} quadrat{'s' * (n != 1)}"

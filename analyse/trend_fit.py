@@ -12,6 +12,7 @@ from analyse.errors import TrendNotFound
 
 _STEEPEST = 40.0  # log of the greatest ratio of densities: exp(40) is no trend any more
 _STEPS, _CLOSE = 100, 1e-12
+_NOTHING = 1e-12  # slopes below this are rounding
 _FEWEST_DF = 2  # a partition with fewer degrees of freedom says nothing about dispersion
 _LEAST = 1e-3  # dispersion counts as this much at least: counts that fit exactly have none
 MIDDLE = 16  # quadrats of the partition whose degrees of freedom the F test takes, about
@@ -96,6 +97,7 @@ def best_slope(
             )
         if gain < _CLOSE and float(gradient @ step) < _CLOSE:
             break
+    b[np.abs(b) < _NOTHING] = 0.0
     spread = _moments(b, z, weights)[1]
     return Slope(b, np.linalg.inv(spread) / n, max(0.0, 2 * n * (value - start)))
 

@@ -8,6 +8,7 @@ from typing import TYPE_CHECKING
 from scipy import special
 
 from analyse.trend_record import LEVEL, Trend
+from analyse.trends import FEWEST_SPOTS
 from detect.files import Cell
 
 if TYPE_CHECKING:
@@ -15,6 +16,9 @@ if TYPE_CHECKING:
 
 _POISSON = "log-linear trend of a Poisson process (Cox 1972; Berman and Turner 1992)"
 _COUNTS = "log-linear trend of Poisson counts (McCullagh and Nelder 1989)"
+_NONE = (
+    f"no slope fitted: fewer than {FEWEST_SPOTS} spots, all of them at one end, or too few quadrats"
+)
 _SIDES = {"clumped": "upper tail", "even": "lower tail", "two_sided": "twice the smaller tail"}
 _BEYOND = (
     "index of dispersion with expected counts by the trend, simulated given the total (Davison and"
@@ -23,7 +27,7 @@ _BEYOND = (
 
 
 def trend_rows(each: Findings) -> Iterator[list[Cell]]:
-    """Yield the gradients of the density; nothing where none could be fitted.
+    """Yield the gradients of the density; nothing for counts whose places are unknown.
 
     Parameters
     ----------
@@ -33,11 +37,14 @@ def trend_rows(each: Findings) -> Iterator[list[Cell]]:
     Yields
     ------
     list
-        The cells of tests.csv after `photograph`; `n` is the number of points.
+        The cells of tests.csv after `photograph`; `n` is the number of points. One row without
+        numbers where no trend could be fitted.
     """
-    if each.trend is None:
-        return
     base = _COUNTS if each.pattern is None else _POISSON
+    if each.trend is None:
+        if each.pattern is not None or each.settings["rows"] is not None:
+            yield ["trend_plane", None, None, None, None, base, each.n, _NONE]
+        return
     unit = each.unit or "quadrat"
     for trend, adjusted in zip(each.trend.fits, each.trend.adjusted, strict=True):
         yield from _trend(trend, adjusted, len(each.trend.fits), base, unit)

@@ -7,7 +7,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from analyse.count_trend import fit_count_trend
-from analyse.errors import TrendNotFound
+from analyse.errors import GridWrong, TrendNotFound
 from analyse.holm import holm_adjusted
 from analyse.nulls import SimulatedTest, simulated_p
 from analyse.pattern import Pattern
@@ -115,7 +115,7 @@ def pattern_trends(
         if pattern.dish is not None:
             centre = (pattern.dish.x, pattern.dish.y)
             fits.append(fit_trend(pattern.points, pattern.area, kind="radial", centre=centre))
-    except TrendNotFound:
+    except (TrendNotFound, GridWrong):  # also where an area is too thin for coarse quadrats
         return None
     tried = _together(fits)
     if tried.clearest is None:

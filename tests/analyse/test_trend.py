@@ -21,9 +21,9 @@ from analyse.cli import app
 from analyse.count_trend import fit_count_trend
 from analyse.errors import TrendNotFound
 from analyse.findings import analyse_counts, analyse_points
-from analyse.nulls import random_points
+from analyse.nulls import random_points, simulated_p
 from analyse.pattern import Circle, CountTable, Pattern
-from analyse.quadrats import QuadratCounts, count_in_quadrats, lay_grid
+from analyse.quadrats import GridOptions, QuadratCounts, count_in_quadrats, lay_grid
 from analyse.quadrature import quadrature
 from analyse.trend import Trend, TrendModel, TrendRandomness, fit_trend
 from analyse.trends import pattern_trends
@@ -159,7 +159,7 @@ def test_slopes_are_recovered(area: BaseGeometry) -> None:
     assert trend.p < 1e-6
 
 
-@settings(max_examples=20)
+@settings(max_examples=20, deadline=None)
 @given(st.integers(0, 10_000), st.floats(0.001, 1000), st.sampled_from([0, 1, 2, 3]))
 def test_units_shifts_turns_and_order_change_nothing(seed: int, unit: float, turns: int) -> None:
     rng = np.random.default_rng(seed)
@@ -256,13 +256,16 @@ def test_real_gradients_are_seen() -> None:
 def test_a_gradient_is_not_called_clumping() -> None:
     """Around the trend the counts vary as at random; without it they would be called clumped."""
     called = seen = 0
+    grid = lay_grid(SQUARE, 150)
     for seed in range(60):
         x = sloping(SQUARE, 150, (0.03, 0), 300 + seed)
-        found = analyse_points(x, SQUARE, seed=seed, simulations=199)
-        called += found.verdict == "clumped"
-        assert found.trend is not None
-        if found.trend.beyond is not None:
-            seen += found.trend.beyond.p_two_sided <= 0.05
+        counts = QuadratCounts(count_in_quadrats(x, grid), grid.area, grid.whole, grid)
+        rng = np.random.default_rng(seed)
+        plain = simulated_p(counts.counts, grid.area, simulations=199, rng=rng)
+        called += plain.p_two_sided <= 0.05
+        found = pattern_trends(Pattern.of(x, SQUARE), counts, simulations=199, rng=rng)
+        assert found is not None
+        seen += found.beyond is not None and found.beyond.p_two_sided <= 0.05
     assert called > 45
     assert seen <= 8
 
@@ -423,6 +426,31 @@ def test_the_trend_of_a_transect_through_the_command_line(tmp_path: Path) -> Non
     assert "denser towards the end" in rows["trend_plane"]["notes"]
     assert "per quadrat;" in rows["trend_plane_slope_x"]["notes"]
     assert "trend_plane_slope_y" not in rows
+
+
+def test_where_no_slope_fits_the_table_says_so(tmp_path: Path) -> None:
+    for text, options, there in (
+        ("count\n30\n0\n0\n0\n0\n0\n0\n", ["--transect"], True),
+        ("count\n30\n0\n0\n0\n0\n0\n0\n", [], False),
+    ):
+        (tmp_path / "line.csv").write_text(text, encoding="utf-8")
+        asked = ["analyse", "--counts", str(tmp_path / "line.csv"), "--simulations", "99"]
+        result = CliRunner().invoke(app, [*asked, *options, "--out", str(tmp_path / "out")])
+        assert result.exit_code == 0, result.output
+        rows = rows_of(tmp_path / "out")
+        assert ("trend_plane" in rows) == there
+        if there:
+            assert rows["trend_plane"]["value"] == ""
+            assert "no slope fitted" in rows["trend_plane"]["notes"]
+
+
+def test_an_area_too_thin_for_coarse_quadrats_has_no_trend() -> None:
+    thin = shapely.box(0, 0, 1e6, 1e-6)
+    x = random_points(thin, 30, np.random.default_rng(1))
+    grid = lay_grid(thin, 30, GridOptions(shape=(1, 10)))
+    counts = QuadratCounts(count_in_quadrats(x, grid), grid.area, grid.whole, grid)
+    rng = np.random.default_rng(1)
+    assert pattern_trends(Pattern.of(x, thin), counts, simulations=99, rng=rng) is None
 
 
 def test_records_are_read_only() -> None:
