@@ -12,7 +12,7 @@ from shapely.geometry.base import BaseGeometry
 
 from analyse.errors import TrendNotFound
 from analyse.grid_options import GridOptions
-from analyse.nulls import random_points
+from analyse.nulls import CompleteRandomness
 from analyse.quadrats import Grid, count_in_quadrats, lay_grid
 from analyse.quadrature import Quadrature, quadrature
 from analyse.trend_fit import PARTITIONS, best_slope
@@ -214,6 +214,7 @@ class TrendRandomness:
     name: str = field(init=False)
     _top: float = field(init=False)
     _share: float = field(init=False)
+    _even: CompleteRandomness = field(init=False)
 
     def __post_init__(self) -> None:
         trend = self.trend
@@ -222,6 +223,7 @@ class TrendRandomness:
         kept = float(rule.integrals(np.exp(trend.log_density(rule.nodes) - top))[0])
         object.__setattr__(self, "name", f"{trend.kind} trend")
         object.__setattr__(self, "_top", top)
+        object.__setattr__(self, "_even", CompleteRandomness(self.area))
         object.__setattr__(self, "_share", kept / self.area.area)
 
     def __repr__(self) -> str:
@@ -236,7 +238,7 @@ class TrendRandomness:
         found, missing = [np.empty((0, 2))], n
         while missing > 0:
             tries = min(_TRIES_AT_ONCE, math.ceil(missing / self._share * 1.1) + 8)
-            xy = random_points(self.area, tries, rng)
+            xy = self._even.draw(tries, rng)
             kept = np.log(rng.random(tries)) < self.trend.log_density(xy) - self._top
             found.append(xy[kept][:missing])
             missing -= len(found[-1])
