@@ -14,6 +14,7 @@ from analyse.chance import check_seed
 from analyse.clumped_density import clumped_in_quadrats
 from analyse.contiguous import FEWEST_QUADRATS as FEWEST_IN_ORDER
 from analyse.contiguous import Blocks, block_variances
+from analyse.count_chance import least_chi2, simulated_p
 from analyse.density import Limits
 from analyse.dispersion import (
     Dispersion,
@@ -25,7 +26,6 @@ from analyse.dispersion import (
 from analyse.fits import clumped_law
 from analyse.flags import count_flags
 from analyse.models import PoissonFit, poisson_frequencies
-from analyse.nulls import least_chi2, simulated_p
 from analyse.pattern import Pattern, Unit
 from analyse.pooling import LARGEST_COUNT
 from analyse.quadrats import QuadratCounts

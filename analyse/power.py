@@ -153,7 +153,7 @@ def detectable(df: int, *, level: float = LEVEL, power: float = POWER) -> tuple[
     V = chi2(1 - level / 2) / chi2(1 - power) on the clumped side. An approximation, so that it
     is said as "about": of negative binomial counts with the VMR for 80 %, the simulated test saw
     77 to 82 % at a mean count of 5 or more, 75 to 78 % at 2, and 67 to 77 % at 1 (10 to 100
-    quadrats). How even counts can be is bounded by their number: see `analyse.nulls.least_chi2`.
+    quadrats). How even counts can be is bounded by their number: see `analyse.count_chance.least_chi2`.
 
     References
     ----------

@@ -7,9 +7,9 @@ from dataclasses import dataclass
 import numpy as np
 
 from analyse.chance import SEED, SIMULATIONS
+from analyse.count_chance import SimulatedTest, simulated_p
 from analyse.dispersion import Dispersion, clipped_dispersion, dispersion
 from analyse.findings import stream
-from analyse.nulls import SimulatedTest, simulated_p
 from analyse.pattern import Pattern, pattern_of_state
 from analyse.quadrats import Grid, GridOptions, QuadratCounts, count_in_quadrats, lay_grid
 from analyse.verdict import Verdict, decide

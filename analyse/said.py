@@ -11,12 +11,12 @@ from numpy.typing import NDArray
 from analyse.clumped_density import ClumpedLimits
 from analyse.columns import hold_columns
 from analyse.contiguous import Blocks
+from analyse.count_chance import SimulatedTest
 from analyse.density import Limits
 from analyse.dispersion import Dispersion
 from analyse.fits import NegativeBinomialFit
 from analyse.flags import flag_sentences
 from analyse.models import PoissonFit
-from analyse.nulls import SimulatedTest
 from analyse.pattern import Pattern, Unit
 from analyse.quadrats import QuadratCounts
 from analyse.trends import Trends

@@ -6,10 +6,10 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from analyse.count_chance import SimulatedTest, simulated_p
 from analyse.count_trend import fit_count_trend
 from analyse.errors import GridWrong, TrendNotFound
 from analyse.holm import holm_adjusted
-from analyse.nulls import SimulatedTest, simulated_p
 from analyse.pattern import Pattern
 from analyse.quadrats import QuadratCounts
 from analyse.trend import fit_trend

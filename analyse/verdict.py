@@ -5,9 +5,9 @@ from __future__ import annotations
 import math
 from typing import Literal
 
+from analyse.count_chance import SimulatedTest
 from analyse.dispersion import Dispersion
 from analyse.flags import FLAGS as FLAGS
-from analyse.nulls import SimulatedTest
 from analyse.power import LEVEL as LEVEL
 from analyse.power import POWER as POWER
 from analyse.power import detectable as detectable

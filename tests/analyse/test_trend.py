@@ -18,10 +18,11 @@ from shapely.geometry.base import BaseGeometry
 from typer.testing import CliRunner
 
 from analyse.cli import app
+from analyse.count_chance import simulated_p
 from analyse.count_trend import fit_count_trend
 from analyse.errors import TrendNotFound
 from analyse.findings import analyse_counts, analyse_points
-from analyse.nulls import random_points, simulated_p
+from analyse.nulls import random_points
 from analyse.pattern import Circle, CountTable, Pattern
 from analyse.quadrats import GridOptions, QuadratCounts, count_in_quadrats, lay_grid
 from analyse.quadrature import quadrature

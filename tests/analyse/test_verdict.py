@@ -6,8 +6,8 @@ import numpy as np
 import pytest
 from scipy import stats
 
+from analyse.count_chance import SimulatedTest, simulated_chi2
 from analyse.dispersion import dispersion
-from analyse.nulls import SimulatedTest, simulated_chi2
 from analyse.verdict import decide, detectable, p_text, sentence
 
 

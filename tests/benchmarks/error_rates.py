@@ -27,8 +27,9 @@ from shapely.geometry.base import BaseGeometry
 
 sys.path.insert(0, str(Path(__file__).resolve().parents[2]))
 
+from analyse.count_chance import simulated_chi2, simulated_p
 from analyse.grid_options import GridOptions
-from analyse.nulls import random_points, simulated_chi2, simulated_p
+from analyse.nulls import random_points
 from analyse.quadrats import Grid, count_in_quadrats, lay_grid
 from analyse.verdict import LEVEL
 

@@ -7,8 +7,9 @@ import time
 import numpy as np
 import shapely
 
+from analyse.count_chance import simulated_p
 from analyse.findings import analyse_points
-from analyse.nulls import random_points, simulated_p
+from analyse.nulls import random_points
 from analyse.quadrats import lay_grid
 
 
