@@ -63,8 +63,9 @@ def fit_trend(
     Points in clusters without any gradient make the likelihood ratio test reject far too often. So
     the dispersion of counts around the fitted trend is estimated by Pearson's X2 over its degrees
     of freedom, and F = lr / df / dispersion is referred to the F distribution. It is the largest of
-    the dispersions in about 9, 16 and 36 quadrats, with the degrees of freedom of the 16. Clusters
-    wider than about a quarter of the area cannot be told from a gradient by any test.
+    the dispersions in about 9, 16 and 36 quadrats, with the degrees of freedom of the 16, or fewer
+    where n over the dispersion, about the number of clusters, is smaller. Clusters wider than about
+    a third of the area look like gradients, and are called one in about 10 % instead of 5 %.
 
     The limits of the ratio are Scheffe's: they hold in all directions at once, so also in that
     which the points chose.

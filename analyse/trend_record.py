@@ -47,8 +47,9 @@ class Trend:
     dispersion : float
         Dispersion of the counts around the trend in coarse quadrats: about 1 for independent
         points, above for clumped ones.
-    dispersion_df : int
-        Degrees of freedom of the dispersion.
+    dispersion_df : float
+        Degrees of freedom of the dispersion: of about 16 quadrats, but no more than n over the
+        dispersion, about the number of clusters, leaves after the slopes.
     f, p : float
         F = lr / df / dispersion and its p: the test that allows for clumping.
     direction : str
@@ -67,7 +68,7 @@ class Trend:
     df: int
     p_poisson: float
     dispersion: float
-    dispersion_df: int
+    dispersion_df: float
     f: float
     p: float
     direction: str
@@ -143,7 +144,8 @@ def assembled(
     Trend
     """
     df = found.slope.size
-    dispersion, dispersion_df = largest_dispersion(partitions, df)
+    dispersion, of_quadrats = largest_dispersion(partitions, df)
+    dispersion_df = min(float(of_quadrats), max(1.0, n / max(1.0, dispersion) - df))
     f = found.lr / df / dispersion
     along = ends @ found.slope
     span = ends[int(np.argmax(along))] - ends[int(np.argmin(along))]

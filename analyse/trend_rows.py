@@ -64,7 +64,7 @@ def _trend(trend: Trend, adjusted: float, tried: int, base: str, unit: str) -> I
     note = (
         f"density at the densest end over that at the other, limits at {100 * (1 - LEVEL):g} %"
         f" (Scheffe 1959); denser towards {trend.direction}; F {trend.f:.4g} on {trend.df} and"
-        f" {trend.dispersion_df} df; dispersion around the trend {trend.dispersion:.4g}"
+        f" {trend.dispersion_df:.4g} df; dispersion around the trend {trend.dispersion:.4g}"
     )
     note += f"; p of {tried} trends adjusted (Holm 1979) {adjusted:.4g}" if tried > 1 else ""
     method = f"{base}, F test that allows for clumping (McCullagh and Nelder 1989)"
