@@ -85,7 +85,10 @@ class PairBins:
 
     def number(self, distance: Floats) -> NDArray[np.intp]:
         """Return the class of each distance up to `reach`; beyond it the numbers run on."""
-        return np.asarray(np.ceil(np.sqrt(distance) * self.slope + self.offset), dtype=np.intp)
+        scaled = np.sqrt(distance)
+        scaled *= self.slope
+        scaled += self.offset
+        return np.ceil(scaled, out=scaled).astype(np.intp)
 
     def up_to(self) -> Floats:
         """Return the matrix (k, bins) that sums all classes up to each distance of `k_at`."""

@@ -8,7 +8,6 @@ from __future__ import annotations
 
 import math
 from dataclasses import dataclass
-from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
@@ -27,6 +26,7 @@ Floats = NDArray[np.float64]
 Floats32 = NDArray[np.float32]
 
 _ROWS = 64  # points compared at once with those to their right
+_BELOW = np.tri(_ROWS, dtype=bool)
 _NEAR = 1.4  # mean spacings 1 / sqrt(density) up to which pairs are measured one by one
 _FINE = 12  # cells of the grid in that distance
 _MOST_CELLS = 2048**2
@@ -41,29 +41,42 @@ class Weights:
 
     covariance: SetCovariance
     table: Floats32
+    table_cell: float
     half: int
 
     @classmethod
     def of(cls, covariance: SetCovariance, reach: float) -> Weights:
         """Prepare the weights of steps up to a distance."""
         if not isinstance(covariance, MaskCovariance):
-            return cls(covariance, np.zeros((0, 0), np.float32), 0)
+            return cls(covariance, np.zeros((0, 0), np.float32), 1.0, 0)
         half = math.ceil(reach / covariance.cell) + 1
         steps = covariance.cell * np.arange(-half, half + 1, dtype=np.float64)
         shared = covariance.at(*np.meshgrid(steps, steps))
         table = (1 / np.maximum(shared, shared.max() * 1e-6)).astype(np.float32)
         table.setflags(write=False)
-        return cls(covariance, table, half)
+        return cls(covariance, table, covariance.cell, half)
 
-    def at(self, dx: NDArray[Any], dy: NDArray[Any]) -> NDArray[Any]:
-        """Return the weight of each step; from a table at the nearest whole cell where need be."""
+    def kept(self, dx: Floats32, dy: Floats32) -> tuple[Floats32, ...]:
+        """Return what must be kept of steps so that they can be weighed; may write over them."""
+        if isinstance(self.covariance, DiscCovariance):
+            return ()  # weighed by the class of their length
         if isinstance(self.covariance, MaskCovariance):
-            scale = np.float32(1 / self.covariance.cell)
-            middle = np.float32(self.half + 0.5)
-            column = (dx * scale + middle).astype(np.int32)
-            row = (dy * scale + middle).astype(np.int32)
-            return np.asarray(self.table.ravel().take(row * self.table.shape[1] + column))
-        return np.asarray(1 / self.covariance.at(dx, dy))
+            return dx, dy
+        np.abs(dx, out=dx)
+        np.abs(dy, out=dy)
+        np.subtract(np.float32(self.covariance.width), dx, out=dx)
+        np.subtract(np.float32(self.covariance.height), dy, out=dy)
+        dx *= dy
+        return (dx,)
+
+    def weigh(self, *kept: Floats32) -> Floats32:
+        """Return the weight of steps from what was kept of them."""
+        if len(kept) == 1:
+            return np.asarray(1 / kept[0])
+        scale = np.float32(1 / self.table_cell)
+        middle = np.float32(self.half + 0.5)
+        column, row = ((step * scale + middle).astype(np.int32) for step in kept)
+        return np.asarray(self.table.ravel().take(row * self.table.shape[1] + column))
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -72,14 +85,14 @@ class DirectPairs:
 
     bins: PairBins
     weights: Weights
-    by_class: Floats  # weight of a class where it depends on the distance alone, else empty
+    by_class: Floats | None  # weight of a class where it depends on the distance alone
     middle: Floats
 
     @classmethod
     def of(cls, area: BaseGeometry, covariance: SetCovariance, bins: PairBins) -> DirectPairs:
         """Prepare the pairs of one area."""
         x0, y0, x1, y1 = area.bounds
-        by_class = np.zeros(0)
+        by_class = None
         if isinstance(covariance, DiscCovariance):
             by_class = 1 / covariance.along(bins.middles)
         middle = np.array([(x0 + x1) / 2, (y0 + y1) / 2])
@@ -93,28 +106,40 @@ class DirectPairs:
         xy = (points - self.middle).astype(np.float32)
         xy = xy[np.argsort(xy[:, 0])]
         x, y = np.ascontiguousarray(xy[:, 0]), np.ascontiguousarray(xy[:, 1])
-        reach = np.float32(self.bins.reach)
-        until = np.searchsorted(x, x + reach, "right")
-        plain = self.by_class.size > 0
-        d2, dx, dy = [], [], []
-        for start in range(0, len(x), _ROWS):
-            end = min(start + _ROWS, len(x))
-            across = x[start : until[end - 1]] - x[start:end, None]
-            along = y[start : until[end - 1]] - y[start:end, None]
-            squared = across * across + along * along
-            own = end - start
-            squared[:, :own][np.tri(own, dtype=bool)] = np.inf  # each pair once, none with itself
-            near = squared < reach * reach
-            d2.append(squared[near])
-            if not plain:
-                dx.append(across[near])
-                dy.append(along[near])
-        number = self.bins.number(np.sqrt(np.concatenate(d2)))
-        size = len(self.bins)
-        if plain:
-            return np.asarray(np.bincount(number, minlength=size)[:size] * self.by_class)
-        weight = self.weights.at(np.concatenate(dx), np.concatenate(dy))
-        return np.asarray(np.bincount(number, weight, size)[:size])
+        until = np.searchsorted(x, x + np.float32(self.bins.reach), "right")
+        starts = np.arange(0, len(x), _ROWS)
+        ends = np.minimum(starts + _ROWS, len(x))
+        widest = int((until[ends - 1] - starts).max())
+        room = np.empty((3, _ROWS * widest), np.float32)  # stays in the processor's own memory
+        sums = np.zeros(len(self.bins))
+        for start, end in zip(starts.tolist(), ends.tolist(), strict=True):
+            squared, *kept = self._strip(
+                x, y, slice(start, end), slice(start, until[end - 1]), room
+            )
+            number = self.bins.number(np.sqrt(squared, out=squared))
+            weight = self.weights.weigh(*kept) if kept else None
+            sums += np.bincount(number, weight, len(sums))[: len(sums)]
+        return sums if self.by_class is None else sums * self.by_class
+
+    def _strip(
+        self, x: Floats32, y: Floats32, rows: slice, right: slice, room: Floats32
+    ) -> list[Floats32]:
+        """Return the squared length of steps from some points to those at their right, and more.
+
+        Whole blocks are worked on in place, as picking pairs out costs more than arithmetic.
+        """
+        shape = (rows.stop - rows.start, right.stop - right.start)
+        across, along, squared = (part[: shape[0] * shape[1]].reshape(shape) for part in room)
+        np.subtract(y[right], y[rows, None], out=along)
+        np.multiply(along, along, out=across)
+        np.subtract(x[right], x[rows, None], out=squared)
+        squared *= squared
+        squared += across
+        np.subtract(x[right], x[rows, None], out=across)
+        own = shape[0]
+        squared[:, :own][_BELOW[:own, :own]] = np.inf  # each pair once, none with itself
+        near = np.flatnonzero(squared < np.float32(self.bins.reach) ** 2)
+        return [part.ravel().take(near) for part in (squared, *self.weights.kept(across, along))]
 
 
 @dataclass(frozen=True, slots=True, eq=False)
