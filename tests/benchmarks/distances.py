@@ -81,7 +81,10 @@ def against_astropy() -> None:
     r = ruler.x["l_function"]
     ours = np.mean([quickest(lambda p=each: ruler.curves(p), 9) for each in patterns])
     theirs = np.mean(
-        [quickest(lambda p=each: other(data=p, radii=r, mode="translation"), 2) for each in patterns[:4]]
+        [
+            quickest(lambda p=each: other(data=p, radii=r, mode="translation"), 2)
+            for each in patterns[:4]
+        ]
     )
     print(f"1,000 points in a square: all curves {ours:.2f} ms a pattern, astropy's K alone")
     print(f"{theirs:.1f} ms, {theirs / ours:.0f} times as long")
