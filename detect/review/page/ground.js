@@ -1,17 +1,12 @@
 // The study area and the quadrats with their counts, beneath the rings.
 
 import { layers } from "./looks.js";
+import { linesOf } from "./outlines.js";
 import { sheet } from "./sheet.js";
 import { toScreen, view } from "./view.js";
 
 /** What is laid over the photograph: the quadrats as the statistics have them, an area while it is drawn. */
 export const ground = { quadrats: null, drawing: null };
-
-/** Returns all closed lines of a GeoJSON outline. */
-export function linesOf(geometry) {
-  if (!geometry) return [];
-  return geometry.type === "MultiPolygon" ? geometry.coordinates.flat() : geometry.coordinates;
-}
 
 /** Draws the ground of the present view. */
 export function drawGround(context) {
@@ -62,16 +57,19 @@ function drawQuadrats(context, { outlines, count, x, y }) {
   context.strokeStyle = "rgba(255, 255, 255, 0.85)";
   context.lineWidth = 1;
   context.stroke();
-  context.font = "600 15px system-ui, sans-serif";
+  context.font = "600 14px system-ui, sans-serif";
   context.textAlign = "center";
   context.textBaseline = "middle";
-  context.lineJoin = "round";
-  context.lineWidth = 4;
-  count.forEach((number, index) => {
-    const [sx, sy] = toScreen(x[index], y[index]);
-    context.strokeStyle = "rgba(8, 13, 18, 0.85)";
-    context.strokeText(number, sx, sy);
-    context.fillStyle = "#ffffff";
-    context.fillText(number, sx, sy);
-  });
+  count.forEach((number, index) => drawCount(context, String(number), ...toScreen(x[index], y[index])));
+}
+
+/** Draws a count on a dark ground, so that it is read on any photograph. */
+function drawCount(context, text, x, y) {
+  const half = 5 + 4.6 * text.length;
+  context.fillStyle = "rgba(8, 13, 18, 0.7)";
+  context.beginPath();
+  context.roundRect(x - half, y - 10, 2 * half, 20, 6);
+  context.fill();
+  context.fillStyle = "#ffffff";
+  context.fillText(text, x, y + 1);
 }

@@ -8,6 +8,7 @@ const MEANING = {
   placed: "placed by a person, counted (small diamond)",
   doubtful: "counted, but doubtful (tick outside)",
   struck: "struck: not counted (broken ring, crossed out)",
+  outside: "outside the study area: not counted (dots)",
 };
 
 /** Draws the rings and says what each means. */

@@ -1,5 +1,7 @@
 // Which ring lies under a point: a grid of buckets, so that many spots cost no more than few.
 
+import { holder } from "./outlines.js";
+
 const CELL = 48; // pixels of the photograph
 
 /** Rows of spots by the cell that their centre lies in. */
@@ -65,19 +67,10 @@ export function inside(spots, loop) {
   const xs = loop.map((place) => place[0]);
   const ys = loop.map((place) => place[1]);
   const box = [Math.min(...xs), Math.min(...ys), Math.max(...xs), Math.max(...ys)];
+  const holds = holder({ type: "Polygon", coordinates: [loop] });
   const rows = [];
   spots.buckets.within(...box, (row) => {
-    if (spots.counted[row] && holds(loop, spots.x[row], spots.y[row])) rows.push(row);
+    if (spots.counted[row] && holds(spots.x[row], spots.y[row])) rows.push(row);
   });
   return rows;
-}
-
-/** Whether a place lies in a loop, by how often a line from it crosses the loop. */
-export function holds(loop, x, y) {
-  let within = false;
-  for (let i = 0, j = loop.length - 1; i < loop.length; j = i, i += 1) {
-    const [[xi, yi], [xj, yj]] = [loop[i], loop[j]];
-    if (yi > y !== yj > y && x < ((xj - xi) * (y - yi)) / (yj - yi) + xi) within = !within;
-  }
-  return within;
 }

@@ -21,7 +21,7 @@ import { open, sheet } from "./sheet.js";
 import * as stage from "./stage.js";
 import * as status from "./status.js";
 import * as tools from "./tools.js";
-import { setPicture, showWhole, zoom } from "./view.js";
+import { setPicture, showWhole, view, zoom } from "./view.js";
 
 let opening = 0;
 
@@ -69,6 +69,11 @@ function showFacts() {
   byId("count-now").textContent = sheet.spots.total.toLocaleString("en");
 }
 
+/** Lets it be seen in the page itself which part of the photograph is shown. */
+function showPlace() {
+  Object.assign(byId("stage").dataset, { scale: view.scale, left: view.x, top: view.y });
+}
+
 /** The buttons that belong to the stage. */
 function startStageButtons() {
   byId("zoom-in").addEventListener("click", () => zoom(1.4));
@@ -92,6 +97,7 @@ async function start() {
   help.start(keys.LISTED);
   startStageButtons();
   for (const news of ["spots", "changed", "edited"]) on(news, showFacts);
+  on("view", showPlace);
   on("stale", reread);
   const wanted = location.hash.slice(1);
   const [session, rows] = await Promise.all([get("api/session"), queue.readQueue()]);

@@ -3,9 +3,10 @@
 import { sheet } from "./sheet.js";
 import { view } from "./view.js";
 
-/** The looks of a ring, in the order in which they are drawn. */
-export const LOOKS = ["found", "placed", "doubtful", "struck"];
-const COLOURS = { found: "#62f0a4", placed: "#8ccbff", doubtful: "#ffb03b", struck: "#f3e9f7" };
+/** The looks of a ring. */
+export const LOOKS = ["found", "placed", "doubtful", "struck", "outside"];
+const COLOURS = { found: "#62f0a4", placed: "#8ccbff", doubtful: "#ffb03b", struck: "#f3e9f7", outside: "#d5dade" };
+const ORDER = [4, 0, 1, 2, 3]; // doubtful and struck ones last, so that nothing covers them
 const HALO = "rgba(8, 13, 18, 0.72)";
 const LARGEST_SPRITE = 64; // screen pixels of radius; larger ones are few, and drawn as they are
 const ROOM = 14; // around a ring for its marks
@@ -16,6 +17,7 @@ const sprites = new Map();
 /** Returns which look a spot has. */
 export function lookOf(spots, row) {
   if (!spots.counted[row]) return 3;
+  if (!spots.inside[row]) return 4;
   if (!spots.found[row]) return 1;
   return spots.doubt[row] > sheet.doubtful_above ? 2 : 0;
 }
@@ -26,11 +28,13 @@ export function drawRing(context, look, x, y, radius) {
   const path = outline(LOOKS[look], x, y, r);
   context.lineCap = "round";
   context.strokeStyle = HALO;
-  context.lineWidth = look === 3 ? 3 : 3.8;
+  context.lineWidth = look < 3 ? 3.8 : 3;
+  if (look === 4) context.setLineDash([1.5, 3.5]);
   context.stroke(path);
   context.strokeStyle = context.fillStyle = COLOURS[LOOKS[look]];
-  context.lineWidth = look === 3 ? 1.3 : 1.9;
+  context.lineWidth = look < 3 ? 1.9 : 1.3;
   context.stroke(path);
+  context.setLineDash([]);
   if (look === 1) context.fill(diamond(x, y - r));
 }
 
@@ -94,9 +98,9 @@ export function rowsBy(x0, y0, x1, y1, withStruck) {
     const near = spots.radius[row] + ROOM / view.scale;
     if (spots.x[row] < x0 - near || spots.x[row] > x1 + near || spots.y[row] < y0 - near || spots.y[row] > y1 + near) return;
     const look = lookOf(spots, row);
-    if (look < 3 || withStruck) rows[look].push(row);
+    if (look !== 3 || withStruck) rows[look].push(row);
   });
-  return rows.map((each, look) => each.map((row) => [row, look])).flat();
+  return ORDER.map((look) => rows[look].map((row) => [row, look])).flat();
 }
 
 /** Draws some rings, from one index on, until time is up; returns the index that comes next. */

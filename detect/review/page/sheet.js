@@ -3,6 +3,7 @@
 import { tell } from "./bell.js";
 import { after, touched, touches } from "./edits.js";
 import { standing } from "./history.js";
+import { holder } from "./outlines.js";
 import { get } from "./server.js";
 import { Spots } from "./spots.js";
 
@@ -33,9 +34,9 @@ export function take(fresh, waiting) {
   const known = new Set(fresh.history.map((each) => each.id));
   pending = waiting.filter((edit) => !known.has(edit.id));
   for (const edit of standing(pending)) for (const id of touched(edit)) show(id);
+  sheet.area = null;
   showArea();
   tell(other ? "opened" : "reread");
-  tell("spots", null);
 }
 
 /** Shows an edit that has just been made. */
@@ -125,7 +126,9 @@ function showArea() {
   const shown = drawn ? { ...confirmedArea, geometry: drawn.area, changed: true } : confirmedArea;
   if (shown === sheet.area) return;
   sheet.area = shown;
+  sheet.spots.lieIn(holder(shown?.geometry));
   tell("area");
+  tell("spots", null);
 }
 
 /** Returns the rows of counted spots that were found with more than some doubt, most doubtful first. */

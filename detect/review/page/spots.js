@@ -11,11 +11,22 @@ export class Spots {
     this.buckets = new Buckets();
     this.id.forEach((_, row) => this.buckets.add(row, this.x[row], this.y[row], this.radius[row]));
     this.drawn = new Map(); // where spots were when they were drawn last, of those changed since
-    this.total = this.counted.reduce((sum, each) => sum + (each ? 1 : 0), 0);
+    this.inside = [];
+    this.lieIn(() => true);
   }
 
   get length() {
     return this.id.length;
+  }
+
+  /** Says which places lie in the study area; `total` counts there. */
+  lieIn(holds) {
+    this.holds = holds;
+    this.total = 0;
+    for (let row = 0; row < this.length; row += 1) {
+      this.inside[row] = holds(this.x[row], this.y[row]);
+      this.total += this.here[row] && this.counted[row] && this.inside[row] ? 1 : 0;
+    }
   }
 
   /** Returns what is known of one spot, or null. */
@@ -39,7 +50,7 @@ export class Spots {
     if (this.here[row]) {
       if (!this.drawn.has(id)) this.drawn.set(id, { x: this.x[row], y: this.y[row], radius: this.radius[row] });
       this.buckets.take(row, this.x[row], this.y[row]);
-      this.total -= this.counted[row] ? 1 : 0;
+      this.total -= this.counted[row] && this.inside[row] ? 1 : 0;
     }
     if (spot === null) {
       if (row < this.id.length) this.here[row] = this.counted[row] = false;
@@ -49,6 +60,7 @@ export class Spots {
     for (const name of ["id", "x", "y", "radius", "doubt", "found", "counted", "changed"]) this[name][row] = spot[name];
     this.here[row] = true;
     this.buckets.add(row, spot.x, spot.y, spot.radius);
-    this.total += spot.counted ? 1 : 0;
+    this.inside[row] = this.holds(spot.x, spot.y);
+    this.total += spot.counted && this.inside[row] ? 1 : 0;
   }
 }

@@ -4,8 +4,9 @@ import { edit } from "./act.js";
 import { tell } from "./bell.js";
 import { setBar } from "./bar.js";
 import { button, counted } from "./elements.js";
-import { ground, linesOf } from "./ground.js";
+import { ground } from "./ground.js";
 import { lined } from "./marks.js";
+import { boxOf, changed, holder, linesOf, sizeOf } from "./outlines.js";
 import { sheet } from "./sheet.js";
 import { say } from "./speech.js";
 import { clamp, toScreen } from "./view.js";
@@ -27,20 +28,6 @@ function show(drawing) {
   tell("area");
 }
 
-/** Returns an area with every place of it changed, and kept within the photograph. */
-function changed(area, change) {
-  const line = (places) => places.map(([x, y]) => clamp(...change(x, y)));
-  if (area.type === "MultiPolygon") return { type: area.type, coordinates: area.coordinates.map((part) => part.map(line)) };
-  return { type: area.type, coordinates: area.coordinates.map(line) };
-}
-
-/** Returns left, top, right, bottom of an area. */
-function boxOf(area) {
-  const places = linesOf(area).flat();
-  const [xs, ys] = [places.map((place) => place[0]), places.map((place) => place[1])];
-  return [Math.min(...xs), Math.min(...ys), Math.max(...xs), Math.max(...ys)];
-}
-
 /** Returns the handles of an area: of its box, and of its corners where they are few. */
 function handles(area) {
   const [x0, y0, x1, y1] = boxOf(area);
@@ -53,30 +40,12 @@ function handles(area) {
   return made;
 }
 
-/** Whether a place lies in an area, holes left out. */
-function holdsPlace(area, x, y) {
-  let within = false;
-  for (const line of linesOf(area)) {
-    for (let i = 0; i + 1 < line.length; i += 1) {
-      const [[xi, yi], [xj, yj]] = [line[i], line[i + 1]];
-      if (yi > y !== yj > y && x < ((xj - xi) * (y - yi)) / (yj - yi) + xi) within = !within;
-    }
-  }
-  return within;
-}
-
-/** Returns the area in square pixels. */
-function sizeOf(area) {
-  const signed = (line) => line.slice(1).reduce((sum, [x, y], i) => sum + line[i][0] * y - x * line[i][1], 0) / 2;
-  const parts = area.type === "MultiPolygon" ? area.coordinates : [area.coordinates];
-  return parts.reduce((sum, [outer, ...holes]) => sum + Math.abs(signed(outer)) - holes.reduce((all, hole) => all + Math.abs(signed(hole)), 0), 0);
-}
-
 /** Returns how many counted spots lie in an area. */
 function countIn(area) {
   const { spots } = sheet;
+  const holds = holder(area);
   let count = 0;
-  for (let row = 0; row < spots.length; row += 1) if (spots.counted[row] && holdsPlace(area, spots.x[row], spots.y[row])) count += 1;
+  for (let row = 0; row < spots.length; row += 1) if (spots.counted[row] && holds(spots.x[row], spots.y[row])) count += 1;
   return count;
 }
 
@@ -158,8 +127,16 @@ function dragHandle(handle, area) {
     let sy = high ? (at.y - fy) / (handle.y - fy) : 1;
     if (wide && high) sx = sy = Math.max(sx, sy);
     [sx, sy] = [Math.max(sx, 0.05), Math.max(sy, 0.05)];
-    return changed(area, (x, y) => [fx + (x - fx) * sx, fy + (y - fy) * sy]);
+    return changed(area, (x, y) => clamp(fx + (x - fx) * sx, fy + (y - fy) * sy));
   });
+}
+
+/** Returns an area moved, no further than the edge of the photograph. */
+function moved(area, dx, dy) {
+  const [left, top, right, bottom] = boxOf(area);
+  const sx = Math.min(Math.max(dx, -0.5 - left), sheet.width - 0.5 - right);
+  const sy = Math.min(Math.max(dy, -0.5 - top), sheet.height - 0.5 - bottom);
+  return changed(area, (x, y) => [x + sx, y + sy]);
 }
 
 /** A drag that draws a circle from its middle. */
@@ -197,8 +174,8 @@ export const areaTool = {
     if (mode === "outline" || !area) return null;
     const handle = handles(area).find(({ x, y }) => Math.hypot(...toScreen(x, y).map((value, i) => value - [at.sx, at.sy][i])) <= at.reach + 4);
     if (handle) return dragHandle(handle, area);
-    if (!holdsPlace(area, at.x, at.y)) return null;
-    return dragging(at, (to) => changed(area, (x, y) => [x + to.x - at.x, y + to.y - at.y]));
+    if (!holder(area)(at.x, at.y)) return null;
+    return dragging(at, (to) => moved(area, to.x - at.x, to.y - at.y));
   },
 
   click(at) {
