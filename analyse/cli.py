@@ -10,6 +10,7 @@ from typing import TYPE_CHECKING, Annotated, Any
 import typer
 from typer.core import TyperGroup
 
+from analyse import review_command
 from analyse.command_options import (
     GridOption,
     QuadratOption,
@@ -309,40 +310,7 @@ def survey(
 
 app.command("score", cls=PlainCommand)(score_command.score)
 
-
-@app.command("review", cls=PlainCommand)
-def review(
-    sheets: Annotated[
-        Path,
-        typer.Argument(
-            help="A sheet (NAME.sheet.json, as detect writes it), or a folder of sheets.",
-            metavar="SHEET|DIR",
-            show_default=False,
-        ),
-    ],
-    quadrat: QuadratOption = None,
-    grid: GridOption = None,
-    rings: RingsOption = None,
-    port: Annotated[
-        str | None,
-        typer.Option(
-            "--port",
-            help="Port of this computer to use. Default: the one used last for the folder, or a"
-            " free one.",
-            metavar="N",
-            show_default=False,
-        ),
-    ] = None,
-    no_open: Annotated[
-        bool, typer.Option("--no-open", help="Leave the browser closed; the address is printed.")
-    ] = False,
-) -> None:
-    """Check spots by eye on a page: strike, place, move, and see what becomes of the verdict."""
-    from analyse.panel import PanelOf
-    from detect.review_command import review_sheets
-
-    laid = grid_from({"quadrat": quadrat, "grid": grid, "rings": rings}, named=spelled)
-    review_sheets(sheets, PanelOf(laid), port=port, open_page=not no_open)
+app.command("review", cls=PlainCommand)(review_command.review)
 
 
 def _recipe(folder: Path, recipe: Path | None, typed: dict[str, str | None]) -> Recipe | None:

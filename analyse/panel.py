@@ -13,8 +13,9 @@ from analyse.density import density_per_cm2
 from analyse.errors import AnalyseError
 from analyse.flags import count_flags, flag_sentences
 from analyse.grid_options import GridOptions, default_side
-from analyse.models import LARGEST_COUNT, poisson_frequencies
+from analyse.models import poisson_frequencies
 from analyse.pattern import Pattern, pattern_of_state
+from analyse.pooling import LARGEST_COUNT
 from analyse.quadrats import Grid, lay_grid
 from analyse.quick import QuickTest, quick_test
 from analyse.verdict import p_text

@@ -19,13 +19,17 @@ class Wrong(Exception):
         self.status, self.code = status, code
 
 
-def asked_changes(body: bytes) -> list[Any]:
-    """Read the changes that a request asks for."""
+def asked_changes(body: bytes) -> tuple[list[Any], int | None]:
+    """Read the changes that a request asks for, and the last revision that its page knows."""
     try:
         values = load_json(body)
     except ValueError as trouble:
         raise Wrong(400, "json", "The request is no JSON; nothing was changed.") from trouble
-    asked = values.get("amendments") if isinstance(values, dict) and len(values) == 1 else None
+    asked = (
+        values.get("amendments")
+        if isinstance(values, dict) and values.keys() <= {"amendments", "after"}
+        else None
+    )
     if not isinstance(asked, list) or not 1 <= len(asked) <= MOST_AMENDMENTS:
         raise Wrong(
             400,
@@ -33,7 +37,10 @@ def asked_changes(body: bytes) -> list[Any]:
             f"The request must hold 1 to {MOST_AMENDMENTS} amendments and nothing else;"
             " nothing was changed.",
         )
-    return asked
+    after = values.get("after")
+    if after is not None and (isinstance(after, bool) or not isinstance(after, int) or after < 0):
+        raise Wrong(400, "request", "after must be a revision; nothing was changed.")
+    return asked, after
 
 
 def whole_number(text: str | None) -> int:

@@ -135,18 +135,18 @@ class Server:
     async def amend(self, request: Request) -> Response:
         """Make changes."""
         live = self._live(request)
-        asked = asked_changes(await request.body())
+        asked, after = asked_changes(await request.body())
 
         def made() -> tuple[Answer, dict[str, Any]]:
             answer = live.record.amend(asked)
-            return answer, self._said(live.record, answer)
+            return answer, self._said(live.record, answer, after)
 
         answer, said = await asyncio.to_thread(made)
         live.ring()
         status = 200 if answer.trouble is None else 507
         return _json(said, status)
 
-    def _said(self, record: Record, answer: Answer) -> dict[str, Any]:
+    def _said(self, record: Record, answer: Answer, after: int | None) -> dict[str, Any]:
         """Return what became of changes, for the page."""
         said: dict[str, Any] = {
             "generation": record.generation,
@@ -156,7 +156,9 @@ class Server:
                 {"id": each.id, "code": each.code, "message": each.message}
                 for each in answer.refused
             ],
-            "changes": self.shapes.changes(record, answer.before, answer.revision),
+            "changes": self.shapes.changes(
+                record, answer.before if after is None else after, answer.revision
+            ),
         }
         if answer.trouble is not None:
             code = "disk_full" if answer.disk_is_full else "not_writable"
