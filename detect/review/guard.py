@@ -12,6 +12,7 @@ if TYPE_CHECKING:
     from starlette.types import ASGIApp, Message, Receive, Scope, Send
 
 MOST_BYTES = 4 * 1024 * 1024  # of a request's body
+MOST_HEADER_BYTES = 32 * 1024
 _POLICY = "; ".join(
     [
         "default-src 'none'",
@@ -91,6 +92,8 @@ class Guard:
         given: dict[str, list[str]] = {}
         for name, value in scope["headers"]:
             given.setdefault(name.decode("latin-1").lower(), []).append(value.decode("latin-1"))
+        if sum(len(name) + len(value) for name, value in scope["headers"]) > MOST_HEADER_BYTES:
+            return error(431, "too_large", "The request's head is too large.")
         if given.get("host") != [f"127.0.0.1:{self.port}"]:
             return error(421, "host", "This server answers to its own address alone.")
         path = scope["path"].encode("utf-8", errors="surrogateescape")

@@ -126,9 +126,10 @@ class Live:
                 told["trouble"] = error
                 yield event("trouble", error)
             return
-        told["trouble"] = None
+        mended = told.pop("trouble", None) is not None
         generation, newest = self.record.generation, self.record.revision
         known = told["generation"] in (None, generation) and told["revision"] <= newest
+        known = known and not mended
         told["generation"] = generation
         if not known:
             told["revision"] = newest
