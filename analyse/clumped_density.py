@@ -61,11 +61,11 @@ class ClumpedLimits:
 
     def __repr__(self) -> str:
         known = [
-            f"{name} {limits.value:.4g} ({limits.low:.4g} to {limits.high:.4g})"
+            f"{name} {limits.value:.4g} ({limits.low:.4g} {_up_to(limits.high)})"
             for name, limits in (("profile", self.profile), ("bootstrap", self.bootstrap))
             if limits is not None
         ]
-        return f"ClumpedLimits({', '.join(known) or 'none'})"
+        return f"<ClumpedLimits: {', '.join(known) or 'none'}>"
 
     def times(self, factor: float, relative_uncertainty: float = 0.0) -> ClumpedLimits:
         """Return the same as a density, widened by the scale's uncertainty.
@@ -116,7 +116,7 @@ def clumped_limits(
     --------
     >>> mites = np.repeat(range(8), [70, 38, 17, 10, 9, 3, 2, 1])
     >>> clumped_limits(mites, rng=np.random.default_rng(1))
-    ClumpedLimits(profile 1.147 (0.921 to 1.43), bootstrap 1.147 (0.933 to 1.42))
+    <ClumpedLimits: profile 1.147 (0.921 to 1.43), bootstrap 1.147 (0.933 to 1.42)>
     """
     x = checked_counts(counts)
     a = np.ones(x.size) if areas is None else checked_areas(areas)
@@ -234,6 +234,11 @@ def profile_limits(
     low = _limit(above, at, -1.0)
     high = _limit(above, at, 1.0)
     return Limits(seen.mean, math.exp(low), math.exp(high), level)
+
+
+def _up_to(high: float) -> str:
+    """Return an upper limit in words."""
+    return "without upper limit" if math.isinf(high) else f"to {high:.4g}"
 
 
 class _Profile:

@@ -65,7 +65,8 @@ def read_counts(path: Path, *, side: Length | None = None, transect: bool = Fals
     path : Path
         A CSV file. With a column `count` alone, one row per quadrat; with `frequency` (or `freq`)
         beside it, one row per value and how many quadrats held it; without a header, contiguous
-        quadrats.
+        quadrats. Of two columns of which one is `frequency` the other holds the counts, whatever
+        its name.
     side : Length or None
         Side of a quadrat, where it is known.
     transect : bool
@@ -120,17 +121,14 @@ def _counts_from_frequencies(
     path: Path, rows: Sequence[Row], names: Sequence[str], often: str
 ) -> list[int]:
     """Return the counts that a table of frequencies stands for, in rising order."""
-    if "count" not in names:
-        raise TableWrong(
-            f"{path.name} has a column {often!r} but no column 'count' (its columns:"
-            f" {', '.join(rows[0].cells)}); name the column of values count."
-        )
+    values = "count" if "count" in names else _only_other(path, rows[0], names, often)
+    column = names.index(values)
     seen: dict[int, int] = {}
     for row in rows[1:]:
-        count = whole_in(row, names.index("count"), "count")
+        count = whole_in(row, column, values)
         if count in seen:
             raise TableWrong(
-                f"{row.where}, column count: {count} stands twice; give each count one row with"
+                f"{row.where}, column {values}: {count} stands twice; give each count one row with"
                 " all its quadrats."
             )
         seen[count] = whole_in(row, names.index(often), often)
@@ -141,6 +139,17 @@ def _counts_from_frequencies(
             f" check the column {often}."
         )
     return [count for count in sorted(seen) for _ in range(seen[count])]
+
+
+def _only_other(path: Path, first: Row, names: Sequence[str], often: str) -> str:
+    """Return the name of the one column beside that of the frequencies, or complain."""
+    others = [name for name in names if name != often]
+    if len(names) != 2 or len(others) != 1:
+        raise TableWrong(
+            f"{path.name} has a column {often!r} but no column 'count' (its columns:"
+            f" {', '.join(first.cells)}); name the column of values count."
+        )
+    return others[0]
 
 
 def _rectangle_of_counts(path: Path, rows: Sequence[Row]) -> tuple[list[int], tuple[int, int]]:

@@ -107,9 +107,7 @@ class NegativeBinomialFit:
         hold_columns(self, ("frequencies", "law", "observed", "expected"))
 
     def __repr__(self) -> str:
-        return (
-            f"NegativeBinomialFit({self.quadrats} quadrats, mean {self.mean:.4g}, k {self.k_text})"
-        )
+        return f"<NegativeBinomialFit: {self.quadrats} quadrats, mean {self.mean:.4g}, k {self.k_text}>"
 
     @property
     def poisson_limit(self) -> bool:
@@ -200,7 +198,7 @@ def negative_binomial_fit(
     >>> mites = np.repeat(range(8), [70, 38, 17, 10, 9, 3, 2, 1])
     >>> fit = negative_binomial_fit(mites)
     >>> fit
-    NegativeBinomialFit(150 quadrats, mean 1.147, k 1.02 (0.625 to 1.84))
+    <NegativeBinomialFit: 150 quadrats, mean 1.147, k 1.02 (0.625 to 1.84)>
     >>> round(fit.k_se, 3), round(fit.chi2, 4), fit.df
     (0.276, 2.9202, 5)
     >>> negative_binomial_fit([1, 1, 2, 1, 0, 1]).k_text

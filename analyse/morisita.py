@@ -45,7 +45,7 @@ class Morisita:
     reason: str = ""
 
     def __repr__(self) -> str:
-        return f"Morisita(index {self.index:.4g}, standardised {self.standardised:.4g})"
+        return f"<Morisita: index {self.index:.4g}, standardised {self.standardised:.4g}>"
 
 
 def morisita_index(counts: ArrayLike) -> float:
@@ -122,7 +122,7 @@ def morisita(counts: ArrayLike) -> Morisita:
     --------
     >>> azuki = [0] * 61 + [1] * 50 + [2]
     >>> morisita(azuki), morisita(azuki).branch
-    (Morisita(index 0.08446, standardised -0.9093), 'd')
+    (<Morisita: index 0.08446, standardised -0.9093>, 'd')
     """
     x = checked_counts(counts)
     q, total, index = x.size, int(x.sum()), morisita_index(x)

@@ -73,7 +73,7 @@ class Likelihood:
         hold_columns(self, ("ratios", "weights"))
 
     def __repr__(self) -> str:
-        return f"Likelihood({self.n} points, k {k_words(self.best_k())})"
+        return f"<Likelihood of {self.n} points: k {k_words(self.best_k())}>"
 
     @property
     def mean(self) -> float:

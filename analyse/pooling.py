@@ -18,7 +18,7 @@ SMALLEST_EXPECTED = 1.0
 LARGEST_COUNT = 10_000
 
 
-@dataclass(frozen=True, slots=True, eq=False)
+@dataclass(frozen=True, slots=True, eq=False, repr=False)
 class ClassTest:
     """Quadrats in classes of counts, seen and expected under a law, and the chi-square of the fit.
 
@@ -47,6 +47,10 @@ class ClassTest:
         if not len(self.classes) == len(self.observed) == len(self.expected):
             raise ValueError("classes, observed and expected differ in length")
         hold_columns(self, ("observed", "expected"))
+
+    def __repr__(self) -> str:
+        fit = f"chi-square {self.chi2:.4g} on {self.df} df, p = {self.p:.3g}"
+        return f"<ClassTest: {len(self.classes)} classes, {fit}>"
 
     @property
     def labels(self) -> tuple[str, ...]:

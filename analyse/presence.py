@@ -44,8 +44,8 @@ class PresenceMean:
 
     def __repr__(self) -> str:
         return (
-            f"PresenceMean({self.value:.4g}, {self.low:.4g} to {self.high:.4g}, from"
-            f" {self.occupied} of {self.quadrats} quadrats)"
+            f"<PresenceMean {self.value:.4g} ({self.low:.4g} to {self.high:.4g}), from"
+            f" {self.occupied} of {self.quadrats} quadrats>"
         )
 
 
@@ -95,7 +95,7 @@ def mean_from_presence(
     Examples
     --------
     >>> mean_from_presence(347, 576)
-    PresenceMean(0.9224, 0.8236 to 1.029, from 347 of 576 quadrats)
+    <PresenceMean 0.9224 (0.8236 to 1.029), from 347 of 576 quadrats>
     >>> mean_from_presence(12, 12).reason
     'no quadrat is empty: the mean cannot be told from presence'
     """

@@ -135,6 +135,8 @@ def summary_csv(
     -----
     ``mean``, ``variance`` and ``vmr`` are of whole quadrats; ``chi2``, ``df`` and the p after them
     are of all ``quadrats``, with expected counts by area, and ``vmr_by_area`` is their chi2 / df.
+    ``k`` with its limits is of whole quadrats, and ``k_note`` says what an empty one means;
+    ``density_low_clumped`` and ``density_high_clumped`` are of all, by area.
     ``p_simulated`` is two-sided and what the verdict rests on. Columns that end in ``_whole`` are
     the chi-square test of whole quadrats.
     """

@@ -129,6 +129,8 @@ def test_one_crowded_quadrat_leaves_the_upper_limit_open() -> None:
     limits = clumped_limits([40, 0, 0, 0, 0, 0], rng=np.random.default_rng(1)).profile
     assert limits is not None
     assert limits.high == math.inf
+    both = clumped_limits([40, 0, 0, 0, 0, 0], rng=np.random.default_rng(1))
+    assert "without upper limit" in repr(both)
     assert 0 < limits.low < limits.value
 
 
@@ -147,7 +149,7 @@ def test_limits_that_cannot_be_had_say_why(counts: list[int], profile: str, boot
     assert seen.bootstrap_reason == bootstrap
     assert (seen.profile is None) == bool(profile)
     assert (seen.bootstrap is None) == bool(bootstrap)
-    assert repr(seen).startswith("ClumpedLimits(")
+    assert repr(seen).startswith("<ClumpedLimits: ")
 
 
 def test_a_density_is_the_mean_over_the_quadrat_widened_by_the_scale() -> None:

@@ -41,6 +41,15 @@ def test_a_table_of_frequencies(tmp_path: Path, often: str) -> None:
     assert (read.counts.tolist(), read.rows, read.columns) == ([0, 0, 0, 2, 5, 5], None, None)
 
 
+def test_of_two_columns_the_other_holds_the_counts(tmp_path: Path) -> None:
+    read = read_counts(table(tmp_path, "colonies,frequency\n1,2\n0,3\n"))
+    assert read.counts.tolist() == [0, 0, 0, 1, 1]
+    with pytest.raises(TableWrong, match="row 3, column colonies: 1 stands twice"):
+        read_counts(table(tmp_path, "colonies,frequency\n1,2\n1,3\n"))
+    with pytest.raises(TableWrong, match="has a column 'frequency' but no column 'count'"):
+        read_counts(table(tmp_path, "frequency,frequency\n1,2\n1,3\n"))
+
+
 def test_frequencies_tell_no_order(tmp_path: Path) -> None:
     path = table(tmp_path, "count,frequency\n0,3\n1,2\n")
     with pytest.raises(OptionWrong, match=r"--transect cannot apply to bed.csv, a table of freq"):
@@ -66,7 +75,7 @@ def test_student_map(tmp_path: Path) -> None:
         ("1,2\n3\n", r"bed.csv, row 2 holds 1 counts, but row 1 holds 2; .* rows of one length"),
         ("1,2\n3,4,5\n", r"bed.csv, row 2 holds 3 counts, but row 1 holds 2"),
         (
-            "value,frequency\n0,3\n",
+            "a,value,frequency\nx,0,3\n",
             r"has a column 'frequency' but no column 'count' .*name the column of",
         ),
         ("count,frequency\n0,3\n1,-2\n", r"row 3, column frequency: '-2' is not a count"),

@@ -204,7 +204,7 @@ def test_a_fit_is_short_and_cannot_be_changed() -> None:
     fit = negative_binomial_fit(published.counts("student1907_C"))
     assert (
         repr(fit)
-        == "NegativeBinomialFit(400 quadrats, mean 1.8, k 20.9 (6.99 without upper limit))"
+        == "<NegativeBinomialFit: 400 quadrats, mean 1.8, k 20.9 (6.99 without upper limit)>"
     )
     with pytest.raises(ValueError, match="read-only"):
         fit.law[0] = 1

@@ -219,4 +219,4 @@ def test_what_has_no_likelihood_is_refused() -> None:
 def test_k_in_words() -> None:
     assert k_words(0.0312345) == "0.0312"
     assert k_words(math.inf) == "Poisson limit: no finite k"
-    assert repr(likelihood_of([1, 1])) == "Likelihood(2 points, k Poisson limit: no finite k)"
+    assert repr(likelihood_of([1, 1])) == "<Likelihood of 2 points: k Poisson limit: no finite k>"
