@@ -8,23 +8,21 @@ from __future__ import annotations
 
 import math
 from collections.abc import Callable
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import ArrayLike
 from scipy import optimize, special
 
 from analyse.bootstrap import RESAMPLES, bootstrap_limits
-from analyse.density import CM2, Limits, widened
+from analyse.density import Limits, widened
 from analyse.dispersion import checked_areas, checked_counts
 from analyse.negative_binomial import Likelihood, likelihood_of
 from analyse.pooling import LARGEST_COUNT
-from analyse.quadrats import QuadratCounts
 
 LEVEL = 0.95
 FEWEST_RESAMPLED = 6  # quadrats: our own limit
 _MOST = 1e6  # times the estimate: beyond, the data set no upper limit worth the name
-_SHARE_DIGITS = 9  # so that full quadrats are alike whatever the rounding of their areas
 _K_GRID = np.logspace(-6, 9, 181)
 _LOG_STEP = math.log(10) / 12
 _REFINEMENTS = 4  # steps towards the best k between two of the grid
@@ -47,9 +45,11 @@ class ClumpedLimits:
     profile_reason, bootstrap_reason : str
         Why one of them is missing; empty otherwise.
     quadrats : int
-        How many they rest on, clipped ones included.
+        How many they rest on, clipped ones included; blocks where quadrats were merged.
     resamples : int
         Of the bootstrap.
+    merged : (rows, columns)
+        Quadrats to each block, 1 by 1 where none were merged.
     """
 
     profile: Limits | None
@@ -58,6 +58,7 @@ class ClumpedLimits:
     bootstrap_reason: str
     quadrats: int
     resamples: int
+    merged: tuple[int, int] = (1, 1)
 
     def __repr__(self) -> str:
         known = [
@@ -85,8 +86,7 @@ class ClumpedLimits:
             None if limits is None else widened(limits, factor, relative_uncertainty)
             for limits in (self.profile, self.bootstrap)
         )
-        reasons = (self.profile_reason, self.bootstrap_reason)
-        return ClumpedLimits(profile, bootstrap, *reasons, self.quadrats, self.resamples)
+        return replace(self, profile=profile, bootstrap=bootstrap)
 
 
 def clumped_limits(
@@ -139,40 +139,6 @@ def clumped_limits(
         x.size,
         RESAMPLES,
     )
-
-
-def clumped_in_quadrats(
-    counts: QuadratCounts, *, rng: np.random.Generator, relative_uncertainty: float | None
-) -> tuple[ClumpedLimits | None, ClumpedLimits | None]:
-    """Return mean count and density of quadrats with limits that allow for clumping.
-
-    Parameters
-    ----------
-    counts : QuadratCounts
-        Counts with their areas, clipped ones included.
-    rng : numpy.random.Generator
-        Source of the bootstrap's randomness.
-    relative_uncertainty : float or None
-        Standard uncertainty of a length, as a fraction of it; None where areas are not in square
-        millimetres.
-
-    Returns
-    -------
-    mean : ClumpedLimits or None
-        Per full quadrat; None without points.
-    density : ClumpedLimits or None
-        Per square centimetre; None also where areas are not in square millimetres.
-    """
-    if not counts.counts.any():
-        return None, None
-    if counts.area is None:
-        return clumped_limits(counts.counts, rng=rng), None
-    full = float(counts.area[0]) if counts.grid is None else counts.grid.full_area
-    shares = np.round(counts.area / full, _SHARE_DIGITS)
-    mean = clumped_limits(counts.counts, shares, rng=rng)
-    if relative_uncertainty is None:
-        return mean, None
-    return mean, mean.times(CM2 / full, relative_uncertainty)
 
 
 def profile_limits(

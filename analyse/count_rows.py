@@ -172,7 +172,7 @@ def _limit_rows(name: str, seen: ClumpedLimits | None, what: str) -> Iterator[li
         if limits is None:
             yield [f"{name}_{way}", None, None, None, None, method, seen.quadrats, reason]
             continue
-        note = f"{what}; all quadrats by area; limits at {100 * limits.level:g} %"
+        note = f"{what}; {_resting(seen)}; limits at {100 * limits.level:g} %"
         if math.isinf(limits.high):
             note = f"{_OPEN}: few quadrats hold nearly all points; {note}"
         yield [
@@ -185,6 +185,14 @@ def _limit_rows(name: str, seen: ClumpedLimits | None, what: str) -> Iterator[li
             seen.quadrats,
             note,
         ]
+
+
+def _resting(seen: ClumpedLimits) -> str:
+    """Return which quadrats limits rest on."""
+    if seen.merged == (1, 1):
+        return "all quadrats by area"
+    rows, columns = seen.merged
+    return f"all quadrats by area, merged to blocks of {rows} x {columns} so that clumps fit in"
 
 
 def _presence_rows(each: Findings) -> Iterator[list[Cell]]:

@@ -11,7 +11,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from analyse.chance import check_seed
-from analyse.clumped_density import clumped_in_quadrats
+from analyse.clumped_quadrats import clumped_in_quadrats
 from analyse.contiguous import FEWEST_QUADRATS as FEWEST_IN_ORDER
 from analyse.contiguous import Blocks, block_variances
 from analyse.count_chance import least_chi2, simulated_p

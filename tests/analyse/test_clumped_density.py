@@ -12,7 +12,8 @@ from hypothesis import strategies as st
 from numpy.typing import NDArray
 from scipy import optimize, stats
 
-from analyse.clumped_density import clumped_in_quadrats, clumped_limits, profile_limits
+from analyse.clumped_density import clumped_limits, profile_limits
+from analyse.clumped_quadrats import clumped_in_quadrats
 from analyse.density import Limits, garwood_limits
 from analyse.findings import analyse_points
 from analyse.grid_options import GridOptions
