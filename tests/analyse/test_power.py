@@ -8,13 +8,16 @@ from pathlib import Path
 
 import numpy as np
 import pytest
+import shapely
 from numpy.typing import NDArray
 from scipy import integrate, stats
+from shapely.geometry.base import BaseGeometry
 from typer.testing import CliRunner
 
 from analyse.cli import app
 from analyse.count_chance import simulated_chi2
 from analyse.count_table import CountTable
+from analyse.dispersion import clipped_dispersion
 from analyse.findings import analyse_counts, analyse_points
 from analyse.power import (
     cluster_vmr,
@@ -25,8 +28,10 @@ from analyse.power import (
     would_show,
 )
 from analyse.power_rows import shown_by
+from analyse.quadrats import count_in_quadrats, lay_grid
 from analyse.verdict import detectable as as_before
-from tests.patterns import apart, thomas
+from tests.analyse.test_nulls import RAGGED
+from tests.patterns import SQUARE, apart, thomas
 
 
 def chi2_of(points: NDArray[np.float64], across: int) -> float:
@@ -50,31 +55,53 @@ def share_seen(patterns: list[NDArray[np.float64]], across: int, *, clumped: boo
 
 @pytest.mark.parametrize(
     ("n", "across", "spread"),
-    [(32, 4, 0.02), (50, 5, 0.25), (25, 5, 0.02), (98, 7, 0.5), (245, 7, 0.25), (200, 10, 0.1)],
+    [(32, 4, 0.02), (50, 5, 0.25), (25, 5, 0.02), (98, 7, 0.5), (200, 10, 0.1)],
 )
 def test_the_smallest_clusters_are_seen_four_times_in_five(
     n: int, across: int, spread: float
 ) -> None:
-    """400 Thomas patterns each: power between 70 and 90 %."""
+    """300 Thomas patterns each: power between 70 and 90 %."""
     others = smallest_cluster(n, across**2, spread=spread)
     rng = np.random.default_rng([n, across])
-    patterns = [thomas(n, others, spread / across, rng) for _ in range(400)]
+    patterns = [thomas(SQUARE, n, others, spread / across, rng) for _ in range(300)]
     assert 0.70 <= share_seen(patterns, across, clumped=True) <= 0.90
 
 
-@pytest.mark.parametrize(("n", "across"), [(80, 4), (50, 5), (125, 5), (49, 7), (98, 7), (100, 10)])
+@pytest.mark.parametrize(("n", "across"), [(80, 4), (50, 5), (49, 7), (98, 7)])
 def test_the_smallest_spacing_is_seen_four_times_in_five(n: int, across: int) -> None:
     spacing = smallest_spacing(n, across**2) / across
     rng = np.random.default_rng([n, across, 2])
-    patterns = [apart(n, spacing, rng) for _ in range(200)]
+    patterns = [apart(SQUARE, n, spacing, rng) for _ in range(150)]
     assert 0.70 <= share_seen(patterns, across, clumped=False) <= 0.92
+
+
+@pytest.mark.parametrize(
+    "area", [shapely.Point(50, 50).buffer(50, quad_segs=40), RAGGED], ids=["dish", "ragged"]
+)
+def test_so_they_are_in_areas_that_clip_the_quadrats(area: BaseGeometry) -> None:
+    """90 points, quadrats by rule, expected counts by area: power between 70 and 92 %."""
+    grid = lay_grid(area, 90)
+    side = math.sqrt(area.area / len(grid))
+    rng = np.random.default_rng(6)
+    null = np.sort(np.concatenate([*simulated_chi2(90, grid.area, 9999, rng)]))
+
+    def chi2(points: NDArray[np.float64]) -> float:
+        return clipped_dispersion(count_in_quadrats(points, grid), grid.area).chi2
+
+    for spread in (0.05, 0.25):
+        others = smallest_cluster(90, len(grid), spread=spread)
+        seen = [chi2(thomas(area, 90, others, spread * side, rng)) for _ in range(200)]
+        assert 0.68 <= np.mean(np.array(seen) >= np.quantile(null, 0.975)) <= 0.92
+    spacing = smallest_spacing(90, len(grid)) * side
+    seen = [chi2(apart(area, 90, spacing, rng)) for _ in range(120)]
+    assert 0.68 <= np.mean(np.array(seen) <= np.quantile(null, 0.025)) <= 0.92
 
 
 def test_half_of_that_is_seen_much_less_often() -> None:
     rng = np.random.default_rng(4)
     others, spacing = smallest_cluster(98, 49), smallest_spacing(98, 49)
-    clumped = [thomas(98, others / 2, 0.01, rng) for _ in range(300)]
-    even = [apart(98, spacing / 2 / 7, rng) for _ in range(100)]
+    clumped = [thomas(SQUARE, 98, others / 2, 0.01, rng) for _ in range(300)]
+    even = [apart(SQUARE, 98, spacing / 2 / 7, rng) for _ in range(100)]
     assert share_seen(clumped, 7, clumped=True) < 0.5
     assert share_seen(even, 7, clumped=False) < 0.4
 
@@ -97,13 +124,13 @@ def test_vmr_of_clusters_against_simulation() -> None:
     assert counts.var() / counts.mean() == pytest.approx(cluster_vmr(2.0, 0.25), rel=0.06)
 
 
-@pytest.mark.parametrize(("mean", "share"), [(2, 0.1), (2, 0.25), (5, 0.2), (1, 0.4)])
+@pytest.mark.parametrize(("mean", "share"), [(2, 0.1), (2, 0.25), (1, 0.4)])
 def test_vmr_of_spaced_points_against_simulation(mean: int, share: float) -> None:
     """Points set one after the other, given n, in 7 x 7 quadrats."""
     spacing = math.sqrt(4 * share / (math.pi * mean))
     rng = np.random.default_rng([mean, int(100 * share)])
     n, q = 49 * mean, 49
-    chi2 = [chi2_of(apart(n, spacing / 7, rng), 7) for _ in range(120)]
+    chi2 = [chi2_of(apart(SQUARE, n, spacing / 7, rng), 7) for _ in range(90)]
     formula = (q * spacing_vmr(spacing, mean) - spacing_vmr(spacing / 7, n)) / (q - 1)
     assert np.mean(chi2) / (q - 1) == pytest.approx(formula, abs=0.035)
 

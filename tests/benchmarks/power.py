@@ -21,7 +21,7 @@ sys.path.insert(0, str(Path(__file__).parents[2]))
 
 from analyse.count_chance import simulated_chi2
 from analyse.power import smallest_cluster, smallest_spacing
-from tests.patterns import apart, thomas
+from tests.patterns import SQUARE, apart, thomas
 
 SPREADS = (0.02, 0.25, 0.5)
 
@@ -62,13 +62,13 @@ def main() -> None:
                 if math.isnan(others):
                     cells.append("     -     ")
                     continue
-                drawn = [thomas(n, others, spread / across, rng) for _ in range(patterns)]
+                drawn = [thomas(SQUARE, n, others, spread / across, rng) for _ in range(patterns)]
                 chi2 = np.array([chi2_of(points, across) for points in drawn])
                 cells.append(f"{others:5.2f} {seen(chi2, null, clumped=True):.3f}")
             spacing = smallest_spacing(n, q)
             cells.append("-")
             if math.isfinite(spacing):
-                drawn = [apart(n, spacing / across, rng) for _ in range(patterns // 2)]
+                drawn = [apart(SQUARE, n, spacing / across, rng) for _ in range(patterns // 2)]
                 chi2 = np.array([chi2_of(points, across) for points in drawn])
                 cells[-1] = f"{spacing:.3f} {seen(chi2, null, clumped=False):.3f}"
             print(f"{q:8} {mean:4} {n:4} | {' | '.join(cells)}", flush=True)

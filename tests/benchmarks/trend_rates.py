@@ -25,7 +25,7 @@ sys.path.insert(0, str(Path(__file__).parents[2]))
 from analyse.nulls import random_points
 from analyse.trend import TrendModel
 from tests.analyse.test_nulls import AREAS
-from tests.analyse.test_trend import clusters
+from tests.patterns import thomas
 
 SORTS = ((0, 0.0), (4, 0.02), (4, 0.05), (8, 0.05), (4, 0.1))
 
@@ -58,7 +58,7 @@ def main() -> None:
                     elif sort[0] == 0:
                         points, words = random_points(area, n, rng), "random"
                     else:
-                        points = clusters(area, n, sort[0], sort[1] * side, rng)
+                        points = thomas(area, n, sort[0], sort[1] * side, rng)
                         words = f"{sort[0]} others, spread {sort[1]:g}"
                     fits = [model.fit(points) for model in models]
                     p.append([value for fit in fits for value in (fit.p_poisson, fit.p)])
