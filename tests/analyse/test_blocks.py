@@ -7,7 +7,7 @@ from itertools import pairwise
 
 import numpy as np
 import pytest
-from hypothesis import given
+from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from analyse.blocks import (
@@ -123,6 +123,7 @@ def test_nested_blocks_of_students_map() -> None:
     assert (nested.used, nested.left_out, nested.peak) == (256, 144, 64)
 
 
+@settings(deadline=None)
 @given(lines)
 def test_fast_forms_are_the_definitions(x: list[int]) -> None:
     for fast, plain, blocks in (
@@ -136,6 +137,7 @@ def test_fast_forms_are_the_definitions(x: list[int]) -> None:
             assert value == pytest.approx(float(plain(x, size)), rel=1e-12)
 
 
+@settings(deadline=None)
 @given(grids)
 def test_in_a_grid_all_rows_and_columns_are_averaged(x: list[list[int]]) -> None:
     columns = [list(column) for column in zip(*x, strict=True)]
@@ -148,6 +150,7 @@ def test_in_a_grid_all_rows_and_columns_are_averaged(x: list[list[int]]) -> None
         assert terms == sum(weights)
 
 
+@settings(deadline=None)
 @given(grids, st.booleans())
 def test_nested_blocks_are_the_definition(x: list[list[int]], turned: bool) -> None:
     grid = np.array(x).T if turned else np.array(x)
@@ -161,6 +164,7 @@ def test_nested_blocks_are_the_definition(x: list[list[int]], turned: bool) -> N
     assert found.sums == pytest.approx([float(ss) for _, ss, _ in plain], rel=1e-12, abs=1e-12)
 
 
+@settings(deadline=None)
 @given(grids)
 def test_nested_sums_of_squares_are_the_whole_variation(x: list[list[int]]) -> None:
     grid = np.array(x)
@@ -171,6 +175,7 @@ def test_nested_sums_of_squares_are_the_whole_variation(x: list[list[int]]) -> N
     assert found.sums.sum() == pytest.approx(((part - part.mean()) ** 2).sum(), rel=1e-9, abs=1e-9)
 
 
+@settings(deadline=None)
 @given(lines)
 def test_identities(x: list[int]) -> None:
     """PQV at distance 1 is TTLQV at block 1; along a line BQV is the nested mean square."""
@@ -178,6 +183,7 @@ def test_identities(x: list[int]) -> None:
     assert blocked_quadrat_variance(x).values.tolist() == nested_blocks(x).values.tolist()
 
 
+@settings(deadline=None)
 @given(lines)
 def test_a_line_read_backwards_or_as_a_column_is_the_same(x: list[int]) -> None:
     for fast in (two_term_variance, three_term_variance, paired_quadrat_variance):
