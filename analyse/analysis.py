@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections import Counter
 from collections.abc import Sequence
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from pathlib import Path
 
 from analyse.count_table import CountTable
@@ -12,6 +12,7 @@ from analyse.findings import Findings, analyse_counts, analyse_pattern
 from analyse.grid_options import GridOptions
 from analyse.pattern import Pattern, pattern_from_sheet
 from analyse.plan import Trial
+from analyse.quick import verdict_as_found
 from analyse.report import RenderedPage, render_page, write_report
 from analyse.tables import quadrats_csv, summary_csv, tests_csv
 from detect.amended import current_state
@@ -74,6 +75,9 @@ def analyse_sheet(
     """
     pattern = pattern_from_sheet(sheet, amendments)
     findings = analyse_pattern(pattern, grid, seed=trial.seed, simulations=trial.simulations)
+    if amendments:
+        chance = {"seed": trial.seed, "simulations": trial.simulations}
+        findings = replace(findings, verdict_before=verdict_as_found(sheet, grid, **chance))
     state = current_state(sheet, amendments)
     return Analysed(
         findings, render_page(findings, state, photograph, factors=factors), factors or {}

@@ -7,6 +7,7 @@ from typing import TYPE_CHECKING, Any
 
 from analyse.look import MOST_COUNTS
 from analyse.marks import photograph_inches
+from analyse.reviewing import review_sentence
 from analyse.unseen import planted_sentence
 from analyse.wording import (
     area_words,
@@ -67,6 +68,8 @@ def page_words(
         "flags": list(findings.flag_sentences),
         "flag_names": ", ".join(flag.replace("_", " ") for flag in findings.flags),
         "unreviewed": "unreviewed" in findings.flags,
+        "in_review": "in_review" in findings.flags,
+        "review": review_sentence(findings),
         "factors": [(str(name), str(value)) for name, value in factors.items()],
         "row": {
             "count": f"{findings.n:,}",

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Sequence
-from dataclasses import dataclass, field
+from dataclasses import dataclass
 from pathlib import Path
 from typing import Literal, get_args
 
@@ -74,8 +74,9 @@ class Pattern:
         How near two usual spots may lie to be seen as one, in `unit`; NaN where not measured.
     dish_notes : tuple of str
         What makes the dish unsure.
-    changes : Changes
-        What people did to the spots of a photograph, and whether it is marked as checked.
+    changes : Changes or None
+        What people did to the spots of a photograph, and whether it is marked as checked; None for
+        what is no photograph.
 
     Raises
     ------
@@ -99,7 +100,7 @@ class Pattern:
     planted: Planted | None = None
     blind: float = math.nan
     dish_notes: tuple[str, ...] = ()
-    changes: Changes = field(default_factory=Changes)
+    changes: Changes | None = None
 
     def __post_init__(self) -> None:
         points = np.array(self.points, dtype=np.float64).reshape(-1, 2)

@@ -81,6 +81,8 @@ class Findings:
     trend : Trends or None
         Gradients of the density, tested so that clumping alone is not taken for one; None with
         fewer than 10 points, and for counts whose places are unknown.
+    verdict_before : str or None
+        The verdict on the spots as detected, where people have reviewed them since.
     """
 
     name: str
@@ -108,6 +110,7 @@ class Findings:
     clumped_mean: ClumpedLimits | None = None
     clumped_density: ClumpedLimits | None = None
     trend: Trends | None = None
+    verdict_before: Verdict | None = None
 
     def __post_init__(self) -> None:
         hold_columns(self, ("expected", "residuals"), length=len(self.counts))

@@ -22,6 +22,7 @@ from analyse.indices import (
     morisita_index,
 )
 from analyse.power_rows import power_rows
+from analyse.reviewing import REVIEW_SUMMARY_COLUMNS, review_cells
 from analyse.trend_rows import trend_rows
 from analyse.unseen import planted_cells, planted_rows
 from analyse.verdict import POWER
@@ -89,6 +90,7 @@ SUMMARY_COLUMNS = [
     "blind_distance",
     "blind_distance_mm",
     *COUNT_SUMMARY_COLUMNS,
+    *REVIEW_SUMMARY_COLUMNS,
 ]
 TEST_COLUMNS = ["photograph", "statistic", "value", "low", "high", "p", "method", "n", "notes"]
 _FISHER = "index of dispersion, chi-square (Fisher, Thornton and Mackenzie 1922)"
@@ -231,6 +233,7 @@ def _summary(each: Findings) -> list[Cell]:
         each.sentence,
         *planted_cells(each.pattern),
         *count_summary_cells(each),
+        *review_cells(each),
     ]
 
 
