@@ -144,10 +144,13 @@ def _k_rows(fit: NegativeBinomialFit) -> Iterator[list[Cell]]:
 def _law_rows(fit: NegativeBinomialFit) -> Iterator[list[Cell]]:
     """Yield how well the two laws describe the counts."""
     q = fit.quadrats
-    if math.isfinite(fit.p):
-        method = "negative binomial goodness of fit, chi-square (Bliss and Fisher 1953)"
-        note = f"df {fit.df}; classes {', '.join(fit.labels)}; {_WHOLE}"
-        yield ["negative_binomial_fit", fit.chi2, None, None, fit.p, method, q, note]
+    method = "negative binomial goodness of fit, chi-square (Bliss and Fisher 1953)"
+    note = f"df {fit.df}; classes {', '.join(fit.labels)}; {_WHOLE}"
+    if fit.poisson_limit:
+        note = f"{k_words(fit.k)}, so that the Poisson fit stands for both; {_WHOLE}"
+    elif fit.df < 1:
+        note = f"too few classes to test the fit: {', '.join(fit.labels)}; {_WHOLE}"
+    yield ["negative_binomial_fit", fit.chi2, None, None, fit.p, method, q, note]
     akaike = "2 parameters - 2 log-likelihood (Akaike 1974)"
     weight = "Akaike weight among these two laws (Burnham and Anderson 2002)"
     for law, likelihood, aic, share in (

@@ -74,6 +74,8 @@ def test_the_poisson_limit_is_words_and_empty_cells() -> None:
     assert (cells["k"], cells["k_high"]) == (None, None)
     assert cells["k_note"] == "Poisson limit: no finite k"
     assert "k_standard_error" not in rows(found)
+    fit = rows(found)["negative_binomial_fit"]
+    assert str(fit[6]).startswith("Poisson limit: no finite k, so that the Poisson fit stands for")
     assert "presence_mean_clumped" not in rows(found)
 
 
@@ -98,6 +100,8 @@ def test_reasons_stand_in_the_notes() -> None:
     assert str(even["mean_count_bootstrap"][6]).startswith("all quadrats are equally dense")
     assert str(even["k_zero_class"][6]).startswith("no quadrat is empty: no k by the zero class")
     assert str(even["presence_mean"][6]).startswith("no quadrat is empty: the mean cannot be told")
+    crowded = rows(of([9, 0, 0, 0]))["negative_binomial_fit"]
+    assert str(crowded[6]).startswith("too few classes to test the fit: ")
     few = rows(of([1] * 20 + [0] * 80))
     assert str(few["morisita_standardised"][6]).endswith("too few points to be found evenly spaced")
     lone = rows(of([1, 0, 0]))
