@@ -16,6 +16,9 @@ from analyse.quadrature import quadrature
 from analyse.trend_fit import Slope, largest_dispersion
 
 TrendKind = Literal["plane", "radial"]
+_OPPOSITE = {
+    "the edge": "the middle", "the middle": "the edge", "the end": "the start", "the start": "the end",
+}  # fmt: skip
 _TOWARDS = (
     "the right", "the lower right", "the bottom", "the lower left",
     "the left", "the upper left", "the top", "the upper right",
@@ -89,7 +92,8 @@ class Trend:
     def sentence(self) -> str:
         """What the test says, in words."""
         judged = f"p = {self.p:.3f}" if self.p >= 0.001 else "p < 0.001"
-        limits = f"{self.ratio:.2g} times as dense as the other end"
+        other = _OPPOSITE.get(self.direction, "the opposite end")
+        limits = f"{self.ratio:.2g} times as dense as {other}"
         limits += f" ({self.ratio_low:.2g} to {self.ratio_high:.2g})"
         across = "from the middle to the edge" if self.kind == "radial" else "across the area"
         if self.p > LEVEL:

@@ -98,7 +98,9 @@ def test_radial_slope_on_a_disc_has_a_closed_form() -> None:
     )
     assert trend.direction == "the edge"
     assert trend.ratio == pytest.approx(math.exp(b), rel=1e-4)
-    assert "denser towards the edge" in trend.sentence
+    assert trend.sentence.startswith("A gradient: denser towards the edge, ")
+    assert " times as dense as the middle (" in trend.sentence
+    assert trend.sentence.endswith("; p < 0.001, allowing for clumping.")
 
 
 def test_counts_in_quadrats_against_statsmodels() -> None:
