@@ -6,6 +6,7 @@ import * as checked from "./checked.js";
 import * as doubtful from "./doubtful.js";
 import { byId } from "./elements.js";
 import { listen } from "./events.js";
+import { hand } from "./hand.js";
 import * as help from "./help.js";
 import * as keys from "./keys.js";
 import * as looks from "./looks.js";
@@ -71,7 +72,7 @@ function showFacts() {
 
 /** Lets it be seen in the page itself which part of the photograph is shown. */
 function showPlace() {
-  Object.assign(byId("stage").dataset, { scale: view.scale, left: view.x, top: view.y });
+  Object.assign(byId("stage").dataset, { scale: view.scale, left: view.x, top: view.y, cross: `${hand.cross.x} ${hand.cross.y}` });
 }
 
 /** The buttons that belong to the stage. */
@@ -98,6 +99,7 @@ async function start() {
   startStageButtons();
   for (const news of ["spots", "changed", "edited"]) on(news, showFacts);
   on("view", showPlace);
+  on("pointer", showPlace);
   on("stale", reread);
   const wanted = location.hash.slice(1);
   const [session, rows] = await Promise.all([get("api/session"), queue.readQueue()]);

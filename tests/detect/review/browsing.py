@@ -217,6 +217,6 @@ def reviewing(browser: Browser, server: Server, **context: Any) -> Iterator[Desk
         desk = Desk(opened, server)
         desk.open()
         yield desk
-        assert desk.wrong == []
+        assert not desk.wrong, desk.wrong
     finally:
         opened.close()

@@ -31,7 +31,7 @@ def server(browser: Browser, laid: Laid, tmp_path: Path) -> Iterator[Server]:
     running = Server(laid.folder, tmp_path / "state")
     running.start()
     yield running
-    running.stop()
+    running.kill()
 
 
 @pytest.fixture
