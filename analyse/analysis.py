@@ -8,6 +8,7 @@ from dataclasses import dataclass, field, replace
 from pathlib import Path
 
 from analyse.count_table import CountTable
+from analyse.envelope_rows import curves_csv
 from analyse.findings import Findings, analyse_counts, analyse_pattern
 from analyse.grid_options import GridOptions
 from analyse.pattern import Pattern, pattern_from_sheet
@@ -51,6 +52,7 @@ def analyse_sheet(
     grid: GridOptions,
     trial: Trial,
     factors: dict[str, str] | None = None,
+    workers: int = 1,
 ) -> Analysed:
     """Analyse the spots of a sheet as people left them, and draw its page.
 
@@ -68,15 +70,17 @@ def analyse_sheet(
         Seed and number of simulations.
     factors : dict of str, optional
         Treatment, block, dilution.
+    workers : int
+        How many processes share the simulations.
 
     Returns
     -------
     Analysed
     """
     pattern = pattern_from_sheet(sheet, amendments)
-    findings = analyse_pattern(pattern, grid, seed=trial.seed, simulations=trial.simulations)
+    chance = {"seed": trial.seed, "simulations": trial.simulations}
+    findings = analyse_pattern(pattern, grid, workers=workers, **chance)
     if amendments:
-        chance = {"seed": trial.seed, "simulations": trial.simulations}
         findings = replace(findings, verdict_before=verdict_as_found(sheet, grid, **chance))
     state = current_state(sheet, amendments)
     return Analysed(
@@ -84,7 +88,9 @@ def analyse_sheet(
     )
 
 
-def analyse_table(table: Pattern | CountTable, *, grid: GridOptions, trial: Trial) -> Analysed:
+def analyse_table(
+    table: Pattern | CountTable, *, grid: GridOptions, trial: Trial, workers: int = 1
+) -> Analysed:
     """Analyse a table of points or of counts, and draw its page.
 
     Parameters
@@ -95,6 +101,8 @@ def analyse_table(table: Pattern | CountTable, *, grid: GridOptions, trial: Tria
         How to lay the quadrats over points.
     trial : Trial
         Seed and number of simulations.
+    workers : int
+        How many processes share the simulations over sides and distances of points.
 
     Returns
     -------
@@ -104,14 +112,14 @@ def analyse_table(table: Pattern | CountTable, *, grid: GridOptions, trial: Tria
     if isinstance(table, CountTable):
         findings = analyse_counts(table, **chance)
     else:
-        findings = analyse_pattern(table, grid, **chance)
+        findings = analyse_pattern(table, grid, workers=workers, **chance)
     return Analysed(findings, render_page(findings))
 
 
 def write_results(
     results: Sequence[Analysed], failures: Sequence[Failure], folder: Path, trial: Trial
 ) -> Path:
-    """Write quadrats.csv, summary.csv, tests.csv and report.html.
+    """Write quadrats.csv, summary.csv, tests.csv, curves.csv and report.html.
 
     Parameters
     ----------
@@ -140,6 +148,7 @@ def write_results(
     write_text_atomically(folder / "quadrats.csv", quadrats_csv(findings))
     write_text_atomically(folder / "summary.csv", summary_csv(findings, factors=factors))
     write_text_atomically(folder / "tests.csv", tests_csv(findings))
+    write_text_atomically(folder / "curves.csv", curves_csv(findings))
     report = folder / "report.html"
     write_report(
         [result.page for result in results],

@@ -181,16 +181,18 @@ def analyse(
     seed: SeedOption = None,
     simulations: SimulationsOption = None,
     out: OutOption = OUT,
+    workers: WorkersOption = None,
 ) -> None:
-    """Test whether spots lie at random, clumped or evenly, in quadrats."""
-    from analyse.inputs import ANALYSE, Given, gather_inputs
+    """Test whether spots lie at random, clumped or evenly: in quadrats, and at every distance."""
+    from analyse.inputs import ANALYSE, Given, gather_inputs, shared_out
 
     laid = grid_from({"quadrat": quadrat, "grid": grid, "rings": rings}, named=spelled)
     trial = _with_chance(Trial(), seed, simulations)
-    tasks = gather_inputs(Given(inputs or [], counts or [], area, unit, laid, trial, transect))
+    given = gather_inputs(Given(inputs or [], counts or [], area, unit, laid, trial, transect))
+    tasks, processes = shared_out(given, workers_for(whole(workers, "--workers")))
     make_folder(out)
     with progress_on_terminal("Analysing", len(tasks)) as progress:
-        results = do_each(ANALYSE, tasks, progress=progress)
+        results = do_each(ANALYSE, tasks, workers=processes, progress=progress)
     _finish(results, out, trial)
 
 

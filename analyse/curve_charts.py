@@ -87,7 +87,7 @@ def draw_curve(axes: Axes, envelope: Envelope, unit: str) -> DrawnCurve:
     _draw_outside(axes, envelope)
     if style.stretched:
         axes.set_xscale("log")
-        axes.xaxis.set_major_locator(LogLocator(10, subs=(1, 2, 5)))
+        axes.xaxis.set_major_locator(LogLocator(10, subs=(1, 1.5, 2, 3, 5, 7)))
         axes.xaxis.set_minor_locator(NullLocator())
     else:
         axes.xaxis.set_major_locator(MaxNLocator(7, steps=[1, 2, 5, 10]))
@@ -133,7 +133,8 @@ def _draw_outside(axes: Axes, envelope: Envelope) -> None:
 
 def _draw_directions(axes: Axes, style: CurveLook) -> None:
     """Say beside the chart what lying higher and lower means."""
-    said = f"{style.below}  \u2190        \u2192  {style.above}"
+    gap = "\u00a0" * 8
+    said = f"{style.below} \u2190{gap}\u2192 {style.above}"
     axes.annotate(
         said, (1.0, 0.5), (7, 0), xycoords="axes fraction", textcoords="offset points",
         rotation=90, ha="left", va="center", size=8.5, color=look.INK,

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from typing import TYPE_CHECKING, Literal
@@ -14,6 +15,7 @@ if TYPE_CHECKING:
 
 Direction = Literal["clumped", "even"]
 FAMILY = ("vmr_by_side", "l_function", "nearest_neighbour")
+_TOLD = ("l_function", "nearest_neighbour", "vmr_by_side")  # of equals the first is told
 FAMILY_WORDS = "the tests over all sides, over all distances and of nearest neighbours"
 _SAID: dict[tuple[str, Direction], str] = {
     ("vmr_by_side", "clumped"): "In quadrats of {at} the counts vary more than chance would give",
@@ -29,6 +31,8 @@ _SAID: dict[tuple[str, Direction], str] = {
         "even",
     ): "Fewer spots have a neighbour nearer than {at} than chance would give",
 }
+_TOUCHING = "touching ones are counted as one, or cannot lie nearer"
+_WIDTHS = 1.25  # of a spot, up to which objects that touch may be why neighbours are few
 _ALIKE = 1.15  # sides whose ratio is below this hardly differ
 
 
@@ -117,7 +121,7 @@ def against(verdict: Verdict, departures: Sequence[Departure]) -> Departure | No
     Returns
     -------
     Departure or None
-        The one with the smallest adjusted p, then p; None where they agree.
+        The `clearest` of them; None where they agree.
 
     Examples
     --------
@@ -129,11 +133,31 @@ def against(verdict: Verdict, departures: Sequence[Departure]) -> Departure | No
     """
     told = {"clumped": "clumped", "evenly spaced": "even"}.get(verdict)
     other = [each for each in departures if each.direction not in (None, told)]
-    return min(other, key=lambda each: (each.adjusted, each.p)) if other else None
+    return clearest(other) if other else None
+
+
+def clearest(departures: Sequence[Departure]) -> Departure:
+    """Return the departure with the smallest adjusted p, then p; of equals one over distances.
+
+    Parameters
+    ----------
+    departures : sequence of Departure
+        One or more.
+
+    Returns
+    -------
+    Departure
+    """
+    return min(departures, key=lambda each: (each.adjusted, each.p, _TOLD.index(each.name)))
 
 
 def disagreement(
-    verdict: Verdict, departures: Sequence[Departure], *, side: float | None, unit: str
+    verdict: Verdict,
+    departures: Sequence[Departure],
+    *,
+    side: float | None,
+    unit: str,
+    width: float = math.nan,
 ) -> str:
     """Say where the tests over sides and distances tell something else than the quadrats, and why.
 
@@ -147,6 +171,8 @@ def disagreement(
         Side of the quadrats; None where they are no squares.
     unit : {"mm", "px"}
         Of lengths.
+    width : float
+        Usual width of a spot; NaN where not known.
 
     Returns
     -------
@@ -163,7 +189,11 @@ def disagreement(
         return ""
     other = against(verdict, departures)
     if other is not None:
-        return f"{departure_words(other, unit)}: {_why(verdict, other, side, unit)}."
+        if within_a_spot(other, width):
+            why = f", but a spot is usually {length_words(width, unit)} wide: {_TOUCHING}"
+        else:
+            why = f": {_why(verdict, other, side, unit)}"
+        return f"{departure_words(other, unit)}{why}."
     if verdict == "no departure from random found" or any(d.direction for d in departures):
         return ""
     least = min(each.adjusted for each in departures)
@@ -171,6 +201,32 @@ def disagreement(
         f"The tests over all sides and distances do not show it (smallest adjusted {p_text(least)}):"
         " they look everywhere at once, and so need a stronger departure."
     )
+
+
+def within_a_spot(departure: Departure, width: float) -> bool:
+    """Tell whether a lack of near neighbours may be that of spots which touch or overlap.
+
+    Parameters
+    ----------
+    departure : Departure
+        Of one of the tests.
+    width : float
+        Usual width of a spot; NaN where not known.
+
+    Returns
+    -------
+    bool
+        Whether neighbours are too few at a distance up to 1.25 widths (our own limit, for sizes
+        differ); never of a test over sides.
+
+    Examples
+    --------
+    >>> even = Departure("l_function", "even", 1.2, 0.004, 0.012)
+    >>> within_a_spot(even, 1.5), within_a_spot(even, 0.5)
+    (True, False)
+    """
+    near = departure.name != "vmr_by_side" and departure.at <= _WIDTHS * width
+    return departure.direction == "even" and near
 
 
 def departure_words(departure: Departure, unit: str) -> str:

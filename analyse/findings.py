@@ -27,6 +27,7 @@ def analyse_points(
     grid: GridOptions | None = None,
     seed: int = SEED,
     simulations: int = SIMULATIONS,
+    workers: int = 1,
 ) -> Findings:
     """Analyse points in a study area, both in millimetres.
 
@@ -44,6 +45,8 @@ def analyse_points(
         Seed of the simulations.
     simulations : int
         How many.
+    workers : int
+        How many processes share them; the result does not depend on it.
 
     Returns
     -------
@@ -56,7 +59,7 @@ def analyse_points(
     Evenly spaced: ...
     """
     pattern = Pattern.of(points, area, name=name)
-    return analyse_pattern(pattern, grid, seed=seed, simulations=simulations)
+    return analyse_pattern(pattern, grid, seed=seed, simulations=simulations, workers=workers)
 
 
 def analyse_pattern(
@@ -65,6 +68,7 @@ def analyse_pattern(
     *,
     seed: int = SEED,
     simulations: int = SIMULATIONS,
+    workers: int = 1,
 ) -> Findings:
     """Count a pattern in quadrats, test the counts and say what follows.
 
@@ -79,6 +83,8 @@ def analyse_pattern(
         whatever else is analysed before or beside it.
     simulations : int
         How many.
+    workers : int
+        How many processes share them; the result does not depend on it.
 
     Returns
     -------
@@ -136,7 +142,7 @@ def analyse_pattern(
         values,
         settings,
     )
-    return judged(subject, seed, simulations)
+    return judged(subject, seed, simulations, workers)
 
 
 def analyse_counts(

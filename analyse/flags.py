@@ -22,6 +22,8 @@ FLAGS: dict[str, str] = {
     " check them (orange in the pictures).",
     "outside": "Points outside the study area, which were left out: {outside}.",
     "duplicates": "Points at the very place of another: {duplicates}; check for double entries.",
+    "touching": "Nearer than {touching} there are too few neighbours, and a spot is usually {width}"
+    " wide: touching spots counted as one make any pattern look more even than it is.",
     "no_area": "A table of counts tells no study area, so no density is given.",
     "few_quadrats": "With only {q} quadrats, only a strong departure from random could be seen.",
     "low_expected": "A quadrat expects only {mean_expected:.2g} points on average:"

@@ -4,8 +4,9 @@ from __future__ import annotations
 
 import math
 from collections.abc import Callable, Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, fields
 from types import MappingProxyType
+from typing import Any
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
@@ -88,6 +89,11 @@ class GlobalTests:
 
     def __post_init__(self) -> None:
         object.__setattr__(self, "envelopes", MappingProxyType(dict(self.envelopes)))
+
+    def __reduce__(self) -> tuple[type[GlobalTests], tuple[Any, ...]]:
+        """Travel between processes, which the read-only view of the curves by itself cannot."""
+        values = (getattr(self, field.name) for field in fields(self))
+        return GlobalTests, (dict(self.envelopes), *tuple(values)[1:])
 
     def __repr__(self) -> str:
         p = ", ".join(f"{name} {envelope.p:.3g}" for name, envelope in self.envelopes.items())

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from pathlib import Path
 
 from shapely.geometry.base import BaseGeometry
@@ -21,6 +21,8 @@ from detect.errors import DetectError, OptionWrong, RequestWrong
 from detect.gather import gather_sheets
 from detect.outcome import photograph_of
 from detect.sheet import read_sheet
+
+_MANY = 4  # files from which starting a process for each core is worth its second or two
 
 
 @dataclass(frozen=True, slots=True)
@@ -43,6 +45,8 @@ class Input:
         Whether it is a table of counts.
     transect : bool
         Whether its counts stand in the order of a line of quadrats.
+    processes : int
+        How many share its simulations.
     """
 
     path: Path
@@ -52,6 +56,7 @@ class Input:
     unit: TableUnit = "mm"
     counts: bool = False
     transect: bool = False
+    processes: int = 1
 
 
 @dataclass(frozen=True, slots=True)
@@ -122,6 +127,33 @@ def gather_inputs(given: Given) -> list[Input]:
     return inputs
 
 
+def shared_out(inputs: Sequence[Input], cores: int) -> tuple[list[Input], int | None]:
+    """Share cores among files: few are done one after another on all of them, many one on each.
+
+    Parameters
+    ----------
+    inputs : sequence of Input
+        What is to be analysed.
+    cores : int
+        To use in all.
+
+    Returns
+    -------
+    (inputs, workers)
+        With the processes each may use; and what `detect.batch.do_each` takes for its workers.
+
+    Raises
+    ------
+    RequestWrong
+        If there is no core.
+    """
+    if cores < 1:
+        raise RequestWrong(f"--workers must be 1 or more, not {cores}.")
+    if len(inputs) < _MANY:
+        return [replace(each, processes=cores) for each in inputs], None
+    return list(inputs), cores
+
+
 def analyse_input(each: Input) -> Analysed:
     """Read and analyse one file."""
     if each.counts:
@@ -129,11 +161,13 @@ def analyse_input(each: Input) -> Analysed:
         return analyse_table(table, grid=each.grid, trial=each.trial)
     if each.area is not None:
         points = read_points(each.path, area=each.area, unit=each.unit)
-        return analyse_table(points, grid=each.grid, trial=each.trial)
+        return analyse_table(points, grid=each.grid, trial=each.trial, workers=each.processes)
     sheet = read_sheet(each.path)
     amendments = read_amendments(amendments_path(each.path))
     photograph = photograph_of(sheet, each.path.parent)
-    return analyse_sheet(sheet, amendments, photograph, grid=each.grid, trial=each.trial)
+    return analyse_sheet(
+        sheet, amendments, photograph, grid=each.grid, trial=each.trial, workers=each.processes
+    )
 
 
 def _table_unit(text: str | None) -> TableUnit:

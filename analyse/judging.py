@@ -10,12 +10,14 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
+from analyse.beside import Beside, judge_beside, remark
 from analyse.chance import check_seed
 from analyse.clumped_quadrats import clumped_in_quadrats
 from analyse.contiguous import FEWEST_QUADRATS as FEWEST_IN_ORDER
 from analyse.contiguous import Blocks, block_variances
 from analyse.count_chance import least_chi2, simulated_p
 from analyse.density import Limits
+from analyse.departures import length_words, within_a_spot
 from analyse.dispersion import (
     Dispersion,
     clipped_dispersion,
@@ -28,6 +30,7 @@ from analyse.flags import count_flags
 from analyse.models import PoissonFit, poisson_frequencies
 from analyse.pattern import Pattern, Unit
 from analyse.pooling import LARGEST_COUNT
+from analyse.power import WouldShow, would_show
 from analyse.quadrats import QuadratCounts
 from analyse.said import Findings
 from analyse.trends import Trends, pattern_trends, table_trends
@@ -54,7 +57,7 @@ class Subject:
         return 0.0 if self.pattern is None else self.pattern.relative_uncertainty
 
 
-def judged(subject: Subject, seed: int, simulations: int) -> Findings:
+def judged(subject: Subject, seed: int, simulations: int, workers: int = 1) -> Findings:
     """Test counts and put the findings together.
 
     Parameters
@@ -65,6 +68,8 @@ def judged(subject: Subject, seed: int, simulations: int) -> Findings:
         Seed of the simulations, 0 or more.
     simulations : int
         How many.
+    workers : int
+        How many processes share those over sides and distances.
 
     Returns
     -------
@@ -96,6 +101,24 @@ def judged(subject: Subject, seed: int, simulations: int) -> Findings:
         "clipped_percent": 100 * subject.counts.clipped_share,
     }
     seen = _seen(verdict, everything, weights)
+    shown = _shown(verdict, everything, subject)
+    trend = _trends(subject, seed, simulations)
+    beside = Beside()
+    if subject.pattern is not None:
+        gradient = None if trend is None else trend.clearest
+        beside = judge_beside(
+            subject.pattern, gradient, seed=seed, simulations=simulations, workers=workers
+        )
+    width = math.nan if subject.pattern is None else subject.pattern.width
+    where = {"side": subject.settings["side"], "unit": subject.unit, "width": width}
+    said = [
+        sentence(verdict, everything, whole, simulated, seen, shown),
+        remark(verdict, trend, beside, **where),
+    ]
+    touching = [each for each in beside.departures if within_a_spot(each, width)]
+    if touching:
+        lengths = {"touching": max(each.at for each in touching), "width": width}
+        values |= {name: length_words(at, subject.unit or "") for name, at in lengths.items()}
     return Findings(
         name=subject.name,
         n=everything.n,
@@ -111,9 +134,10 @@ def judged(subject: Subject, seed: int, simulations: int) -> Findings:
         density=subject.density,
         poisson=_frequencies(x[is_whole]),
         verdict=verdict,
-        sentence=sentence(verdict, everything, whole, simulated, seen),
+        sentence=" ".join(filter(None, said)),
         detectable=seen,
-        flags=subject.flags + count_flags(values),
+        shown=shown,
+        flags=subject.flags + ("touching",) * bool(touching) + count_flags(values),
         flag_values=values,
         seed=seed,
         settings=subject.settings | {"simulations": simulations, "level": LEVEL},
@@ -121,7 +145,11 @@ def judged(subject: Subject, seed: int, simulations: int) -> Findings:
         negative_binomial=clumped_law(x[is_whole]),
         clumped_mean=clumped_mean,
         clumped_density=clumped_density,
-        trend=_trends(subject, seed, simulations),
+        trend=trend,
+        tests=beside.tests,
+        holm=beside.holm,
+        beyond=beside.beyond,
+        beyond_holm=beside.beyond_holm,
     )
 
 
@@ -168,6 +196,14 @@ def _blocks(subject: Subject, seed: int, simulations: int) -> Blocks | None:
         return None
     rng = stream(seed, f"{subject.name}, blocks")
     return block_variances(counted.reshape(rows, columns), rng=rng, simulations=simulations)
+
+
+def _shown(verdict: Verdict, everything: Dispersion, subject: Subject) -> WouldShow | None:
+    """Return the smallest clusters and spacing that would have been seen, where a test is made."""
+    if verdict == "too few to tell":
+        return None
+    side = None if subject.area is None else math.sqrt(subject.area / everything.q)
+    return would_show(everything.n, everything.q, side=side, unit=subject.unit)
 
 
 def _seen(

@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Mapping
 from typing import TYPE_CHECKING, Any
 
+from analyse.curve_words import curves_said
 from analyse.look import MOST_COUNTS
 from analyse.marks import photograph_inches
 from analyse.reviewing import review_sentence
@@ -87,6 +88,7 @@ def page_words(
         "residuals_alt": residuals_alt(findings),
         "frequencies_alt": frequencies_alt(findings),
         "poisson": poisson_words(findings),
+        "curves": curves_said(findings),
         "columns": _columns(findings),
         "numbers": number_rows(findings),
         "method": method_words(findings),

@@ -77,6 +77,8 @@ class Pattern:
     changes : Changes or None
         What people did to the spots of a photograph, and whether it is marked as checked; None for
         what is no photograph.
+    width : float
+        Usual width of a spot, the median of their diameters, in `unit`; NaN where not known.
 
     Raises
     ------
@@ -101,6 +103,7 @@ class Pattern:
     blind: float = math.nan
     dish_notes: tuple[str, ...] = ()
     changes: Changes | None = None
+    width: float = math.nan
 
     def __post_init__(self) -> None:
         points = np.array(self.points, dtype=np.float64).reshape(-1, 2)
@@ -240,10 +243,11 @@ def pattern_of_state(sheet: Sheet, changes: Changes) -> Pattern:
     spots = sheet.spots.where(sheet.spots.counted)
     inside = sheet.area.contains(spots.centres)
     outside, spots = int((~inside).sum()), spots.where(inside)
-    points, area = spots.centres, sheet.area.polygon
+    points, area, diameters = spots.centres, sheet.area.polygon, 2 * spots.radius
     if sheet.scale is not None:
         if sheet.scale.lens is not None:
             area = shapely.segmentize(area, sheet.photograph.width / _PIECES)
+        diameters = diameters * sheet.scale.mm_per_px(points)
         points, area = sheet.scale.to_mm(points), shapely.transform(area, sheet.scale.to_mm)
     flags = _point_flags(points, outside, spots.doubt)
     flags += _scale_flags(sheet.scale)
@@ -266,6 +270,7 @@ def pattern_of_state(sheet: Sheet, changes: Changes) -> Pattern:
         _blind(sheet),
         dish_notes,
         changes,
+        float(np.median(diameters)) if len(diameters) else math.nan,
     )
 
 

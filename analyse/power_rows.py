@@ -6,7 +6,7 @@ import math
 from collections.abc import Iterator
 from typing import TYPE_CHECKING
 
-from analyse.power import LEVEL, POWER, WIDE, WouldShow, would_show
+from analyse.power import LEVEL, POWER, WIDE
 from detect.files import Cell
 
 if TYPE_CHECKING:
@@ -14,26 +14,6 @@ if TYPE_CHECKING:
 
 _CLUSTER = "smallest clusters seen (Neyman and Scott 1958; gamma law of X2 by Neyman's cumulants)"
 _SPACING = "smallest spacing seen (second order in the density, Matern 1960; scaled chi-square)"
-
-
-def shown_by(each: Findings) -> WouldShow | None:
-    """Return what the counts of one photograph or table would have shown.
-
-    Parameters
-    ----------
-    each : Findings
-        Of one photograph or table.
-
-    Returns
-    -------
-    WouldShow or None
-        None where there are too few points or quadrats for a test.
-    """
-    if each.verdict == "too few to tell":
-        return None
-    q = len(each.counts)
-    side = None if each.area is None else math.sqrt(each.area / q)
-    return would_show(each.n, q, side=side, unit=each.unit)
 
 
 def power_rows(each: Findings) -> Iterator[list[Cell]]:
@@ -50,7 +30,7 @@ def power_rows(each: Findings) -> Iterator[list[Cell]]:
         The cells of tests.csv after `photograph`; `n` is the number of quadrats. What so few
         points cannot show has no row.
     """
-    seen = shown_by(each)
+    seen = each.shown
     if seen is None:
         return
     at = f"with about {100 * POWER:.0f} % power, two-sided at {100 * LEVEL:g} %"

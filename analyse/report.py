@@ -12,6 +12,7 @@ from typing import Any
 from jinja2 import Environment, PackageLoader, StrictUndefined
 from markupsafe import Markup
 
+from analyse.curve_charts import LOOKS, curve_figure
 from analyse.embedding import data_uri, photograph_jpeg, svg_bytes
 from analyse.figures import (
     draw_frequencies,
@@ -27,7 +28,7 @@ from detect.photograph import Photograph, read_photograph
 from detect.sheet import Sheet
 
 TITLE = "Counts and dispersion"
-_FIGURES = ("photograph", "marks", "points", "residuals", "frequencies")
+_FIGURES = ("photograph", "marks", "points", "residuals", "frequencies", *LOOKS)
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -64,7 +65,8 @@ class RenderedPage:
         What the template prints.
     figures : dict of str to bytes
         Pictures by name: ``photograph`` (JPEG), ``marks`` (SVG to lie over it), ``points``,
-        ``residuals`` and ``frequencies`` (SVG). Those that cannot be drawn are missing.
+        ``residuals``, ``frequencies`` and the curves of `analyse.curve_charts.LOOKS` (SVG). Those
+        that cannot be drawn are missing.
     """
 
     name: str
@@ -107,6 +109,11 @@ def page_figures(page: ReportPage) -> dict[str, bytes]:
     if findings.n > 0 and findings.poisson is not None:
         figure = plain_figure(draw_frequencies, findings, width=4.8, height=3.9)
         figures["frequencies"] = svg_bytes(figure)
+    if findings.tests is not None and findings.unit is not None:
+        for name in LOOKS:
+            if name in findings.tests.envelopes:
+                figure = curve_figure(findings.tests.envelopes[name], findings.unit)
+                figures[name] = svg_bytes(figure)
     return figures
 
 

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 import numpy as np
 from numpy.typing import NDArray
@@ -16,11 +16,16 @@ from analyse.density import Limits
 from analyse.dispersion import Dispersion
 from analyse.fits import NegativeBinomialFit
 from analyse.flags import flag_sentences
+from analyse.holm import HolmFamily
 from analyse.models import PoissonFit
 from analyse.pattern import Pattern, Unit
+from analyse.power import WouldShow
 from analyse.quadrats import QuadratCounts
 from analyse.trends import Trends
 from analyse.verdict import Verdict
+
+if TYPE_CHECKING:
+    from analyse.global_tests import GlobalTests
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -83,6 +88,19 @@ class Findings:
         fewer than 10 points, and for counts whose places are unknown.
     verdict_before : str or None
         The verdict on the spots as detected, where people have reviewed them since.
+    tests : GlobalTests or None
+        Tests over all sides and distances against points placed at random; None without points,
+        or with fewer than 10.
+    holm : HolmFamily or None
+        Adjusted p of those of them that are judged together; None where there are no `tests`.
+    beyond : GlobalTests or None
+        The same tests against points placed at random along the gradient; None where no gradient
+        was found.
+    beyond_holm : HolmFamily or None
+        Their adjusted p.
+    shown : WouldShow or None
+        The smallest clusters and the smallest spacing that the counts would have shown; None where
+        there are too few to tell.
     """
 
     name: str
@@ -111,6 +129,11 @@ class Findings:
     clumped_density: ClumpedLimits | None = None
     trend: Trends | None = None
     verdict_before: Verdict | None = None
+    tests: GlobalTests | None = None
+    holm: HolmFamily | None = None
+    beyond: GlobalTests | None = None
+    beyond_holm: HolmFamily | None = None
+    shown: WouldShow | None = None
 
     def __post_init__(self) -> None:
         hold_columns(self, ("expected", "residuals"), length=len(self.counts))

@@ -14,6 +14,7 @@ from analyse.dispersion import (
     normal_deviate,
 )
 from analyse.distance_rows import distance_rows
+from analyse.envelope_rows import BESIDE_COLUMNS, beside_cells, envelope_rows
 from analyse.findings import Findings
 from analyse.indices import (
     cluster_size_index,
@@ -91,6 +92,7 @@ SUMMARY_COLUMNS = [
     "blind_distance_mm",
     *COUNT_SUMMARY_COLUMNS,
     *REVIEW_SUMMARY_COLUMNS,
+    *BESIDE_COLUMNS,
 ]
 TEST_COLUMNS = ["photograph", "statistic", "value", "low", "high", "p", "method", "n", "notes"]
 _FISHER = "index of dispersion, chi-square (Fisher, Thornton and Mackenzie 1922)"
@@ -234,6 +236,7 @@ def _summary(each: Findings) -> list[Cell]:
         *planted_cells(each.pattern),
         *count_summary_cells(each),
         *review_cells(each),
+        *beside_cells(each),
     ]
 
 
@@ -327,6 +330,7 @@ _PARTS = (
     trend_rows,
     distance_rows,
     block_rows,
+    envelope_rows,
 )
 
 

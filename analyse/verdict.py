@@ -10,6 +10,7 @@ from analyse.dispersion import Dispersion
 from analyse.flags import FLAGS as FLAGS
 from analyse.power import LEVEL as LEVEL
 from analyse.power import POWER as POWER
+from analyse.power import WouldShow
 from analyse.power import detectable as detectable
 
 Verdict = Literal["clumped", "evenly spaced", "no departure from random found", "too few to tell"]
@@ -55,6 +56,7 @@ def sentence(
     whole: Dispersion | None,
     simulated: SimulatedTest,
     seen: tuple[float, float],
+    shown: WouldShow | None = None,
 ) -> str:
     """Return the verdict as a sentence.
 
@@ -70,6 +72,8 @@ def sentence(
         What the verdict rests on.
     seen : (low, high)
         What `detectable` gave; `low` is NaN where counts cannot be as even as that.
+    shown : WouldShow or None
+        The smallest clusters and the smallest spacing that would have been seen.
 
     Returns
     -------
@@ -98,8 +102,8 @@ def sentence(
     bound = " So few spots can hardly show even spacing." if math.isnan(low) else ""
     return (
         f"No departure from random found ({numbers}). With these {everything.q} quadrats a VMR of"
-        f" {_short(high)} or more{less} would have been seen with about {100 * POWER:.0f} % power."
-        f"{bound}"
+        f" {_short(high)} or more{less} would have been seen with about {100 * POWER:.0f} % power"
+        f"{_also_shown(shown)}.{bound}"
     )
 
 
@@ -142,6 +146,19 @@ def _numbers(everything: Dispersion, whole: Dispersion | None, simulated: Simula
         return f"VMR {everything.vmr:.2f}, {judged}"
     rest = "" if whole is None else f"; VMR {whole.vmr:.2f} on the {whole.q} whole ones"
     return f"X2/df {everything.vmr:.2f} over all {everything.q} quadrats by area, {judged}{rest}"
+
+
+def _also_shown(shown: WouldShow | None) -> str:
+    """Say which clusters and which spacing would have been seen too."""
+    found = []
+    if shown is not None and math.isfinite(shown.cluster):
+        found.append(f"clusters in which a spot has {_short(shown.cluster)} others beside it")
+    if shown is not None and math.isfinite(shown.spacing):
+        length = f"{_short(shown.spacing)} of a quadrat's side"
+        if shown.side is not None:
+            length = f"{float(f'{shown.length:.2g}'):g} {shown.unit}"
+        found.append(f"a spacing of {length} kept by all")
+    return f", as would {' or '.join(found)}" if found else ""
 
 
 def _short(ratio: float) -> str:

@@ -175,7 +175,7 @@ def test_a_dish_has_the_density_of_its_points_over_its_area() -> None:
     points = parents[rng.integers(0, 25, 200)] + rng.normal(0, 2, (200, 2))
     dish = shapely.Point(0, 0).buffer(43, quad_segs=90)
     points = points[np.hypot(*points.T) < 42]
-    found = analyse_points(points, dish, name="dish")
+    found = analyse_points(points, dish, name="dish", simulations=99)
     seen, plain = found.clumped_density, found.density
     assert seen is not None
     assert seen.profile is not None
@@ -186,9 +186,11 @@ def test_a_dish_has_the_density_of_its_points_over_its_area() -> None:
     assert seen.profile.low < plain.low
     assert seen.profile.high > plain.high
     assert seen.quadrats == len(found.counts)
-    again = analyse_points(points, dish, name="dish")
+    again = analyse_points(points, dish, name="dish", simulations=99)
     assert repr(again.clumped_density) == repr(seen)
-    other = analyse_points(points, dish, name="dish", grid=GridOptions(shape=(4, 4)))
+    other = analyse_points(
+        points, dish, name="dish", grid=GridOptions(shape=(4, 4)), simulations=99
+    )
     assert other.clumped_density is not None
     assert repr(other.clumped_density) != repr(seen)
 

@@ -10,11 +10,13 @@ from analyse.departures import (
     FAMILY,
     Departure,
     against,
+    clearest,
     departure_words,
     departures_of,
     disagreement,
     judged_together,
     length_words,
+    within_a_spot,
 )
 from tests.analyse.curves import three
 
@@ -62,6 +64,13 @@ def test_the_clearest_of_what_the_verdict_does_not_tell_is_taken():
     assert against("evenly spaced", [far, near]) is far
     assert against("clumped", [far]) is None
     assert against("clumped", [departure(None)]) is None
+
+
+def test_of_equally_clear_departures_one_over_distances_is_told():
+    sides, near = departure("even", name="vmr_by_side"), departure("even", name="nearest_neighbour")
+    assert clearest([sides, near, departure("even")]).name == "l_function"
+    assert clearest([sides, near]) is near
+    assert clearest([departure("even", name="vmr_by_side", adjusted=0.003), near]).at == sides.at
 
 
 @pytest.mark.parametrize(
@@ -113,6 +122,30 @@ def test_the_clearest_of_what_the_verdict_does_not_tell_is_taken():
 )
 def test_a_disagreement_says_where_in_which_direction_and_why(verdict, one, said):
     assert disagreement(verdict, [departure(None), one], side=8.0, unit="mm") == said
+
+
+def test_too_few_neighbours_within_the_width_of_a_spot_are_told_as_touching():
+    said = disagreement(NONE, [departure("even")], side=8.0, unit="mm", width=1.0)
+    assert said == (
+        "Nearer than 1.2 mm there are fewer neighbours than chance would give (adjusted p = 0.012),"
+        " but a spot is usually 1 mm wide: touching ones are counted as one, or cannot lie nearer."
+    )
+
+
+@pytest.mark.parametrize(
+    ("one", "width", "touching"),
+    [
+        (departure("even"), 0.97, True),
+        (departure("even"), 0.95, False),
+        (departure("even", name="nearest_neighbour"), 5.0, True),
+        (departure("even", name="vmr_by_side"), 5.0, False),
+        (departure("clumped"), 5.0, False),
+        (departure(None), 5.0, False),
+        (departure("even"), float("nan"), False),
+    ],
+)
+def test_touching_is_a_lack_of_neighbours_up_to_a_quarter_beyond_a_width(one, width, touching):
+    assert within_a_spot(one, width) is touching
 
 
 def test_quadrats_that_are_no_squares_are_not_given_a_side():

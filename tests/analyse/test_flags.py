@@ -17,6 +17,8 @@ VALUES = {
     "doubtful": 4,
     "outside": 3,
     "duplicates": 2,
+    "touching": "1.14 mm",
+    "width": "1.5 mm",
     "dish_notes": "several round things are seen",
 }
 

@@ -100,7 +100,9 @@ def test_notes_on_the_dish_become_a_flag() -> None:
 
 def test_the_flag_of_the_dish_quotes_its_notes_alone() -> None:
     notes = ["several round things are seen", "9 % of the dish's edge lie beyond the frame"]
-    found = analyse_pattern(pattern_from_sheet(replace(sheet(), settings={"dish": notes})))
+    found = analyse_pattern(
+        pattern_from_sheet(replace(sheet(), settings={"dish": notes})), simulations=99
+    )
     told = [said for said in found.flag_sentences if "dish" in said]
     assert told == [f"Of the dish: {notes[0]}; {notes[1]}."]
 

@@ -27,7 +27,6 @@ from analyse.power import (
     spacing_vmr,
     would_show,
 )
-from analyse.power_rows import shown_by
 from analyse.quadrats import count_in_quadrats, lay_grid
 from analyse.verdict import detectable as as_before
 from tests.analyse.test_nulls import RAGGED
@@ -211,9 +210,9 @@ def test_units_change_only_the_length() -> None:
 
 def test_too_few_to_tell_show_nothing() -> None:
     few = analyse_counts(CountTable("few", np.array([1, 2, 0, 1, 0, 3, 1, 1])))
-    assert shown_by(few) is None
+    assert few.shown is None
     points = np.random.default_rng(3).uniform(0, 100, (60, 2))
-    seen = shown_by(analyse_points(points, (0, 0, 100, 100)))
+    seen = analyse_points(points, (0, 0, 100, 100), simulations=99).shown
     assert seen is not None
     assert (seen.n, seen.unit) == (60, "mm")
     assert seen.side == pytest.approx(100 / math.sqrt(seen.q))

@@ -12,6 +12,7 @@ from importlib.resources import files
 import numpy as np
 import pytest
 
+from analyse.curve_charts import LOOKS
 from analyse.findings import analyse_counts, analyse_points
 from analyse.pattern import CountTable, pattern_from_sheet
 from analyse.report import (
@@ -338,7 +339,7 @@ def test_tables_of_points_and_counts_have_pages():
     pages = [render_page(by_points)]
     pages += [render_page(analyse_counts(table, simulations=99)) for table in (grid, listed)]
     assert [set(page.figures) for page in pages] == [
-        {"points", "residuals", "frequencies"},
+        {"points", "residuals", "frequencies", *LOOKS},
         {"residuals", "frequencies"},
         {"frequencies"},
     ]

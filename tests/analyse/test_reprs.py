@@ -32,7 +32,7 @@ def results_in(record: Any, path: str) -> Iterator[tuple[str, Any]]:
 
 def found() -> Findings:
     return analyse_points(
-        random_points(DISH, 120, np.random.default_rng(4)), DISH, name="dish_01.jpg"
+        random_points(DISH, 120, np.random.default_rng(4)), DISH, name="dish_01.jpg", simulations=99
     )
 
 

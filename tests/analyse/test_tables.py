@@ -31,8 +31,8 @@ def three() -> list[Findings]:
     """A dish, the same in pixels, and Student's map."""
     pixels = replace(Pattern.of(POINTS, DISH, name="px.jpg", unit="px"), flags=("uncalibrated",))
     return [
-        analyse_points(POINTS, DISH, name="dish.jpg"),
-        analyse_pattern(pixels),
+        analyse_points(POINTS, DISH, name="dish.jpg", simulations=99),
+        analyse_pattern(pixels, simulations=99),
         analyse_counts(read_counts(published.DATA / "student_grid.csv")),
     ]
 
@@ -101,7 +101,7 @@ def test_flags_go_with_every_statistic() -> None:
 
 def test_no_test_is_called_the_verdicts_where_there_is_too_little() -> None:
     for n, there in ((5, False), (150, True)):
-        rows = rows_of(tables.tests_csv([analyse_points(POINTS[:n], DISH)]))
+        rows = rows_of(tables.tests_csv([analyse_points(POINTS[:n], DISH, simulations=99)]))
         assert any("the verdict's test" in row["notes"] for row in rows) == there
         assert ("vmr_seen" in {row["statistic"] for row in rows}) == there
 
@@ -115,7 +115,7 @@ def test_areas_add_up_to_the_study_area() -> None:
 
 
 def test_every_p_says_which_it_is() -> None:
-    found = analyse_points(POINTS, DISH, name="dish.jpg")
+    found = analyse_points(POINTS, DISH, name="dish.jpg", simulations=99)
     rows = {row["statistic"]: row for row in rows_of(tables.tests_csv([found]))}
     for test in ("chi2", "chi2_whole", "chi2_simulated"):
         sides = {
@@ -152,7 +152,7 @@ def test_the_normal_approximation_waits_for_many_quadrats() -> None:
 
 
 def test_nothing_counted_leaves_cells_empty_not_wrong() -> None:
-    found = [analyse_points([], DISH, name="empty.jpg")]
+    found = [analyse_points([], DISH, name="empty.jpg", simulations=99)]
     line = rows_of(tables.summary_csv(found))[0]
     assert (line["count"], line["vmr"], line["chi2"], line["p_simulated"]) == ("0", "", "", "")
     assert line["verdict"] == "too few to tell"
@@ -166,7 +166,7 @@ def test_nothing_counted_leaves_cells_empty_not_wrong() -> None:
 
 def test_without_whole_quadrats_their_cells_are_empty() -> None:
     rim = DISH.difference(shapely.Point(43, 43).buffer(36))
-    found = [analyse_points(random_points(rim, 40, np.random.default_rng(1)), rim)]
+    found = [analyse_points(random_points(rim, 40, np.random.default_rng(1)), rim, simulations=99)]
     line = rows_of(tables.summary_csv(found))[0]
     assert [line[k] for k in ("mean", "variance", "vmr", "chi2_whole", "p_even_whole")] == [""] * 5
     assert float(line["chi2"]) > 0
@@ -174,7 +174,7 @@ def test_without_whole_quadrats_their_cells_are_empty() -> None:
 
 
 def test_rectangles_give_their_area_but_no_side() -> None:
-    found = [analyse_points(POINTS, DISH, grid=GridOptions(shape=(4, 5)))]
+    found = [analyse_points(POINTS, DISH, grid=GridOptions(shape=(4, 5)), simulations=99)]
     line = rows_of(tables.summary_csv(found))[0]
     assert line["quadrat_mm"] == ""
     assert float(line["quadrat_area_mm2"]) == pytest.approx(86 * 86 / 20)

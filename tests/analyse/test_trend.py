@@ -325,8 +325,8 @@ def test_no_points_and_points_at_one_end_are_refused() -> None:
         fit_count_trend([20, 0, 0, 0, 0, 0, 0])
     with pytest.raises(TrendNotFound, match="too few quadrats to tell a slope"):
         fit_count_trend([5, 8, 9])
-    assert analyse_points(np.full((20, 2), 0.1), SQUARE).trend is None
-    assert analyse_points(np.full((9, 2), 5.1), SQUARE).trend is None
+    assert analyse_points(np.full((20, 2), 0.1), SQUARE, simulations=99).trend is None
+    assert analyse_points(np.full((9, 2), 5.1), SQUARE, simulations=99).trend is None
     assert analyse_counts(CountTable("t", np.array([9, 9, 3, 5]))).trend is None
 
 

@@ -1,0 +1,149 @@
+"""What is judged beside the quadrats: the tests over all sides and distances, also beyond a gradient."""
+
+from __future__ import annotations
+
+import zlib
+from dataclasses import dataclass
+from functools import partial
+
+from analyse.departures import Departure, departures_of, disagreement, judged_together
+from analyse.global_tests import GlobalTests, global_tests
+from analyse.gradient import gradient_remark
+from analyse.holm import HolmFamily
+from analyse.pattern import Pattern
+from analyse.trend import TrendRandomness
+from analyse.trend_record import Trend
+from analyse.trends import Trends
+from analyse.verdict import Verdict
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Beside:
+    """What was judged beside the quadrats.
+
+    Parameters
+    ----------
+    tests : GlobalTests or None
+        Over all sides and distances, against points placed at random.
+    holm : HolmFamily or None
+        Adjusted p of those of them that are judged together.
+    beyond : GlobalTests or None
+        The same tests against points placed at random along the gradient.
+    beyond_holm : HolmFamily or None
+        Their adjusted p.
+    """
+
+    tests: GlobalTests | None = None
+    holm: HolmFamily | None = None
+    beyond: GlobalTests | None = None
+    beyond_holm: HolmFamily | None = None
+
+    @property
+    def departures(self) -> tuple[Departure, ...]:
+        """How the tests that are judged together depart from points placed at random."""
+        return _departures(self.tests, self.holm)
+
+
+def judge_beside(
+    pattern: Pattern,
+    gradient: Trend | None,
+    *,
+    seed: int,
+    simulations: int,
+    workers: int = 1,
+) -> Beside:
+    """Test a pattern over all sides and distances, and once more beyond its gradient.
+
+    Parameters
+    ----------
+    pattern : Pattern
+        Points in a study area.
+    gradient : Trend or None
+        The trend of the density that stands out, if one does.
+    seed : int
+        Seed of the simulations, 0 or more; together with the pattern's name it fixes the result.
+    simulations : int
+        How many.
+    workers : int
+        How many processes may share the simulations.
+
+    Returns
+    -------
+    Beside
+        Empty with fewer than 10 points.
+
+    Raises
+    ------
+    OptionWrong
+        If the seed or the number of simulations is out of range.
+
+    Examples
+    --------
+    >>> lattice = [(x + 0.5, y + 0.5) for x in range(8) for y in range(8)]
+    >>> beside = judge_beside(Pattern.of(lattice, (0, 0, 8, 8)), None, seed=1, simulations=99)
+    >>> beside.holm["nearest_neighbour"]
+    0.03
+    """
+    judge = partial(global_tests, pattern, simulations=simulations, workers=workers)
+    tests = judge(seed=_own_seed(seed, pattern.name))
+    beyond = None
+    if tests is not None and gradient is not None:
+        own = _own_seed(seed, f"{pattern.name}, beyond the gradient")
+        beyond = judge(seed=own, null=TrendRandomness(pattern.area, gradient))
+    return Beside(tests, _family(tests), beyond, _family(beyond))
+
+
+def remark(
+    verdict: Verdict,
+    trends: Trends | None,
+    beside: Beside,
+    *,
+    side: float | None,
+    unit: str | None,
+    width: float,
+) -> str:
+    """Return the sentence that goes with a verdict on the quadrats.
+
+    Parameters
+    ----------
+    verdict : str
+        On the quadrats as asked.
+    trends : Trends or None
+        The gradients that were tried.
+    beside : Beside
+        The tests over sides and distances.
+    side : float or None
+        Side of the quadrats; None where they are no squares.
+    unit : {"mm", "px"} or None
+        Of lengths.
+    width : float
+        Usual width of a spot; NaN where not known.
+
+    Returns
+    -------
+    str
+        Of a gradient, or else of where the tests over sides and distances tell something else;
+        empty where none is needed.
+    """
+    if verdict == "too few to tell":
+        return ""
+    before = beside.departures
+    if trends is None or trends.clearest is None:
+        return disagreement(verdict, before, side=side, unit=unit or "", width=width)
+    beyond = _departures(beside.beyond, beside.beyond_holm)
+    return gradient_remark(verdict, trends, before, beyond, unit or "")
+
+
+def _family(tests: GlobalTests | None) -> HolmFamily | None:
+    """Return the adjusted p of the tests that are judged together."""
+    return None if tests is None else judged_together(tests.envelopes)
+
+
+def _departures(tests: GlobalTests | None, family: HolmFamily | None) -> tuple[Departure, ...]:
+    """Return how the tests of a family depart."""
+    return () if tests is None or family is None else departures_of(tests.envelopes, family)
+
+
+def _own_seed(seed: int, name: str) -> int:
+    """Return the seed of one photograph's simulations, which no other one shares."""
+    return (seed << 32) + zlib.crc32(name.encode("utf-8"))
