@@ -12,6 +12,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 from scipy import fft, sparse
+from scipy.spatial import cKDTree
 from shapely.geometry.base import BaseGeometry
 
 from analyse.pair_bins import PairBins
@@ -29,6 +30,9 @@ _ROWS = 64  # points compared at once with those to their right
 _BELOW = np.tri(_ROWS, dtype=bool)
 _NEAR = 1.4  # mean spacings 1 / sqrt(density) up to which pairs are measured one by one
 _FINE = 12  # cells of the grid in that distance
+_COARSE = 4  # cells in that distance at least, where the grid may be no finer
+_CROWDED = 40_000_000  # pairs, roughly, from which near ones are counted rather than listed
+_DIRECTIONS = 32
 _MOST_CELLS = 2048**2
 # The difference of two uniform places in their cells has variance 1/6 along any direction; so has
 # the biweight kernel of this half width.
@@ -171,9 +175,10 @@ class BinnedPairs:
         """Prepare the pairs of n points in one area."""
         x0, y0, x1, y1 = area.bounds
         spacing = math.sqrt(area.area / n)
-        near = int(np.searchsorted(bins.edges, _NEAR * spacing))
+        finest = math.sqrt((x1 - x0) * (y1 - y0) / _MOST_CELLS)
+        near = int(np.searchsorted(bins.edges, max(_NEAR * spacing, _COARSE * finest)))
         near = min(near, len(bins))
-        cell = max(bins.edges[near] / _FINE, math.sqrt((x1 - x0) * (y1 - y0) / _MOST_CELLS))
+        cell = max(bins.edges[near] / _FINE, finest)
         shape = (math.ceil((y1 - y0) / cell) + 1, math.ceil((x1 - x0) / cell) + 1)
         most = math.ceil(bins.reach / cell) + 1
         padded = tuple(fft.next_fast_len(size + most, real=True) for size in shape)
@@ -194,11 +199,13 @@ class BinnedPairs:
         power = spectrum.real**2 + spectrum.imag**2
         pairs = fft.irfft2(power, s=self.padded).ravel().take(self.steps)
         sums = np.asarray(self.spread @ pairs.astype(np.float64))
-        sums[: self.near] = self._measured(points)
+        crowd = np.bincount((cells[:, 1] // _FINE) * self.shape[1] + cells[:, 0] // _FINE)
+        crowded = float(crowd @ crowd) > _CROWDED
+        sums[: self.near] = self.counted(points) if crowded else self.measured(points)
         return sums
 
-    def _measured(self, points: Floats) -> Floats:
-        """Return the sums of the classes of near pairs."""
+    def measured(self, points: Floats) -> Floats:
+        """Return the sums of the classes of near pairs, each weighed by itself."""
         reach = float(self.bins.edges[self.near])
         sums = np.zeros(self.near)
         for i, j in near_pairs(points, reach):
@@ -206,6 +213,19 @@ class BinnedPairs:
             number = np.minimum(self.bins.number(np.hypot(dx, dy)), self.near - 1)
             sums += np.bincount(number, 1 / self.covariance.at(dx, dy), self.near)
         return sums
+
+    def counted(self, points: Floats) -> Floats:
+        """Return the same where very many points crowd, weighed by the mean over directions.
+
+        Pairs are counted by whole branches of a tree, in a time that their number hardly sets.
+        """
+        tree = cKDTree(points)
+        up_to = tree.count_neighbors(tree, self.bins.edges[1 : self.near + 1])
+        pairs = np.diff(np.concatenate([[len(points)], np.asarray(up_to)])) / 2
+        angle = np.pi * (np.arange(_DIRECTIONS) + 0.5) / _DIRECTIONS
+        apart = self.bins.middles[: self.near]
+        shared = self.covariance.at(np.outer(np.cos(angle), apart), np.outer(np.sin(angle), apart))
+        return np.asarray(pairs * (1 / shared).mean(axis=0))
 
 
 def _spread(

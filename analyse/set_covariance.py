@@ -19,7 +19,8 @@ Floats = NDArray[np.float64]
 
 _SIDES_OF_A_DISH = 32  # a polygon of fewer sides is no circle
 _OUT_OF_ROUND = 0.002  # of the radius: how far the outline of a circle may stray
-_CELLS = 512  # along the longer side, where there is no closed form
+_CELLS = (512, 2048)  # fewest and most along the longer side, where there is no closed form
+_CELLS_A_ROOT = 128  # in the root of the area, where an area is long or in scattered parts
 _DIRECTIONS = 64
 _STEPS = 200
 
@@ -114,7 +115,7 @@ def set_covariance(area: BaseGeometry) -> SetCovariance:
     gamma(h) = area of (A and A + h). A rectangle has (a - |dx|)(b - |dy|), a disc that of two
     circles' lens. A polygon of 32 sides or more whose outline strays by at most 0.2 % of the
     radius from the circle of equal area counts as a disc. Any other area is laid on a grid of
-    512 cells along its longer side, each cell with the exact share that is covered, and the sums
+    512 cells along its longer side (up to 2,048 for long or scattered areas), each cell with the exact share that is covered, and the sums
     of products at all steps come from one Fourier transform. The last few areas are remembered.
 
     References
@@ -140,15 +141,13 @@ def set_covariance(area: BaseGeometry) -> SetCovariance:
     return mask_covariance(area)
 
 
-def mask_covariance(area: BaseGeometry, *, cells: int = _CELLS) -> MaskCovariance:
+def mask_covariance(area: BaseGeometry) -> MaskCovariance:
     """Return the set covariance of an area from its mask, whatever its shape.
 
     Parameters
     ----------
     area : shapely Polygon or MultiPolygon
         Any polygon, with holes.
-    cells : int
-        Cells along the longer side of its bounding box.
 
     Returns
     -------
@@ -161,7 +160,9 @@ def mask_covariance(area: BaseGeometry, *, cells: int = _CELLS) -> MaskCovarianc
     table at twice the step.
     """
     x0, y0, x1, y1 = area.bounds
-    cell = max(x1 - x0, y1 - y0) / cells
+    longest = max(x1 - x0, y1 - y0)
+    wanted = math.ceil(_CELLS_A_ROOT * longest / math.sqrt(area.area))
+    cell = longest / min(max(wanted, _CELLS[0]), _CELLS[1])
     shape = (max(1, math.ceil((y1 - y0) / cell - 1e-9)), max(1, math.ceil((x1 - x0) / cell - 1e-9)))
     mask = covered(area, cell=cell, shape=shape)
     padded = [fft.next_fast_len(2 * size + 4, real=True) for size in shape]
