@@ -16,7 +16,12 @@ _RADII = 40
 _ACROSS = 48.0  # pixels that the largest radius has in the small picture that is worked on
 _SMALLEST_PX = 1.5
 _CLEAR = 3.0  # an edge must be so many times as strong as the usual one at other radii
-_SHIFTS = (0.0, -0.125, 0.125, -0.25, 0.25)  # of the usual radius, each way
+_STEPS = (0.0, -0.125, 0.125)
+_SHIFTS = (  # of the usual radius
+    *((dx, dy) for dx in _STEPS for dy in _STEPS),
+    *((0.25, 0.0), (-0.25, 0.0), (0.0, 0.25), (0.0, -0.25)),
+)
+_OVER_NOISE = 3.0  # how far the inside must stand out from the ring around it
 
 
 @dataclass(frozen=True, slots=True)
@@ -90,16 +95,18 @@ def fit_circle(photograph: Photograph, x: float, y: float, usual: float) -> Fitt
     signal = _signal(pixels, cx, cy, usual * sx)
     radii = np.linspace(least, most, _RADII) * sx
     best, found = 0.0, Fitted(x, y, usual, False)
-    for dx in _SHIFTS:
-        for dy in _SHIFTS:
-            step = (dx * usual * sx, dy * usual * sy)
-            strength, radius = _sharpest(signal, cx + step[0], cy + step[1], radii)
-            # A centre farther from the click must earn its place.
-            strength *= 1.0 - 0.6 * float(np.hypot(dx, dy))
-            if strength > best:
-                best = strength
-                found = Fitted(x + step[0] / sx, y + step[1] / sy, radius / sx, True)
-    return found if found.fitted and _inside(photograph, found) else Fitted(x, y, usual, False)
+    at = (cx, cy, usual * sx)
+    for dx, dy in _SHIFTS:
+        step = (dx * usual * sx, dy * usual * sy)
+        strength, radius = _sharpest(signal, cx + step[0], cy + step[1], radii)
+        # A centre farther from the click must earn its place.
+        strength *= 1.0 - 0.6 * float(np.hypot(dx, dy))
+        if strength > best:
+            best, at = strength, (cx + step[0], cy + step[1], radius)
+            found = Fitted(x + step[0] / sx, y + step[1] / sy, radius / sx, True)
+    if found.fitted and _inside(photograph, found) and _stands_out(signal, *at):
+        return found
+    return Fitted(x, y, usual, False)
 
 
 def _signal(pixels: NDArray[np.float32], cx: float, cy: float, usual: float) -> NDArray[np.float32]:
@@ -137,6 +144,18 @@ def _sharpest(
     bend = before - 2.0 * here + after
     shift = 0.0 if bend >= 0 else float(np.clip(0.5 * (before - after) / bend, -0.5, 0.5))
     return float(here), float(radii[at] + shift * (radii[1] - radii[0]))
+
+
+def _stands_out(signal: NDArray[np.float32], cx: float, cy: float, radius: float) -> bool:
+    """Whether a circle's inside differs from the ring around it by more than either varies."""
+    rows, columns = np.indices(signal.shape)
+    away = np.hypot(columns - cx, rows - cy) / radius
+    inner, outer = signal[away <= 0.8], signal[(away >= 1.2) & (away <= 1.8)]
+    if inner.size < 4 or outer.size < 8:
+        return False
+    middle = np.median(outer)
+    spread = 1.4826 * float(np.median(np.abs(outer - middle))) + 1.0 / 255.0
+    return float(np.median(inner) - middle) >= _OVER_NOISE * spread
 
 
 def _inside(photograph: Photograph, found: Fitted) -> bool:

@@ -8,6 +8,7 @@ import re
 import shutil
 import threading
 from collections.abc import Callable, Iterator
+from contextlib import suppress
 from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
@@ -199,7 +200,8 @@ class Pyramid:
             beside.write_bytes(data)
             beside.replace(path)
         except OSError:
-            beside.unlink(missing_ok=True)
+            with suppress(OSError):
+                beside.unlink(missing_ok=True)
             with self._lock:
                 self._held[(level, column, row)] = data
                 while len(self._held) > 1000:
