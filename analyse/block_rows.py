@@ -26,6 +26,7 @@ _TEST = (
     "TTLQV against the same counts in random order, one global envelope over all sizes by extreme"
     " rank length (Myllymaki and others 2017)"
 )
+_MOVED = "between the middles of quadrats, side 1"
 _SIDES = {"clumped": "upper tail", "even": "lower tail", "two_sided": "twice the smaller tail"}
 
 
@@ -56,6 +57,7 @@ def block_rows(each: Findings) -> Iterator[list[Cell]]:
     ):
         if variance is not None:
             yield from _variance(blocks, variance)
+    yield from _moved(blocks)
     for merged in blocks.merged[1:]:  # the first is the quadrats as they are
         yield from _merged(blocks, merged)
 
@@ -91,6 +93,20 @@ def _variance(blocks: Blocks, variance: BlockVariance) -> Iterator[list[Cell]]:
             note += f"; {_quadrats(variance.left_out)} beyond a power of two left out"
         low, high = band.get(size, (None, None))
         yield [f"{name}_{size}", value, low, high, None, method, variance.used, note]
+
+
+def _moved(blocks: Blocks) -> Iterator[list[Cell]]:
+    """Yield the distance to regularity, and its index where the counts were rearranged."""
+    seen, size = blocks.regularity, blocks.rows * blocks.columns
+    if seen is None:
+        return
+    method = "least total distance that makes all counts equal, in quadrats (Perry 1995)"
+    yield ["distance_to_regularity", seen.distance, None, None, None, method, size, _MOVED]
+    if seen.arrangements:
+        note = f"{seen.arrangements} arrangements of the counts, expected {seen.expected:.9g}"
+        method = "distance to regularity over its mean (Perry 1995), share at least as far"
+        value = seen.index if np.isfinite(seen.index) else None
+        yield ["regularity_index", value, None, None, seen.p, method, size, note]
 
 
 def _merged(blocks: Blocks, merged: MergedBlocks) -> Iterator[list[Cell]]:

@@ -22,6 +22,8 @@ from analyse.dispersion import Dispersion, dispersion
 from analyse.envelopes import Envelope, global_envelope
 from analyse.indices import morisita_index
 from analyse.local_variances import largest_size, local_variances
+from analyse.regularity import LONGEST, Regularity, regularity
+from analyse.regularity import MOST_QUADRATS as MOST_MOVED
 
 FEWEST_QUADRATS = 4  # fewer have no order to speak of
 FEWEST_BLOCKS = 4  # merged blocks of which there are fewer are left out
@@ -75,6 +77,9 @@ class Blocks:
     test : Envelope or None
         TTLQV against that of the same counts in random order, one p for all sizes up to a quarter
         of the longest side; None where all counts are equal, or there are more than 10,000.
+    regularity : Regularity or None
+        Distance to regularity (Perry 1995); None for grids above 400 quadrats and transects above
+        2,000, and where all counts are equal.
     """
 
     layout: Literal["transect", "grid"]
@@ -87,6 +92,7 @@ class Blocks:
     blocked: BlockVariance | None
     merged: tuple[MergedBlocks, ...]
     test: Envelope | None
+    regularity: Regularity | None = None
 
     def __repr__(self) -> str:
         tested = "" if self.test is None else f", p = {self.test.p:.3g}"
@@ -174,6 +180,7 @@ def block_variances(
         blocked_quadrat_variance(grid) if rows == 1 else None,
         merged_blocks(grid),
         _order_test(grid, rng, simulations),
+        _regularity(grid, rng, simulations),
     )
 
 
@@ -236,6 +243,16 @@ def _order_test(
         orders = rng.permuted(many, axis=1).reshape(-1, *grid.shape)
         drawn[start : start + len(orders)] = local_variances(orders, "TTLQV", sizes)[0]
     return global_envelope(observed, drawn, sizes, name="two_term_variance")
+
+
+def _regularity(
+    grid: NDArray[np.int64], rng: np.random.Generator, simulations: int
+) -> Regularity | None:
+    """Return the distance to regularity where it can be solved for in good time."""
+    most = LONGEST if grid.shape[0] == 1 else MOST_MOVED
+    if grid.min() == grid.max() or grid.size > most:
+        return None
+    return regularity(grid, rng=rng, simulations=simulations)
 
 
 def _largest(rows: int, columns: int) -> int:
