@@ -196,8 +196,9 @@ class BinnedPairs:
         place = cells[:, 1] * self.shape[1] + cells[:, 0]
         counts = np.bincount(place, minlength=self.shape[0] * self.shape[1])
         spectrum = fft.rfft2(counts.reshape(self.shape).astype(np.float32), s=self.padded)
-        power = spectrum.real**2 + spectrum.imag**2
-        pairs = fft.irfft2(power, s=self.padded).ravel().take(self.steps)
+        spectrum.real = spectrum.real**2 + spectrum.imag**2
+        spectrum.imag = 0.0
+        pairs = fft.irfft2(spectrum, s=self.padded).ravel().take(self.steps)
         sums = np.asarray(self.spread @ pairs.astype(np.float64))
         crowd = np.bincount((cells[:, 1] // _FINE) * self.shape[1] + cells[:, 0] // _FINE)
         crowded = float(crowd @ crowd) > _CROWDED
