@@ -26,7 +26,7 @@ from detect.scale import Scale
 from detect.sheet import Sheet
 
 MOST_OUTLINES = 400  # quadrats, above which none are drawn on the photograph
-_COUNTS_SIMULATED = 800_000  # quadrats times simulations, so that an answer comes at once
+_COUNTS_SIMULATED = 400_000  # quadrats times simulations, so that an answer comes at once
 _FEWEST, _MOST = 99, 999  # simulations
 
 
@@ -42,7 +42,7 @@ class PanelOf:
 
     Notes
     -----
-    The quadrat test alone, with fewer simulations on many quadrats: 999 up to about 800, 99 on 8,000
+    The quadrat test alone, with fewer simulations on many quadrats: 999 up to about 400, 99 on 4,000
     and more. The grid is laid anew only when the area or the side changes, and the sheet as found is
     tested once.
     """
@@ -146,7 +146,7 @@ def _flag_values(test: QuickTest) -> dict[str, Any]:
     pattern, whole = test.pattern, test.counts.whole
     return {
         "outside": pattern.outside,
-        "duplicates": pattern.duplicates,
+        "duplicates": pattern.duplicates if "duplicates" in pattern.flags else 0,
         "doubtful": pattern.doubtful,
         "dish_notes": "; ".join(pattern.dish_notes),
         "n": test.everything.n,

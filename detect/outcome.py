@@ -101,12 +101,17 @@ def write_detection(
 
 def write_views(photograph: Photograph, state: Sheet, folder: Path) -> None:
     """Write table of points, overlay and, on a map, layer of a sheet with its hand edits applied."""
-    write_text_atomically(folder / f"{state.stem}.points.csv", points_csv(state))
+    write_points(state, folder)
     if photograph.georeference is not None:
         layer = points_geojson(state, photograph.georeference)
         write_text_atomically(folder / f"{state.stem}.points.geojson", layer)
     picture = overlay_jpeg(photograph, state.area, state.spots)
     write_bytes_atomically(folder / f"{state.stem}.overlay.jpg", picture)
+
+
+def write_points(state: Sheet, folder: Path) -> None:
+    """Write the table of points of a sheet with its hand edits applied."""
+    write_text_atomically(folder / f"{state.stem}.points.csv", points_csv(state))
 
 
 def photograph_of(sheet: Sheet, folder: Path) -> Photograph | None:

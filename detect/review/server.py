@@ -5,6 +5,7 @@ from __future__ import annotations
 import asyncio
 import getpass
 import json
+import threading
 from collections.abc import Iterator, Sequence
 from concurrent.futures import ThreadPoolExecutor
 from importlib.resources import files
@@ -19,6 +20,7 @@ from starlette.routing import Route
 
 from detect.amendment import SCHEMA
 from detect.errors import DetectError
+from detect.outcome import write_points, write_views
 from detect.requests import tool_version
 from detect.review.asking import Wrong, asked_changes, number_within, whole_number
 from detect.review.fit import fit_circle, usual_radius
@@ -59,6 +61,7 @@ class Server:
         self.lives = {record.id: Live(record, panel, self.shapes, self._pool) for record in records}
         self._pyramids: dict[str, Pyramid] = {}
         self._making: set[asyncio.Task[None]] = set()
+        self._writing = threading.Lock()
         self._files = dict(_page_files())
         self.app = Starlette(
             routes=list(self._routes()),
@@ -143,8 +146,21 @@ class Server:
 
         answer, said = await asyncio.to_thread(made)
         live.ring()
+        if any(change["amendment"]["what"] == "checked" for change in said["changes"]):
+            self._in_background(asyncio.to_thread(self._write_views, live.record))
         status = 200 if answer.trouble is None else 507
         return _json(said, status)
+
+    def _write_views(self, record: Record) -> None:
+        """Write the table of points and the overlay of a photograph that was marked as checked."""
+        folder = record.path.parent
+        with self._writing:
+            _, _, _, state, _ = record.snapshot()
+            try:
+                write_points(state, folder)
+                write_views(self.pictures.photograph(state, folder), state, folder)
+            except DetectError:
+                return  # every edit is in the log; what is drawn from it can be drawn again
 
     def _said(self, record: Record, answer: Answer, after: int | None) -> dict[str, Any]:
         """Return what became of changes, for the page."""
