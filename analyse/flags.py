@@ -7,6 +7,10 @@ from typing import Any
 
 FEW_QUADRATS = 10  # below this only strong departures can be seen: our own limit
 LOW_EXPECTED = 1.0  # mean expected count below which the chi-square p is rough (common practice)
+ROUGH_POINTS = (
+    30  # up to this many, X2 takes so few values that its chi-square p errs; see DEVELOPERS.md
+)
+ROUGH_QUADRATS = 6  # below this many quadrats likewise
 FEW_WHOLE = 6  # whole quadrats below which their VMR says little, as for any test
 LARGE_CLIPPED = 0.5  # share of the study area in quadrats that are not whole: our own limit
 
@@ -28,6 +32,8 @@ FLAGS: dict[str, str] = {
     "few_quadrats": "With only {q} quadrats, only a strong departure from random could be seen.",
     "low_expected": "A quadrat expects only {mean_expected:.2g} points on average:"
     " the chi-square p and the stated power are rough there; the simulated p holds.",
+    "rough_chi_square": "With {n} points in {q} quadrats the chi-square p is rough;"
+    " the simulated p holds.",
     "few_whole": "Whole quadrats: {whole} of {q}. Their VMR says little; the verdict uses all.",
     "clipped_large": "Of the study area, {clipped_percent:.0f} % lies in clipped quadrats;"
     " the verdict takes their areas into account, the VMR of whole quadrats leaves them out.",
@@ -73,6 +79,8 @@ def count_flags(values: Mapping[str, Any]) -> tuple[str, ...]:
     known = {
         "few_quadrats": values["q"] < FEW_QUADRATS,
         "low_expected": values["mean_expected"] < LOW_EXPECTED,
+        "rough_chi_square": values["mean_expected"] >= LOW_EXPECTED
+        and (values["n"] <= ROUGH_POINTS or values["q"] < ROUGH_QUADRATS),
         "few_whole": values["whole"] < min(FEW_WHOLE, values["q"]),
         "clipped_large": values["clipped_percent"] > 100 * LARGE_CLIPPED,
     }

@@ -183,7 +183,7 @@ def test_counts_with_a_known_side_have_area_and_density() -> None:
     assert (found.area, found.unit) == (2400.0, "mm")
     assert found.density is not None
     assert found.density.value == pytest.approx(15 / 24)
-    assert found.flags == ("few_quadrats",)
+    assert found.flags == ("few_quadrats", "rough_chi_square")
 
 
 def test_density_widens_with_the_scale() -> None:

@@ -4,7 +4,9 @@ from __future__ import annotations
 
 import string
 
+import numpy as np
 import pytest
+from scipy import stats
 
 from analyse.flags import FLAGS, count_flags, flag_sentences
 
@@ -52,6 +54,10 @@ def test_flags_in_words() -> None:
         ({"mean_expected": 0.99}, ("low_expected",)),
         ({"mean_expected": 1.0}, ()),
         ({"mean_expected": 0.0, "n": 0, "q": 4, "whole": 4}, ()),
+        ({"n": 30}, ("rough_chi_square",)),
+        ({"n": 31}, ()),
+        ({"n": 20, "mean_expected": 0.5}, ("low_expected",)),
+        ({"q": 5, "whole": 5}, ("few_quadrats", "rough_chi_square")),
         ({"whole": 5}, ("few_whole",)),
         ({"whole": 6}, ()),
         ({"clipped_percent": 50.0}, ()),
@@ -64,3 +70,17 @@ def test_flags_in_words() -> None:
 )
 def test_flags_of_counts(changes: dict[str, float], flags: tuple[str, ...]) -> None:
     assert count_flags(VALUES | changes) == flags
+
+
+@pytest.mark.parametrize(
+    ("n", "q"),
+    [(8, 4), (40, 4), (12, 10), (16, 10), (15, 15), (22, 20), (40, 9), (49, 49), (80, 16)],
+)
+def test_the_chi_square_p_is_called_rough_where_it_errs(n: int, q: int) -> None:
+    """Share of 40,000 random sets of counts it rejects at 5 %: 3.5 to 6.5 %, or it is flagged."""
+    counts = np.random.default_rng(1).multinomial(n, np.full(q, 1 / q), size=40_000)
+    chi2 = ((counts - n / q) ** 2).sum(axis=1) * q / n
+    upper, lower = stats.chi2.sf(chi2, q - 1), stats.chi2.cdf(chi2, q - 1)
+    rate = np.mean(2 * np.minimum(upper, lower) <= 0.05)
+    values = VALUES | {"n": n, "q": q, "whole": q, "mean_expected": n / q}
+    assert 0.035 <= rate <= 0.065 or {"rough_chi_square", "low_expected"} & set(count_flags(values))

@@ -191,7 +191,7 @@ def rates(found: list[dict[str, float]]) -> dict[str, float]:
 
 def show(columns: dict[str, dict[str, float]], title: str) -> None:
     """Print a table with a row per test."""
-    names, wide = list(next(iter(columns.values()))), 27
+    names, wide = list(next(iter(columns.values()))), 30
     print(f"\n{title}\n{'':{wide}}" + "".join(f"{name:>12}" for name in columns))
     for name in names:
         print(f"{name:{wide}}" + "".join(f"{column[name]:12.3f}" for column in columns.values()))
