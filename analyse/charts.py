@@ -72,7 +72,7 @@ def draw_residuals(axes: Axes, findings: Findings) -> DrawnResiduals:
 
 
 def draw_frequencies(axes: Axes, findings: Findings) -> DrawnFrequencies:
-    """Draw how many quadrats hold 0, 1, 2, ... spots, seen and expected at random.
+    """Draw how many quadrats hold 0, 1, 2, ... spots, seen and as both fitted laws expect.
 
     Parameters
     ----------
@@ -102,23 +102,32 @@ def draw_frequencies(axes: Axes, findings: Findings) -> DrawnFrequencies:
     bars = axes.bar(
         at, observed, width=0.8, color=look.OBSERVED, edgecolor=look.INK, lw=0.6, label="seen"
     )
-    line = axes.plot(at, expected, "-", color=look.EXPECTED, lw=1.4, marker="o", ms=4.5, mfc="white",
-              mew=1.3, label="expected at random")  # fmt: skip
+    lines = axes.plot(at, expected, "-", color=look.EXPECTED, lw=1.4, marker="o", ms=4.5,
+              mfc="white", mew=1.3, label="Poisson (random)")  # fmt: skip
+    clumped = _clumped_law(findings, single)
+    if clumped is not None:
+        lines += axes.plot(at, clumped, "--", color=look.SPREAD, lw=1.4, marker="s", ms=4.2,
+                  mfc="white", mew=1.2, label="negative binomial")  # fmt: skip
     every = int(np.ceil(len(labels) / 12))
     axes.set_xticks(at[::every], labels[::every])
     axes.yaxis.set_major_locator(MaxNLocator(5, integer=True))
     axes.set(xlabel="Spots in a quadrat", ylabel="Quadrats", xlim=(-0.7, len(labels) - 0.3))
-    axes.set_ylim(0, max(observed.max(), expected.max()) * 1.22)
-    axes.legend(
-        handles=[bars, *line],
-        frameon=False,
-        loc="upper right",
-        ncols=2,
-        borderaxespad=0,
-        handlelength=1.6,
-    )
+    highest = [shown.max() for shown in (observed, expected, clumped) if shown is not None]
+    axes.set_ylim(0, max(highest) * 1.05)
+    axes.figure.legend(
+        handles=[bars, *lines], loc="outside upper left", ncols=3, frameon=False, fontsize=8.0,
+        handlelength=1.8, columnspacing=1.2, borderaxespad=0.0,
+    )  # fmt: skip
     axes.tick_params(axis="x", length=0)
-    return DrawnFrequencies(labels, observed, expected)
+    return DrawnFrequencies(labels, observed, expected, clumped)
+
+
+def _clumped_law(findings: Findings, single: bool) -> NDArray[np.float64] | None:
+    """Return what the negative binomial law expects, where it is another than the Poisson law."""
+    law, poisson = findings.negative_binomial, findings.poisson
+    if law is None or poisson is None or law.poisson_limit:
+        return None
+    return law.law if single else law.expected_in(poisson.classes)
 
 
 def frame(axes: Axes, bounds: tuple[float, ...], unit: str | None) -> None:

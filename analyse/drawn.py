@@ -40,11 +40,15 @@ class DrawnResiduals:
 
 @dataclass(frozen=True, slots=True, eq=False)
 class DrawnFrequencies:
-    """What a picture of frequencies shows: heights of bars and of the expected marks."""
+    """What a picture of frequencies shows: heights of bars and of both laws' marks.
+
+    `clumped` is the negative binomial law's; None where it is the Poisson law, or not known.
+    """
 
     classes: tuple[str, ...]
     observed: NDArray[np.float64]
     expected: NDArray[np.float64]
+    clumped: NDArray[np.float64] | None = None
 
 
 @dataclass(frozen=True, slots=True, eq=False)

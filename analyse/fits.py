@@ -127,6 +127,21 @@ class NegativeBinomialFit:
         """The classes in words: "0", "1-2", "3 or more"."""
         return class_labels(self.classes)
 
+    def expected_in(self, classes: Sequence[CountClass]) -> NDArray[np.float64]:
+        """Return how many quadrats the fitted law expects in other classes than its own.
+
+        Parameters
+        ----------
+        classes : sequence of (low, high)
+            Both ends included; high None for no end.
+
+        Returns
+        -------
+        ndarray of shape (len(classes),)
+        """
+        shares = [negative_binomial_share(self.mean, self.k, *each) for each in classes]
+        return self.quadrats * np.array(shares)
+
     @property
     def aic(self) -> float:
         """Akaike's criterion of the negative binomial law: 4 - 2 log-likelihood."""

@@ -12,9 +12,11 @@ from analyse.reviewing import review_sentence
 from analyse.unseen import planted_sentence
 from analyse.wording import (
     area_words,
+    clumped_words,
     density_words,
     frequencies_alt,
     interval,
+    law_words,
     marks_words,
     method_words,
     number,
@@ -87,13 +89,27 @@ def page_words(
         "points_alt": _points_alt(findings),
         "residuals_alt": residuals_alt(findings),
         "frequencies_alt": frequencies_alt(findings),
-        "poisson": poisson_words(findings),
+        "poisson": " ".join(filter(None, (poisson_words(findings), law_words(findings)))),
+        "beside": _beside(findings),
         "curves": curves_said(findings),
         "columns": _columns(findings),
         "numbers": number_rows(findings),
         "method": method_words(findings),
         "settings": _settings(findings, sheet),
     }
+
+
+def _beside(findings: Findings) -> list[str]:
+    """Return what is said of gradients, of the order of the counts, and of what would have shown."""
+    said = []
+    if findings.trend is not None:
+        clearest = findings.trend.clearest
+        said.append(findings.trend.sentence if clearest is None else clearest.sentence)
+    if findings.blocks is not None:
+        said.append(findings.blocks.sentence)
+    if findings.shown is not None and findings.verdict == "no departure from random found":
+        said.append(findings.shown.sentence)
+    return [sentence for sentence in said if sentence]
 
 
 def _facts(findings: Findings, sheet: Sheet | None) -> list[tuple[str, str]]:
@@ -106,6 +122,9 @@ def _facts(findings: Findings, sheet: Sheet | None) -> list[tuple[str, str]]:
             facts.append(("Of these", f"{text}; {many['struck']:,} struck"))
     facts.append(("Study area", area_words(findings)))
     facts.append(("Density", density_words(findings)))
+    clumped = clumped_words(findings)
+    if clumped is not None:
+        facts.append(clumped)
     return facts
 
 

@@ -226,16 +226,64 @@ def residuals_alt(findings: Findings) -> str:
 
 def frequencies_alt(findings: Findings) -> str:
     """Return what the picture of frequencies shows, for those who do not see it."""
-    fit = findings.poisson
+    fit, law = findings.poisson, findings.negative_binomial
     if fit is None:
         return ""
+    both = law is not None and not law.poisson_limit
+    expected = "expected at random" + (" and by a negative binomial law" if both else "")
     if len(fit.classes) > _CLASSES_READ:
-        return f"Frequencies of counts in {len(fit.classes)} classes, seen and expected at random."
-    pairs = "; ".join(
-        f"{label}: {seen} and {number(float(expected))}"
-        for label, seen, expected in zip(fit.labels, fit.observed, fit.expected, strict=True)
+        return f"Frequencies of counts in {len(fit.classes)} classes, seen and {expected}."
+    also = (
+        law.expected_in(fit.classes) if law is not None and both else [math.nan] * len(fit.labels)
     )
-    return f"Quadrats by count, seen and expected at random. {pairs}."
+    pairs = "; ".join(
+        f"{label}: {seen} and {number(float(chance))}"
+        + (f" and {number(float(clumped))}" if both else "")
+        for label, seen, chance, clumped in zip(
+            fit.labels, fit.observed, fit.expected, also, strict=True
+        )
+    )
+    return f"Quadrats by count, seen and {expected}. {pairs}."
+
+
+def law_words(findings: Findings) -> str:
+    """Return what the negative binomial law says of the counts, in words; empty where none is fitted."""
+    law = findings.negative_binomial
+    if law is None:
+        return ""
+    if law.poisson_limit:
+        return (
+            "The counts vary no more than chance makes them, so a negative binomial law is no better"
+            f" than the Poisson law (no finite k; {number(law.k_low)} or more)."
+        )
+    return (
+        f"Negative binomial law: k\u00a0{law.k_text}, the smaller the more clumped; of the weight by"
+        f" AIC it has {_weight(law.weight)}, the Poisson law {_weight(1 - law.weight)}."
+    )
+
+
+def _weight(share: float) -> str:
+    """Return a weight in percent that is never said to be all or nothing."""
+    if share >= 0.995:
+        return f"over {percent(0.99)}"
+    return f"under {percent(0.01)}" if share < 0.005 else percent(share)
+
+
+def clumped_words(findings: Findings) -> tuple[str, str] | None:
+    """Return the limits that allow for clumping: of the density, or else of the mean count."""
+    name, unit, limits = (
+        "Density, allowing for clumping",
+        " per\u00a0cm\u00b2",
+        findings.clumped_density,
+    )
+    if limits is None:
+        name, unit, limits = "Mean count, allowing for clumping", "", findings.clumped_mean
+    shown = None if limits is None else limits.profile or limits.bootstrap
+    if shown is None or findings.n == 0:
+        return None
+    high = "no upper limit" if math.isinf(shown.high) else number(shown.high)
+    value = "" if unit else f"{number(shown.value)}, "
+    return name, f"{value}{percent(shown.level)} interval {number(shown.low)} to {high}{unit}"
 
 
 def poisson_words(findings: Findings) -> str:

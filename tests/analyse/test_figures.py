@@ -16,6 +16,7 @@ import shapely
 from matplotlib.colors import to_rgba
 from matplotlib.figure import Figure
 from matplotlib.patches import PathPatch
+from scipy import stats
 
 from analyse.embedding import data_uri, photograph_jpeg, svg_bytes
 from analyse.figures import (
@@ -176,6 +177,46 @@ def test_the_frequencies_are_those_of_the_fit():
     np.testing.assert_array_equal(axes.lines[0].get_ydata(), fit.poisson)
     assert sum(bar.get_height() for bar in axes.patches) == findings.counts.whole.sum()
     assert drawn.classes == tuple(str(k) for k in range(len(fit.frequencies)))
+
+
+def test_both_laws_are_drawn_where_they_differ_and_told_apart_without_colour():
+    rng = np.random.default_rng(1)
+    clumped = analyse_counts(CountTable("bed", rng.negative_binomial(1.0, 0.3, 80)), simulations=99)
+    axes = _axes()
+    drawn = draw_frequencies(axes, clumped)
+    np.testing.assert_array_equal(axes.lines[1].get_ydata(), clumped.negative_binomial.law)
+    np.testing.assert_array_equal(drawn.clumped, clumped.negative_binomial.law)
+    styles = {(line.get_linestyle(), line.get_marker()) for line in axes.lines}
+    assert styles == {("-", "o"), ("--", "s")}
+    legend = [text.get_text() for text in axes.figure.legends[0].get_texts()]
+    assert legend == ["seen", "Poisson (random)", "negative binomial"]
+    for law in (drawn.expected, drawn.clumped):
+        assert axes.get_ylim()[1] > max(law.max(), drawn.observed.max())
+
+
+def test_no_second_law_is_drawn_at_the_poisson_limit():
+    even = analyse_counts(CountTable("bed", np.tile([3, 4, 4, 5], 10)), simulations=99)
+    assert even.negative_binomial.poisson_limit
+    axes = _axes()
+    assert draw_frequencies(axes, even).clumped is None
+    assert len(axes.lines) == 1
+
+
+def test_both_laws_are_drawn_in_pooled_classes_too():
+    rng = np.random.default_rng(1)
+    wide = analyse_counts(CountTable("bed", rng.negative_binomial(2.0, 0.05, 200)), simulations=99)
+    drawn = draw_frequencies(_axes(), wide)
+    assert drawn.classes == wide.poisson.labels
+    np.testing.assert_allclose(drawn.clumped.sum(), 200)
+    low, high = wide.poisson.classes[0]
+    within = stats.nbinom.cdf(high, wide.negative_binomial.k, _share(wide)) if low == 0 else np.nan
+    assert drawn.clumped[0] == pytest.approx(200 * within, rel=1e-6)
+
+
+def _share(findings):
+    """scipy's second parameter of the law."""
+    fit = findings.negative_binomial
+    return fit.k / (fit.k + fit.mean)
 
 
 def test_high_counts_are_drawn_in_the_pooled_classes():

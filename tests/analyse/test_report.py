@@ -3,6 +3,9 @@
 from __future__ import annotations
 
 import base64
+import contextlib
+import csv
+import io
 import pickle
 import re
 from dataclasses import replace
@@ -11,10 +14,15 @@ from importlib.resources import files
 
 import numpy as np
 import pytest
+import shapely
 
+from analyse.analysis import analyse_table, write_results
 from analyse.curve_charts import LOOKS
 from analyse.findings import analyse_counts, analyse_points
-from analyse.pattern import CountTable, pattern_from_sheet
+from analyse.grid_options import GridOptions
+from analyse.lines import show_findings
+from analyse.pattern import CountTable, Pattern, pattern_from_sheet
+from analyse.plan import Trial
 from analyse.report import (
     RenderedPage,
     ReportPage,
@@ -26,9 +34,11 @@ from analyse.report import (
 from analyse.verdict import p_text
 from analyse.wording import (
     NOTHING,
+    clumped_words,
     density_words,
     frequencies_alt,
     interval,
+    law_words,
     method_words,
     number,
     poisson_words,
@@ -290,16 +300,99 @@ def test_a_page_in_pixels_says_so():
     assert " px, a side that follows" in text
 
 
-def test_randomness_is_never_claimed():
-    sheet = sheet_of(scattered(80, seed=11), matrix=TILT)
-    findings = findings_of(sheet)
-    assert findings.verdict == "no departure from random found"
-    text = _Page(_html(render_page(findings, sheet, photograph()))).text.lower()
-    text = text[: text.index("references")]  # the titles of others say what they say
-    for claim in ("is random", "are random", "randomly distributed", "random pattern"):
-        assert claim not in text
-    assert "no departure from random found" in text
-    assert "is no proof of randomness" in text
+CLAIMS = ("is random", "are random", "be random", "randomly distributed", "random pattern")
+CLAIMS += ("pointwise",)
+
+
+@pytest.fixture(scope="module")
+def outputs(tmp_path_factory):
+    """Everything that is written and shown of patterns of every kind, in lower case, by name."""
+    rng = np.random.default_rng(11)
+    folder = tmp_path_factory.mktemp("out")
+    patterns = {
+        "scattered": rng.uniform(0, 100, (90, 2)),
+        "clumped": np.repeat(rng.uniform(5, 95, (15, 2)), 6, axis=0) + rng.normal(0, 1, (90, 2)),
+        "even": np.stack(np.meshgrid(np.arange(5, 100, 10), np.arange(5, 100, 10)), -1).reshape(
+            -1, 2
+        ),
+        "sloping": 100 * rng.random((120, 2)) ** [0.4, 1.0],
+        "few": rng.uniform(0, 100, (4, 2)),
+        "none": np.empty((0, 2)),
+    }
+    square, trial, grid = shapely.box(0, 0, 100, 100), Trial(simulations=99), GridOptions()
+    tables = [Pattern.of(points, square, name=name) for name, points in patterns.items()]
+    counts = [CountTable("grid", rng.poisson(3, 40), 5, 8), CountTable("list", np.arange(9))]
+    results = [analyse_table(table, grid=grid, trial=trial) for table in (*tables, *counts)]
+    write_results(results, [], folder, trial)
+    texts = {path.name: path.read_text(encoding="utf-8") for path in folder.iterdir()}
+    shown = io.StringIO()
+    with contextlib.redirect_stdout(shown), contextlib.redirect_stderr(shown):
+        show_findings([result.findings for result in results])
+    page = _Page(texts.pop("report.html"))
+    words = page.text[: page.text.index("References")]  # the titles of others say what they say
+    alts = " ".join(image["alt"] or "" for image in page.all("img"))
+    found = {result.findings.verdict for result in results}
+    assert len(found) == 4
+    return {"terminal": shown.getvalue(), "report": words + alts} | texts
+
+
+@pytest.mark.parametrize(
+    "name",
+    ["terminal", "report", "summary.csv", "tests.csv", "quadrats.csv", "curves.csv"],
+)
+def test_randomness_is_never_claimed_nor_a_pointwise_band_drawn(outputs, name):
+    text = re.sub(r"\s+", " ", outputs[name]).lower()
+    assert [claim for claim in CLAIMS if claim in text] == []
+    if name in ("terminal", "report", "summary.csv"):
+        assert "no departure from random found" in text
+    if name == "report":
+        assert "is no proof of randomness" in text
+        assert "global band" in text
+
+
+def test_the_search_for_claims_can_fail():
+    assert any(claim in "the pattern is random" for claim in CLAIMS)
+
+
+def test_a_verdict_is_told_in_three_sentences_at_most(outputs):
+    rows = list(csv.DictReader(io.StringIO(outputs["summary.csv"])))
+    assert len(rows) == 8
+    for row in rows:
+        assert 1 <= len(re.findall(r"\.(?= [A-Z]|$)", row["sentence"])) <= 3, row["sentence"]
+
+
+def test_what_is_said_beside_the_verdict_is_in_the_report():
+    points = 100 * np.random.default_rng(11).random((120, 2)) ** [0.4, 1.0]
+    findings = analyse_points(points, (0, 0, 100, 100), name="sloping", simulations=99)
+    text = _Page(_html(render_page(findings))).text
+    assert findings.trend.clearest.sentence in text
+    assert "The density rises towards the right" in text
+    assert "At which distance?" in text
+    assert "p beyond the gradient" in text
+    assert "Density, allowing for clumping 95 % interval" in text.replace("\u00a0", " ")
+    grid = CountTable("grid", np.random.default_rng(1).poisson(3, 40), 5, 8)
+    counts = analyse_counts(grid, simulations=99)
+    text = _Page(_html(render_page(counts))).text
+    assert counts.blocks.sentence in text
+    assert counts.shown.sentence in text
+    assert "Mean count, allowing for clumping" in text
+    for word in ("At which distance?", "neighbour", "Ripley"):
+        assert word not in text
+
+
+def test_words_for_both_laws():
+    rng = np.random.default_rng(1)
+    clumped = analyse_counts(CountTable("bed", rng.negative_binomial(1.0, 0.3, 80)), simulations=99)
+    said = law_words(clumped).replace("\u00a0", " ")
+    fit = clumped.negative_binomial
+    assert said.startswith(f"Negative binomial law: k {fit.k_text}, the smaller the more clumped;")
+    assert "it has over 99 %, the Poisson law under 1 %." in said
+    assert "seen and expected at random and by a negative binomial law" in frequencies_alt(clumped)
+    even = analyse_counts(CountTable("bed", np.tile([3, 4, 4, 5], 10)), simulations=99)
+    assert "no better than the Poisson law (no finite k;" in law_words(even)
+    nothing = analyse_counts(CountTable("bed", np.zeros(9, dtype=int)), simulations=99)
+    assert law_words(nothing) == ""
+    assert clumped_words(nothing) is None
 
 
 def test_failures_are_listed_with_their_reasons(rendered):
