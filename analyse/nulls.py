@@ -12,10 +12,6 @@ from numpy.typing import NDArray
 from shapely.geometry.base import BaseGeometry
 
 from analyse.columns import hold_columns
-from analyse.count_chance import SimulatedTest as SimulatedTest
-from analyse.count_chance import least_chi2 as least_chi2
-from analyse.count_chance import simulated_chi2 as simulated_chi2
-from analyse.count_chance import simulated_p as simulated_p
 
 _POINTS_AT_ONCE = 1_000_000
 _COARSEST, _FINEST = 6, 11  # halvings of the bounding box

@@ -6,9 +6,9 @@ import numpy as np
 import pytest
 import shapely
 
+from analyse.count_chance import SimulatedTest
 from analyse.departures import Departure
 from analyse.gradient import gradient_remark
-from analyse.nulls import SimulatedTest
 from analyse.trend import fit_trend
 from analyse.trends import Trends
 

@@ -29,7 +29,7 @@ from analyse.power import (
 )
 from analyse.quadrats import count_in_quadrats, lay_grid
 from analyse.verdict import detectable as as_before
-from tests.analyse.test_nulls import RAGGED
+from tests.analyse.areas import RAGGED
 from tests.patterns import SQUARE, apart, thomas
 
 

@@ -29,7 +29,7 @@ from analyse.quadrature import quadrature
 from analyse.trend import Trend, TrendModel, TrendRandomness, fit_trend
 from analyse.trends import pattern_trends
 from tests import patterns
-from tests.analyse.test_nulls import AREAS, RAGGED
+from tests.analyse.areas import AREAS, RAGGED
 
 SQUARE = shapely.box(0, 0, 100, 100)
 

@@ -24,7 +24,7 @@ sys.path.insert(0, str(Path(__file__).parents[2]))
 
 from analyse.nulls import random_points
 from analyse.trend import TrendModel
-from tests.analyse.test_nulls import AREAS
+from tests.analyse.areas import AREAS
 from tests.patterns import thomas
 
 SORTS = ((0, 0.0), (4, 0.02), (4, 0.05), (8, 0.05), (4, 0.1))
