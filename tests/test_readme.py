@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import doctest
 import re
 import shlex
 import tomllib
@@ -81,6 +82,21 @@ def test_the_lines_that_strike_place_and_check_are_such(tmp_path: Path) -> None:
     assert (struck.what, struck.spot) == ("strike", "12")
     assert (placed.what, placed.x, placed.y, placed.radius) == ("place", 640.5, 480, 12)
     assert checked.what == "checked"
+
+
+def examples() -> list[str]:
+    """Blocks of Python, as a reader would type them."""
+    return re.findall(r"```python\n(.*?)```", README, flags=re.DOTALL)
+
+
+def test_the_python_shown_gives_what_is_shown() -> None:
+    assert len(examples()) == 1
+    flags = doctest.ELLIPSIS | doctest.NORMALIZE_WHITESPACE
+    runner, parser = doctest.DocTestRunner(optionflags=flags), doctest.DocTestParser()
+    for k, block in enumerate(examples()):
+        done = runner.run(parser.get_doctest(block, {}, f"README {k}", "README.md", 0))
+        assert done.failed == 0
+        assert done.attempted >= 5
 
 
 def test_keys_of_recipes_named_in_the_text_exist() -> None:
