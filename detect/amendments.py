@@ -175,7 +175,19 @@ def opened_log(path: Path) -> Iterator[FileIO]:
     except OSError as trouble:
         raise _not_written(path, trouble) from trouble
     with file, locked(file):
+        if not _is_still(file, path):  # put right by hand in the very moment
+            raise FolderNotWritable(
+                f"{path.name} was replaced while it was written to; nothing was changed. Try again."
+            )
         yield file
+
+
+def _is_still(file: FileIO, path: Path) -> bool:
+    """Whether a path still names the file that was opened."""
+    try:
+        return os.path.samestat(os.fstat(file.fileno()), path.stat())
+    except OSError:
+        return False
 
 
 def append_to(file: FileIO, path: Path, amendment: Amendment) -> int:
@@ -269,7 +281,7 @@ def _not_written(path: Path, trouble: OSError) -> FolderNotWritable:
     """Say that a change could not be written, and why."""
     reason = (trouble.strerror or str(trouble)).lower()
     return FolderNotWritable(
-        f"{path.name} cannot be written to {path.parent} ({reason}); nothing was changed."
+        f"{path.name} cannot be written to {path.parent} ({reason}); this change is not saved."
         " Make room, or make the folder writable."
     )
 

@@ -1,13 +1,16 @@
-"""What a request says, read with suspicion."""
+"""What a request says, read with suspicion, and the answer to a wrong one."""
 
 from __future__ import annotations
 
 import math
 from typing import Any
 
+from starlette.exceptions import HTTPException
 from starlette.requests import Request
+from starlette.responses import Response
 
 from detect.amendments import load_json
+from detect.review.guard import error
 from detect.review.record import MOST_AMENDMENTS
 
 
@@ -59,3 +62,24 @@ def number_within(request: Request, name: str, low: float, high: float) -> float
     if not low <= value <= high:
         raise Wrong(400, "request", f"{name} must be a number from {low:g} to {high:g}.")
     return value
+
+
+async def tell_wrong(_request: Request, trouble: Exception) -> Response:
+    """Answer a wrong request."""
+    assert isinstance(trouble, Wrong)
+    return error(trouble.status, trouble.code, str(trouble))
+
+
+async def tell_missing(_request: Request, trouble: Exception) -> Response:
+    """Answer a request for what there is not, or in a way that is not meant."""
+    assert isinstance(trouble, HTTPException)
+    if trouble.status_code == 405:
+        return error(405, "method", "This is not asked for in that way.")
+    return error(trouble.status_code, "not_found", "There is nothing of that name.")
+
+
+async def tell_bug(_request: Request, _trouble: Exception) -> Response:
+    """Answer where the program is at fault; the traceback goes to the terminal."""
+    return error(
+        500, "bug", "The program made a mistake; see the terminal. Nothing shown as saved is lost."
+    )

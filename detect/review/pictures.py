@@ -6,9 +6,12 @@ import hashlib
 import threading
 from collections import OrderedDict
 from collections.abc import Callable
+from contextlib import AbstractContextManager, nullcontext
 from dataclasses import dataclass
 from pathlib import Path
-from typing import TYPE_CHECKING, Generic, TypeVar
+from typing import TYPE_CHECKING, Any, Generic, TypeVar
+
+import numpy as np
 
 from detect.containers import read_claim
 from detect.errors import PhotographFailed, PhotographUnreadable
@@ -78,6 +81,11 @@ class Pictures:
     def __init__(self) -> None:
         self._photographs: _Few[Photograph] = _Few()
         self._sent: _Few[Sent] = _Few()
+        self._reading = threading.Lock()
+
+    def reading(self, photograph: Photograph) -> AbstractContextManager[Any]:
+        """Return what is to be held while pixels are read: of a raster on disk one at a time may."""
+        return nullcontext() if isinstance(photograph.stored, np.ndarray) else self._reading
 
     def photograph(self, sheet: Sheet, folder: Path) -> Photograph:
         """Return the photograph of a sheet, upright.
@@ -105,7 +113,8 @@ class Pictures:
         if kind is not None:
             return Sent(data, kind)
         photograph = self.photograph(sheet, folder)
-        stored = photograph.stored[0 : photograph.height, 0 : photograph.width]
+        with self.reading(photograph):
+            stored = photograph.stored[0 : photograph.height, 0 : photograph.width]
         return Sent(jpeg_bytes(in_8_bits(stored)), "image/jpeg")
 
 

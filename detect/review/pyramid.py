@@ -8,7 +8,7 @@ import re
 import shutil
 import threading
 from collections.abc import Callable, Iterator
-from contextlib import suppress
+from contextlib import AbstractContextManager, suppress
 from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
@@ -96,6 +96,8 @@ class Pyramid:
         In memory, or a raster on disk.
     folder : Path or None
         Where tiles are kept; None for the user's cache.
+    reading : lock or None
+        Held while pixels are read, which of a raster on disk one thread at a time may do.
 
     Notes
     -----
@@ -104,13 +106,19 @@ class Pyramid:
     row, by `make`: to read it anew for each would take for ever.
     """
 
-    def __init__(self, photograph: Photograph, folder: Path | None = None) -> None:
+    def __init__(
+        self,
+        photograph: Photograph,
+        folder: Path | None = None,
+        *,
+        reading: AbstractContextManager[Any] | None = None,
+    ) -> None:
         self.photograph = photograph
         self.levels = levels(photograph.width, photograph.height)
         home = cache_folder() / "tiles" if folder is None else folder
         identity = _SHA256.fullmatch(photograph.sha256)
         self._folder = home / f"{identity.group() if identity else 'unknown'}-{_VERSION}"
-        self._lock = threading.Lock()
+        self._lock, self._reading = threading.Lock(), reading or threading.Lock()
         self._held: dict[tuple[int, int, int], bytes] = {}  # where nothing can be kept on disk
         self.total = sum(each.columns * each.rows for each in self.levels)
         stored = photograph.stored
@@ -156,9 +164,9 @@ class Pyramid:
         left, top = column * TILE * step, row * TILE * step
         right = min(self.photograph.width, left + TILE * step)
         bottom = min(self.photograph.height, top + TILE * step)
-        picture = in_8_bits(
-            self.photograph.reduced(shrink=1.0 / step, box=(left, top, right, bottom), quick=True)
-        )
+        box = (left, top, right, bottom)
+        with self._reading:
+            picture = in_8_bits(self.photograph.reduced(shrink=1.0 / step, box=box, quick=True))
         wanted = (math.ceil((right - left) / step), math.ceil((bottom - top) / step))
         if picture.shape[1::-1] != wanted:
             picture = cv2.resize(picture, wanted, interpolation=cv2.INTER_AREA)

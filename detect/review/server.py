@@ -22,7 +22,15 @@ from detect.amendment import SCHEMA
 from detect.errors import DetectError
 from detect.outcome import write_points, write_views
 from detect.requests import tool_version
-from detect.review.asking import Wrong, asked_changes, number_within, whole_number
+from detect.review.asking import (
+    Wrong,
+    asked_changes,
+    number_within,
+    tell_bug,
+    tell_missing,
+    tell_wrong,
+    whole_number,
+)
 from detect.review.fit import fit_circle, usual_radius
 from detect.review.guard import MOST_BYTES, error
 from detect.review.live import Live, Panel
@@ -66,10 +74,10 @@ class Server:
         self.app = Starlette(
             routes=list(self._routes()),
             exception_handlers={
-                Wrong: _wrong,
+                Wrong: tell_wrong,
                 DetectError: self._trouble,
-                HTTPException: _not_found,
-                Exception: _bug,
+                HTTPException: tell_missing,
+                Exception: tell_bug,
             },
         )
         self.app.router.redirect_slashes = False
@@ -158,7 +166,9 @@ class Server:
             _, _, _, state, _ = record.snapshot()
             try:
                 write_points(state, folder)
-                write_views(self.pictures.photograph(state, folder), state, folder)
+                photograph = self.pictures.photograph(state, folder)
+                with self.pictures.reading(photograph):
+                    write_views(photograph, state, folder)
             except DetectError:
                 return  # every edit is in the log; what is drawn from it can be drawn again
 
@@ -209,7 +219,8 @@ class Server:
 
         def fitted() -> dict[str, Any]:
             photograph = self.pictures.photograph(state, record.path.parent)
-            found = fit_circle(photograph, x, y, usual)
+            with self.pictures.reading(photograph):
+                found = fit_circle(photograph, x, y, usual)
             return {"x": found.x, "y": found.y, "radius": found.radius, "fitted": found.fitted}
 
         return _json(await asyncio.to_thread(fitted))
@@ -263,7 +274,9 @@ class Server:
         photograph = self.pictures.photograph(sheet, record.path.parent)
         known = self._pyramids.get(record.id)
         if known is None or known.photograph is not photograph:
-            known = self._pyramids[record.id] = Pyramid(photograph)
+            known = self._pyramids[record.id] = Pyramid(
+                photograph, reading=self.pictures.reading(photograph)
+            )
             for other in list(self._pyramids)[:-2]:
                 del self._pyramids[other]
         return known
@@ -327,24 +340,3 @@ def _json(values: Any, status: int = 200) -> Response:
     text = json.dumps(values, ensure_ascii=True, allow_nan=False, separators=(",", ":"))
     headers = {"content-type": "application/json"} | _NOT_STORED
     return Response(text, status, headers=headers)
-
-
-async def _wrong(_request: Request, trouble: Exception) -> Response:
-    """Answer a wrong request."""
-    assert isinstance(trouble, Wrong)
-    return error(trouble.status, trouble.code, str(trouble))
-
-
-async def _not_found(_request: Request, trouble: Exception) -> Response:
-    """Answer a request for what there is not, or in a way that is not meant."""
-    assert isinstance(trouble, HTTPException)
-    if trouble.status_code == 405:
-        return error(405, "method", "This is not asked for in that way.")
-    return error(trouble.status_code, "not_found", "There is nothing of that name.")
-
-
-async def _bug(_request: Request, _trouble: Exception) -> Response:
-    """Answer where the program is at fault; the traceback goes to the terminal."""
-    return error(
-        500, "bug", "The program made a mistake; see the terminal. Nothing shown as saved is lost."
-    )
