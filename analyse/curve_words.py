@@ -114,7 +114,9 @@ def _drawn(seen: Envelope, unit: str) -> dict[str, str]:
     return {
         "name": seen.name,
         "title": _TITLES[seen.name],
-        "said": f"{said} {p_text(seen.p)}.".replace(" p ", " p\u00a0"),
+        "said": f"{said} {p_text(seen.p)}.".replace("p = ", "p\u00a0=\u00a0").replace(
+            "p < ", "p\u00a0<\u00a0"
+        ),
         "alt": curve_alt(seen, unit),
     }
 
