@@ -12,8 +12,8 @@ from analyse.analysis import Analysed, analyse_sheet, analyse_table
 from analyse.count_table import read_counts
 from analyse.errors import AnalyseError
 from analyse.grid_options import GridOptions
-from analyse.pattern import read_points
 from analyse.plan import Trial
+from analyse.point_table import read_points
 from analyse.region import TableUnit, area_from_option
 from detect.amendments import amendments_path, read_amendments
 from detect.batch import Each

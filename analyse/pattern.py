@@ -4,8 +4,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Sequence
-from dataclasses import dataclass
-from pathlib import Path
+from dataclasses import dataclass, field
 from typing import Literal, get_args
 
 import numpy as np
@@ -15,10 +14,8 @@ from shapely.geometry.base import BaseGeometry
 
 from analyse.count_table import CountTable as CountTable
 from analyse.count_table import read_counts as read_counts
-from analyse.errors import TableWrong
-from analyse.region import MM_PER_UNIT, TableUnit, check_area, rectangle
 from analyse.region import area_from_option as area_from_option
-from analyse.rows import read_rows, real_in
+from analyse.region import check_area, rectangle
 from detect.amended import current_state
 from detect.changes import Changes, changes_of
 from detect.planted import Planted
@@ -79,6 +76,10 @@ class Pattern:
         what is no photograph.
     width : float
         Usual width of a spot, the median of their diameters, in `unit`; NaN where not known.
+    radius : ndarray of shape (n,)
+        Radius of each point in `unit`, NaN where not known; an empty one stands for none known.
+    sought : str
+        What a detector looked for: colonies, seedlings, lesions or spots; empty where none did.
 
     Raises
     ------
@@ -104,12 +105,20 @@ class Pattern:
     dish_notes: tuple[str, ...] = ()
     changes: Changes | None = None
     width: float = math.nan
+    radius: NDArray[np.float64] = field(default_factory=lambda: np.empty(0))
+    sought: str = ""
 
     def __post_init__(self) -> None:
-        points = np.array(self.points, dtype=np.float64).reshape(-1, 2)
-        doubt = np.array(self.doubt, dtype=np.float64).reshape(-1)
-        if doubt.size != len(points):
-            raise ValueError(f"doubt has {doubt.size} values for {len(points)} points")
+        points: NDArray[np.float64] = np.array(self.points, dtype=np.float64).reshape(-1, 2)
+        doubt: NDArray[np.float64] = np.array(self.doubt, dtype=np.float64).reshape(-1)
+        radius: NDArray[np.float64] = np.array(self.radius, dtype=np.float64).reshape(-1)
+        if not radius.size:
+            radius = np.full(len(points), math.nan)
+        for name, column in (("doubt", doubt), ("radius", radius)):
+            if column.shape != (len(points),):
+                raise ValueError(f"{name} has {column.size} values for {len(points)} points")
+        if not ((radius > 0) | np.isnan(radius)).all():
+            raise ValueError("a radius is not above 0")
         if not np.isfinite(points).all():
             raise ValueError("a point is not finite")
         if not ((doubt >= 0) & (doubt <= 1)).all():
@@ -121,7 +130,7 @@ class Pattern:
                 f"relative_uncertainty must be 0 or more, not {self.relative_uncertainty}"
             )
         check_area(self.area)
-        for name, column in (("points", points), ("doubt", doubt)):
+        for name, column in (("points", points), ("doubt", doubt), ("radius", radius)):
             column.setflags(write=False)
             object.__setattr__(self, name, column)
 
@@ -142,6 +151,8 @@ class Pattern:
         *,
         name: str = "points",
         unit: Unit = "mm",
+        radius: ArrayLike | None = None,
+        doubt: ArrayLike | None = None,
     ) -> Pattern:
         """Return the pattern of points in an area; points outside are left out and counted.
 
@@ -155,6 +166,10 @@ class Pattern:
             What the pattern is called in tables and reports.
         unit : {"mm", "px"}
             Unit of points and area.
+        radius : array_like of shape (n,), optional
+            Radius of each point in `unit`, NaN where not known.
+        doubt : array_like of shape (n,), optional
+            Probability, 0..1, that a point is no real object; 0 where not said.
 
         Returns
         -------
@@ -165,7 +180,7 @@ class Pattern:
         AreaWrong
             If the area is unusable.
         ValueError
-            If a point is not finite.
+            If a point is not finite, or a column does not fit.
 
         Examples
         --------
@@ -183,9 +198,29 @@ class Pattern:
         inside = np.asarray(shapely.intersects_xy(region, xy[:, 0], xy[:, 1]))
         outside = int((~inside).sum())
         kept = xy[inside]
-        flags = _point_flags(kept, outside, np.zeros(len(kept)))
+        sizes, doubts = (
+            np.full(len(xy), missing) if given is None else np.asarray(given, dtype=np.float64)
+            for given, missing in ((radius, math.nan), (doubt, 0.0))
+        )
+        for column, values in (("radius", sizes), ("doubt", doubts)):
+            if values.shape != (len(xy),):
+                raise ValueError(f"{column} has {values.size} values for {len(xy)} points")
+        sizes, doubts = sizes[inside], doubts[inside]
+        known = sizes[np.isfinite(sizes)]
         return cls(
-            name, kept, region, unit, kind, 0.0, np.zeros(len(kept)), True, flags, None, outside
+            name,
+            kept,
+            region,
+            unit,
+            kind,
+            0.0,
+            doubts,
+            True,
+            _point_flags(kept, outside, doubts),
+            None,
+            outside,
+            width=2 * float(np.median(known)) if known.size else math.nan,
+            radius=sizes,
         )
 
     @property
@@ -243,11 +278,11 @@ def pattern_of_state(sheet: Sheet, changes: Changes) -> Pattern:
     spots = sheet.spots.where(sheet.spots.counted)
     inside = sheet.area.contains(spots.centres)
     outside, spots = int((~inside).sum()), spots.where(inside)
-    points, area, diameters = spots.centres, sheet.area.polygon, 2 * spots.radius
+    points, area, radii = spots.centres, sheet.area.polygon, spots.radius
     if sheet.scale is not None:
         if sheet.scale.lens is not None:
             area = shapely.segmentize(area, sheet.photograph.width / _PIECES)
-        diameters = diameters * sheet.scale.mm_per_px(points)
+        radii = radii * sheet.scale.mm_per_px(points)
         points, area = sheet.scale.to_mm(points), shapely.transform(area, sheet.scale.to_mm)
     flags = _point_flags(points, outside, spots.doubt)
     flags += _scale_flags(sheet.scale)
@@ -270,44 +305,10 @@ def pattern_of_state(sheet: Sheet, changes: Changes) -> Pattern:
         _blind(sheet),
         dish_notes,
         changes,
-        float(np.median(diameters)) if len(diameters) else math.nan,
+        2 * float(np.median(radii)) if len(radii) else math.nan,
+        radii,
+        str(sheet.settings.get("kind", "")),
     )
-
-
-def read_points(path: Path, *, area: BaseGeometry, unit: TableUnit = "mm") -> Pattern:
-    """Read a table of points with the columns x and y.
-
-    Parameters
-    ----------
-    path : Path
-        A CSV file with a header; other columns and lines that start with # are passed over.
-    area : shapely geometry
-        Study area in millimetres (see `area_from_option`).
-    unit : {"mm", "cm", "m"}
-        Unit of the columns.
-
-    Returns
-    -------
-    Pattern
-        In millimetres; points outside the area are left out and counted.
-
-    Raises
-    ------
-    TableWrong
-        If a column is missing or a cell holds no finite number.
-    """
-    header, *body = read_rows(path)
-    names = [cell.lower() for cell in header.cells]
-    missing = [name for name in ("x", "y") if name not in names]
-    if missing:
-        raise TableWrong(
-            f"{path.name} has no column {missing[0]!r} (its columns: {', '.join(header.cells)});"
-            " name the columns x and y in the first line."
-        )
-    at = {name: names.index(name) for name in ("x", "y")}
-    points = [[real_in(row, at[name], name) for name in ("x", "y")] for row in body]
-    xy = np.array(points, dtype=np.float64).reshape(-1, 2) * MM_PER_UNIT[unit]
-    return Pattern.of(xy, area, name=path.name)
 
 
 def _scale_flags(scale: Scale | None) -> tuple[str, ...]:

@@ -14,7 +14,8 @@ import shapely
 from analyse.errors import GridWrong
 from analyse.findings import Findings, analyse_counts, analyse_pattern, analyse_points, stream
 from analyse.nulls import random_points
-from analyse.pattern import Circle, CountTable, Pattern, read_counts, read_points
+from analyse.pattern import Circle, CountTable, Pattern, read_counts
+from analyse.point_table import read_points
 from analyse.quadrats import GridOptions
 from analyse.quick import quick_test
 from detect.errors import OptionWrong

@@ -12,7 +12,8 @@ import shapely
 
 from analyse.errors import TableWrong
 from analyse.findings import analyse_pattern
-from analyse.pattern import Circle, Pattern, pattern_from_sheet, read_points
+from analyse.pattern import Circle, Pattern, pattern_from_sheet
+from analyse.point_table import read_points
 from detect.area import StudyArea
 from detect.errors import AreaWrong
 from detect.scale import Scale
