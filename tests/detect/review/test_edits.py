@@ -323,6 +323,40 @@ def test_html_in_names_and_notes_stays_text(tmp_path: Path) -> None:
     assert state["spots"]["id"][-1] == evil
 
 
+@pytest.mark.parametrize("name", ["<b>x.png", "a b%2f..png", "caf\u00e9 \u00b5.png", "'; x.png"])
+def test_any_file_name_is_told_as_it_is_and_leads_nowhere(tmp_path: Path, name: str) -> None:
+    page = Page(tmp_path, [write_sheet_of(tmp_path, name)])
+    assert page.get("api/queue").json()["sheets"][0]["photograph"] == name
+    assert page.state()["photograph"] == name
+    assert page.get(page.state()["picture"]["url"]).status_code == 200
+    assert page.amend(place("e1", "n1")).json()["acknowledged"] == ["e1"]
+    assert (tmp_path / f"{Path(name).stem}.amendments.jsonl").exists()
+
+
+def test_a_log_replaced_in_the_moment_of_writing_gets_the_edit_at_the_next_try(
+    page: Page, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    import detect.amendments
+    from detect.locked import locked
+
+    page.amend(place("e1", "n1"))
+    beside = page.log.with_suffix(".new")
+    beside.write_bytes(page.log.read_bytes())
+
+    def replaced(file: Any) -> Any:
+        if beside.exists():
+            beside.replace(page.log)
+        return locked(file)
+
+    monkeypatch.setattr(detect.amendments, "locked", replaced)
+    answer = page.amend(place("e2", "n2"))
+    assert answer.status_code == 507
+    assert "was replaced while it was written to" in answer.json()["error"]["message"]
+    assert [line["id"] for line in page.lines()] == ["e1"]
+    assert page.amend(place("e2", "n2")).json()["acknowledged"] == ["e2"]
+    assert [line["id"] for line in page.lines()] == ["e1", "e2"]
+
+
 def test_two_servers_on_one_folder_see_each_others_edits(tmp_path: Path) -> None:
     one = review_of(tmp_path)
     other = Page(tmp_path, one.sheets)
