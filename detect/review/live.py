@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import asyncio
 import json
+import traceback
 from collections.abc import AsyncIterator, Callable
 from concurrent.futures import Executor
 from typing import TYPE_CHECKING, Any
@@ -20,6 +21,9 @@ Panel = Callable[[Sheet, Sheet, Changes], dict[str, Any]]
 """The sheet as found, as it is now, and what was changed -> what the page shows of its statistics."""
 
 POLL_S = 0.4  # how often the log is looked at for what others have added
+_NO_STATISTICS = (
+    "The statistics could not be computed (see the terminal); edits are saved all the same."
+)
 _STILL_S = 10.0  # after so long without news a stream says that it is alive
 
 
@@ -67,6 +71,7 @@ class Live:
         await asyncio.to_thread(self.record.refresh)
         while not self.is_newest(self._panel):
             await asyncio.shield(self.compute())
+            await asyncio.to_thread(self.record.refresh)
         assert self._panel is not None
         return self._panel
 
@@ -74,17 +79,23 @@ class Live:
         """Compute until the statistics are those of the newest revision."""
         loop = asyncio.get_running_loop()
         while not self.is_newest(self._panel):
-            self._panel = await loop.run_in_executor(self._pool, self._newest_panel)
+            try:
+                self._panel = await loop.run_in_executor(self._pool, self._newest_panel)
+            except DetectError:
+                return  # the sheet or its log cannot be read, which each stream tells
             self.ring()
 
     def _newest_panel(self) -> dict[str, Any]:
         """Compute the statistics of a snapshot, and say of which revision it is."""
         revision, generation, found, now, changes = self.record.snapshot()
-        return {
-            "revision": revision,
-            "generation": generation,
-            **self._panel_of(found, now, changes),
-        }
+        try:
+            panel = self._panel_of(found, now, changes)
+        except Exception:
+            # A bug in statistics must not stop the review, nor be tried again without end.
+            traceback.print_exc()
+            panel = dict.fromkeys(("now", "before", "said", "frequencies", "quadrats"))
+            panel |= {"trouble": _NO_STATISTICS, "verdict_changed": False}
+        return {"revision": revision, "generation": generation, **panel}
 
     async def stream(self, after: int, generation: str | None) -> AsyncIterator[str]:
         """Yield what happens from a revision on, as server-sent events.

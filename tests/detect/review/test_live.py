@@ -134,6 +134,25 @@ def test_the_answer_to_an_edit_does_not_wait_for_statistics(tmp_path: Path) -> N
     assert [each.id for each in read_amendments(page.log)] == ["e1"]
 
 
+def test_a_bug_in_statistics_does_not_stop_the_review(tmp_path: Path, capsys: Any) -> None:
+    def broken(found: Sheet, now: Sheet, changes: Changes) -> dict[str, Any]:
+        raise ZeroDivisionError
+
+    page = review_of(tmp_path, panel=broken)
+    told = page.get(f"api/sheets/{page.sheet}/panel").json()
+    assert told["now"] is None
+    assert "could not be computed" in told["trouble"]
+    assert "ZeroDivisionError" in capsys.readouterr().err
+    assert page.amend(place("e1", "n1")).json()["acknowledged"] == ["e1"]
+
+
+def test_statistics_of_a_log_that_cannot_be_read_are_refused(tmp_path: Path) -> None:
+    page = review_of(tmp_path, panel=counted)
+    page.log.write_text("{\n")
+    answer = page.get(f"api/sheets/{page.sheet}/panel")
+    assert (answer.status_code, answer.json()["error"]["code"]) == (409, "log_corrupt")
+
+
 def test_the_queue_tells_how_far_each_photograph_is(tmp_path: Path) -> None:
     page = review_of(tmp_path, "a.png", "b.png", "c.png")
     page.amend(
