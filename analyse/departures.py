@@ -79,6 +79,15 @@ def judged_together(envelopes: Mapping[str, Envelope]) -> HolmFamily:
     ----------
     Holm, S. (1979). A simple sequentially rejective multiple test procedure. Scandinavian Journal
     of Statistics 6, 65-70.
+
+    Examples
+    --------
+    >>> from analyse.global_tests import global_tests
+    >>> from analyse.pattern import Pattern
+    >>> lattice = [(x + 0.5, y + 0.5) for x in range(8) for y in range(8)]
+    >>> tests = global_tests(Pattern.of(lattice, (0, 0, 8, 8)), simulations=99)
+    >>> judged_together(tests.envelopes)
+    HolmFamily(adjusted p: vmr_by_side 0.03, l_function 0.03, nearest_neighbour 0.03)
     """
     return HolmFamily.of({name: envelopes[name].p for name in FAMILY if name in envelopes})
 
@@ -97,6 +106,16 @@ def departures_of(envelopes: Mapping[str, Envelope], family: HolmFamily) -> tupl
     -------
     tuple of Departure
         In the order of the family.
+
+    Examples
+    --------
+    >>> from analyse.global_tests import global_tests
+    >>> from analyse.pattern import Pattern
+    >>> lattice = [(x + 0.5, y + 0.5) for x in range(8) for y in range(8)]
+    >>> tests = global_tests(Pattern.of(lattice, (0, 0, 8, 8)), simulations=99)
+    >>> found = departures_of(tests.envelopes, judged_together(tests.envelopes))
+    >>> [each.direction for each in found]
+    ['even', 'even', 'even']
     """
     found = []
     for name, p, adjusted in family:
@@ -147,6 +166,12 @@ def clearest(departures: Sequence[Departure]) -> Departure:
     Returns
     -------
     Departure
+
+    Examples
+    --------
+    >>> sides = Departure("vmr_by_side", "clumped", 20.0, 0.004, 0.012)
+    >>> clearest([sides, Departure("l_function", "clumped", 6.0, 0.001, 0.003)]).at
+    6.0
     """
     return min(departures, key=lambda each: (each.adjusted, each.p, _TOLD.index(each.name)))
 
@@ -248,6 +273,11 @@ def departure_words(departure: Departure, unit: str) -> str:
     ------
     ValueError
         If the test does not depart.
+
+    Examples
+    --------
+    >>> departure_words(Departure("vmr_by_side", "clumped", 20.0, 0.004, 0.012), "mm")
+    'In quadrats of 20 mm the counts vary more than chance would give (adjusted p = 0.012)'
     """
     if departure.direction is None:
         raise ValueError(f"{departure.name} shows no departure to be told")

@@ -128,6 +128,14 @@ def curves_csv(findings: Sequence[Findings]) -> str:
     -------
     str
         One row per side or distance; those of nothing but counts have none.
+
+    Examples
+    --------
+    >>> from analyse.findings import analyse_points
+    >>> lattice = [(x + 0.5, y + 0.5) for x in range(8) for y in range(8)]
+    >>> found = analyse_points(lattice, (0, 0, 8, 8), simulations=99)
+    >>> print(curves_csv([found]).splitlines()[0])
+    photograph,curve,x,observed,central,low,high,unit,null
     """
     rows = (
         [each.name, *row]

@@ -61,7 +61,8 @@ class Findings:
     verdict : str
         The verdict.
     sentence : str
-        The verdict as a sentence.
+        The verdict as a sentence, with what would have been seen where nothing was found; then, where
+        a gradient is found or the tests over sides and distances tell something else, another one.
     detectable : (low, high)
         VMR that would have been seen with about 80 % power, on the even and the clumped side;
         the first is NaN where so few points cannot lie as evenly as that, both where there are
