@@ -6,7 +6,7 @@ import { moveTo } from "./cross.js";
 import { byId, counted } from "./elements.js";
 import { keep, kept } from "./kept.js";
 import { marks } from "./marks.js";
-import { doubtful, sheet } from "./sheet.js";
+import { doubtful, isDoubtful, sheet } from "./sheet.js";
 import { say } from "./speech.js";
 import { look } from "./view.js";
 
@@ -87,10 +87,12 @@ function chosen() {
 
 /** Shows how many are left, and what can be said of the chosen one. */
 function showLeft() {
-  const ids = left();
-  byId("doubtful-left").textContent = ids.length ? `${counted(ids.length, "doubtful spot")} left to look at` : "No doubtful spot left";
-  byId("doubtful-next").textContent = ids.length ? "Next doubtful" : "Next least sure";
-  byId("doubtful").dataset.left = ids.length;
+  const { spots } = sheet;
+  let number = 0;
+  for (let row = 0; row < spots.length; row += 1) if (isDoubtful(row) && !seen.real.has(spots.id[row])) number += 1;
+  byId("doubtful-left").textContent = number ? `${counted(number, "doubtful spot")} left to look at` : "No doubtful spot left";
+  byId("doubtful-next").textContent = number ? "Next doubtful" : "Next least sure";
+  byId("doubtful").dataset.left = number;
   const spot = marks.chosen === null ? null : sheet.spots.get(marks.chosen);
   const asked = spot !== null && spot.found && seen.trail.includes(spot.id);
   byId("doubtful-asked").hidden = !asked;

@@ -20,7 +20,7 @@ export function drawFigure(place, frequencies) {
   const points = expected.map((value, index) => `${middle(index).toFixed(1)},${(base - height(value)).toFixed(1)}`);
   const dots = points.map((point) => draw("circle", { cx: point.split(",")[0], cy: point.split(",")[1], r: 2.6, class: "dot" }));
   const every = Math.ceil(labels.length / 12);
-  const words = labels.map((label, index) => (index % every ? null : draw("text", { x: middle(index), y: base + 12, class: "label" }, label)));
+  const words = labels.map((label, index) => (index % every ? null : draw("text", { x: middle(index), y: base + 12, class: "label" }, label.replace(" or more", "+"))));
   place.replaceChildren(draw(
     "svg", { viewBox: `0 0 ${WIDTH} ${HEIGHT}`, role: "img", "aria-label": spoken(frequencies) },
     draw("text", { x: LEFT - 4, y: TOP + 8, class: "label end" }, String(Math.round(most))),

@@ -9,7 +9,7 @@ import { layers } from "./looks.js";
 import { view } from "./view.js";
 
 const SIDE = 190; // screen pixels
-const TIMES = 4; // as large as on the stage, or more
+const [TIMES, LEAST] = [2.5, 2]; // as large as on the stage; screen pixels for one of the photograph
 
 let at = null;
 let frame = 0;
@@ -30,7 +30,7 @@ function later() {
 function drawLoupe() {
   frame = 0;
   const here = at ?? { x: view.x + view.width / 2 / view.scale, y: view.y + view.height / 2 / view.scale, sx: view.width / 2, sy: 0 };
-  const scale = Math.max(TIMES * view.scale, 1.5);
+  const scale = Math.max(TIMES * view.scale, LEAST);
   const seen = { scale, x: here.x - SIDE / 2 / scale, y: here.y - SIDE / 2 / scale, width: SIDE, height: SIDE, dpr: view.dpr };
   byId("loupe").dataset.side = here.sx > view.width - SIDE - 60 && here.sy < SIDE + 60 ? "left" : "right";
   const context = clean("loupe-photograph");

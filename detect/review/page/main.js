@@ -4,6 +4,7 @@ import * as act from "./act.js";
 import { on, tell } from "./bell.js";
 import * as checked from "./checked.js";
 import * as doubtful from "./doubtful.js";
+import * as early from "./early.js";
 import { byId } from "./elements.js";
 import { listen } from "./events.js";
 import { hand } from "./hand.js";
@@ -17,7 +18,6 @@ import * as person from "./person.js";
 import * as photograph from "./photograph.js";
 import * as pointer from "./pointer.js";
 import * as queue from "./queue.js";
-import { get } from "./server.js";
 import { open, sheet } from "./sheet.js";
 import * as stage from "./stage.js";
 import * as status from "./status.js";
@@ -44,7 +44,7 @@ async function openSheet(id) {
   listen();
   setPicture(sheet.width, sheet.height);
   showFacts();
-  photograph.show(sheet.picture, sheet.width, sheet.height);
+  photograph.show(id, sheet.picture, sheet.width, sheet.height);
 }
 
 /** Reads the open sheet anew: it was changed beneath the page. */
@@ -101,15 +101,13 @@ async function start() {
   on("view", showPlace);
   on("pointer", showPlace);
   on("stale", reread);
-  const wanted = location.hash.slice(1);
-  const [session, rows] = await Promise.all([get("api/session"), queue.readQueue()]);
+  await queue.readQueue(early.queue);
+  const session = await early.session;
   byId("folder").textContent = session.folder;
   person.start(session.who, session.limits.who);
   checked.start(session.limits.text);
   takeUp();
-  const row = rows.find((each) => each.id === wanted) ?? rows.find((each) => each.state !== "checked" && !each.trouble) ?? rows[0];
-  await openSheet(row.id);
-  await queue.readQueue();
+  await openSheet(await early.first.id);
   tell("who");
   document.body.dataset.ready = "yes";
 }

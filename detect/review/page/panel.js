@@ -4,6 +4,7 @@ import { on, tell } from "./bell.js";
 import { byId, make } from "./elements.js";
 import { drawFigure } from "./figure.js";
 import { ground } from "./ground.js";
+import { saving } from "./outbox.js";
 import { onTheirWay, sheet } from "./sheet.js";
 
 let shown = null; // the panel that is shown
@@ -28,7 +29,7 @@ function showBusy() {
   const busy = !isNow(shown);
   byId("result").setAttribute("aria-busy", String(busy));
   byId("result").dataset.revision = shown?.revision ?? "";
-  byId("working").textContent = busy ? "counting anew" : "";
+  byId("working").textContent = !busy ? "" : saving.failed ? "not up to date" : "counting anew";
 }
 
 /** Shows a panel. */
@@ -38,7 +39,7 @@ function show(panel) {
   byId("no-result").hidden = !panel.trouble;
   byId("verdict").textContent = now ? upper(now.verdict) : "No verdict";
   byId("verdict").dataset.verdict = now?.verdict ?? "";
-  byId("sentence").textContent = now?.sentence ?? "";
+  byId("sentence").textContent = now ? reasons(now) : "";
   byId("figures").replaceChildren(...(now ? figures(now, before) : []));
   drawFigure(byId("frequencies"), panel.frequencies);
   byId("flags").replaceChildren(...(now?.flags ?? []).map((flag) => make("li", {}, flag.sentence)));
@@ -47,6 +48,12 @@ function show(panel) {
   ground.quadrats = panel.quadrats;
   byId("show-grid").disabled = panel.quadrats === null;
   tell("quadrats");
+}
+
+/** The sentence without the verdict, which stands above it. */
+function reasons({ sentence, verdict }) {
+  const said = `${upper(verdict)}: `;
+  return sentence.startsWith(said) ? upper(sentence.slice(said.length)) : sentence;
 }
 
 /** Returns the rows of figures, each with what it was before the edits where that differs. */
@@ -112,6 +119,7 @@ export function start() {
   on("panel", take);
   on("panel-wait", showBusy);
   on("edited", showBusy);
+  on("saving", showBusy);
   on("changed", () => { showBusy(); showReview(); });
   on("opened", clear);
   on("reread", () => { showBusy(); showReview(); });

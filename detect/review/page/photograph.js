@@ -1,6 +1,7 @@
 // The photograph on the stage: one picture with reduced copies, or tiles.
 
 import { tell } from "./bell.js";
+import { early } from "./early.js";
 import { Refused, picture } from "./server.js";
 import { view } from "./view.js";
 
@@ -14,22 +15,22 @@ export const photograph = { kind: "none", ready: false, trouble: "", copies: [],
 let loading = 0;
 
 /** Begins to show another photograph. */
-export async function show(info, width, height) {
+export async function show(id, info, width, height) {
   loading += 1;
   const own = loading;
   for (const copy of photograph.copies) copy.bitmap.close();
   Object.assign(photograph, { kind: info.kind, ready: false, trouble: info.message ?? "", copies: [], info, width, height });
   photograph.tiles = new Map();
   if (info.kind === "tiles") photograph.ready = true;
-  if (info.kind === "whole") await loadWhole(info, () => own === loading);
+  if (info.kind === "whole") await loadWhole(early("picture", id) ?? picture(info.url), () => own === loading);
   tell("photograph");
 }
 
-/** Fetches a whole picture. */
-async function loadWhole(info, wanted) {
+/** Takes up a whole picture when it comes. */
+async function loadWhole(coming, wanted) {
   try {
-    const bitmap = await picture(info.url);
-    if (!wanted()) return;
+    const bitmap = await coming;
+    if (!wanted()) return bitmap.close();
     photograph.copies = [{ shrink: 1, bitmap }];
     photograph.ready = true;
     setTimeout(() => addCopies(wanted), 60);

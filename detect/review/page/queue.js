@@ -12,10 +12,9 @@ let rows = [];
 let openSheet = null; // opens a sheet by its id
 
 /** Reads the queue anew. */
-export async function readQueue() {
-  ({ sheets: rows } = await get("api/queue"));
+export async function readQueue(coming = get("api/queue")) {
+  ({ sheets: rows } = await coming);
   show();
-  return rows;
 }
 
 /** Returns the row of the open sheet. */

@@ -28,11 +28,12 @@ export function drawRing(context, look, x, y, radius) {
   const path = outline(LOOKS[look], x, y, r);
   context.lineCap = "round";
   context.strokeStyle = HALO;
-  context.lineWidth = look < 3 ? 3.8 : 3;
+  const width = look < 3 ? (r < 7 ? 1.5 : 1.9) : 1.3;
+  context.lineWidth = width + (r < 7 ? 1.4 : 1.9);
   if (look === 4) context.setLineDash([1.5, 3.5]);
   context.stroke(path);
   context.strokeStyle = context.fillStyle = COLOURS[LOOKS[look]];
-  context.lineWidth = look < 3 ? 1.9 : 1.3;
+  context.lineWidth = width;
   context.stroke(path);
   context.setLineDash([]);
   if (look === 1) context.fill(diamond(x, y - r));

@@ -1,6 +1,7 @@
 // The open sheet: what the server has confirmed, and on top of it the edits that are on their way.
 
 import { tell } from "./bell.js";
+import { early } from "./early.js";
 import { after, touched, touches } from "./edits.js";
 import { standing } from "./history.js";
 import { holder } from "./outlines.js";
@@ -21,7 +22,7 @@ export function onTheirWay() {
 
 /** Opens a sheet, or reads it anew, with the edits that still wait for the server on top. */
 export async function open(id, waiting) {
-  const fresh = await get(`api/sheets/${id}`);
+  const fresh = await (early("sheet", id) ?? get(`api/sheets/${id}`));
   take(fresh, waiting());
 }
 
@@ -135,8 +136,12 @@ function showArea() {
 export function doubtful(above = sheet.doubtful_above) {
   const { spots } = sheet;
   const rows = [];
-  for (let row = 0; row < spots.length; row += 1) {
-    if (spots.counted[row] && spots.found[row] && spots.doubt[row] > above) rows.push(row);
-  }
+  for (let row = 0; row < spots.length; row += 1) if (isDoubtful(row, above)) rows.push(row);
   return rows.sort((a, b) => spots.doubt[b] - spots.doubt[a]);
+}
+
+/** Whether the spot in a row is counted, was found, and has more than some doubt. */
+export function isDoubtful(row, above = sheet.doubtful_above) {
+  const { spots } = sheet;
+  return spots.counted[row] && spots.found[row] && spots.doubt[row] > above;
 }

@@ -39,14 +39,14 @@ function striking(first, next) {
 }
 
 export const rectangleTool = {
-  words: "Strike in a box",
+  words: "Strike a box",
   task: "Drag a box over the spots to strike, all in one. Undo brings them back.",
   draw: drawLoop,
   grab: ({ x, y }) => striking([[x, y]], (at) => [[x, y], [at.x, y], [at.x, at.y], [x, at.y]]),
 };
 
 export const loopTool = {
-  words: "Strike in a loop",
+  words: "Strike a loop",
   task: "Drag a loop around the spots to strike, all in one. Undo brings them back.",
   draw: drawLoop,
   grab: ({ x, y }) => striking([[x, y]], (at, drawn) => [...drawn, [at.x, at.y]]),

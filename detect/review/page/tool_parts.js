@@ -68,7 +68,7 @@ function within({ x, y, radius }) {
 }
 
 export const splitTool = {
-  words: "Split in two",
+  words: "Split",
   task: "Click a ring that holds two objects. To say where they lie, drag from the middle of the ring towards one of them.",
 
   click(at) {
@@ -115,7 +115,7 @@ async function merge(one, two) {
 }
 
 export const mergeTool = {
-  words: "Merge two",
+  words: "Merge",
   task: "Click two rings that lie on the same object, one after the other.",
   first: null,
 
