@@ -12,7 +12,7 @@ import { onTheirWay, sheet } from "./sheet.js";
 import { say } from "./speech.js";
 import { follow } from "./view.js";
 
-const FIT_WAITS = 400; // milliseconds, after which a ring is placed as it was clicked
+const FIT_WAITS = 3000; // milliseconds, after which a ring is placed as it was clicked; it is seen at once
 const MOST_IDS = 20000; // spots in one edit
 
 /** Makes an edit under the person's name. */

@@ -108,7 +108,7 @@ function settle(id, { generation, acknowledged = [], refused = [], changes = [] 
     takeBack(refused.map((each) => each.id));
     if (generation !== sheet.generation) tell("stale");
     else for (const change of changes) apply(change);
-  }
+  } else if (changes.length) tell("elsewhere", { id, review: changes[changes.length - 1].review });
   for (const each of refused) tell("refused", each.message);
   count();
   if (!progress) throw new Refused(500, { code: "bug", message: "The server did not take the edits." });

@@ -88,6 +88,13 @@ function follow() {
   show();
 }
 
+/** Keeps the line of another photograph up to date: edits made there have been saved since. */
+function followOther({ id, review }) {
+  const row = rows.find((each) => each.id === id);
+  if (row) Object.assign(row, review);
+  show();
+}
+
 /** Shows the mark of the open photograph. */
 function showMark() {
   const { state, checked_by: by, checked_at: time } = sheet.review;
@@ -131,6 +138,7 @@ export function start(open) {
   });
   on("changed", follow);
   on("opened", follow);
+  on("elsewhere", followOther);
   on("reread", follow);
   tell("queue");
 }

@@ -1,4 +1,7 @@
-"""One browser for a process of tests, one server process and one folder for each test."""
+"""One browser for each file of tests, one server process and one folder for each test.
+
+Not one for the whole run: a browser keeps an event loop running, beside which others cannot be run.
+"""
 
 from __future__ import annotations
 
@@ -12,7 +15,7 @@ from tests.detect.review.browsing import QUIET, Desk, Server, browser_path, revi
 from tests.detect.review.drawn import Laid, lay
 
 
-@pytest.fixture(scope="session")
+@pytest.fixture(scope="module")
 def browser() -> Iterator[Browser]:
     path = browser_path()
     with sync_playwright() as playwright:
