@@ -16,10 +16,10 @@ _RADII = 40
 _ACROSS = 48.0  # pixels that the largest radius has in the small picture that is worked on
 _SMALLEST_PX = 1.5
 _CLEAR = 3.0  # an edge must be so many times as strong as the usual one at other radii
-_STEPS = (0.0, -0.125, 0.125)
 _SHIFTS = (  # of the usual radius
-    *((dx, dy) for dx in _STEPS for dy in _STEPS),
+    *((0.0, 0.0), (0.125, 0.0), (-0.125, 0.0), (0.0, 0.125), (0.0, -0.125)),
     *((0.25, 0.0), (-0.25, 0.0), (0.0, 0.25), (0.0, -0.25)),
+    *((0.18, 0.18), (0.18, -0.18), (-0.18, 0.18), (-0.18, -0.18)),
 )
 _OVER_NOISE = 3.0  # how far the inside must stand out from the ring around it
 
@@ -64,7 +64,7 @@ def fit_circle(photograph: Photograph, x: float, y: float, usual: float) -> Fitt
         Where, in pixels; within the picture.
     usual : float
         Radius in pixels to be expected; a third to three times as much is looked at, and centres up
-        to a quarter of it away, each way.
+        to some four tenths of it away.
 
     Returns
     -------
@@ -95,18 +95,27 @@ def fit_circle(photograph: Photograph, x: float, y: float, usual: float) -> Fitt
     signal = _signal(pixels, cx, cy, usual * sx)
     radii = np.linspace(least, most, _RADII) * sx
     best, found = 0.0, Fitted(x, y, usual, False)
-    at = (cx, cy, usual * sx)
-    for dx, dy in _SHIFTS:
-        step = (dx * usual * sx, dy * usual * sy)
-        strength, radius = _sharpest(signal, cx + step[0], cy + step[1], radii)
-        # A centre farther from the click must earn its place.
-        strength *= 1.0 - 0.6 * float(np.hypot(dx, dy))
-        if strength > best:
-            best, at = strength, (cx + step[0], cy + step[1], radius)
-            found = Fitted(x + step[0] / sx, y + step[1] / sy, radius / sx, True)
+    at, middle = (cx, cy, usual * sx), (0.0, 0.0)
+    for shifts in (_SHIFTS, _around(0.125), _around(0.0625)):
+        start = middle
+        for dx, dy in np.add(start, shifts).tolist():
+            step = (dx * usual * sx, dy * usual * sy)
+            strength, radius = _sharpest(signal, cx + step[0], cy + step[1], radii)
+            # A centre farther from the click must earn its place.
+            strength *= 1.0 - 0.4 * float(np.hypot(dx, dy))
+            if strength > best:
+                best, middle = strength, (dx, dy)
+                at = (cx + step[0], cy + step[1], radius)
+                found = Fitted(x + step[0] / sx, y + step[1] / sy, radius / sx, True)
     if found.fitted and _inside(photograph, found) and _stands_out(signal, *at):
         return found
     return Fitted(x, y, usual, False)
+
+
+def _around(step: float) -> tuple[tuple[float, float], ...]:
+    """Return the eight places a step away."""
+    ways = (-step, 0.0, step)
+    return tuple((dx, dy) for dx in ways for dy in ways if dx or dy)
 
 
 def _signal(pixels: NDArray[np.float32], cx: float, cy: float, usual: float) -> NDArray[np.float32]:
