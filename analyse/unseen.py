@@ -13,7 +13,9 @@ if TYPE_CHECKING:
     from analyse.pattern import Pattern
 
 _RECALL = "planted objects (Stetson 1987), weighted by 1 over the chance found (Horvitz and Thompson 1952)"
-_BLIND = "pairs of planted objects, half of a logistic curve (Firth 1993)"
+_BLIND = (
+    "pairs of planted objects, half of a logistic curve with a ceiling (Wichmann and Hill 2001)"
+)
 _SHARE = "share of planted objects found again, Wilson (1927) limits"
 
 
@@ -40,10 +42,11 @@ def planted_sentence(pattern: Pattern | None) -> str:
         )
         said.append(
             f"Of {planted.copies:,} copies of its own spots set into the photograph,"
-            f" {planted.found:,} were found again; weighted to the sizes, contrasts and crowding"
-            " seen (copies set closer to others than its spots lie weigh less),"
-            f" {share:.0f} % of such objects are found (95 % limits {low:.0f} to"
-            f" {high:.0f} %)."
+            f" {planted.found:,} were found again. Some were made smaller and fainter, or set"
+            " nearer to others, than its spots are, so the share found of its objects is another:"
+            " with each spot given the chance of copies of its own size, contrast and nearness to"
+            f" others, it is {share:.0f} % (95 % limits {low:.0f} to {high:.0f} %), for objects"
+            " that look like those found."
         )
     if planted.blind is not None:
         said.append(

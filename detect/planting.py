@@ -1,18 +1,16 @@
-"""Where copies of spots are set into a photograph, and what it then looks like."""
+"""Where copies of spots are set into a photograph."""
 
 from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass
-from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
 
 from detect.area import StudyArea
-from detect.photograph import Photograph
 from detect.spots import Spots
-from detect.stamps import SmoothGround, Stamp, altered, separations
+from detect.stamps import Stamp, altered, separations
 
 # From this separation on a neighbour no longer matters: nothing is seen of it within a stamp.
 ALONE = 2.0
@@ -25,8 +23,6 @@ _FREE = 2.0
 _TRIES = 60
 # How far a stamp may be enlarged, made smaller, and changed in contrast.
 _SIZE, _STRENGTH = (0.75, 1.33), (0.4, 1.25)
-# Shade dims an object with its ground; a glare lies over both and does not make it brighter.
-_LIGHT = (0.5, 1.1)
 # A copy is made of one of this many stamps that need the least change.
 _NEAREST = 4
 
@@ -179,43 +175,6 @@ def place(
                 break
     x, y, radius, contrast, unit, separation = np.array(rows).reshape(-1, 6).T
     return Copies(x, y, radius, contrast, unit.astype(np.intp), separation, tuple(stamps))
-
-
-def paste(photograph: Photograph, ground: SmoothGround, copies: Copies) -> Photograph:
-    """Return the photograph with copies set into it.
-
-    Parameters
-    ----------
-    photograph : Photograph
-    ground : SmoothGround
-        Of this photograph.
-    copies : Copies
-        Later ones lie on top of earlier ones.
-
-    Returns
-    -------
-    Photograph
-
-    Notes
-    -----
-    A pixel becomes a * lifted + (1 - cover) * (pixel - ground) + ground, where a is the
-    brightness of the ground here over that where the stamp was taken: an object hides what lies
-    below as far as it covers it, and is lit as its new place is.
-    """
-    stored: Any = photograph.stored.copy()
-    most = float(np.iinfo(stored.dtype).max)
-    for x, y, stamp in zip(copies.x, copies.y, copies.stamps, strict=True):
-        height, width = stamp.cover.shape
-        left, top = round(x - stamp.x), round(y - stamp.y)
-        x0, y0 = max(0, left), max(0, top)
-        x1, y1 = min(photograph.width, left + width), min(photograph.height, top + height)
-        part = np.s_[y0 - top : y1 - top, x0 - left : x1 - left]
-        below = ground.at(x0, y0, x1 - x0, y1 - y0)
-        gain = np.float32(np.clip(float(below.mean()) / max(stamp.light, 1e-3), *_LIGHT))
-        seen = stored[y0:y1, x0:x1].astype(np.float32) / np.float32(most)
-        new = seen + gain * stamp.lifted[part] - stamp.cover[part][..., None] * (seen - below)
-        stored[y0:y1, x0:x1] = np.round(np.clip(new, 0.0, 1.0) * most).astype(stored.dtype)
-    return Photograph(photograph.path, photograph.sha256, stored, photograph.taken)
 
 
 def _like(

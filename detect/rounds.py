@@ -13,6 +13,7 @@ from detect.blind import blind_distance
 from detect.find import Found, find_spots
 from detect.lengths import Length
 from detect.missed import Trials, by_separation, recall_of, thirds
+from detect.pasting import paste
 from detect.photograph import Photograph
 from detect.planted import Planted, PlantedOptions
 from detect.planting import (
@@ -22,7 +23,6 @@ from detect.planting import (
     Wish,
     copies_per_round,
     nearest_separation,
-    paste,
     place,
     wish_pair,
     wish_single,
@@ -121,7 +121,7 @@ def measure_planted(
     for k, wishes in enumerate(_all_wishes(stamps, spots, area, planted.rounds, rng)):
         copies = place(wishes, spots, area, size, rng)
         if len(copies):
-            picture = paste(photograph, ground, copies)
+            picture = paste(photograph, ground, copies, stacked=options.kind == "seedlings")
             after = find_spots(picture, area, again, scale=scale, taught=taught).spots
             _note(seen, k, copies, refound(spots, after, copies).found, spots)
         if progress is not None:

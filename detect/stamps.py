@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from itertools import pairwise
 from typing import Any
 
 import cv2
@@ -18,8 +19,14 @@ FEWEST_CLEAR = 5
 # A spot more doubtful than half of the others is not copied, unless none is really doubtful; one
 # of more doubt than the second limit never is.
 _HARDLY_DOUBTFUL, _MOST_DOUBT = 0.02, 0.2
-# A stamp holds its spot whole up to the first of these radii and nothing beyond the second.
-_WHOLE, _REACH = 1.4, 1.9
+# A stamp holds its spot whole up to the first of these radii and none of it beyond the second;
+# beyond that only the halo, which is gone at the third.
+_WHOLE, _REACH, _HALO = 1.4, 1.9, 2.5
+# The ground is what is seen from here to the end of the halo, and no nearer to another spot than
+# this many of its radii.
+_GROUND_FROM, _OFF_OTHERS = 2.0, 1.4
+# The halo is a median around the spot, in rings of this breadth in radii, of some pixels at least.
+_RING, _FEWEST_PIXELS = 0.15, 12
 # Below the first share of the core's own departure a pixel is ground, above the second all object.
 _GROUND, _OBJECT = 0.2, 0.8
 # The smooth ground is kept on a map on which the median spot has this radius, in pixels.
@@ -180,7 +187,7 @@ def smooth_ground(photograph: Photograph, area: StudyArea, spots: Spots) -> Smoo
 
 
 def lift(photograph: Photograph, ground: SmoothGround, spots: Spots, row: int) -> Stamp | None:
-    """Lift one spot from its ground.
+    """Lift one spot from its ground, with the halo it has.
 
     Parameters
     ----------
@@ -195,9 +202,15 @@ def lift(photograph: Photograph, ground: SmoothGround, spots: Spots, row: int) -
     -------
     Stamp or None
         None where it reaches out of the picture or hardly departs from its ground.
+
+    Notes
+    -----
+    A halo (yellow tissue around a lesion, haze around a colony) lets neighbours run into one
+    another, so a copy must have it. It is told from the grain of the ground by its being round:
+    what is lifted beside the object is the median of each ring about the spot.
     """
     x, y, radius = float(spots.x[row]), float(spots.y[row]), float(spots.radius[row])
-    half = int(np.ceil(_REACH * radius)) + 1
+    half = int(np.ceil(_HALO * radius)) + 1
     left, top = round(x) - half, round(y) - half
     right, bottom = left + 2 * half + 1, top + 2 * half + 1
     if left < 0 or top < 0 or right > photograph.width or bottom > photograph.height:
@@ -207,8 +220,12 @@ def lift(photograph: Photograph, ground: SmoothGround, spots: Spots, row: int) -
     lifted = seen - below
     down, across = np.mgrid[top:bottom, left:right]
     reach = np.hypot(across - x, down - y) / radius
+    free = _off_others(spots, row, across, down)
     # The smooth ground may lie a little beside the true one: the ring about the spot says how far.
-    lifted -= np.median(lifted[(reach > _WHOLE) & (reach < _REACH)], axis=0)
+    ring = (reach > _GROUND_FROM) & (reach < _HALO) & free
+    if ring.sum() < _FEWEST_PIXELS:
+        ring = (reach > _WHOLE) & (reach < _REACH)
+    lifted -= np.median(lifted[ring], axis=0)
     core = lifted[reach < 0.6].mean(axis=0)
     strength = float((core**2).sum())
     if strength < 1e-5:
@@ -216,9 +233,10 @@ def lift(photograph: Photograph, ground: SmoothGround, spots: Spots, row: int) -
     share = cv2.GaussianBlur((lifted @ core) / np.float32(strength), (0, 0), 0.6)
     fading = np.clip((_REACH - reach) / (_REACH - _WHOLE), 0.0, 1.0).astype(np.float32)
     cover = np.clip((share - _GROUND) / (_OBJECT - _GROUND), 0.0, 1.0) * fading
-    # The lifted light goes with what is covered and its near surroundings: halo, gloss and shadow.
+    # The lifted light goes with what is covered and its near surroundings: gloss and shadow.
     near = cv2.GaussianBlur(cover, (0, 0), max(0.7, 0.08 * radius))
-    lifted *= (np.clip(2.0 * near, 0.0, 1.0) * fading)[..., None]
+    near = (np.clip(2.0 * near, 0.0, 1.0) * fading)[..., None]
+    lifted = near * lifted + (1.0 - near) * _halo(lifted, reach, free & (cover < _GROUND))
     return Stamp(
         np.asarray(lifted, dtype=np.float32),
         np.asarray(cover, dtype=np.float32),
@@ -228,6 +246,37 @@ def lift(photograph: Photograph, ground: SmoothGround, spots: Spots, row: int) -
         float(spots.contrast[row]),
         float(below.mean()),
     )
+
+
+def _off_others(
+    spots: Spots, row: int, across: NDArray[np.int_], down: NDArray[np.int_]
+) -> NDArray[np.bool_]:
+    """Tell which pixels lie off all other spots."""
+    free = np.ones(across.shape, dtype=np.bool_)
+    reach = _OFF_OTHERS * spots.radius
+    corner = float(np.hypot(*across.shape)) / 2
+    apart = np.hypot(spots.x - spots.x[row], spots.y - spots.y[row])
+    for j in np.flatnonzero(apart < corner + reach):
+        if j != row:
+            free &= np.hypot(across - spots.x[j], down - spots.y[j]) > reach[j]
+    return free
+
+
+def _halo(lifted: Layer, reach: NDArray[np.float64], beside: NDArray[np.bool_]) -> Layer:
+    """Return the median of what is lifted beside the object, ring by ring, fading outwards."""
+    bounds = np.arange(0.8, _HALO + _RING / 2, _RING)
+    middles, medians = [], []
+    for low, high in pairwise(bounds):
+        ring = (reach >= low) & (reach < high) & beside
+        if ring.sum() >= _FEWEST_PIXELS:
+            middles.append((low + high) / 2)
+            medians.append(np.median(lifted[ring], axis=0))
+    if not middles:
+        return np.zeros_like(lifted)
+    columns = np.array(medians).T
+    halo = np.stack([np.interp(reach, middles, column) for column in columns], axis=-1)
+    fading = np.clip((_HALO - reach) / (_HALO - _REACH), 0.0, 1.0)
+    return np.asarray(halo * fading[..., None], dtype=np.float32)
 
 
 def altered(stamp: Stamp, *, size: float, strength: float, turns: int, mirrored: bool) -> Stamp:

@@ -21,9 +21,11 @@ from tests.analyse.finished import TILT, findings_of, scattered, sheet_of
 from tests.detect.test_planted import MEASURED
 
 SAID = (
-    "Of 90 copies of its own spots set into the photograph, 81 were found again; weighted to the"
-    " sizes, contrasts and crowding seen (copies set closer to others than its spots lie weigh"
-    " less), 90 % of such objects are found (95 % limits 82 to 95 %)."
+    "Of 90 copies of its own spots set into the photograph, 81 were found again. Some were made"
+    " smaller and fainter, or set nearer to others, than its spots are, so the share found of its"
+    " objects is another: with each spot given the chance of copies of its own size, contrast and"
+    " nearness to others, it is 90 % (95 % limits 82 to 95 %), for objects that look like those"
+    " found."
     " Two closer than 0.80 of their radii's sum are mostly seen as one"
 )
 NAMES = ("planted_recall", "planted_recall_low", "planted_recall_high", "blind_distance")

@@ -7,10 +7,16 @@ recipe and measured with planted objects; the recall they give stands beside the
 the share found of the objects that were drawn within the study area. An interval is counted as
 covering when it holds that very share (not the chance behind it).
 
-The blind distance stands beside two measured with truth, each the half of the same logistic curve:
-over all pairs of mutually nearest true objects of the scenes of a kind, and over pairs drawn at
-known separations into dishes, plots and leaves of this program's own (--pairs scenes a kind), on
-which the planted objects are measured as well.
+The blind distance stands beside two measured with truth, each the half of the same curve: over
+all pairs of mutually nearest true objects of the scenes of a kind, and over pairs drawn at known
+separations into dishes, plots and leaves of this program's own (--pairs scenes a kind). For the
+latter the same objects are drawn a second time, scattered at random, and the planted objects are
+measured on those: a scene of nothing but pairs has few clear spots, many of them two seen as one.
+
+Planted objects give the blind distance in sums of the radii that spots have. A spot's radius is
+not the radius a thing is drawn with (a plant's takes in the gaps between its leaves, 1.2 times as
+much), so true separations are divided by the scene's mean radius of the spots over that of the
+true objects they are. --drawn keeps the scenes, and takes those that are there already.
 """
 
 from __future__ import annotations
@@ -22,7 +28,7 @@ import sys
 import tempfile
 import time
 from collections.abc import Iterator
-from contextlib import contextmanager
+from contextlib import contextmanager, nullcontext
 from dataclasses import dataclass, field
 from pathlib import Path
 
@@ -45,6 +51,7 @@ from detect.blind import blind_distance
 from detect.errors import DetectError
 from detect.planted import BlindDistance, Planted, PlantedOptions
 from detect.requests import detect_photograph, parse_request
+from detect.spots import Spots
 from detect.truth import Truth
 
 FEWEST_OBJECTS = 10
@@ -118,7 +125,29 @@ def look(folder: Path, row: dict[str, str], rounds: int) -> Seen | None:
         seen.recall = float(found[inside].mean())
     for i, j, separation in neighbours(truth):
         if inside[i] and inside[j]:
-            seen.apart.append(separation)
+            seen.apart.append(separation / units(sheet.spots, truth))
+            seen.both.append(bool(found[i] and found[j]))
+    return seen
+
+
+def units(spots: Spots, truth: Truth) -> float:
+    """Mean radius of the spots over that of the true objects they are."""
+    match = match_spots(spots.centres, truth.xy, truth.radius)
+    return float(spots.radius[match.found].mean() / truth.radius[match.truth].mean())
+
+
+def pairs_found(folder: Path, row: dict[str, str]) -> Seen:
+    """Detect one scene of pairs and tell which are seen as two; nothing is planted."""
+    path = folder / row["photograph"]
+    truth = read_truth(folder / "truth" / f"{path.stem}.csv")
+    _, sheet = detect_photograph(path, parse_request(asked(row)))
+    inside = sheet.area.contains(truth.xy)
+    found = np.zeros(len(truth.xy), dtype=bool)
+    found[match_spots(sheet.spots.centres, truth.xy, truth.radius).truth] = True
+    seen = Seen(path.stem, int(inside.sum()), float(found[inside].mean()), Planted(0, 0))
+    for i, j, separation in neighbours(truth):
+        if inside[i] and inside[j]:
+            seen.apart.append(separation / units(sheet.spots, truth))
             seen.both.append(bool(found[i] and found[j]))
     return seen
 
@@ -153,11 +182,11 @@ def in_pairs(module: object, separations: np.ndarray) -> Iterator[None]:
         module.place_clearly = kept
 
 
-def draw_pairs(folder: Path, kind: str, count: int, first: int) -> None:
-    """Draw scenes of pairs at known separations."""
+def draw_objects(folder: Path, kind: str, count: int, first: int, *, paired: bool) -> None:
+    """Draw scenes of pairs at known separations, or of the same objects scattered at random."""
     (folder / "truth").mkdir(parents=True, exist_ok=True)
     rows = []
-    many = {"dish": (16, 16), "plot": (12, 12), "leaf": (10, 8)}[kind]
+    many = {"dish": (24, 16), "plot": (36, 20), "leaf": (10, 9)}[kind]
     for k in range(count):
         seed = first + k
         shot = getattr(own_scenes, kind)(seed)
@@ -168,17 +197,36 @@ def draw_pairs(folder: Path, kind: str, count: int, first: int) -> None:
             "leaf": (1.3, 0.25, 0.8, 2.0),
         }[kind]
         sizes = own_scenes.radii(rng, 2 * many[0] + many[1], usual, spread, least, most)
-        plan = dataclasses.replace(shot.plan, kind="random", radii_mm=sizes)
+        plan = dataclasses.replace(shot.plan, kind="random" if paired else "few", radii_mm=sizes)
         shot = dataclasses.replace(shot, seed=seed, plan=plan)
         separation = rng.permutation(np.linspace(0.35, 1.55, many[0] * count))[k::count]
-        with in_pairs(MODULES[kind], separation):
-            objects = records.true_objects(shot)
-            picture = draw.draw(shot)
         stem = f"{kind}_{seed}"
+        try:
+            with in_pairs(MODULES[kind], separation) if paired else nullcontext():
+                objects = records.true_objects(shot)
+                picture = draw.draw(shot)
+        except ValueError as trouble:
+            print(stem, "left out:", trouble)
+            continue
         (folder / f"{stem}.jpg").write_bytes(jpeg(picture, shot.exposure.quality))
         records.write_objects(folder / "truth" / f"{stem}.csv", objects)
-        rows.append(records.trial_row(stem, shot, len(objects), "pairs"))
-    records.write_trial(folder / "truth" / "trial.csv", rows)
+        rows.append(records.trial_row(stem, shot, len(objects), "pairs" if paired else "few"))
+        records.write_trial(folder / "truth" / "trial.csv", rows)
+
+
+def drawn_pairs(at: Path, kind: str, count: int, first: int, rounds: int) -> None:
+    """Print the blind distance over drawn pairs, and what planted objects say of the same kind."""
+    for name, paired in (("pairs", True), ("scattered", False)):
+        if not (at / f"{name}_{kind}").exists():
+            draw_objects(at / f"{name}_{kind}", kind, count, first, paired=paired)
+    true = [pairs_found(at / f"pairs_{kind}", row) for row in rows_of(at / f"pairs_{kind}", "")]
+    told = []
+    for row in rows_of(at / f"scattered_{kind}", ""):
+        result = look(at / f"scattered_{kind}", row, rounds)
+        if result is not None:
+            show(result)
+            told.append(dataclasses.replace(result, apart=[], both=[]))
+    compare_blind(f"{kind}, pairs drawn", true + told)
 
 
 def rows_of(folder: Path, only: str) -> Iterator[dict[str, str]]:
@@ -245,6 +293,7 @@ def main() -> None:
     parser.add_argument("--only", default="")
     parser.add_argument("--pairs", type=int, default=0, help="scenes of pairs drawn, of each kind")
     parser.add_argument("--first", type=int, default=2900, help="first seed of the scenes of pairs")
+    parser.add_argument("--drawn", type=Path, help="where scenes of pairs are kept")
     parser.add_argument("--leave-out", default="", help="kind of scene that is passed over")
     chosen = parser.parse_args()
     seen = []
@@ -260,12 +309,8 @@ def main() -> None:
     for kind in ("dish", "plot", "leaf"):
         if chosen.pairs and kind.startswith(chosen.only):
             with tempfile.TemporaryDirectory() as at:
-                draw_pairs(Path(at), kind, chosen.pairs, chosen.first)
-                rows = [look(Path(at), row, chosen.rounds) for row in rows_of(Path(at), "")]
-            kept = [row for row in rows if row is not None]
-            for row in kept:
-                show(row)
-            compare_blind(f"{kind}, pairs drawn", kept)
+                folder = chosen.drawn or Path(at)
+                drawn_pairs(folder, kind, chosen.pairs, chosen.first, chosen.rounds)
 
 
 if __name__ == "__main__":

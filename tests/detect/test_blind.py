@@ -6,6 +6,7 @@ import numpy as np
 import pytest
 
 from detect.blind import blind_distance
+from detect.logistic import fit_logistic
 
 
 def drawn(rng: np.random.Generator, half: float, width: float, n: int) -> tuple:
@@ -21,6 +22,22 @@ def test_the_half_of_the_curve_is_found_and_its_error_is_right() -> None:
     assert values.mean() == pytest.approx(0.85, abs=0.015)
     assert values.std() == pytest.approx(errors.mean(), rel=0.2)
     assert 0.91 <= (np.abs(values - 0.85) < 1.96 * errors).mean() <= 0.99
+
+
+def test_misses_far_apart_do_not_draw_the_half_nearer() -> None:
+    """One of a pair missed for another reason once flattened the curve and moved its half."""
+    rng = np.random.default_rng(3)
+    values, plain = [], []
+    for _ in range(60):
+        apart, both = drawn(rng, 0.7, 0.04, 80)
+        both &= rng.random(80) < 0.85
+        values.append(blind_distance(apart, both).value)
+        b0, b1 = fit_logistic(apart[:, None], both).weights
+        plain.append(-b0 / b1)
+    share = 0.5 / 0.85
+    true = 0.7 + 0.04 * np.log(share / (1 - share))
+    assert np.mean(values) == pytest.approx(true, abs=0.035)
+    assert abs(np.mean(plain) - true) > 0.08
 
 
 def test_a_sharp_step_lies_between_its_neighbours() -> None:

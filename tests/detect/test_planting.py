@@ -1,4 +1,4 @@
-"""Where copies are set, and what the photograph looks like with them."""
+"""Where copies are set."""
 
 from __future__ import annotations
 
@@ -7,20 +7,18 @@ import pytest
 import shapely
 
 from detect.area import StudyArea, frame_area
-from detect.photograph import Photograph
 from detect.planting import (
     ALONE,
     Copies,
     Wish,
     copies_per_round,
     nearest_separation,
-    paste,
     place,
     wish_pair,
     wish_single,
 )
 from detect.spots import Spots
-from detect.stamps import SmoothGround, Stamp, clear_spots, lift, smooth_ground
+from detect.stamps import Stamp, clear_spots, lift, smooth_ground
 from tests.scenes import SpotScene, scattered
 
 DISCS = scattered(25, radius=(6, 9), size=(600, 450))
@@ -29,14 +27,14 @@ SCENE = SpotScene(discs=DISCS, width=600, height=450, light=0.3, texture=0.0, no
 AREA = frame_area(600, 450)
 
 
-def prepared() -> tuple[Photograph, SmoothGround, list[Stamp]]:
+def prepared() -> list[Stamp]:
     photograph = SCENE.draw()
     ground = smooth_ground(photograph, AREA, SPOTS)
     stamps = [lift(photograph, ground, SPOTS, int(row)) for row in clear_spots(SPOTS, AREA)]
-    return photograph, ground, [stamp for stamp in stamps if stamp is not None]
+    return [stamp for stamp in stamps if stamp is not None]
 
 
-PHOTOGRAPH, GROUND, STAMPS = prepared()
+STAMPS = prepared()
 
 
 def put(wishes: list[Wish], area: StudyArea = AREA, seed: int = 1) -> Copies:
@@ -126,54 +124,3 @@ def test_one_giant_spot_leaves_room_for_copies() -> None:
 def test_where_there_is_no_room_copies_are_left_out() -> None:
     small = StudyArea(shapely.box(100, 100, 130, 130), "polygon", "small")
     assert len(put(wishes(10), small)) <= 1
-
-
-def test_a_copy_on_the_ground_looks_as_its_spot_did() -> None:
-    stamp = STAMPS[0]
-    x, y = 300.0, 20.0
-    while nearest_separation(np.array([[x, y, stamp.radius]]), SPOTS)[0] < 2.5:
-        y += 1.0
-    x, y = round(x - stamp.x) + stamp.x, round(y - stamp.y) + stamp.y
-    one = Copies(*(np.array([v]) for v in (x, y, stamp.radius, 9.0, 0, np.nan)), (stamp,))
-    after = paste(PHOTOGRAPH, GROUND, one).pixels()
-    expected = SpotScene(
-        discs=np.vstack([DISCS, [x, y, stamp.radius]]),
-        **{k: getattr(SCENE, k) for k in ("width", "height", "light", "texture", "noise")},
-    ).draw()
-    inside = np.s_[int(y) - 14 : int(y) + 15, int(x) - 14 : int(x) + 15]
-    assert np.abs(after[inside] - expected.pixels()[inside]).max() < 0.12
-    assert np.abs(after[inside] - expected.pixels()[inside]).mean() < 0.012
-    # Nothing changes elsewhere, and the photograph itself not at all.
-    untouched = PHOTOGRAPH.pixels()
-    after[inside] = untouched[inside]
-    changed = np.abs(after - untouched).max(axis=2) > 0
-    ys, xs = np.nonzero(changed)
-    assert ys.size == 0 or np.hypot(xs - x, ys - y).max() < 2 * stamp.radius + 3
-
-
-def test_a_copy_hides_what_lies_below_and_adds_nothing_to_it() -> None:
-    """On an object of the same colour a copy is not twice as dark."""
-    stamp = STAMPS[0]
-    row = int(clear_spots(SPOTS, AREA)[3])
-    x, y = round(SPOTS.x[row] - stamp.x) + stamp.x, round(SPOTS.y[row] - stamp.y) + stamp.y
-    one = Copies(*(np.array([v]) for v in (x, y, stamp.radius, 9.0, 0, np.nan)), (stamp,))
-    after = paste(PHOTOGRAPH, GROUND, one).pixels()[int(y), int(x)]
-    assert after == pytest.approx(PHOTOGRAPH.pixels()[int(y), int(x)], abs=0.05)
-
-
-def test_sixteen_bits_stay_sixteen_bits() -> None:
-    deep = Photograph(PHOTOGRAPH.path, "0" * 64, (PHOTOGRAPH.stored.astype(np.uint16)) * 257)
-    copies = put(wishes(3))
-    after = paste(deep, GROUND, copies)
-    assert after.stored.dtype == np.uint16
-    shallow = paste(PHOTOGRAPH, GROUND, copies)
-    assert np.abs(after.pixels() - shallow.pixels()).max() < 1 / 255
-
-
-def test_a_copy_across_the_edge_of_the_picture_is_cut_there() -> None:
-    stamp = STAMPS[0]
-    one = Copies(
-        *(np.array([v]) for v in (stamp.x - 12, 200 + stamp.y % 1, stamp.radius, 9.0, 0, np.nan)),
-        (stamp,),
-    )
-    assert paste(PHOTOGRAPH, GROUND, one).stored.shape == PHOTOGRAPH.stored.shape

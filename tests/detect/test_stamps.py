@@ -81,6 +81,24 @@ def test_what_is_lifted_is_the_departure_from_the_ground() -> None:
     assert stamp.cover[:, 0].max() == 0
 
 
+def test_a_halo_is_lifted_with_its_spot_and_the_grain_of_the_ground_is_not() -> None:
+    """Lesions were once copied without the yellow around them, in which two run together."""
+    image = np.full((320, 420, 3), 0.5) + np.random.default_rng(1).normal(0, 0.02, (320, 420, 1))
+    down, across = np.mgrid[:320, :420]
+    reach = np.hypot(across - 60, down - 60) / 8
+    halo = np.exp(-(np.clip(reach - 1, 0, None) ** 2) / 0.3)
+    image += halo[..., None] * np.array([0.15, 0.1, -0.1])
+    image[reach < 1] = (0.2, 0.15, 0.1)
+    stamp = lifted(photograph_of(image))
+    around = np.hypot(*(np.indices(stamp.cover.shape) - [[[stamp.y]], [[stamp.x]]])) / 8
+    ring = (around > 1.35) & (around < 1.55)
+    expected = np.array([0.15, 0.1, -0.1]) * np.exp(-(0.45**2) / 0.3)
+    assert stamp.lifted[ring].mean(axis=0) == pytest.approx(expected, abs=0.02)
+    assert stamp.lifted[ring].std(axis=0).max() < 0.02
+    assert stamp.cover[ring].max() == 0
+    assert np.abs(stamp.lifted[around > 2.5]).max() < 0.003
+
+
 def test_a_spot_across_the_edge_or_without_contrast_is_not_lifted() -> None:
     flat = photograph_of(np.full((320, 420, 3), 0.5))
     ground = smooth_ground(flat, frame_area(420, 320), spots())
