@@ -67,7 +67,9 @@ def test_a_review_that_changes_the_verdict_says_so_everywhere(tmp_path: Path) ->
         "moved": "0",
         "verdict_before_review": "clumped",
     }
-    assert SUMMARY_COLUMNS[-5:] == REVIEW_SUMMARY_COLUMNS
+    start = SUMMARY_COLUMNS.index("reviewed_by")
+    assert SUMMARY_COLUMNS[start : start + 5] == REVIEW_SUMMARY_COLUMNS
+    assert start > SUMMARY_COLUMNS.index("sentence")
     sentence = (
         "Marked as checked by Cy on 2026-05-04. 1 spot placed and 60 spots struck, by Ann, Bob and"
         " Cy. The verdict has changed through the review: before it was clumped."
