@@ -10,7 +10,7 @@ from numpy.typing import NDArray
 
 Floats = NDArray[np.float64]
 
-_PARTS = 8  # classes between two distances at which K is wanted
+_PARTS = 2  # classes between two distances at which K is wanted
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -47,8 +47,10 @@ class PairBins:
         return f"PairBins({len(self.edges) - 1} classes up to {self.reach:.4g})"
 
     @classmethod
-    def of(cls, shortest: float, longest: float, bandwidth: float, *, count: int) -> PairBins:
-        """Return classes for `count` distances from the shortest to the longest.
+    def of(
+        cls, shortest: float, longest: float, bandwidth: float, *, count: int, g_count: int
+    ) -> PairBins:
+        """Return classes for `count` distances of K and `g_count` of the pair correlation.
 
         Notes
         -----
@@ -60,7 +62,7 @@ class PairBins:
         step = (end - root) / (count - 1)
         k_at = np.asarray((root + step * np.arange(count)) ** 2, dtype=np.float64)
         g_from = math.sqrt(max(bandwidth, shortest))
-        g_at = np.linspace(g_from, end, count) ** 2
+        g_at = np.linspace(g_from, end, g_count) ** 2
         widths = np.maximum(bandwidth, np.gradient(g_at) / 2)
         widths = np.asarray(np.minimum(widths, g_at), dtype=np.float64)
         slope = _PARTS / step
@@ -90,10 +92,10 @@ class PairBins:
         scaled += self.offset
         return np.ceil(scaled, out=scaled).astype(np.intp)
 
-    def up_to(self) -> Floats:
-        """Return the matrix (k, bins) that sums all classes up to each distance of `k_at`."""
+    def up_to(self, sums: Floats) -> Floats:
+        """Return the sum over all classes up to each distance of `k_at`, of sums by class."""
         last = np.rint(np.sqrt(self.k_at) * self.slope + self.offset).astype(np.intp)
-        return (np.arange(len(self)) <= last[:, None]).astype(np.float64)
+        return np.asarray(np.cumsum(sums)[last])
 
     def smoothed(self) -> Floats:
         """Return the matrix (m, bins) of the mean of the Epanechnikov kernel over each class."""

@@ -27,7 +27,8 @@ CURVES = ("l_function", "pair_correlation", "nearest_neighbour", "empty_space")
 SCALARS = ("mean_nearest", "hopkins_skellam")
 
 _MOST_DIRECT = 1_500  # points up to which all pairs are measured; see DEVELOPERS.md
-_DISTANCES = 50  # of K and of the pair correlation
+_DISTANCES = 300  # of K: many cost nothing, and tell more closely where a pattern departs
+_SMOOTHED = 50  # of the pair correlation, whose kernel is wider than their steps
 _NEAREST = 40  # of the nearest-neighbour and empty-space functions
 _QUARTER = 0.25  # of sqrt(A): the longest distance
 _LEFT = 0.25  # of the area that a step, or a strip along the edge, must leave
@@ -70,7 +71,7 @@ class Ruler:
     Ruler(100 points, distances up to 2.5, direct)
     >>> curves = ruler.curves(np.random.default_rng(1).uniform(0, 10, (100, 2)))
     >>> {name: part.shape for name, part in ruler.split(curves).items()}["l_function"]
-    (50,)
+    (300,)
     """
 
     area: BaseGeometry
@@ -80,7 +81,6 @@ class Ruler:
     boundary: Boundary
     test_points: Floats
     test_depth: Floats
-    _to_k: Floats
     _to_g: Floats
     _sorted_depth: Floats
 
@@ -134,6 +134,7 @@ class Ruler:
             longest,
             min(BANDWIDTH * spacing, longest / 4),
             count=_DISTANCES,
+            g_count=_SMOOTHED,
         )
         direct = n <= _MOST_DIRECT if pairs is None else pairs == "direct"
         way: PairSums = (
@@ -161,7 +162,6 @@ class Ruler:
             boundary,
             tests,
             depth,
-            bins.up_to(),
             bins.smoothed() / rings,
             np.sort(depth),
         )
@@ -219,7 +219,7 @@ class Ruler:
         r = self.x["l_function"]
         return np.concatenate(
             [
-                np.sqrt(self._to_k @ sums / math.pi) - r,
+                np.sqrt(self.pairs.bins.up_to(sums) / math.pi) - r,
                 self._to_g @ sums,
                 self._nearest_neighbour(xy, nearest),
                 self._empty_space(empty),

@@ -127,9 +127,13 @@ def test_near_pairs_are_measured_exactly_both_ways() -> None:
     near = direct.x["l_function"] < 1.3 * math.sqrt(SQUARE.area / 2_000)
     assert near.sum() > 10
     seen, fast = (each.split(each.curves(points))["l_function"] for each in (direct, binned))
-    assert fast[near] == pytest.approx(seen[near], abs=1e-5)
-    exact = l_of(k_translation(points, SQUARE, direct.x["l_function"]))
-    assert seen + direct.x["l_function"] == pytest.approx(exact, abs=1e-5)
+    # single precision may put a pair on the other side of one of many distances
+    r = direct.x["l_function"]
+    one_pair = 3 * SQUARE.area / (2_000 * 1_999) / (2 * math.pi * r)
+    assert (np.abs(fast - seen) < one_pair + 1e-5)[near].all()
+    exact = l_of(k_translation(points, SQUARE, r))
+    assert (np.abs(seen + r - exact) < one_pair + 1e-5).all()
+    assert np.median(np.abs(seen + r - exact)) < 1e-6
 
 
 @pytest.mark.parametrize("name", AREAS)
@@ -167,7 +171,7 @@ def test_the_distances_are_a_rule_of_the_area_and_the_number_alone() -> None:
             assert first.x[curve][0] > 0
             assert first.x[curve][-1] < side
         assert first.x["l_function"][-1] <= side / 4 + 1e-9
-        assert 30 <= len(first.x["l_function"]) <= 60
+        assert len(first.x["l_function"]) == 300
         assert np.array_equal(first.test_points, again.test_points)
         assert shapely.contains_xy(area, *first.test_points.T).all()
 
