@@ -5,7 +5,7 @@ import { inWords } from "./edits.js";
 import { byId, counted } from "./elements.js";
 import { stacks } from "./history.js";
 import { marks } from "./marks.js";
-import { make } from "./outbox.js";
+import { make, saving } from "./outbox.js";
 import { who } from "./person.js";
 import { get } from "./server.js";
 import { onTheirWay, sheet } from "./sheet.js";
@@ -108,8 +108,9 @@ export function redo() {
 function turn(what, of, nothing, done) {
   if (of === undefined) return say(nothing);
   const target = [...sheet.history, ...onTheirWay()].find((each) => each.id === of);
+  const later = saving.failed && !onTheirWay().includes(target);
   edit(what, { of });
-  say(`${done}: ${inWords(target.what)}.`);
+  say(later ? `${done} once the server is back: ${inWords(target.what)}.` : `${done}: ${inWords(target.what)}.`);
 }
 
 /** Shows whether there is something to undo or to do again. */

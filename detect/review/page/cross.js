@@ -1,6 +1,7 @@
 // The cross: what a pointer does, done by keys. Arrows move it, Enter clicks, D takes hold and lets go.
 
 import { tell } from "./bell.js";
+import { byId } from "./elements.js";
 import { hand } from "./hand.js";
 import { ringAt } from "./hits.js";
 import { pointAt } from "./pointer.js";
@@ -55,6 +56,17 @@ export function describe(spot) {
   const doubt = spot.found ? `, doubt ${spot.doubt.toFixed(2)}` : ", placed by a person";
   const changed = { moved: ", moved", resized: ", resized" }[spot.changed] ?? "";
   return `${spot.counted ? "counted" : "struck"} spot${doubt}${changed}, ${width(spot)} wide.`;
+}
+
+/** Shows what is known of the spot under the pointer. */
+export function showUnder(id) {
+  const spot = id === null ? null : sheet.spots.get(id);
+  byId("under").textContent = spot ? upper(describe(spot)) : "";
+}
+
+/** Begins a sentence with a capital. */
+function upper(text) {
+  return text.charAt(0).toUpperCase() + text.slice(1);
 }
 
 /** Says how wide a spot is. */

@@ -4,12 +4,13 @@ import { tell } from "./bell.js";
 import { apply, sheet } from "./sheet.js";
 
 const [FIRST_PAUSE, LONGEST_PAUSE] = [250, 4000]; // milliseconds between attempts
+const REST_AFTER = 5000; // milliseconds out of sight
 
 /** Whether the server answers, and whether it said that it ends. */
 export const server = { there: true, ended: false };
 
 let stream = null;
-let [pause, timer] = [FIRST_PAUSE, 0];
+let [pause, timer, hidden] = [FIRST_PAUSE, 0, 0];
 
 /** Listens to what happens to the open sheet from its present revision on. */
 export function listen() {
@@ -33,6 +34,15 @@ export function listen() {
 function hear(own, name, act) {
   own.addEventListener(name, (event) => own === stream && act(JSON.parse(event.data)));
 }
+
+/** Lets go of the stream while the tab is not seen: a browser holds few connections for all tabs together. */
+function rest() {
+  clearTimeout(hidden);
+  if (document.hidden) hidden = setTimeout(() => { stream?.close(); stream = null; clearTimeout(timer); }, REST_AFTER);
+  else if (stream === null && sheet.id) listen();
+}
+
+document.addEventListener("visibilitychange", rest);
 
 /** The server answers. */
 function found() {

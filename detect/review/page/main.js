@@ -3,6 +3,7 @@
 import * as act from "./act.js";
 import { on, tell } from "./bell.js";
 import * as checked from "./checked.js";
+import { showUnder } from "./cross.js";
 import * as doubtful from "./doubtful.js";
 import * as early from "./early.js";
 import { byId } from "./elements.js";
@@ -101,6 +102,7 @@ async function start() {
   on("view", showPlace);
   on("pointer", showPlace);
   on("stale", reread);
+  on("hovered", showUnder);
   await queue.readQueue(early.queue);
   const session = await early.session;
   byId("folder").textContent = session.folder;

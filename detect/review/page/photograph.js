@@ -51,13 +51,14 @@ async function addCopies(wanted) {
   tell("photograph");
 }
 
-/** Draws what is seen of the photograph. */
+/** Draws what is seen of the photograph; returns how many of its tiles are still missing. */
 export function drawPhotograph(context, { scale, x, y, width, height } = view) {
   context.imageSmoothingEnabled = scale < SHARP_ABOVE;
   if (photograph.kind === "tiles") return drawTiles(context, { scale, x, y, width, height });
   const fits = photograph.copies.filter((copy) => copy.shrink * scale * view.dpr <= 1.01);
   const copy = fits[fits.length - 1] ?? photograph.copies[0];
   if (copy) drawPart(context, copy.bitmap, [-0.5, -0.5, photograph.width, photograph.height], { scale, x, y, width, height });
+  return 0;
 }
 
 /** Draws the part in sight of a picture that covers a rectangle of the photograph. */
@@ -77,16 +78,17 @@ function drawPart(context, bitmap, [left, top, wide, high], { scale, x, y, width
 /** Draws the tiles in sight: the coarsest first, so that there is never a hole, the wanted ones on top. */
 function drawTiles(context, seen) {
   const { levels } = photograph.info;
-  const fits = levels.filter((level) => level.shrink * seen.scale * view.dpr <= 1.5);
+  const fits = levels.filter((level) => seen.scale * view.dpr <= 1.5 * level.shrink);
   const wanted = fits[fits.length - 1] ?? levels[0];
   const coarser = levels.filter((level) => level.level > wanted.level).reverse();
   for (const level of coarser) drawLevel(context, level, seen, level === coarser[0]);
-  drawLevel(context, wanted, seen, true);
+  return drawLevel(context, wanted, seen, true);
 }
 
-/** Draws the tiles of one level that are there, and asks for the others. */
+/** Draws the tiles of one level that are there, and asks for the others; returns how many are missing. */
 function drawLevel(context, level, seen, ask) {
-  const side = photograph.info.tile * level.shrink;
+  const side = photograph.info.tile / level.shrink;
+  let missing = 0;
   const [c0, r0] = [Math.max(0, Math.floor(seen.x / side)), Math.max(0, Math.floor(seen.y / side))];
   const c1 = Math.min(level.columns - 1, Math.floor((seen.x + seen.width / seen.scale) / side));
   const r1 = Math.min(level.rows - 1, Math.floor((seen.y + seen.height / seen.scale) / side));
@@ -95,11 +97,15 @@ function drawLevel(context, level, seen, ask) {
       const key = `${level.level}/${column}/${row}`;
       const bitmap = photograph.tiles.get(key);
       if (bitmap) {
-        const size = [bitmap.width * level.shrink, bitmap.height * level.shrink];
+        const size = [bitmap.width / level.shrink, bitmap.height / level.shrink];
         drawPart(context, bitmap, [column * side - 0.5, row * side - 0.5, ...size], seen);
-      } else if (ask && bitmap === undefined) fetchTile(key);
+      } else {
+        missing += 1;
+        if (ask && bitmap === undefined) fetchTile(key);
+      }
     }
   }
+  return missing;
 }
 
 let asking = 0;

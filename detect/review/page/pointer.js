@@ -127,6 +127,7 @@ function turned(event) {
 function left() {
   if (press) return;
   marks.hovered = null;
+  tell("hovered", null);
   tell("pointer", null);
   tell("marks");
 }

@@ -43,7 +43,7 @@ function fit() {
 /** Draws whatever is stale. */
 function drawFrame() {
   frame = 0;
-  if (stale.photograph) clean("photograph", drawPhotograph);
+  if (stale.photograph) byId("stage").dataset.tiles = clean("photograph", drawPhotograph) ? "some" : "all";
   if (stale.ground) clean("ground", drawGround), (shown.ground = { ...view }), place(canvases.ground, view);
   if (stale.rings) startRings();
   if (job) goOn();
@@ -51,12 +51,12 @@ function drawFrame() {
   Object.assign(stale, { photograph: false, ground: false, rings: false, marks: false });
 }
 
-/** Clears a layer and draws it. */
+/** Clears a layer and draws it; returns what its drawing does. */
 function clean(name, draw) {
   const context = contexts[name];
   context.setTransform(view.dpr, 0, 0, view.dpr, 0, 0);
   context.clearRect(0, 0, view.width, view.height);
-  draw(context);
+  return draw(context);
 }
 
 /** Begins to draw all rings in sight on the layer that is not seen. */
@@ -99,6 +99,7 @@ function place(canvas, { x, y, scale }) {
 /** Follows a movement of the view: few rings are drawn anew, many are shifted until it is still. */
 function moved() {
   lastMove = performance.now();
+  byId("stage").dataset.tiles = "some";
   redraw("photograph", "marks");
   if (!shown.rings || (shown.many ?? 0) <= FEW) return redraw("ground", "rings");
   job = null;

@@ -35,7 +35,8 @@ def test_what_is_struck_restored_and_placed_is_what_analyse_counts(
     assert desk.counted == desk.shown_count == laid.counted
     assert what(server, laid) == ["strike", "strike", "restore", "place"]
     placed = server.log(laid.sheet)[-1]
-    assert math.dist((placed["x"], placed["y"]), MISSED) < 1.5, "fitted to the object"
+    off = math.dist((placed["x"], placed["y"]), MISSED)
+    assert off < 2.5, "nearer to the object than the click, which was 3.6 pixels beside it"
     assert abs(placed["radius"] - RADIUS) < 1.5
     desk.page.click("#mark")
     desk.settle()

@@ -7,7 +7,7 @@ import sys
 from pathlib import Path
 
 import pytest
-from playwright.sync_api import Browser
+from playwright.sync_api import Browser, Dialog
 
 from detect.amendments import Amendment, append_amendment
 from tests.detect.review.browsing import Desk, Server, reviewing
@@ -53,6 +53,16 @@ def test_a_tab_closed_with_unsaved_edits_loses_none(
     server.kill()
     first.click(*FALSE[0][:2])
     first.wait(WAITING)
+    asked: list[str] = []
+
+    def stay(dialog: Dialog) -> None:
+        asked.append(dialog.type)
+        dialog.dismiss()
+
+    first.page.once("dialog", stay)
+    with first.page.expect_event("dialog"):
+        first.page.close(run_before_unload=True)
+    assert asked == ["beforeunload"], "the tab asks before it closes"
     first.page.close()
     assert first.wrong == []
     server.start()
