@@ -6,6 +6,7 @@ SEED = 1
 SIMULATIONS = 999
 FEWEST_SIMULATIONS = 99
 MOST_SIMULATIONS = 1_000_000
+LEVEL = 0.05  # two-sided, at which a verdict departs from random
 
 
 def check_seed(seed: int) -> None:

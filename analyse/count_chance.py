@@ -9,7 +9,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
-from analyse.chance import SIMULATIONS
+from analyse.chance import LEVEL, SIMULATIONS
 from analyse.chance import check_simulations as check_simulations
 from analyse.dispersion import checked_areas, clipped_dispersion
 
@@ -31,6 +31,9 @@ class SimulatedTest:
         smaller (at most 1); never 0.
     simulations : int
         How many there were.
+    low, high : float
+        The two-sided p is 0.05 or less below `low` and above `high`, and nowhere between; NaN where
+        not known.
     """
 
     statistic: float
@@ -38,6 +41,8 @@ class SimulatedTest:
     p_even: float
     p_two_sided: float
     simulations: int
+    low: float = math.nan
+    high: float = math.nan
 
 
 def multinomial_counts(
@@ -128,13 +133,41 @@ def simulated_p(
     seen = clipped_dispersion(counts, areas)
     if seen.n == 0:
         return SimulatedTest(math.nan, math.nan, math.nan, math.nan, simulations)
-    tie = _TIE * max(1.0, seen.chi2)
-    larger = smaller = 0
-    for chi2 in simulated_chi2(seen.n, areas, simulations, rng):
-        larger += int((chi2 >= seen.chi2 - tie).sum())
-        smaller += int((chi2 <= seen.chi2 + tie).sum())
-    upper, lower = (1 + larger) / (simulations + 1), (1 + smaller) / (simulations + 1)
-    return SimulatedTest(seen.chi2, upper, lower, min(1.0, 2 * min(upper, lower)), simulations)
+    return judged_among(
+        seen.chi2, np.concatenate([*simulated_chi2(seen.n, areas, simulations, rng)])
+    )
+
+
+def judged_among(statistic: float, simulated: NDArray[np.float64]) -> SimulatedTest:
+    """Judge a statistic among its values in simulations.
+
+    Parameters
+    ----------
+    statistic : float
+        Large where counts are clumped, small where they are even.
+    simulated : ndarray of shape (m,)
+        What it was in simulations of chance; ties count as extreme.
+
+    Returns
+    -------
+    SimulatedTest
+
+    Examples
+    --------
+    >>> test = judged_among(50.0, np.arange(1.0, 100.0))
+    >>> test.p_two_sided, test.low, test.high
+    (1.0, 2.0, 98.0)
+    """
+    tie = _TIE * max(1.0, statistic)
+    m = simulated.size
+    upper = (1 + int((simulated >= statistic - tie).sum())) / (m + 1)
+    lower = (1 + int((simulated <= statistic + tie).sum())) / (m + 1)
+    beyond = math.floor(LEVEL / 2 * (m + 1) + _TIE)  # so many may lie at or beyond, itself counted
+    low, high = -math.inf, math.inf
+    if beyond >= 1:
+        low, high = np.partition(simulated, (beyond - 1, m - beyond))[[beyond - 1, m - beyond]]
+    both = min(1.0, 2 * min(upper, lower))
+    return SimulatedTest(statistic, upper, lower, both, m, float(low), float(high))
 
 
 def simulated_chi2(

@@ -7,9 +7,9 @@ from dataclasses import dataclass
 
 from scipy import optimize, special
 
+from analyse.chance import LEVEL as LEVEL
 from analyse.count_chance import least_chi2
 
-LEVEL = 0.05
 POWER = 0.80
 WIDE = 0.25  # spread of a cluster in sides of a quadrat, at which it is about as wide as one
 _FEWEST_CLUSTERS = 3
