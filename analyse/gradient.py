@@ -11,6 +11,8 @@ from analyse.verdict import LEVEL, Verdict, p_text
 if TYPE_CHECKING:
     from analyse.trends import Trends
 
+_TOLD = {"clumped": "clumped", "more": "clumped", "even": "evenly spaced", "less": "evenly spaced"}
+
 
 def gradient_remark(
     verdict: Verdict,
@@ -56,12 +58,13 @@ def gradient_remark(
     start = f"The density rises towards {gradient.direction} ({p}, allowing for clumping)"
     left = [each for each in beyond if each.direction is not None]
     if left:
-        return f"{start}; beyond this gradient {_left_words(clearest(left), unit)}."
+        return f"{start}; beyond this gradient {_left_words(verdict, clearest(left), unit)}."
     counts = trends.beyond
     if counts is not None and counts.p_two_sided <= LEVEL:
         more = "more" if counts.p_clumped < counts.p_even else "less"
+        still = "still " if verdict == _TOLD[more] else ""
         return (
-            f"{start}; beyond this gradient the counts still vary {more} than chance would give"
+            f"{start}; beyond this gradient the counts {still}vary {more} than chance would give"
             f" ({p_text(counts.p_two_sided)})."
         )
     return f"{start}{_explained(verdict, before)}."
@@ -78,10 +81,13 @@ def _explained(verdict: Verdict, before: Sequence[Departure]) -> str:
     return ", a slow change that quadrats compared as a whole do not show"
 
 
-def _left_words(most: Departure, unit: str) -> str:
+def _left_words(verdict: Verdict, most: Departure, unit: str) -> str:
     """Say what is left beyond a gradient, and where most."""
     place = f"in quadrats of {length_words(most.at, unit)}"
     if most.name != "vmr_by_side":
         place = f"nearer than {length_words(most.at, unit)}"
-    left = "there is still clumping" if most.direction == "clumped" else "spots still lie evenly"
+    still = "still " if verdict == _TOLD[most.direction or ""] else ""
+    left = (
+        f"there is {still}clumping" if most.direction == "clumped" else f"spots {still}lie evenly"
+    )
     return f"{left}, most {place} (adjusted {p_text(most.adjusted)})"

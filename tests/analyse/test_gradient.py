@@ -50,7 +50,7 @@ def left(direction, name="l_function", adjusted=0.012):
             "clumped",
             left("clumped"),
             left("even", "vmr_by_side"),
-            "; beyond this gradient spots still lie evenly, most in quadrats of 3.5 mm (adjusted"
+            "; beyond this gradient spots lie evenly, most in quadrats of 3.5 mm (adjusted"
             " p = 0.012).",
         ),
         (
@@ -74,18 +74,24 @@ def test_a_gradient_is_named_and_what_is_left_beyond_it(verdict, before, beyond,
 
 def test_what_is_clearest_beyond_the_gradient_is_told():
     both = [*left("clumped", "vmr_by_side", 0.04), *left("even", "nearest_neighbour", 0.01)]
-    assert "spots still lie evenly" in gradient_remark("clumped", trends(), [], both, "mm")
+    assert "spots lie evenly" in gradient_remark("clumped", trends(), [], both, "mm")
 
 
-@pytest.mark.parametrize(("more", "word"), [(True, "more"), (False, "less")])
+@pytest.mark.parametrize(("more", "word"), [(True, "still vary more"), (False, "vary less")])
 def test_counts_that_still_vary_beyond_the_gradient_are_told(more, word):
     said = gradient_remark("clumped", trends(counts_p=0.02, more=more), [], SILENT, "mm")
     assert said == (
-        f"{START}; beyond this gradient the counts still vary {word} than chance would give"
-        " (p = 0.020)."
+        f"{START}; beyond this gradient the counts {word} than chance would give (p = 0.020)."
     )
 
 
 def test_without_a_gradient_there_is_nothing_to_tell():
     with pytest.raises(ValueError, match="no gradient"):
         gradient_remark("clumped", trends(0.2), [], [], "mm")
+
+
+def test_still_is_said_only_of_what_the_verdict_told():
+    even = gradient_remark("evenly spaced", trends(), [], left("even"), "mm")
+    assert "spots still lie evenly" in even
+    new = gradient_remark(NONE, trends(), [], left("clumped"), "mm")
+    assert "there is clumping, most nearer than 3.5 mm" in new
