@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING
 
 import matplotlib as mpl
@@ -22,6 +22,7 @@ if TYPE_CHECKING:
 
 _WIDTH, _HEIGHT = 4.8, 3.0  # inches
 _CLEAR = 0.05  # of the height, left free below what is drawn; thrice that above, for a label
+_MOST_VALUES = 80  # of a curve are drawn; more would only take room in the report
 _LATE = 0.7  # share of the width from which a label stands to the left of its mark
 
 
@@ -68,6 +69,7 @@ def draw_curve(axes: Axes, envelope: Envelope, unit: str) -> DrawnCurve:
     Returns
     -------
     DrawnCurve
+        Of a curve of more than 80 values, some evenly chosen ones and its greatest departure.
 
     Raises
     ------
@@ -75,6 +77,7 @@ def draw_curve(axes: Axes, envelope: Envelope, unit: str) -> DrawnCurve:
         If no look is known for the curve.
     """
     style = LOOKS[envelope.name]
+    whole, envelope = envelope, _thinned(envelope)
     x, observed = envelope.x, envelope.observed
     band = axes.fill_between(
         x, envelope.low, envelope.high, fc=look.BAND, ec=look.BAND_EDGE, lw=0.6
@@ -100,7 +103,7 @@ def draw_curve(axes: Axes, envelope: Envelope, unit: str) -> DrawnCurve:
         ylabel=f"{style.y_name} ({unit})" if style.lengths else style.y_name,
     )
     _draw_directions(axes, style)
-    mark, label = _draw_mark(axes, envelope, unit)
+    mark, label = _draw_mark(axes, whole, unit)
     axes.figure.legend(
         handles=[seen, mean, band], loc="outside upper left", ncols=3, frameon=False,
         fontsize=8.0, handlelength=1.6, columnspacing=1.2, borderaxespad=0.0,
@@ -108,6 +111,17 @@ def draw_curve(axes: Axes, envelope: Envelope, unit: str) -> DrawnCurve:
     return DrawnCurve(
         x, observed, envelope.central, envelope.low, envelope.high, x[envelope.outside], mark, label
     )
+
+
+def _thinned(envelope: Envelope) -> Envelope:
+    """Return a curve of so many values that no eye misses one, its greatest departure among them."""
+    step = -(-len(envelope.x) // _MOST_VALUES)
+    if step == 1:
+        return envelope
+    last, most = len(envelope.x) - 1, envelope.strongest
+    kept = np.unique(np.concatenate([np.arange(0, last, step), [most, last]]))
+    columns = ("x", "observed", "central", "low", "high")
+    return replace(envelope, **{name: getattr(envelope, name)[kept] for name in columns})
 
 
 def _set_height(axes: Axes, envelope: Envelope) -> None:

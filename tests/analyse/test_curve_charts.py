@@ -12,6 +12,7 @@ from matplotlib.figure import Figure
 from analyse import look
 from analyse.curve_charts import LOOKS, curve_figure, draw_curve
 from analyse.embedding import svg_bytes
+from analyse.envelopes import global_envelope
 from tests.analyse.curves import envelope
 
 
@@ -102,3 +103,17 @@ def test_a_curve_takes_little_room_in_the_report_and_the_same_bytes_again(name):
     )
     assert one == two
     assert len(one) < 12_000
+
+
+def test_long_curves_are_thinned_but_keep_their_ends_and_their_greatest_departure():
+    rng = np.random.default_rng(1)
+    x = np.linspace(0.1, 20, 300)
+    simulated = 1 + rng.normal(0, 0.1, (199, 300))
+    seen = global_envelope(1 + 2 * (x == x[137]), simulated, x, name="l_function")
+    drawn = draw_curve(_axes(), seen, "mm")
+    assert len(drawn.x) <= 82
+    assert (drawn.x[0], drawn.x[-1]) == (x[0], x[-1])
+    assert drawn.mark == (x[137], 3.0) == (seen.at, 3.0)
+    kept = np.searchsorted(x, drawn.x)
+    np.testing.assert_array_equal(drawn.low, seen.low[kept])
+    np.testing.assert_array_equal(drawn.observed, seen.observed[kept])
