@@ -16,6 +16,7 @@ from detect.area import StudyArea
 from detect.errors import AmendmentRefused, DetectError, LogCorrupt
 from detect.scale import Scale, scale_from_line
 from detect.sheet import Sheet
+from detect.spot_check import check_marked
 from detect.spots import Spots
 
 _COLUMNS = tuple(field.name for field in fields(Spots))
@@ -141,6 +142,9 @@ class Amended:
             self._area_of(amendment.area)
         if amendment.line:
             self._scale_of(amendment)
+        if amendment.what == "spot_check_marked":
+            drawn = str(amendment.of)
+            check_marked(self.at_id.get(drawn), self.active.get(drawn, False), amendment)
 
     def apply(self, amendment: Amendment) -> None:
         """Apply a change that has been checked; this cannot fail."""
@@ -180,11 +184,19 @@ class Amended:
         if amendment.what == "undo":
             made = {new.spot for new in target.placed}
             for each in self.log:
-                if self.active[each.id] and each.id != target.id and made & set(each.changed):
+                needs = made & set(each.changed) or (
+                    each.what == "spot_check_marked" and each.of == target.id
+                )
+                if self.active[each.id] and each.id != target.id and needs:
                     raise AmendmentRefused(
                         f"would undo the change {target.id!r}, but the later change {each.id!r}"
-                        f" by {each.who} needs its spot; undo that one first"
+                        f" by {each.who} needs its {_made_by(target)}; undo that one first"
                     )
+        elif target.what == "spot_check_marked" and not self.active.get(str(target.of), False):
+            raise AmendmentRefused(
+                f"would redo the change {target.id!r}, but its spot check is undone; redo that one"
+                " first"
+            )
         elif missing := [spot for spot in target.changed if spot not in self._at]:
             raise AmendmentRefused(
                 f"would redo the change {target.id!r}, but its spot {missing[0]!r} is undone;"
@@ -276,6 +288,11 @@ class Amended:
             return replace(scale, lens=lens, note=f"{scale.note}, drawn by hand")
         except DetectError as trouble:
             raise AmendmentRefused(f"gives no scale: {str(trouble).rstrip('.')}") from trouble
+
+
+def _made_by(target: Amendment) -> str:
+    """Return what a later change may need of an earlier one."""
+    return "quadrats" if target.what == "spot_check_drawn" else "spot"
 
 
 def _places(amendment: Amendment) -> list[tuple[float, float]]:

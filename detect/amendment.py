@@ -9,7 +9,9 @@ from dataclasses import dataclass, fields, replace
 from datetime import datetime
 from typing import Any, Literal, get_args
 
-SCHEMA = 2  # 1 knew the first five kinds alone, and did not write its number
+from detect.spot_check import MOST_MARKS, SPOT_CHECK_KINDS, Draw
+
+SCHEMA = 3  # 1 knew the first five kinds alone and did not write its number; 2 no spot checks
 AmendmentKind = Literal[
     "strike",
     "restore",
@@ -25,6 +27,8 @@ AmendmentKind = Literal[
     "unchecked",
     "undo",
     "redo",
+    "spot_check_drawn",
+    "spot_check_marked",
 ]
 _NEEDED: dict[str, tuple[str, ...]] = {
     "strike": (),
@@ -41,13 +45,17 @@ _NEEDED: dict[str, tuple[str, ...]] = {
     "unchecked": (),
     "undo": ("of",),
     "redo": ("of",),
+    "spot_check_drawn": ("draw",),
+    "spot_check_marked": ("of", "quadrat", "count"),
 }
 _ALLOWED: dict[str, tuple[str, ...]] = {
     "strike": ("spot", "spots"),
     "restore": ("spot", "spots"),
     "note": ("spot",),
+    "spot_check_marked": ("marks",),
 }
-_REMARKS = ("note", "checked", "unchecked")  # change nothing of what is counted
+_SINCE = dict.fromkeys(SPOT_CHECK_KINDS, 3)  # schema of a line; of all other kinds 2 still
+_REMARKS = ("note", "checked", "unchecked", *SPOT_CHECK_KINDS)  # change nothing that is counted
 
 
 class SchemaNewer(ValueError):
@@ -123,7 +131,16 @@ class Amendment:
     text : str or None
         A remark.
     of : str or None
-        Id of the amendment that is undone or done again.
+        Id of the amendment that is undone or done again; of the draw that a spot check's marks
+        belong to.
+    draw : Draw or None
+        The quadrats of "spot_check_drawn".
+    quadrat : int or None
+        Number of the quadrat that "spot_check_marked" is about.
+    count : int or None
+        Objects that a person saw in it.
+    marks : tuple of (float, float)
+        Their places in pixels, where they were marked and not only counted.
 
     Raises
     ------
@@ -147,6 +164,10 @@ class Amendment:
     mm: float | None = None
     text: str | None = None
     of: str | None = None
+    draw: Draw | None = None
+    quadrat: int | None = None
+    count: int | None = None
+    marks: tuple[tuple[float, float], ...] = ()
 
     def __post_init__(self) -> None:
         for name in ("id", "time", "who"):
@@ -193,7 +214,7 @@ class Amendment:
 
     def as_dict(self) -> dict[str, Any]:
         """Return plain values for a file: what is given, and the schema's number."""
-        known: dict[str, Any] = {"schema": SCHEMA}
+        known: dict[str, Any] = {"schema": _SINCE.get(self.what, 2)}
         for field in fields(self):
             value = getattr(self, field.name)
             if value is not None and value != ():
@@ -205,6 +226,10 @@ class Amendment:
             known["parts"] = [part.as_dict() for part in self.parts]
         if self.into is not None:
             known["into"] = self.into.as_dict()
+        if self.draw is not None:
+            known["draw"] = self.draw.as_dict()
+        if self.marks:
+            known["marks"] = [list(mark) for mark in self.marks]
         return known
 
     def line_of_log(self) -> str:
@@ -244,6 +269,10 @@ class Amendment:
             values["parts"] = tuple(_new_spot(part) for part in _list("parts", values["parts"]))
         if values.get("into") is not None:
             values["into"] = _new_spot(values["into"])
+        if values.get("draw") is not None:
+            values["draw"] = Draw.from_dict(values["draw"])
+        if "marks" in values:
+            values["marks"] = tuple(_mark(mark) for mark in _list("marks", values["marks"]))
         return cls(**values)
 
 
@@ -262,6 +291,8 @@ def _check_fields(amendment: Amendment) -> None:
             _check_text(name, value)
         if given and name in ("x", "y", "radius", "mm"):
             _check_number(name, value)
+        if given and name in ("quadrat", "count"):
+            _check_whole(name, value)
     if what in ("strike", "restore") and (amendment.spot is None) == (amendment.spots == ()):
         raise ValueError(f"{what!r} needs either spot or spots")
 
@@ -278,6 +309,10 @@ def _check_lists(amendment: Amendment) -> None:
         raise ValueError("'split' needs two parts or more")
     if amendment.what == "merge" and len(amendment.spots) < 2:
         raise ValueError("'merge' needs two spots or more")
+    if amendment.marks and len(amendment.marks) != amendment.count:
+        raise ValueError(f"count is {amendment.count}, but there are {len(amendment.marks)} marks")
+    if amendment.draw is not None and not isinstance(amendment.draw, Draw):
+        raise ValueError("draw must be the draw of a spot check")
     names = amendment.touched
     if len(set(names)) != len(names):
         raise ValueError("one spot is named twice")
@@ -298,6 +333,22 @@ def _new_spot(values: Any) -> NewSpot:
     if not isinstance(values, dict) or set(values) != set(names):
         raise ValueError(f"a new spot must have {', '.join(names)}, no more and no less")
     return NewSpot(**values)
+
+
+def _mark(values: Any) -> tuple[float, float]:
+    """Read the place of one mark."""
+    if not isinstance(values, list) or len(values) != 2:
+        raise ValueError("a mark must be two numbers, x and y")
+    for name, value in zip("xy", values, strict=True):
+        _check_number(name, value)
+    return (values[0], values[1])
+
+
+def _check_whole(name: str, value: Any) -> None:
+    """Refuse what is no whole number of things that a person could count."""
+    sound = isinstance(value, int) and not isinstance(value, bool)
+    if not sound or not 0 <= value <= (MOST_MARKS if name == "count" else 10**9):
+        raise ValueError(f"{name} must be a whole number of 0 or more, not {value!r:.40}")
 
 
 def _check_text(name: str, text: Any) -> None:

@@ -13,6 +13,7 @@ from numpy.typing import NDArray
 from detect.amended import Amended
 from detect.amendment import Amendment
 from detect.sheet import Sheet
+from detect.spot_check import SPOT_CHECK_KINDS
 from detect.spots import Spots
 
 ReviewState = Literal["new", "in_review", "checked", "changed_since_checked"]
@@ -171,7 +172,12 @@ def _mark(amended: Amended) -> Amendment | None:
 def _state(amended: Amended, mark: Amendment | None) -> ReviewState:
     """Return how far the review is."""
     if mark is None:
-        return "in_review" if amended.log else "new"
+        touched = any(
+            each.what not in SPOT_CHECK_KINDS
+            and (each.of is None or amended.at_id[each.of].what not in SPOT_CHECK_KINDS)
+            for each in amended.log
+        )
+        return "in_review" if touched else "new"
     then: set[str] = set()
     for each in amended.log:
         if each.id == mark.id:

@@ -108,7 +108,7 @@ INVALID: list[dict[str, Any]] = [
     edit("e", "strike", spot="1") | {"who": ""},
     edit("e", "strike", spot="1") | {"who": "x" * 101},
     edit("e", "strike", spot="1") | {"time": "yesterday"},
-    edit("e", "strike", spot="1") | {"schema": 3},
+    edit("e", "strike", spot="1") | {"schema": 4},
     edit("e", "strike", spot="1") | {"schema": "2"},
     edit("x" * 101, "strike", spot="1"),
     {"what": "strike"},
@@ -459,7 +459,7 @@ def test_torn_corrupt_and_newer_lines_are_told_apart(page: Page) -> None:
         row = shut.get("api/queue").json()["sheets"][0]
         assert row["trouble"]["code"] == "log_corrupt"
     # Newer: shut as well, and said so.
-    page.log.write_bytes(lines[0].replace(b'"schema": 2', b'"schema": 3'))
+    page.log.write_bytes(lines[0].replace(b'"schema": 2', b'"schema": 4'))
     newer = Page(page.folder, page.sheets)
     answer = newer.get(f"api/sheets/{newer.sheet}")
     assert (answer.status_code, answer.json()["error"]["code"]) == (409, "log_newer")

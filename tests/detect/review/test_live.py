@@ -170,7 +170,7 @@ def test_the_queue_tells_how_far_each_photograph_is(tmp_path: Path) -> None:
 
 def test_a_session_says_who_and_what(tmp_path: Path) -> None:
     told = review_of(tmp_path).get("api/session").json()
-    assert (told["schema"], told["folder"]) == (2, tmp_path.name)
+    assert (told["schema"], told["folder"]) == (3, tmp_path.name)
     assert told["limits"]["amendments"] == 500
 
 
