@@ -15,6 +15,7 @@ from analyse.pattern import Pattern, pattern_from_sheet
 from analyse.plan import Trial
 from analyse.quick import verdict_as_found
 from analyse.report import RenderedPage, render_page, write_report
+from analyse.spot_check import spot_check_of
 from analyse.tables import quadrats_csv, summary_csv, tests_csv
 from detect.amended import current_state
 from detect.amendments import Amendment
@@ -81,7 +82,11 @@ def analyse_sheet(
     chance = {"seed": trial.seed, "simulations": trial.simulations}
     findings = analyse_pattern(pattern, grid, workers=workers, **chance)
     if amendments:
-        findings = replace(findings, verdict_before=verdict_as_found(sheet, grid, **chance))
+        findings = replace(
+            findings,
+            verdict_before=verdict_as_found(sheet, grid, **chance),
+            spot_check=spot_check_of(sheet, amendments),
+        )
     state = current_state(sheet, amendments)
     return Analysed(
         findings, render_page(findings, state, photograph, factors=factors), factors or {}

@@ -10,7 +10,7 @@ from typing import TYPE_CHECKING, Annotated, Any
 import typer
 from typer.core import TyperGroup
 
-from analyse import review_command
+from analyse import review_command, spot_check_command
 from analyse.command_options import (
     GridOption,
     QuadratOption,
@@ -313,6 +313,8 @@ def survey(
 app.command("score", cls=PlainCommand)(score_command.score)
 
 app.command("review", cls=PlainCommand)(review_command.review)
+
+app.command("spot-check", cls=PlainCommand)(spot_check_command.spot_check)
 
 
 def _recipe(folder: Path, recipe: Path | None, typed: dict[str, str | None]) -> Recipe | None:

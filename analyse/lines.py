@@ -35,6 +35,9 @@ def show_findings(findings: Sequence[Findings]) -> None:
     )
     for line in _planted(findings):
         typer.echo(line)
+    for each in findings[:_MOST_NOTES]:
+        if each.spot_check is not None:
+            typer.echo(f"{each.name}: {each.spot_check.sentence}")
     for note in _notes(findings):
         typer.echo(f"Note: {note}", err=True)
 

@@ -26,6 +26,7 @@ from analyse.verdict import Verdict
 
 if TYPE_CHECKING:
     from analyse.global_tests import GlobalTests
+    from analyse.spot_check import SpotCheck
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -102,6 +103,9 @@ class Findings:
     shown : WouldShow or None
         The smallest clusters and the smallest spacing that the counts would have shown; None where
         there are too few to tell.
+    spot_check : SpotCheck or None
+        What a person's blind count of random quadrats says of the spots; None where there was none,
+        or not all its quadrats were counted.
     """
 
     name: str
@@ -135,6 +139,7 @@ class Findings:
     beyond: GlobalTests | None = None
     beyond_holm: HolmFamily | None = None
     shown: WouldShow | None = None
+    spot_check: SpotCheck | None = None
 
     def __post_init__(self) -> None:
         hold_columns(self, ("expected", "residuals"), length=len(self.counts))

@@ -336,7 +336,7 @@ def _said(
             f" than {allowed}. Use the corrected total, or check every spot."
         )
     more = _would_settle(sample, total, counted, within)
-    told = f" About {more} quadrats would settle it." if more else ""
+    told = f" About {more} such quadrats would settle it, or fewer larger ones." if more else ""
     return f"{said} Whether it is within {allowed} of the truth is not settled.{told}"
 
 

@@ -24,6 +24,11 @@ from analyse.indices import (
 )
 from analyse.power_rows import power_rows
 from analyse.reviewing import REVIEW_SUMMARY_COLUMNS, review_cells
+from analyse.spot_check_rows import (
+    SPOT_CHECK_SUMMARY_COLUMNS,
+    spot_check_cells,
+    spot_check_rows,
+)
 from analyse.trend_rows import trend_rows
 from analyse.unseen import planted_cells, planted_rows
 from analyse.verdict import POWER
@@ -93,6 +98,7 @@ SUMMARY_COLUMNS = [
     *COUNT_SUMMARY_COLUMNS,
     *REVIEW_SUMMARY_COLUMNS,
     *BESIDE_COLUMNS,
+    *SPOT_CHECK_SUMMARY_COLUMNS,
 ]
 TEST_COLUMNS = ["photograph", "statistic", "value", "low", "high", "p", "method", "n", "notes"]
 _FISHER = "index of dispersion, chi-square (Fisher, Thornton and Mackenzie 1922)"
@@ -237,6 +243,7 @@ def _summary(each: Findings) -> list[Cell]:
         *count_summary_cells(each),
         *review_cells(each),
         *beside_cells(each),
+        *spot_check_cells(each),
     ]
 
 
@@ -331,6 +338,7 @@ _PARTS = (
     distance_rows,
     block_rows,
     envelope_rows,
+    spot_check_rows,
 )
 
 
