@@ -175,6 +175,8 @@ def test_every_command_line_shown_runs(
             detected += list(out.glob("*.points.csv"))
         elif arguments[0] == "score":
             assert (out / "score.csv").is_file()
+        elif arguments[0] == "spot-check":
+            assert len(list(out.glob("*.spot_check.*"))) == 2
         else:
             assert (out / "report.html").is_file()
     # The options shown are those of the recipe: they find the same spots in the same places.
