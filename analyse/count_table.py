@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass
+from itertools import pairwise
 from pathlib import Path
 
 import numpy as np
@@ -14,7 +15,8 @@ from analyse.rows import Row, read_rows, whole_in
 from detect.errors import OptionWrong
 from detect.lengths import Length
 
-FREQUENCY_COLUMNS = ("frequency", "frequencies", "freq")
+FREQUENCY_COLUMNS = ("frequency", "frequencies", "freq", "f", "observed", "number of quadrats")
+_FEWEST_CLASSES = 3  # of values 0, 1, 2, ... that make one think of frequencies
 MOST_COUNTED_QUADRATS = 1_000_000  # a table of frequencies that stands for more is a slip
 
 
@@ -32,6 +34,8 @@ class CountTable:
         Shape of the rectangle the quadrats form, where they form one.
     side : Length or None
         Side of a quadrat, where it is known.
+    like_frequencies : bool
+        Whether the table could as well be one of frequencies whose columns are not named so.
 
     Raises
     ------
@@ -44,6 +48,7 @@ class CountTable:
     rows: int | None = None
     columns: int | None = None
     side: Length | None = None
+    like_frequencies: bool = False
 
     def __post_init__(self) -> None:
         counts = np.array(self.counts, dtype=np.int64).reshape(-1)
@@ -63,8 +68,8 @@ def read_counts(path: Path, *, side: Length | None = None, transect: bool = Fals
     Parameters
     ----------
     path : Path
-        A CSV file. With a column `count` alone, one row per quadrat; with `frequency` (or `freq`)
-        beside it, one row per value and how many quadrats held it; without a header, contiguous
+        A CSV file. With a column `count` alone, one row per quadrat; with `frequency` (or another
+        of `FREQUENCY_COLUMNS`) beside it, one row per value and how many quadrats held it; without a header, contiguous
         quadrats. Of two columns of which one is `frequency` the other holds the counts, whatever
         its name.
     side : Length or None
@@ -114,7 +119,33 @@ def read_counts(path: Path, *, side: Length | None = None, transect: bool = Fals
             " dispersion needs counts of at least 2."
         )
     columns = None if shape is None else shape[1]
-    return CountTable(path.name, np.array(counts), shape and shape[0], columns, side)
+    doubtful = often is None and _like_frequencies(rows, names)
+    return CountTable(path.name, np.array(counts), shape and shape[0], columns, side, doubtful)
+
+
+def _like_frequencies(rows: Sequence[Row], names: Sequence[str]) -> bool:
+    """Tell whether a column of values 0, 1, 2, ... stands beside another of whole numbers."""
+    named = "count" in names
+    body = rows[1:] if named else rows
+    if len(body) < _FEWEST_CLASSES or len(names) < 2 or (not named and len(names) != 2):
+        return False
+    column = names.index("count") if named else 0
+    columns = [
+        [row.cells[k] if k < len(row.cells) else "" for row in body] for k in range(len(names))
+    ]
+    values = columns.pop(column)
+    return (
+        values[0] in ("0", "1")
+        and _numbered(values)
+        and any(all(map(str.isdecimal, cells)) and not _numbered(cells) for cells in columns)
+    )
+
+
+def _numbered(cells: Sequence[str]) -> bool:
+    """Tell whether cells are whole numbers that go up by 1."""
+    return all(map(str.isdecimal, cells)) and all(
+        int(later) == int(cell) + 1 for cell, later in pairwise(cells)
+    )
 
 
 def _counts_from_frequencies(

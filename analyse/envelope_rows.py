@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Iterator, Sequence
 from typing import TYPE_CHECKING
 
@@ -178,16 +179,11 @@ def _indices(each: Findings, tests: GlobalTests, ending: str) -> Iterator[list[C
             p = getattr(seen, f"p_{side}")
             method = f"{source}, {_SIMULATED}, {words}"
             said = f"expected {seen.expected:.6g}; {note}"
-            yield [
-                f"{name}_simulated{ending}_{side}",
-                seen.value,
-                None,
-                None,
-                p,
-                method,
-                each.n,
-                said,
-            ]
+            value: Cell = seen.value
+            if not math.isfinite(seen.value):
+                value, said = None, f"infinite: every point coincides with another; {said}"
+            statistic = f"{name}_simulated{ending}_{side}"
+            yield [statistic, value, None, None, p, method, each.n, said]
 
 
 def _where(seen: Envelope) -> str:

@@ -197,7 +197,10 @@ def analyse_counts(
         None,
         QuadratCounts(table.counts, areas, np.ones(q, dtype=bool), None, row, column),
         None if area is None else density_per_cm2(n, area, 0.0),
-        ("no_area",) if side is None else (),
+        (
+            *(("no_area",) if side is None else ()),
+            *(("like_frequencies",) if table.like_frequencies else ()),
+        ),
         {},
         settings,
     )

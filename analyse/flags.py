@@ -29,6 +29,8 @@ FLAGS: dict[str, str] = {
     "touching": "Nearer than {touching} there are too few neighbours, and a spot is usually {width}"
     " wide: touching spots counted as one make any pattern look more even than it is.",
     "no_area": "A table of counts tells no study area, so no density is given.",
+    "like_frequencies": "Counts that run 0, 1, 2, ... were each taken for one of {q} quadrats; if the"
+    " column beside them says how many quadrats held each, name the two columns count and frequency.",
     "few_quadrats": "With only {q} quadrats, only a strong departure from random could be seen.",
     "low_expected": "A quadrat expects only {mean_expected:.2g} points on average:"
     " the chi-square p and the stated power are rough there; the simulated p holds.",

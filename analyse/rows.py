@@ -70,6 +70,12 @@ def read_rows(path: Path) -> list[Row]:
             f"{path.name} separates its columns by semicolons or tabs;"
             " save it with commas, and a dot for decimals."
         )
+    cells = rows[0].cells[0].split()
+    if len(rows[0].cells) == 1 and len(cells) > 1 and all(_REAL.fullmatch(cell) for cell in cells):
+        raise TableWrong(
+            f"{path.name} separates its numbers by spaces; save it with commas, and a dot for"
+            " decimals."
+        )
     return rows
 
 

@@ -270,6 +270,11 @@ def _whole_rows(each: Findings) -> Iterator[list[Cell]]:
         return
     counts = each.counts.counts[each.counts.whole]
     note = "whole quadrats"
+    for name, value, method in (
+        ("mean", whole.mean, "points / quadrats"),
+        ("variance", whole.variance, "sum of squared deviations / (q - 1)"),
+    ):
+        yield [name, value, None, None, None, method, whole.q, note]
     yield ["vmr", whole.vmr, None, None, None, "variance-to-mean ratio", whole.q, note]
     yield from _sides("chi2_whole", whole.chi2, whole, _FISHER, whole.q, f"df {whole.df}; {note}")
     indices = {

@@ -144,7 +144,10 @@ def _numbers(everything: Dispersion, whole: Dispersion | None, simulated: Simula
     judged = f"two-sided {p_text(simulated.p_two_sided)}, simulated"
     if whole is not None and whole.q == everything.q:
         return f"VMR {everything.vmr:.2f}, {judged}"
-    rest = "" if whole is None else f"; VMR {whole.vmr:.2f} on the {whole.q} whole ones"
+    rest = ""
+    if whole is not None:
+        alone = f"VMR {whole.vmr:.2f} on" if whole.n else "no spot in"
+        rest = f"; {alone} the {whole.q} whole ones"
     return f"X2/df {everything.vmr:.2f} over all {everything.q} quadrats by area, {judged}{rest}"
 
 

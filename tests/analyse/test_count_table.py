@@ -109,3 +109,32 @@ def test_a_table_checks_itself() -> None:
         CountTable("t", np.array([1, 1, 1]), 2, 2)
     with pytest.raises(ValueError, match="read-only"):
         CountTable("t", np.array([1, 1])).counts[0] = 3
+
+
+@pytest.mark.parametrize("often", ["f", "Observed", "number of quadrats"])
+def test_other_names_of_frequencies(tmp_path: Path, often: str) -> None:
+    """They once were passed over, so that each row counted as one quadrat."""
+    read = read_counts(table(tmp_path, f"count,{often},expected\n0,2,1.5\n1,3,2.5\n"))
+    assert read.counts.tolist() == [0, 0, 1, 1, 1]
+
+
+@pytest.mark.parametrize(
+    ("text", "doubtful"),
+    [
+        ("count,n\n0,20\n1,10\n2,5\n", True),
+        ("0,20\n1,10\n2,5\n", True),
+        ("1,20\n2,10\n3,5\n", True),
+        ("count,frequency\n0,20\n1,10\n2,5\n", False),
+        ("quadrat,count\n1,0\n2,1\n3,2\n", False),
+        ("count\n0\n1\n2\n", False),
+        ("count,note\n0,a\n1,b\n2,c\n", False),
+        ("count,note\n0\n1,3\n2,4\n", False),
+        ("0,20,3\n1,10,3\n2,5,3\n", False),
+        ("0,20\n1,10\n", False),
+        ("3,20\n1,10\n2,5\n", False),
+    ],
+)
+def test_a_table_that_may_be_one_of_frequencies_is_told_apart(
+    tmp_path: Path, text: str, doubtful: bool
+) -> None:
+    assert read_counts(table(tmp_path, text)).like_frequencies is doubtful

@@ -84,10 +84,12 @@ def test_curves_can_be_drawn_again_from_their_file(found):
     assert {row["photograph"] for row in rows} == {"bed.csv"}
 
 
-def test_the_summary_ends_with_what_was_judged_beside_the_quadrats(found):
+def test_the_summary_tells_what_was_judged_beside_the_quadrats(found):
     text = tables.summary_csv([found], factors={"bed.csv": {"treatment": "A"}})
     (row,) = rows_of(text)
-    assert list(row)[-len(BESIDE_COLUMNS) - 1 :] == [*BESIDE_COLUMNS, "treatment"]
+    first = list(row).index(BESIDE_COLUMNS[0])
+    assert list(row)[first : first + len(BESIDE_COLUMNS)] == BESIDE_COLUMNS
+    assert list(row)[-1] == "treatment"
     one, two, three = departures_of(found.tests.envelopes, found.holm)
     for each, name, place in (
         (one, "sides", "side_of_departure"),
@@ -113,3 +115,18 @@ def test_counts_alone_leave_these_cells_empty_and_have_no_curves():
     assert rows_of(curves_csv([counts])) == []
     names = {line["statistic"] for line in rows_of(tables.tests_csv([counts]))}
     assert not names & set(CURVES)
+
+
+def test_points_that_all_coincide_leave_no_infinite_cell():
+    """Hopkins and Skellam's index once stood there as inf."""
+    places = np.random.default_rng(3).uniform(0, 100, (20, 2))
+    twice = analyse_points(np.repeat(places, 2, axis=0), SQUARE, name="bed.csv", simulations=99)
+    text = tables.tests_csv([twice])
+    row = next(
+        each for each in rows_of(text) if each["statistic"] == "hopkins_skellam_simulated_clumped"
+    )
+    assert (row["value"], float(row["p"])) == ("", 0.01)
+    assert "infinite: every point coincides with another" in row["notes"]
+    for each in (text, tables.summary_csv([twice]), curves_csv([twice])):
+        cells = {cell.lower() for row in csv.reader(io.StringIO(each)) for cell in row}
+        assert not cells & {"inf", "-inf", "nan"}

@@ -320,3 +320,10 @@ def test_a_table_without_folder_keeps_its_name(tmp_path: Path) -> None:
     path = tmp_path / "bed 4.csv"
     path.write_text("x,y\n1,1\n")
     assert analyse_pattern(read_points(path, area=DISH), simulations=99).name == "bed 4.csv"
+
+
+def test_what_may_be_frequencies_is_said() -> None:
+    table = CountTable("bed.csv", np.array([0, 1, 2, 20, 9, 4]), like_frequencies=True)
+    found = analyse_counts(table, simulations=99)
+    assert "like_frequencies" in found.flags
+    assert any("taken for one of 6 quadrats" in sentence for sentence in found.flag_sentences)

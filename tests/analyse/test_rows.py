@@ -36,6 +36,7 @@ def test_quoted_cells_may_hold_commas(tmp_path: Path) -> None:
         (b"# nothing\n\n", r"bed.csv is empty"),
         (b"x;y\n1,5;2\n", r"separates its columns by semicolons or tabs; save it with commas"),
         (b"x\ty\n1\t2\n", r"separates its columns by semicolons or tabs"),
+        (b"1 2 3\n4 5 6\n", r"separates its numbers by spaces; save it with commas"),
         (b"x,y\n\xff\xfe1,2", r"bed.csv is no text in UTF-8; save it as CSV in UTF-8"),
         (b"x,y\n1,\x00\n", r"bed.csv is not a table but some other kind of file"),
         (b'x,y\n"1,2\n', r"bed.csv, row 2, is not CSV \(unexpected end of data\)"),

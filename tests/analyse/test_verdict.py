@@ -150,3 +150,10 @@ def test_the_verdicts_own_test_has_about_the_power_it_states(
     chi2 = ((counts - mean) ** 2).sum(axis=1) / mean
     upper = (1 + null.size - np.searchsorted(null, chi2 - 1e-9)) / (null.size + 1)
     assert low < np.mean(upper <= 0.025) < high
+
+
+def test_whole_quadrats_without_a_spot_have_no_ratio_in_the_sentence() -> None:
+    """The sentence once spoke of a VMR of nan."""
+    everything = dispersion([9, 0, 1, 0, 6, 0, 0, 8, 0, 1])
+    said = sentence("clumped", everything, dispersion([0, 0]), judged(0.001, 1.0), detectable(9))
+    assert said.endswith("two-sided p = 0.002, simulated; no spot in the 2 whole ones).")
