@@ -7,7 +7,10 @@ from collections.abc import Sequence
 from dataclasses import dataclass, field, replace
 from pathlib import Path
 
+from numpy.typing import ArrayLike
+
 from analyse.count_table import CountTable
+from analyse.crowding import crowding_of_holes
 from analyse.envelope_rows import curves_csv
 from analyse.findings import Findings, analyse_counts, analyse_pattern
 from analyse.grid_options import GridOptions
@@ -54,6 +57,7 @@ def analyse_sheet(
     trial: Trial,
     factors: dict[str, str] | None = None,
     workers: int = 1,
+    holes: int | None = None,
 ) -> Analysed:
     """Analyse the spots of a sheet as people left them, and draw its page.
 
@@ -73,6 +77,8 @@ def analyse_sheet(
         Treatment, block, dilution.
     workers : int
         How many processes share the simulations.
+    holes : int or None
+        Of the sampler's plate that is photographed, where it has holes.
 
     Returns
     -------
@@ -87,6 +93,7 @@ def analyse_sheet(
             verdict_before=verdict_as_found(sheet, grid, **chance),
             spot_check=spot_check_of(sheet, amendments),
         )
+    findings = _with_holes(findings, [findings.n], holes)
     state = current_state(sheet, amendments)
     return Analysed(
         findings, render_page(findings, state, photograph, factors=factors), factors or {}
@@ -94,7 +101,12 @@ def analyse_sheet(
 
 
 def analyse_table(
-    table: Pattern | CountTable, *, grid: GridOptions, trial: Trial, workers: int = 1
+    table: Pattern | CountTable,
+    *,
+    grid: GridOptions,
+    trial: Trial,
+    workers: int = 1,
+    holes: int | None = None,
 ) -> Analysed:
     """Analyse a table of points or of counts, and draw its page.
 
@@ -108,6 +120,8 @@ def analyse_table(
         Seed and number of simulations.
     workers : int
         How many processes share the simulations over sides and distances of points.
+    holes : int or None
+        Of a sampler's plate, where each count is of one plate's filled holes.
 
     Returns
     -------
@@ -118,7 +132,16 @@ def analyse_table(
         findings = analyse_counts(table, **chance)
     else:
         findings = analyse_pattern(table, grid, workers=workers, **chance)
+    counts = table.counts if isinstance(table, CountTable) else [findings.n]
+    findings = _with_holes(findings, counts, holes)
     return Analysed(findings, render_page(findings))
+
+
+def _with_holes(findings: Findings, counts: ArrayLike, holes: int | None) -> Findings:
+    """Correct filled holes of plates, where there are holes."""
+    if holes is None:
+        return findings
+    return replace(findings, crowding=crowding_of_holes(counts, holes))
 
 
 def write_results(

@@ -13,6 +13,7 @@ from typer.core import TyperGroup
 from analyse import review_command, spot_check_command
 from analyse.command_options import (
     GridOption,
+    HolesOption,
     QuadratOption,
     RingsOption,
     SeedOption,
@@ -175,6 +176,7 @@ def analyse(
             rich_help_panel=TABLES,
         ),
     ] = False,
+    holes: HolesOption = None,
     quadrat: QuadratOption = None,
     grid: GridOption = None,
     rings: RingsOption = None,
@@ -188,7 +190,10 @@ def analyse(
 
     laid = grid_from({"quadrat": quadrat, "grid": grid, "rings": rings}, named=spelled)
     trial = _with_chance(Trial(), seed, simulations)
-    given = gather_inputs(Given(inputs or [], counts or [], area, unit, laid, trial, transect))
+    plate = whole(holes, "--holes")
+    given = gather_inputs(
+        Given(inputs or [], counts or [], area, unit, laid, trial, transect, plate)
+    )
     tasks, processes = shared_out(given, workers_for(whole(workers, "--workers")))
     make_folder(out)
     with progress_on_terminal("Analysing", len(tasks)) as progress:

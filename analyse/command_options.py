@@ -40,6 +40,16 @@ RingsOption = Annotated[
         rich_help_panel=GRID,
     ),
 ]
+HolesOption = Annotated[
+    str | None,
+    typer.Option(
+        "--holes",
+        help="The plates are of an air sampler with so many holes: also give the positive-hole count"
+        " (each row of a table of counts is one plate's filled holes).",
+        metavar="N",
+        show_default=False,
+    ),
+]
 SeedOption = Annotated[
     str | None,
     typer.Option(

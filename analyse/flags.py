@@ -28,6 +28,11 @@ FLAGS: dict[str, str] = {
     "duplicates": "Points at the very place of another: {duplicates}; check for double entries.",
     "touching": "Nearer than {touching} there are too few neighbours, and a spot is usually {width}"
     " wide: touching spots counted as one make any pattern look more even than it is.",
+    "crowded": "Spots lie so close that some hide others: if they lie at random, the {counted} counted are"
+    " rather {corrected} (95 % limits {corrected_low} to {corrected_high}); more where they are clumped,"
+    " fewer where they keep apart.",
+    "too_crowded": "The spots lie so close that the count cannot be corrected for those seen as one;"
+    " dilute, or count a part of the area by eye.",
     "no_area": "A table of counts tells no study area, so no density is given.",
     "like_frequencies": "Counts that run 0, 1, 2, ... were each taken for one of {q} quadrats; if the"
     " column beside them says how many quadrats held each, name the two columns count and frequency.",

@@ -10,6 +10,7 @@ from shapely.geometry.base import BaseGeometry
 
 from analyse.analysis import Analysed, analyse_sheet, analyse_table
 from analyse.count_table import read_counts
+from analyse.crowding import MOST_HOLES
 from analyse.errors import AnalyseError
 from analyse.grid_options import GridOptions
 from analyse.plan import Trial
@@ -47,6 +48,8 @@ class Input:
         Whether its counts stand in the order of a line of quadrats.
     processes : int
         How many share its simulations.
+    holes : int or None
+        Of the sampler's plate that its counts, or its points together, are of.
     """
 
     path: Path
@@ -57,6 +60,7 @@ class Input:
     counts: bool = False
     transect: bool = False
     processes: int = 1
+    holes: int | None = None
 
 
 @dataclass(frozen=True, slots=True)
@@ -79,6 +83,8 @@ class Given:
         Seed and number of simulations.
     transect : bool
         Whether the tables of counts are transects.
+    holes : int or None
+        Of the sampler's plates that everything given is of.
     """
 
     paths: Sequence[Path]
@@ -88,6 +94,7 @@ class Given:
     grid: GridOptions = field(default_factory=GridOptions)
     trial: Trial = field(default_factory=Trial)
     transect: bool = False
+    holes: int | None = None
 
 
 def gather_inputs(given: Given) -> list[Input]:
@@ -124,7 +131,7 @@ def gather_inputs(given: Given) -> list[Input]:
     inputs += [Input(path, *chosen, area, unit) for path in tables]
     inputs += [Input(path, *chosen, counts=True, transect=given.transect) for path in given.counts]
     _check_names(inputs)
-    return inputs
+    return [replace(each, holes=given.holes) for each in inputs]
 
 
 def shared_out(inputs: Sequence[Input], cores: int) -> tuple[list[Input], int | None]:
@@ -158,15 +165,23 @@ def analyse_input(each: Input) -> Analysed:
     """Read and analyse one file."""
     if each.counts:
         table = read_counts(each.path, side=each.grid.side, transect=each.transect)
-        return analyse_table(table, grid=each.grid, trial=each.trial)
+        return analyse_table(table, grid=each.grid, trial=each.trial, holes=each.holes)
     if each.area is not None:
         points = read_points(each.path, area=each.area, unit=each.unit)
-        return analyse_table(points, grid=each.grid, trial=each.trial, workers=each.processes)
+        return analyse_table(
+            points, grid=each.grid, trial=each.trial, workers=each.processes, holes=each.holes
+        )
     sheet = read_sheet(each.path)
     amendments = read_amendments(amendments_path(each.path))
     photograph = photograph_of(sheet, each.path.parent)
     return analyse_sheet(
-        sheet, amendments, photograph, grid=each.grid, trial=each.trial, workers=each.processes
+        sheet,
+        amendments,
+        photograph,
+        grid=each.grid,
+        trial=each.trial,
+        workers=each.processes,
+        holes=each.holes,
     )
 
 
@@ -197,6 +212,8 @@ def _check_options(given: Given, tables: Sequence[Path], others: Sequence[Path])
                 f"{name} {value} is for tables of points; a sheet has its own, and counts have"
                 " none. Leave it out."
             )
+    if given.holes is not None and not 1 <= given.holes <= MOST_HOLES:
+        raise OptionWrong(f"--holes must be from 1 to {MOST_HOLES}, not {given.holes}.")
     if given.transect and not given.counts:
         raise OptionWrong("--transect is for tables of counts; give them with --counts.")
     for name, way in (("--grid", given.grid.shape), ("--rings", given.grid.rings)):

@@ -16,6 +16,7 @@ from analyse.clumped_quadrats import clumped_in_quadrats
 from analyse.contiguous import FEWEST_QUADRATS as FEWEST_IN_ORDER
 from analyse.contiguous import Blocks, block_variances
 from analyse.count_chance import least_chi2, simulated_p
+from analyse.crowding import Crowding, crowding_of_patches
 from analyse.density import Limits
 from analyse.departures import length_words, within_a_spot
 from analyse.dispersion import (
@@ -119,6 +120,8 @@ def judged(subject: Subject, seed: int, simulations: int, workers: int = 1) -> F
     if touching:
         lengths = {"touching": max(each.at for each in touching), "width": width}
         values |= {name: length_words(at, subject.unit or "") for name, at in lengths.items()}
+    crowding = _crowding(subject.pattern)
+    values |= {} if crowding is None else crowding.values
     return Findings(
         name=subject.name,
         n=everything.n,
@@ -137,7 +140,10 @@ def judged(subject: Subject, seed: int, simulations: int, workers: int = 1) -> F
         sentence=" ".join(filter(None, said)),
         detectable=seen,
         shown=shown,
-        flags=subject.flags + ("touching",) * bool(touching) + count_flags(values),
+        flags=subject.flags
+        + ("touching",) * bool(touching)
+        + (() if crowding is None else crowding.flags)
+        + count_flags(values),
         flag_values=values,
         seed=seed,
         settings=subject.settings | {"simulations": simulations, "level": LEVEL},
@@ -150,6 +156,7 @@ def judged(subject: Subject, seed: int, simulations: int, workers: int = 1) -> F
         holm=beside.holm,
         beyond=beside.beyond,
         beyond_holm=beside.beyond_holm,
+        crowding=crowding,
     )
 
 
@@ -174,6 +181,14 @@ def stream(seed: int, name: str) -> np.random.Generator:
     """
     check_seed(seed)
     return np.random.default_rng([seed, zlib.crc32(name.encode("utf-8"))])
+
+
+def _crowding(pattern: Pattern | None) -> Crowding | None:
+    """Return the count corrected for spots too near to others to be seen, where that is measured."""
+    if pattern is None or pattern.planted is None or pattern.planted.blind is None:
+        return None
+    blind = pattern.planted.blind
+    return crowding_of_patches(pattern, blind.value, blind.standard_error)
 
 
 def _trends(subject: Subject, seed: int, simulations: int) -> Trends | None:

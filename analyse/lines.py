@@ -38,6 +38,8 @@ def show_findings(findings: Sequence[Findings]) -> None:
     for each in findings[:_MOST_NOTES]:
         if each.spot_check is not None:
             typer.echo(f"{each.name}: {each.spot_check.sentence}")
+        if each.crowding is not None and each.crowding.by == "holes":
+            typer.echo(f"{each.name}: {each.crowding.sentence}")
     for note in _notes(findings):
         typer.echo(f"Note: {note}", err=True)
 

@@ -84,6 +84,7 @@ def page_words(
         },
         "facts": _facts(findings, sheet),
         "planted": planted_sentence(findings.pattern),
+        "holes": _holes(findings),
         "picture": None if sheet is None else _picture(findings, sheet),
         "numbered": len(findings.counts) <= MOST_COUNTS,
         "points_alt": _points_alt(findings),
@@ -97,6 +98,12 @@ def page_words(
         "method": method_words(findings),
         "settings": _settings(findings, sheet),
     }
+
+
+def _holes(findings: Findings) -> str:
+    """Say what filled holes of a sampler's plates come to; empty for anything else."""
+    seen = findings.crowding
+    return "" if seen is None or seen.by != "holes" else seen.sentence
 
 
 def _beside(findings: Findings) -> list[str]:

@@ -25,6 +25,7 @@ from analyse.trends import Trends
 from analyse.verdict import Verdict
 
 if TYPE_CHECKING:
+    from analyse.crowding import Crowding
     from analyse.global_tests import GlobalTests
     from analyse.spot_check import SpotCheck
 
@@ -106,6 +107,9 @@ class Findings:
     spot_check : SpotCheck or None
         What a person's blind count of random quadrats says of the spots; None where there was none,
         or not all its quadrats were counted.
+    crowding : Crowding or None
+        The count corrected for those that lie in others' reach, or for holes hit more than once;
+        None where nothing is known of either.
     """
 
     name: str
@@ -140,6 +144,7 @@ class Findings:
     beyond_holm: HolmFamily | None = None
     shown: WouldShow | None = None
     spot_check: SpotCheck | None = None
+    crowding: Crowding | None = None
 
     def __post_init__(self) -> None:
         hold_columns(self, ("expected", "residuals"), length=len(self.counts))

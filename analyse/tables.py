@@ -9,6 +9,7 @@ from scipy import special
 
 from analyse.block_rows import block_rows
 from analyse.count_rows import COUNT_SUMMARY_COLUMNS, count_rows, count_summary_cells
+from analyse.crowding_rows import CROWDING_SUMMARY_COLUMNS, crowding_cells, crowding_rows
 from analyse.dispersion import (
     Dispersion,
     normal_deviate,
@@ -99,6 +100,7 @@ SUMMARY_COLUMNS = [
     *REVIEW_SUMMARY_COLUMNS,
     *BESIDE_COLUMNS,
     *SPOT_CHECK_SUMMARY_COLUMNS,
+    *CROWDING_SUMMARY_COLUMNS,
 ]
 TEST_COLUMNS = ["photograph", "statistic", "value", "low", "high", "p", "method", "n", "notes"]
 _FISHER = "index of dispersion, chi-square (Fisher, Thornton and Mackenzie 1922)"
@@ -244,6 +246,7 @@ def _summary(each: Findings) -> list[Cell]:
         *review_cells(each),
         *beside_cells(each),
         *spot_check_cells(each),
+        *crowding_cells(each),
     ]
 
 
@@ -344,6 +347,7 @@ _PARTS = (
     block_rows,
     envelope_rows,
     spot_check_rows,
+    crowding_rows,
 )
 
 

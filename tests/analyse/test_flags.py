@@ -22,6 +22,10 @@ VALUES = {
     "touching": "1.14 mm",
     "width": "1.5 mm",
     "dish_notes": "several round things are seen",
+    "counted": "362",
+    "corrected": "400",
+    "corrected_low": "386",
+    "corrected_high": "414",
 }
 
 
