@@ -5,7 +5,9 @@
 A 12-megapixel photograph, drawn here, with as many spots as said; medians over the rounds. All times
 are taken in the page itself: from the browser's time stamp of the event to the frame after the one in
 which the change was drawn. Chromium without a GPU (software raster), 1440 x 900. Other work on the
-computer has its say in every figure; the load is printed beside them.
+computer has its say in every figure: so the load is printed, the frames of a page at rest beside those
+of one in motion, and the processor time of browser and server together (Linux), which others do not
+stretch.
 """
 
 from __future__ import annotations
@@ -172,23 +174,58 @@ def screen(page: Page, x: float, y: float) -> tuple[float, float]:
     return bounds["x"] + (x - values[1]) * values[0], bounds["y"] + (y - values[2]) * values[0]
 
 
-def moving(page: Page, wheel: bool) -> float:
-    """Zoom or shift for about two seconds; returns the 95th percentile of the frames' times."""
+def moving(page: Page, how: str) -> tuple[float, int]:
+    """Zoom, shift, or do nothing for about two seconds; returns 95th percentile and number of frames."""
     x, y = screen(page, WIDTH / 2, HEIGHT / 2)
     page.mouse.move(x, y)
-    if not wheel:
+    if how == "shifting":
         page.mouse.down(button="right")
     page.evaluate(FRAMES, True)
     for k in range(110):
-        if wheel:
+        if how == "zooming":
             page.mouse.wheel(0, -40 if (k // 20) % 2 == 0 else 40)
-        else:
+        elif how == "shifting":
             page.mouse.move(x + 150 * np.sin(k / 8), y + 90 * np.cos(k / 9))
         page.wait_for_timeout(8)
     frames = page.evaluate(FRAMES, False)
-    if not wheel:
+    if how == "shifting":
         page.mouse.up(button="right")
-    return float(np.percentile(frames, 95))
+    return float(np.percentile(frames, 95)), len(frames)
+
+
+def below(pid: int) -> list[int]:
+    """Return a process and all that it started."""
+    path = Path(f"/proc/{pid}/task/{pid}/children")
+    started = path.read_text(encoding="ascii").split() if path.exists() else []
+    return [pid, *(each for child in started for each in below(int(child)))]
+
+
+def processor_ms() -> dict[int, float]:
+    """Return the processor time of each process of browser and server; none where it is not told."""
+    spent: dict[int, float] = {}
+    for pid in below(os.getpid())[1:]:
+        try:
+            stat = Path(f"/proc/{pid}/stat").read_text(encoding="ascii", errors="replace")
+        except OSError:
+            continue
+        user, system = stat.rpartition(")")[2].split()[11:13]
+        spent[pid] = 1000 * (int(user) + int(system)) / os.sysconf("SC_CLK_TCK")
+    return spent
+
+
+def since(begun: dict[int, float]) -> float:
+    """Return the processor time that those still there have spent since."""
+    return sum(spent - begun.get(pid, 0.0) for pid, spent in processor_ms().items())
+
+
+def clicked(page: Page, spots: list[tuple[float, float]]) -> float:
+    """Click on places, each time waiting until all is still; returns the processor time of one."""
+    begun = processor_ms()
+    for spot in spots:
+        page.mouse.move(*spot, steps=3)
+        page.mouse.click(*spot)
+        page.wait_for_function(READY)
+    return since(begun) / len(spots)
 
 
 def one_round(browser: Browser, server: Server, places: np.ndarray, seed: int) -> dict[str, float]:
@@ -197,28 +234,30 @@ def one_round(browser: Browser, server: Server, places: np.ndarray, seed: int) -
     context.add_init_script(f"({WATCH})()")
     page = context.new_page()
     page.set_default_timeout(60_000)
+    begun = processor_ms()
     page.goto(server.url)
     page.wait_for_function(READY)
+    opened = since(begun)
     rng = np.random.default_rng(seed)
-    for x, y in places[rng.choice(len(places), 5, replace=False)]:
-        page.mouse.move(*screen(page, x, y), steps=3)
-        page.mouse.click(*screen(page, x, y))
-        page.wait_for_function(READY)
+    chosen = places[rng.choice(len(places), 5, replace=False)]
+    struck = clicked(page, [screen(page, x, y) for x, y in chosen])
     page.keyboard.press("Escape")
-    for _ in range(5):
-        spot = screen(page, *rng.uniform((50, HEIGHT - 90), (WIDTH - 50, HEIGHT - 10)))
-        page.mouse.move(*spot, steps=3)
-        page.mouse.click(*spot)
-        page.wait_for_function(READY)
+    low, high = (50, HEIGHT - 90), (WIDTH - 50, HEIGHT - 10)
+    clicked(page, [screen(page, *rng.uniform(low, high)) for _ in range(5)])
     times = page.evaluate("() => window.times")
     measured = {
         "first view": times["view"],
+        "  processor time to open": opened,
         "click to struck ring": statistics.median(times["ring"]),
         "click to placed ring": statistics.median(times["place"]),
         "click to statistics": statistics.median(times["statistics"][:5]),
-        "frames while zooming, p95": moving(page, wheel=True),
-        "frames while shifting, p95": moving(page, wheel=False),
+        "  processor time of a click": struck,
     }
+    for how in ("resting", "zooming", "shifting"):
+        begun = processor_ms()
+        p95, frames = moving(page, how)
+        measured[f"frames while {how}, p95"] = p95
+        measured[f"  processor time a frame, {how}"] = since(begun) / max(frames, 1)
     context.close()
     return measured
 
@@ -247,7 +286,7 @@ def main() -> None:
                 bound = [b for b in BOUNDS if b.what == what and b.spots in (None, n)]
                 told = f"  bound {bound[0].limit:.0f}" if bound else ""
                 print(
-                    f"  {what:28s}{statistics.median(values):8.0f} ms  ({min(values):.0f} to {max(values):.0f}){told}",
+                    f"  {what:36s}{statistics.median(values):7.0f} ms  ({min(values):.0f} to {max(values):.0f}){told}",
                     flush=True,
                 )
         browser.close()

@@ -37,8 +37,10 @@ function show() {
   byId("photograph-place").textContent = rows.length > 1 ? `${at + 1} of ${rows.length}, ${done} checked` : stateOf(rows[at] ?? { state: "new" });
   byId("previous-photograph").disabled = at <= 0;
   byId("next-photograph").disabled = at < 0 || at >= rows.length - 1;
-  document.title = `${rows[at]?.photograph ?? "Review"} \u2013 Strewn`;
-  byId("queue").replaceChildren(...rows.map(line));
+  const title = `${rows[at]?.photograph ?? "Review"} \u2013 Strewn`;
+  if (document.title !== title) document.title = title;
+  // A list that nobody sees is not made anew with every edit.
+  if (!byId("queue-box").hidden) byId("queue").replaceChildren(...rows.map(line));
   showMark();
 }
 
@@ -114,6 +116,7 @@ export function toggle(shown = byId("queue-box").hidden) {
   byId("queue-box").hidden = !shown;
   byId("photographs").setAttribute("aria-expanded", String(shown));
   if (!shown) return;
+  show();
   readQueue().catch(() => show()).finally(() => byId("queue").querySelector('[aria-current="true"]')?.focus());
 }
 

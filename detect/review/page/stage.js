@@ -152,7 +152,7 @@ export function start() {
   on("photograph", () => redraw("photograph", "marks"));
   on("spots", patch);
   on("area", () => redraw("ground", "marks"));
-  on("quadrats", () => redraw("ground"));
+  on("quadrats", () => layers.grid && redraw("ground"));
   on("layers", () => redraw("ground", "rings", "marks"));
   on("marks", () => redraw("marks"));
   on("opened", () => { shown.rings = null; redraw("photograph", "ground", "rings", "marks"); });
