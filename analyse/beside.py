@@ -124,6 +124,16 @@ def remark(
     str
         Of a gradient, or else of where the tests over sides and distances tell something else;
         empty where none is needed.
+
+    Examples
+    --------
+    >>> import math
+    >>> from analyse.findings import analyse_points
+    >>> bed = [(x + 0.5, y + 0.5) for x in range(8) for y in range(8)]
+    >>> found = analyse_points(bed, (0, 0, 8, 8), simulations=99)
+    >>> nothing = Beside()
+    >>> remark(found.verdict, None, nothing, side=2.0, unit="mm", width=math.nan)
+    ''
     """
     if verdict == "too few to tell":
         return ""

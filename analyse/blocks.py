@@ -325,6 +325,11 @@ def contiguous(counts: ArrayLike) -> NDArray[np.int64]:
         If there are fewer than 2 quadrats.
     ValueError
         If the shape is another, or a count is impossible.
+
+    Examples
+    --------
+    >>> contiguous([2, 0, 3]).tolist()
+    [[2, 0, 3]]
     """
     x = np.asarray(counts)
     if x.ndim not in (1, 2):

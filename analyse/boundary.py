@@ -54,7 +54,13 @@ def boundary_distance(points: ArrayLike, area: BaseGeometry) -> Floats:
 
 
 def eroded_area(area: BaseGeometry, depth: float) -> float:
-    """Return how much of an area lies at least `depth` from its edge."""
+    """Return how much of an area lies at least `depth` from its edge.
+
+    Examples
+    --------
+    >>> eroded_area(shapely.box(0, 0, 10, 6), 1.0)
+    32.0
+    """
     sides = rectangle_sides(area)
     if sides is not None:
         return max(sides[0] - 2 * depth, 0.0) * max(sides[1] - 2 * depth, 0.0)
@@ -80,6 +86,14 @@ class Boundary:
         Distance between nodes of `table`.
     table : ndarray of shape (rows, columns)
         Distance to the edge at the nodes, negative outside; empty where there is a closed form.
+
+    Examples
+    --------
+    >>> edge = Boundary.of(shapely.box(0, 0, 10, 6))
+    >>> edge
+    Boundary(rectangle, deepest point at 3)
+    >>> edge.distance(np.array([[5.0, 3.0], [1.0, 2.0]])).tolist()
+    [3.0, 1.0]
     """
 
     depths: Floats

@@ -51,6 +51,15 @@ class Judge:
     ----------
     Haldane, J. B. S. (1937). The exact value of the moments of the distribution of chi-square, used
     as a test of goodness of fit, when expectations are small. Biometrika 29, 133-143.
+
+    Examples
+    --------
+    >>> from analyse.findings import CountTable, analyse_counts
+    >>> counts = [0, 9, 1, 0, 8, 0, 2, 7, 0, 0]
+    >>> found = analyse_counts(CountTable("bed", counts), simulations=99)
+    >>> judge = Judge.of(counts, np.ones(10), found.simulated)
+    >>> judge.verdict([3, 2, 3, 2, 4, 3, 2, 3, 2, 3], np.ones(10))
+    'evenly spaced'
     """
 
     n: int

@@ -27,6 +27,12 @@ class Lattice:
         Size of a cell.
     rows, columns : int
         How many there are.
+
+    Examples
+    --------
+    >>> cells = Lattice(0, 0, 5, 5, rows=2, columns=3)
+    >>> cells.cell(np.array([[12.0, 1.0], [1.0, 9.0]])).tolist()
+    [2, 3]
     """
 
     x0: float
@@ -85,6 +91,12 @@ class Sectors:
         The circle.
     rows, columns : int
         Rings, and sectors in each.
+
+    Examples
+    --------
+    >>> sectors = Sectors(0, 0, 10, rows=2, columns=4)
+    >>> sectors.cell(np.array([[1.0, 1.0], [9.0, -1.0]])).tolist()
+    [0, 7]
     """
 
     x: float
@@ -168,6 +180,13 @@ def joined(
     The smallest goes first. It is joined to a clipped neighbour before a whole one, among these to
     that with the longest common edge, then to the smaller, then to the first; an island without
     neighbour to the nearest.
+
+    Examples
+    --------
+    >>> lattice, area = Lattice(0, 0, 5, 5, rows=1, columns=3), shapely.box(0, 0, 11, 5)
+    >>> whole = np.array([True, True, False])
+    >>> joined(lattice, area, np.array([25.0, 25.0, 5.0]), whole, 10.0).tolist()
+    [0, 1, 1]
     """
     groups = {int(k): [int(k)] for k in np.flatnonzero(sizes > 0)}
     home = np.where(sizes > 0, np.arange(sizes.size), -1)

@@ -92,6 +92,14 @@ def block_of(
         1 by 1 where there are too few to merge or their places are not known.
     block : ndarray of int, shape (q,)
         Numbered from 0 without gaps.
+
+    Examples
+    --------
+    >>> row, column = np.divmod(np.arange(256), 16)
+    >>> counts = QuadratCounts(np.ones(256, int), None, np.ones(256, bool), None, row, column)
+    >>> merged, block = block_of(counts, np.ones(256))
+    >>> merged, int(block.max()) + 1
+    ((3, 3), 36)
     """
     if counts.row is None or counts.column is None:
         return (1, 1), np.arange(len(counts))

@@ -23,6 +23,17 @@ def hold_columns(record: object, names: Iterable[str], *, length: int | None = N
     ------
     ValueError
         If a column has another shape than (length,).
+
+    Examples
+    --------
+    >>> from dataclasses import dataclass
+    >>> @dataclass(frozen=True)
+    ... class Heights:
+    ...     mm: object
+    ...     def __post_init__(self):
+    ...         hold_columns(self, ["mm"], length=2)
+    >>> Heights([3, 4]).mm.flags.writeable
+    False
     """
     for name in names:
         column = np.array(getattr(record, name))

@@ -63,15 +63,15 @@ class CountTable:
 
 
 def read_counts(path: Path, *, side: Length | None = None, transect: bool = False) -> CountTable:
-    """Read a table of counts: a column `count`, also with `frequency`, or a bare rectangle.
+    r"""Read a table of counts: a column `count`, also with `frequency`, or a bare rectangle.
 
     Parameters
     ----------
     path : Path
         A CSV file. With a column `count` alone, one row per quadrat; with `frequency` (or another
-        of `FREQUENCY_COLUMNS`) beside it, one row per value and how many quadrats held it; without a header, contiguous
-        quadrats. Of two columns of which one is `frequency` the other holds the counts, whatever
-        its name.
+        of `FREQUENCY_COLUMNS`) beside it, one row per value and how many quadrats held it; without
+        a header, contiguous quadrats. Of two columns of which one is of frequencies the other holds
+        the counts, whatever its name.
     side : Length or None
         Side of a quadrat, where it is known.
     transect : bool
@@ -90,6 +90,16 @@ def read_counts(path: Path, *, side: Length | None = None, transect: bool = Fals
     TableWrong
         If a count is no whole number of 0 or more, a value stands twice in a table of
         frequencies, rows differ in length, or there are fewer than 2 quadrats.
+
+    Examples
+    --------
+    >>> from tempfile import TemporaryDirectory
+    >>> with TemporaryDirectory() as folder:
+    ...     path = Path(folder) / "counts.csv"
+    ...     _ = path.write_text("count,frequency\n0,3\n2,1\n")
+    ...     table = read_counts(path)
+    >>> table.counts.tolist()
+    [0, 0, 0, 2]
     """
     rows = read_rows(path)
     names = [cell.lower() for cell in rows[0].cells]

@@ -205,6 +205,14 @@ def chance_within_reach(pattern: Pattern, blind: float) -> float:
     References
     ----------
     Matheron, G. (1975). Random Sets and Integral Geometry. Wiley (the set covariance at 0).
+
+    Examples
+    --------
+    >>> import shapely
+    >>> points = np.random.default_rng(1).uniform(0, 100, (80, 2))
+    >>> dish = Pattern.of(points, shapely.box(0, 0, 100, 100), radius=np.full(80, 1.0))
+    >>> round(chance_within_reach(dish, 0.5), 6)
+    0.000311
     """
     radii = pattern.radius[np.isfinite(pattern.radius)]
     first, second = float(radii.mean()), float((radii**2).mean())
@@ -229,6 +237,14 @@ def crowding_of_patches(pattern: Pattern, blind: float, blind_se: float) -> Crow
     -------
     Crowding or None
         None without radii.
+
+    Examples
+    --------
+    >>> import shapely
+    >>> points = np.random.default_rng(1).uniform(0, 100, (400, 2))
+    >>> dish = Pattern.of(points, shapely.box(0, 0, 100, 100), radius=np.full(400, 1.0))
+    >>> crowding_of_patches(dish, 0.8, 0.05)
+    <Crowding by patches: 400 counted, 486.7 corrected>
     """
     if not np.isfinite(pattern.radius).any() or blind <= 0:
         return None
@@ -333,6 +349,11 @@ def crowding_of_holes(counts: ArrayLike, holes: int) -> Crowding:
         If a plate can have no such number of holes.
     TableWrong
         If more holes are filled than a plate has.
+
+    Examples
+    --------
+    >>> crowding_of_holes([100], 400)
+    <Crowding by holes: 100 counted, 114.9 corrected>
     """
     if not 1 <= holes <= MOST_HOLES:
         raise OptionWrong(f"--holes must be from 1 to {MOST_HOLES}, not {holes}.")

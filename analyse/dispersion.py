@@ -166,6 +166,11 @@ def expected_counts(counts: ArrayLike, areas: ArrayLike | None) -> NDArray[np.fl
     ------
     ValueError
         If an area is not positive or the numbers of counts and areas differ.
+
+    Examples
+    --------
+    >>> expected_counts([2, 7, 3], [1, 2, 3]).tolist()
+    [2.0, 4.0, 6.0]
     """
     x = checked_counts(counts)
     a = np.ones(x.size) if areas is None else checked_areas(areas)
@@ -290,6 +295,11 @@ def checked_counts(counts: ArrayLike) -> NDArray[np.int64]:
     ------
     ValueError
         If one is negative, not whole or not finite.
+
+    Examples
+    --------
+    >>> checked_counts([[2.0, 0.0], [3.0, 1.0]]).tolist()
+    [2, 0, 3, 1]
     """
     x = np.asarray(counts).reshape(-1)
     if x.size and not (np.isfinite(x).all() and (x >= 0).all() and (x == np.floor(x)).all()):
@@ -313,6 +323,11 @@ def checked_areas(areas: ArrayLike) -> NDArray[np.float64]:
     ------
     ValueError
         If one is not positive and finite.
+
+    Examples
+    --------
+    >>> checked_areas([4, 2.5]).tolist()
+    [4.0, 2.5]
     """
     a = np.asarray(areas, dtype=np.float64).reshape(-1)
     if not (np.isfinite(a).all() and (a > 0).all()):

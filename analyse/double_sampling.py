@@ -161,6 +161,13 @@ def ratio_total(sample: DoubleSample) -> Estimate | None:
     References
     ----------
     Cochran, W. G. (1977). Sampling Techniques, 3rd ed. Wiley. Sections 6.2 to 6.11.
+
+    Examples
+    --------
+    >>> quick, careful = np.array([4, 0, 7, 3, 5]), np.array([5, 0, 7, 4, 5])
+    >>> sample = DoubleSample(np.zeros(5, int), quick, careful, np.array([40]), 150.0)
+    >>> round(ratio_total(sample).value, 1)
+    165.8
     """
     weights = _ratio_weights(sample)
     if weights is None:
@@ -234,6 +241,13 @@ def ratio_limits(sample: DoubleSample, *, level: float = LEVEL) -> Limits | None
     The ratio estimate is the difference estimate with weights scaled so that the sample's quick
     counts sum to the quick total; see `difference_limits`, whose variances become those of
     residuals.
+
+    Examples
+    --------
+    >>> quick, careful = np.array([4, 0, 7, 3, 5]), np.array([5, 0, 7, 4, 5])
+    >>> sample = DoubleSample(np.zeros(5, int), quick, careful, np.array([40]), 150.0)
+    >>> round(ratio_limits(sample).value, 1)
+    165.8
     """
     weights = _ratio_weights(sample)
     return None if weights is None else _guarded(sample, weights, sample.quick, level)

@@ -82,6 +82,11 @@ def count_flags(values: Mapping[str, Any]) -> tuple[str, ...]:
     -------
     tuple of str
         Names in `FLAGS`.
+
+    Examples
+    --------
+    >>> count_flags({"n": 12, "q": 6, "whole": 6, "mean_expected": 2.0, "clipped_percent": 0})
+    ('few_quadrats', 'rough_chi_square')
     """
     known = {
         "few_quadrats": values["q"] < FEW_QUADRATS,

@@ -110,6 +110,15 @@ class Curves:
         For the distances.
     sides : Sides or None
         For the quadrats; None where none can be laid.
+
+    Examples
+    --------
+    >>> import shapely
+    >>> area = shapely.box(0, 0, 10, 10)
+    >>> curves = Curves(Ruler.of(area, 40), Sides.of(area, 40))
+    >>> points = np.random.default_rng(1).uniform(0, 10, (40, 2))
+    >>> list(curves.split(curves(points)))
+    ['vmr_by_side', 'l_function', 'pair_correlation', 'nearest_neighbour', 'empty_space', 'mean_nearest', 'hopkins_skellam']
     """
 
     ruler: Ruler

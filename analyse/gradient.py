@@ -50,6 +50,15 @@ def gradient_remark(
     A gradient explains the quadrats where their X2 with expected counts along it is no longer
     outside what chance gives, and no test over sides and distances departs from points placed at
     random along it.
+
+    Examples
+    --------
+    >>> import numpy as np
+    >>> from analyse.findings import analyse_points
+    >>> points = 100 * np.random.default_rng(2).random((150, 2)) ** [0.5, 1.0]
+    >>> found = analyse_points(points, (0, 0, 100, 100), simulations=99)
+    >>> print(gradient_remark("clumped", found.trend, [], [], "mm"))
+    The density rises towards the right (p < 0.001, allowing for clumping), and this gradient explains what the quadrats show.
     """
     gradient = trends.clearest
     if gradient is None:

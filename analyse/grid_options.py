@@ -34,6 +34,15 @@ class GridOptions:
     ------
     GridWrong
         If two ways are chosen at once, or a number is impossible.
+
+    Examples
+    --------
+    >>> GridOptions(shape=(5, 5)).shape
+    (5, 5)
+    >>> GridOptions(shape=(1, 1))
+    Traceback (most recent call last):
+        ...
+    analyse.errors.GridWrong: --grid 1x1 makes no grid of at least 2 quadrats; give two numbers such as 5x5.
     """
 
     side: Length | None = None
@@ -115,6 +124,11 @@ def side_in(side: Length, unit: Unit) -> float:
     ------
     GridWrong
         If the side is in pixels and the area in millimetres, or the other way round.
+
+    Examples
+    --------
+    >>> side_in(Length(2, "cm"), "mm")
+    20.0
     """
     if side.in_pixels and unit == "mm":
         raise GridWrong(f"--quadrat {side} is in pixels, but the scale is known; give it in mm.")

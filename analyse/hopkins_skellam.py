@@ -100,6 +100,12 @@ def hopkins_skellam(points: ArrayLike, area: Area, rng: np.random.Generator) -> 
 
 
 def against_neighbours(empty: Floats, nearest: Floats) -> float:
-    """Return the mean square of distances from places over that from points; infinite over 0."""
+    """Return the mean square of distances from places over that from points; infinite over 0.
+
+    Examples
+    --------
+    >>> against_neighbours(np.array([1.0, 3.0]), np.array([1.0, 2.0]))
+    2.0
+    """
     apart = float(np.mean(nearest**2))
     return float(np.mean(empty**2)) / apart if apart > 0 else math.inf

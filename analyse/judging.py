@@ -80,6 +80,15 @@ def judged(subject: Subject, seed: int, simulations: int, workers: int = 1) -> F
     ------
     OptionWrong
         If the seed or the number of simulations is out of range.
+
+    Examples
+    --------
+    >>> import numpy as np
+    >>> counts = QuadratCounts(np.array([0, 9, 0, 0, 8, 1, 0, 7, 0, 0]), None, np.ones(10, bool))
+    >>> unknown = dict.fromkeys(("side", "rows", "columns", "unit"))
+    >>> bed = Subject("bed", None, None, None, counts, None, (), {}, unknown | {"quadrats": "counted"})
+    >>> judged(bed, seed=1, simulations=99)
+    <Findings bed: clumped, 25 in 10 quadrats>
     """
     x, areas, is_whole = subject.counts.counts, subject.counts.area, subject.counts.whole
     expected = expected_counts(x, areas)
@@ -178,6 +187,12 @@ def stream(seed: int, name: str) -> np.random.Generator:
     ------
     OptionWrong
         If the seed is negative.
+
+    Examples
+    --------
+    >>> one, again = stream(1, "dish_01.jpg"), stream(1, "dish_01.jpg")
+    >>> bool(one.random() == again.random())
+    True
     """
     check_seed(seed)
     return np.random.default_rng([seed, zlib.crc32(name.encode("utf-8"))])

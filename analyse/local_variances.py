@@ -25,6 +25,11 @@ def largest_size(shape: tuple[int, ...], method: BlockMethod) -> int:
     -------
     int
         0 where not even single quadrats can be compared.
+
+    Examples
+    --------
+    >>> [largest_size((1, 20), method) for method in ("TTLQV", "3TLQV", "PQV")]
+    [10, 6, 10]
     """
     return max(shape) // _TERMS[method][0]
 

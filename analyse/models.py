@@ -161,6 +161,11 @@ def countable(counts: ArrayLike) -> NDArray[np.int64]:
         If there are fewer than 2 counts.
     ValueError
         If a count is impossible or above 10,000.
+
+    Examples
+    --------
+    >>> countable([3, 0, 1]).tolist()
+    [3, 0, 1]
     """
     x = checked_counts(counts)
     if x.size < 2:

@@ -57,5 +57,11 @@ def mean_nearest(points: ArrayLike) -> float:
 
 
 def too_few(n: int) -> str:
-    """Return why there is no distance to a neighbour."""
+    """Return why there is no distance to a neighbour.
+
+    Examples
+    --------
+    >>> too_few(1)
+    '1 point, and at least 2 are needed'
+    """
     return f"{n} point{'' if n == 1 else 's'}, and at least 2 are needed"

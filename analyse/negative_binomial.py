@@ -270,7 +270,13 @@ def k_words(k: float) -> str:
 
 
 def fall_of(function: Callable[[float], float], start: float) -> float:
-    """Return where a function of k falls from positive to negative, seeking outwards from `start`."""
+    """Return where a function of k falls from positive to negative, seeking outwards from `start`.
+
+    Examples
+    --------
+    >>> round(fall_of(lambda k: 2 / k - 1, 0.1), 6)
+    2.0
+    """
     return _root_above(function, start) if function(start) > 0 else _root_down(function, start)
 
 

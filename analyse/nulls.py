@@ -20,7 +20,13 @@ _MOST_CELLS = 120_000
 
 
 class Null(Protocol):
-    """A law of point patterns to be judged against: its name, and a way to draw n points."""
+    """A law of point patterns to be judged against: its name, and a way to draw n points.
+
+    Examples
+    --------
+    >>> isinstance(CompleteRandomness(shapely.box(0, 0, 1, 1)).name, str)
+    True
+    """
 
     @property
     def name(self) -> str:

@@ -30,6 +30,11 @@ class PairBins:
         holds distance 0.
     slope, offset : float
         The class of distance d is ceil(slope sqrt(d) + offset), at least 0.
+
+    Examples
+    --------
+    >>> PairBins.of(0.1, 2.5, 0.3, count=50, g_count=20)
+    PairBins(133 classes up to 2.881)
     """
 
     k_at: Floats

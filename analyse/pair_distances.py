@@ -70,7 +70,14 @@ def near_pairs(
 
 
 def pairs_up_to(xy: Floats, distances: Floats) -> Iterator[tuple[Index, Index, Floats]]:
-    """Yield all pairs up to the longest distance, once each, with their distances."""
+    """Yield all pairs up to the longest distance, once each, with their distances.
+
+    Examples
+    --------
+    >>> xy = np.array([[0.0, 0.0], [3.0, 4.0], [9.0, 9.0]])
+    >>> [(i.tolist(), j.tolist(), d.tolist()) for i, j, d in pairs_up_to(xy, np.array([5.0]))]
+    [([0], [1], [5.0])]
+    """
     if len(distances):
         for i, j in near_pairs(xy, float(distances.max())):
             step = xy[j] - xy[i]
@@ -80,7 +87,14 @@ def pairs_up_to(xy: Floats, distances: Floats) -> Iterator[tuple[Index, Index, F
 def sums_up_to(
     xy: Floats, distances: Floats, weight: Callable[[Floats, Index, Index], Floats]
 ) -> Floats:
-    """Return the summed weight of the pairs up to each distance."""
+    """Return the summed weight of the pairs up to each distance.
+
+    Examples
+    --------
+    >>> xy = np.array([[0.0, 0.0], [3.0, 4.0], [3.0, 5.0]])
+    >>> sums_up_to(xy, np.array([1.0, 5.0, 9.0]), lambda step, i, j: np.ones(len(i))).tolist()
+    [1.0, 2.0, 3.0]
+    """
     ordered = np.argsort(distances)
     sums = np.zeros(len(distances) + 1)
     for i, j, d in pairs_up_to(xy, distances):
@@ -92,7 +106,13 @@ def sums_up_to(
 
 
 def ordered_pairs(xy: Floats) -> float:
-    """Return the number of ordered pairs, NaN where there is none."""
+    """Return the number of ordered pairs, NaN where there is none.
+
+    Examples
+    --------
+    >>> ordered_pairs(np.zeros((5, 2)))
+    20.0
+    """
     return float(len(xy) * (len(xy) - 1)) if len(xy) > 1 else math.nan
 
 

@@ -41,7 +41,16 @@ _SPREAD = math.sqrt(7 / 6)
 
 @dataclass(frozen=True, slots=True, eq=False, repr=False)
 class Weights:
-    """1 / set covariance of single steps, in single precision where that is faster."""
+    """1 / set covariance of single steps, in single precision where that is faster.
+
+    Examples
+    --------
+    >>> from analyse.set_covariance import RectangleCovariance
+    >>> weights = Weights.of(RectangleCovariance(10.0, 10.0), 2.5)
+    >>> step = np.array([2.0], np.float32), np.array([0.0], np.float32)
+    >>> weights.weigh(*weights.kept(*step)).round(4).item()
+    0.012500000186264515
+    """
 
     covariance: SetCovariance
     table: Floats32
@@ -85,7 +94,17 @@ class Weights:
 
 @dataclass(frozen=True, slots=True, eq=False)
 class DirectPairs:
-    """Every pair measured."""
+    """Every pair measured.
+
+    Examples
+    --------
+    >>> import shapely
+    >>> from analyse.set_covariance import RectangleCovariance
+    >>> area = shapely.box(0, 0, 10, 10)
+    >>> bins = PairBins.of(0.1, 2.5, 0.3, count=50, g_count=20)
+    >>> DirectPairs.of(area, RectangleCovariance(10.0, 10.0), bins)
+    DirectPairs(PairBins(133 classes up to 2.881))
+    """
 
     bins: PairBins
     weights: Weights
@@ -156,6 +175,15 @@ class BinnedPairs:
     Fourier transform gives for all steps at once. Two points in cells apart by a step are apart
     by that step give or take the places within their cells; each step's pairs are spread over the
     classes as such pairs would be at random, so no distance is favoured.
+
+    Examples
+    --------
+    >>> import shapely
+    >>> from analyse.set_covariance import RectangleCovariance
+    >>> area = shapely.box(0, 0, 10, 10)
+    >>> bins = PairBins.of(0.1, 2.5, 0.3, count=50, g_count=20)
+    >>> BinnedPairs.of(area, RectangleCovariance(10.0, 10.0), bins, 3000)
+    BinnedPairs(PairBins(133 classes up to 2.881), 463 x 463 cells)
     """
 
     bins: PairBins

@@ -30,7 +30,13 @@ _PIECES = 64  # of the picture's width: how finely outlines are cut where a lens
 
 @dataclass(frozen=True, slots=True)
 class Circle:
-    """The circle of a dish, in the unit of its pattern."""
+    """The circle of a dish, in the unit of its pattern.
+
+    Examples
+    --------
+    >>> Circle(43.0, 43.0, 42.0)
+    Circle(x=43.0, y=43.0, radius=42.0)
+    """
 
     x: float
     y: float

@@ -59,7 +59,13 @@ def placed(points: ArrayLike, area: Area) -> tuple[NDArray[np.float64], BaseGeom
 
 
 def distances_given(r: ArrayLike, *, above: bool = False) -> NDArray[np.float64]:
-    """Return distances as a column of finite numbers of 0 or more, or above 0, or refuse them."""
+    """Return distances as a column of finite numbers of 0 or more, or above 0, or refuse them.
+
+    Examples
+    --------
+    >>> distances_given(2).tolist(), distances_given([0, 1.5]).tolist()
+    ([2.0], [0.0, 1.5])
+    """
     distances = np.atleast_1d(np.asarray(r, dtype=np.float64))
     fit = np.isfinite(distances) & ((distances > 0) if above else (distances >= 0))
     if distances.ndim != 1 or not fit.all():

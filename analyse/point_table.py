@@ -16,7 +16,7 @@ from analyse.rows import Row, read_rows, real_in
 
 
 def read_points(path: Path, *, area: BaseGeometry, unit: TableUnit = "mm") -> Pattern:
-    """Read a table of points with the columns x and y, and radius and doubt where it has them.
+    r"""Read a table of points with the columns x and y, and radius and doubt where it has them.
 
     Parameters
     ----------
@@ -39,6 +39,17 @@ def read_points(path: Path, *, area: BaseGeometry, unit: TableUnit = "mm") -> Pa
     TableWrong
         If a column is missing, a cell holds no finite number, a radius is not above 0, or a doubt
         is not within 0..1.
+
+    Examples
+    --------
+    >>> import shapely
+    >>> from tempfile import TemporaryDirectory
+    >>> with TemporaryDirectory() as folder:
+    ...     table = Path(folder) / "points.csv"
+    ...     _ = table.write_text("x,y\n1,2\n3.5,4\n")
+    ...     pattern = read_points(table, area=shapely.box(0, 0, 100, 100), unit="cm")
+    >>> pattern.points.tolist()
+    [[10.0, 20.0], [35.0, 40.0]]
     """
     header, *body = read_rows(path)
     names = [cell.lower() for cell in header.cells]

@@ -107,6 +107,11 @@ class QuadratCounts:
         The grid, where points were counted in one.
     row, column : ndarray of int, shape (q,), or None
         Places in the grid from 0, where they are known.
+
+    Examples
+    --------
+    >>> QuadratCounts(np.array([2, 0, 3]), None, np.ones(3, bool))
+    <QuadratCounts: 5 points in 3 quadrats, 3 whole>
     """
 
     counts: NDArray[np.int64]

@@ -18,7 +18,16 @@ MM_PER_UNIT: dict[TableUnit, float] = {"mm": 1.0, "cm": 10.0, "m": 1000.0}
 
 
 def check_area(area: BaseGeometry) -> None:
-    """Refuse a study area that is no polygon, crosses itself or encloses nothing."""
+    """Refuse a study area that is no polygon, crosses itself or encloses nothing.
+
+    Examples
+    --------
+    >>> check_area(shapely.box(0, 0, 2, 1))
+    >>> check_area(shapely.Point(0, 0))
+    Traceback (most recent call last):
+        ...
+    detect.errors.AreaWrong: A study area must be a polygon, not a Point; give a closed outline.
+    """
     if area.geom_type not in ("Polygon", "MultiPolygon"):
         raise AreaWrong(
             f"A study area must be a polygon, not a {area.geom_type}; give a closed outline."
@@ -67,7 +76,13 @@ def area_from_option(text: str, unit: TableUnit = "mm") -> BaseGeometry:
 
 
 def rectangle(numbers: Sequence[float]) -> BaseGeometry:
-    """Return the rectangle with the corners x0, y0 and x1, y1."""
+    """Return the rectangle with the corners x0, y0 and x1, y1.
+
+    Examples
+    --------
+    >>> rectangle([0, 0, 4, 3]).area
+    12.0
+    """
     if len(numbers) != 4 or not all(math.isfinite(value) for value in numbers):
         raise AreaWrong(
             f"A rectangle needs four finite numbers X0,Y0,X1,Y1, not {list(numbers)}; give all four."

@@ -171,5 +171,10 @@ def stream_of(seed: int, i: int) -> np.random.Generator:
     -------
     numpy.random.Generator
         That of child i of the seed's sequence.
+
+    Examples
+    --------
+    >>> bool(stream_of(1, 7).random() == stream_of(1, 7).random())
+    True
     """
     return np.random.Generator(np.random.PCG64(np.random.SeedSequence(seed, spawn_key=(i,))))

@@ -236,6 +236,14 @@ def share_limits(
     number of positive counts estimated from survey data. Survey Methodology 24, 193-201.
     Clopper, C. J. and Pearson, E. S. (1934). The use of confidence or fiducial limits illustrated in
     the case of the binomial. Biometrika 26, 404-413.
+
+    Examples
+    --------
+    >>> found, there = np.array([4.0, 0, 7, 3, 5]), np.array([5.0, 0, 7, 4, 5])
+    >>> sample = DoubleSample(np.zeros(5, int), found, there, np.array([40]), 150.0)
+    >>> share = share_limits(sample, found, there)
+    >>> f"{share.value:.3f}, from {share.low:.2f} to {share.high:.2f}"
+    '0.905, from 0.60 to 1.00'
     """
     trials, weights = float(of.sum()), sample.weights
     whole = float((weights * of).sum())

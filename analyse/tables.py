@@ -122,6 +122,13 @@ def quadrats_csv(findings: Sequence[Findings]) -> str:
     str
         Quadrats, rows and columns are numbered from 1 at the top left; places and areas in
         millimetres are empty where no scale is known, and pixel cells where one is.
+
+    Examples
+    --------
+    >>> from analyse.findings import CountTable, analyse_counts
+    >>> bed = analyse_counts(CountTable("bed", [0, 9, 1, 0, 8, 0]), simulations=99)
+    >>> print(quadrats_csv([bed]).splitlines()[2])
+    bed,2,,,,,,true,9,3.0,3.79473319,,,
     """
     rows = (row for each in findings for row in _quadrats(each))
     return csv_text(QUADRAT_COLUMNS, rows, digits=DIGITS)
@@ -151,6 +158,13 @@ def summary_csv(
     ``density_low_clumped`` and ``density_high_clumped`` are of all, by area.
     ``p_simulated`` is two-sided and what the verdict rests on. Columns that end in ``_whole`` are
     the chi-square test of whole quadrats.
+
+    Examples
+    --------
+    >>> from analyse.findings import CountTable, analyse_counts
+    >>> bed = analyse_counts(CountTable("bed", [0, 9, 1, 0, 8, 0]), simulations=99)
+    >>> print(summary_csv([bed], factors={"bed": {"treatment": "A"}}).splitlines()[1][:8])
+    bed,18,,
     """
     known = factors or {}
     names = list(dict.fromkeys(name for each in known.values() for name in each))
@@ -174,6 +188,13 @@ def tests_csv(findings: Sequence[Findings]) -> str:
     str
         ``n`` is the number of quadrats behind a statistic, for the density that of points. The
         flags of a photograph end the notes of each of its rows, since rows travel alone.
+
+    Examples
+    --------
+    >>> from analyse.findings import CountTable, analyse_counts
+    >>> bed = analyse_counts(CountTable("bed", [0, 9, 1, 0, 8, 0]), simulations=99)
+    >>> [row for row in tests_csv([bed]).splitlines() if row.startswith("bed,vmr,")][0]
+    'bed,vmr,6.13333333,,,,variance-to-mean ratio,6,whole quadrats; flags: no_area few_quadrats rough_chi_square'
     """
     rows = (
         [each.name, *row[:-1], _flagged(row[-1], each)]

@@ -104,6 +104,11 @@ class TrendModel:
         Of the area.
     grids : tuple of (Grid, Quadrature)
         Coarse quadrats for the dispersion.
+
+    Examples
+    --------
+    >>> TrendModel.of(shapely.box(0, 0, 100, 80))
+    <TrendModel plane in an area of 8000>
     """
 
     area: BaseGeometry

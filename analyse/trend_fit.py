@@ -75,6 +75,12 @@ def best_slope(
     Cox, D. R. (1972). The statistical analysis of dependencies in point processes. In: Lewis,
     P. A. W. (ed.), Stochastic Point Processes, Wiley, 55-66. Berman, M. and Turner, T. R. (1992).
     Approximating point process likelihoods with GLIM. Applied Statistics 41, 31-38.
+
+    Examples
+    --------
+    >>> z, weights = np.linspace(-1, 1, 201)[:, None], np.full(201, 1 / 201)
+    >>> best_slope(z, weights, np.array([0.3]), 50).slope.round(2).tolist()
+    [0.94]
     """
     b = np.zeros(z.shape[1])
     start = value = _log_likelihood(b, z, weights, mean)
@@ -130,6 +136,12 @@ def largest_dispersion(
     Clusters that reach over the edges of small quadrats hide part of their dispersion there, and
     it is the dispersion at the scale of the slope, the whole area, that matters. The largest of
     three coarse partitions keeps the test honest where one alone does not.
+
+    Examples
+    --------
+    >>> counts, expected = np.array([4, 1, 6, 9, 0, 4, 2, 6]), np.full(8, 4.0)
+    >>> largest_dispersion([(counts, expected)], 1)
+    (2.5833333333333335, 6)
     """
     found = [
         (float(((x - e) ** 2 / e).sum()) / (x.size - 1 - df), x.size - 1 - df)

@@ -146,6 +146,17 @@ def assembled(
     Returns
     -------
     Trend
+
+    Examples
+    --------
+    >>> from analyse.trend_fit import best_slope
+    >>> z = np.linspace(-1, 1, 8)[:, None]
+    >>> x = np.array([2, 4, 3, 6, 5, 8, 9, 11])
+    >>> found = best_slope(z, np.ones(8), (x @ z) / x.sum(), int(x.sum()))
+    >>> mass = np.exp(z @ found.slope)
+    >>> around = [(x, x.sum() * mass / mass.sum())]
+    >>> assembled("plane", 48, (0.0, 0.0), 1.0, found, around, z)
+    <Trend plane: denser towards the end, ratio 4.41 (2.71 to 7.18), p = 0.000246>
     """
     df = found.slope.size
     dispersion, of_quadrats = largest_dispersion(partitions, df)

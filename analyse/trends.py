@@ -151,6 +151,14 @@ def table_trends(
     -------
     Trends or None
         None with fewer than 10 points, or where no trend can be fitted.
+
+    Examples
+    --------
+    >>> row, column = np.divmod(np.arange(16), 4)
+    >>> counts = QuadratCounts(6 * column, None, np.ones(16, bool), None, row, column)
+    >>> rng = np.random.default_rng(1)
+    >>> table_trends(counts, (4, 4), simulations=99, rng=rng).clearest.direction
+    'the right'
     """
     if int(counts.counts.sum()) < FEWEST_SPOTS:
         return None
