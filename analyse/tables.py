@@ -2,27 +2,16 @@
 
 from __future__ import annotations
 
-import math
 from collections.abc import Iterator, Mapping, Sequence
-
-from scipy import special
 
 from analyse.block_rows import block_rows
 from analyse.count_rows import COUNT_SUMMARY_COLUMNS, count_rows, count_summary_cells
 from analyse.crowding_rows import CROWDING_SUMMARY_COLUMNS, crowding_cells, crowding_rows
-from analyse.dispersion import (
-    Dispersion,
-    normal_deviate,
-)
+from analyse.dispersion import Dispersion
+from analyse.dispersion_rows import dispersion_rows
 from analyse.distance_rows import distance_rows
 from analyse.envelope_rows import BESIDE_COLUMNS, beside_cells, envelope_rows
 from analyse.findings import Findings
-from analyse.indices import (
-    cluster_size_index,
-    greens_index,
-    mean_crowding,
-    morisita_index,
-)
 from analyse.power_rows import power_rows
 from analyse.reviewing import REVIEW_SUMMARY_COLUMNS, review_cells
 from analyse.spot_check_rows import (
@@ -32,11 +21,9 @@ from analyse.spot_check_rows import (
 )
 from analyse.trend_rows import trend_rows
 from analyse.unseen import planted_cells, planted_rows
-from analyse.verdict import POWER
 from detect.files import Cell, csv_text
 
 DIGITS = 9
-NORMAL_ABOVE = 30  # degrees of freedom from which the normal approximation serves (common practice)
 QUADRAT_COLUMNS = [
     "photograph",
     "quadrat",
@@ -103,10 +90,6 @@ SUMMARY_COLUMNS = [
     *CROWDING_SUMMARY_COLUMNS,
 ]
 TEST_COLUMNS = ["photograph", "statistic", "value", "low", "high", "p", "method", "n", "notes"]
-_FISHER = "index of dispersion, chi-square (Fisher, Thornton and Mackenzie 1922)"
-_BY_AREA = "index of dispersion with expected counts by area, chi-square (Pearson 1900)"
-_SIMULATED = "simulated given the total (Davison and Hinkley 1997)"
-_SIDES = {"clumped": "upper tail", "even": "lower tail", "two_sided": "twice the smaller tail"}
 
 
 def quadrats_csv(findings: Sequence[Findings]) -> str:
@@ -278,88 +261,13 @@ def _tested(seen: Dispersion | None) -> list[Cell]:
     return [seen.chi2, seen.df, seen.p_clumped, seen.p_even, seen.p_two_sided]
 
 
-def _density_rows(each: Findings) -> Iterator[list[Cell]]:
-    """Yield the density."""
-    if each.density is not None:
-        low, high = each.density.low, each.density.high
-        method = "exact Poisson limits (Garwood 1936), widened by the uncertainty of the scale"
-        note = f"limits at {100 * each.density.level:g} %"
-        yield ["density_per_cm2", each.density.value, low, high, None, method, each.n, note]
-
-
-def _whole_rows(each: Findings) -> Iterator[list[Cell]]:
-    """Yield what is said about whole quadrats."""
-    whole = each.dispersion_whole
-    if whole is None:
-        return
-    counts = each.counts.counts[each.counts.whole]
-    note = "whole quadrats"
-    for name, value, method in (
-        ("mean", whole.mean, "points / quadrats"),
-        ("variance", whole.variance, "sum of squared deviations / (q - 1)"),
-    ):
-        yield [name, value, None, None, None, method, whole.q, note]
-    yield ["vmr", whole.vmr, None, None, None, "variance-to-mean ratio", whole.q, note]
-    yield from _sides("chi2_whole", whole.chi2, whole, _FISHER, whole.q, f"df {whole.df}; {note}")
-    indices = {
-        "morisita_index": (morisita_index(counts), "Morisita (1959)"),
-        "mean_crowding": (mean_crowding(counts), "m + VMR - 1 (Lloyd 1967)"),
-        "cluster_size_index": (cluster_size_index(counts), "VMR - 1 (David and Moore 1954)"),
-        "greens_index": (greens_index(counts), "(VMR - 1) / (S - 1) (Green 1966)"),
-    }
-    for name, (value, method) in indices.items():
-        yield [name, value, None, None, None, method, whole.q, note]
-
-
-def _all_rows(each: Findings) -> Iterator[list[Cell]]:
-    """Yield what is said about all quadrats."""
-    seen = each.dispersion_all
-    note = f"df {seen.df}; all quadrats"
-    yield ["vmr_by_area", seen.vmr, None, None, None, "X2 / df", seen.q, note]
-    yield from _sides("chi2", seen.chi2, seen, _BY_AREA, seen.q, note)
-    if seen.df > NORMAL_ABOVE and math.isfinite(seen.chi2):
-        d = normal_deviate(seen.chi2, seen.df)
-        p = 2 * float(special.ndtr(-abs(d)))
-        method = "sqrt(2 X2) - sqrt(2 df - 1), two-sided normal p (Fisher 1925)"
-        yield ["normal_deviate", d, None, None, p, method, seen.q, note]
-    low, high = each.detectable
-    if math.isnan(high):
-        return
-    method = "VMR at or beyond which a departure would have been seen (scaled chi-square)"
-    note = f"with about {100 * POWER:.0f} % power, two-sided at {100 * each.settings['level']:g} %"
-    yield ["vmr_seen", None, low, high, None, method, seen.q, note]
-
-
-def _simulated_rows(each: Findings) -> Iterator[list[Cell]]:
-    """Yield the simulated test, which the verdict rests on."""
-    test = each.simulated
-    note = f"{test.simulations} simulations, seed {each.seed}; all quadrats"
-    if each.verdict != "too few to tell":
-        note += "; the verdict's test"
-    yield from _sides("chi2_simulated", test.statistic, test, _SIMULATED, len(each.counts), note)
-
-
-def _poisson_rows(each: Findings) -> Iterator[list[Cell]]:
-    """Yield the fit of a Poisson law to the frequencies."""
-    fit = each.poisson
-    if fit is not None and fit.df >= 1:
-        method = "Poisson goodness of fit, chi-square (Student 1907; Cochran 1954)"
-        note = f"df {fit.df}; classes {', '.join(fit.labels)}; whole quadrats"
-        n = int(fit.observed.sum())
-        yield ["poisson_fit", fit.chi2, None, None, fit.p, method, n, note]
-
-
 def _planted_rows(each: Findings) -> Iterator[list[Cell]]:
     """Yield what planted objects showed."""
     return planted_rows(each.pattern)
 
 
 _PARTS = (
-    _density_rows,
-    _whole_rows,
-    _all_rows,
-    _simulated_rows,
-    _poisson_rows,
+    dispersion_rows,
     _planted_rows,
     count_rows,
     power_rows,
@@ -370,12 +278,3 @@ _PARTS = (
     spot_check_rows,
     crowding_rows,
 )
-
-
-def _sides(
-    name: str, value: float, test: object, method: str, n: int, note: str
-) -> Iterator[list[Cell]]:
-    """Yield one row per side of a test, each saying which it is."""
-    for side, words in _SIDES.items():
-        p = getattr(test, f"p_{side}")
-        yield [f"{name}_{side}", value, None, None, p, f"{method}, {words}", n, note]

@@ -29,7 +29,15 @@ WITHOUT = {
     *("analysis", "cli", "command_options", "inputs", "lines", "panel", "plan", "recipe"),
     *("review_command", "spot_check_command", "survey"),
     # rows of tables
-    *("block_rows", "count_rows", "crowding_rows", "distance_rows", "envelope_rows", "power_rows"),
+    *(
+        "block_rows",
+        "count_rows",
+        "crowding_rows",
+        "dispersion_rows",
+        "distance_rows",
+        "envelope_rows",
+        "power_rows",
+    ),
     *("reviewing", "rows", "spot_check_rows", "trend_rows", "unseen"),
     # words and pictures
     *("blind_pictures", "curve_words", "hand_counts", "page_words", "report", "wording"),
