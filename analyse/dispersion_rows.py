@@ -10,6 +10,7 @@ from scipy import special
 
 from analyse.dispersion import normal_deviate
 from analyse.indices import cluster_size_index, greens_index, mean_crowding, morisita_index
+from analyse.seeing import rests_words
 from analyse.verdict import POWER
 from detect.files import Cell
 
@@ -100,6 +101,7 @@ def _simulated_rows(each: Findings) -> Iterator[list[Cell]]:
     """Yield the simulated test, which the verdict rests on."""
     test = each.simulated
     note = f"{test.simulations} simulations, seed {each.seed}; all quadrats"
+    note += rests_words(each.eyes)
     if each.verdict != "too few to tell":
         note += "; the verdict's test"
     yield from _sides("chi2_simulated", test.statistic, test, _SIMULATED, len(each.counts), note)

@@ -33,6 +33,14 @@ FLAGS: dict[str, str] = {
     " fewer where they keep apart.",
     "too_crowded": "The spots lie so close that the count cannot be corrected for those seen as one;"
     " dilute, or count a part of the area by eye.",
+    "usual_blind": "How near two may lie to be seen as one was not measured in this photograph: the usual"
+    " {blind:.2f} of their radii's sum was taken; --planted measures it.",
+    "person_blind": "A person has checked these spots and told near ones apart: two nearer than"
+    " {blind:.2f} of their radii's sum are taken to be seen as one even so, which is assumed, not measured.",
+    "contact": "Spots that cannot overlap keep a distance by contact alone: more even counts than plain"
+    " chance gives are no even spacing here.",
+    "crowded_null": "So many spots of these sizes can hardly be told apart at random: the test takes them as"
+    " points, and may take that for even spacing.",
     "no_area": "A table of counts tells no study area, so no density is given.",
     "like_frequencies": "Counts that run 0, 1, 2, ... were each taken for one of {q} quadrats; if the"
     " column beside them says how many quadrats held each, name the two columns count and frequency.",

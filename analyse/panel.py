@@ -28,6 +28,7 @@ from detect.sheet import Sheet
 MOST_OUTLINES = 400  # quadrats, above which none are drawn on the photograph
 _COUNTS_SIMULATED = 400_000  # quadrats times simulations, so that an answer comes at once
 _FEWEST, _MOST = 99, 999  # simulations
+_POINTS_SIMULATED = 100_000  # where points must be drawn, as those that a detector sees
 
 
 class PanelOf:
@@ -90,7 +91,13 @@ class PanelOf:
             pattern = pattern_of_state(sheet, changes)
             grid = self._laid(pattern)
             simulations = min(_MOST, max(_FEWEST, _COUNTS_SIMULATED // len(grid)))
-            test = quick_test(pattern, grid=grid, seed=self._seed, simulations=simulations)
+            test = quick_test(
+                pattern,
+                grid=grid,
+                seed=self._seed,
+                simulations=simulations,
+                points_at_most=_POINTS_SIMULATED,
+            )
         except (AnalyseError, DetectError) as trouble:
             return None, str(trouble)
         return test, None
