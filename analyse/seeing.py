@@ -45,6 +45,12 @@ class PlainTests:
         Over all sides and distances; None with fewer than 10 points.
     holm : HolmFamily or None
         Their adjusted p.
+
+    Examples
+    --------
+    >>> even = SimulatedTest(4.0, 1.0, 0.01, 0.02, 99)
+    >>> PlainTests("evenly spaced", even).simulated.p_two_sided
+    0.02
     """
 
     verdict: Verdict

@@ -36,6 +36,7 @@ WITHOUT = {
         "dispersion_rows",
         "distance_rows",
         "envelope_rows",
+        "plain_rows",
         "power_rows",
     ),
     *("reviewing", "rows", "spot_check_rows", "trend_rows", "unseen"),
