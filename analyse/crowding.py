@@ -9,6 +9,7 @@ from typing import Literal
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 from scipy import special
+from scipy.spatial import cKDTree
 
 from analyse.density import Limits
 from analyse.errors import TableWrong
@@ -23,6 +24,8 @@ _LEVEL = 0.95
 # Three objects that all reach each other are one clump, not two merges of three: the integral over
 # such triangles (Armitage 1949; the same as in the third virial coefficient of hard discs).
 _TRIANGLES = (4 * math.pi - 3 * math.sqrt(3)) / (24 * math.pi)
+_PRIOR = 4.0  # pairs as if at random that are added to those counted there, so that few say little
+_BESIDE = (1.4, 2.1)  # times the blind distance: where pairs are counted beside those merged
 _STEADIER = (
     0.6  # by which merges vary less than Poisson counts, per neighbour within reach: simulated
 )
@@ -238,6 +241,15 @@ def crowding_of_patches(pattern: Pattern, blind: float, blind_se: float) -> Crow
     Crowding or None
         None without radii.
 
+    Notes
+    -----
+    Objects at random have a known number of neighbours within reach. Clumped ones have more, and
+    those that keep apart fewer: as many times as pairs lie from 1.4 to 2.1 times the blind distance
+    apart, just beyond what is merged, for each one expected there at random. By that ratio the
+    neighbours within reach are multiplied; how unsure it is, as a Poisson count, goes into the
+    limits. Four pairs as if at random are added to both, so that few
+    pairs say little.
+
     Examples
     --------
     >>> import shapely
@@ -248,10 +260,29 @@ def crowding_of_patches(pattern: Pattern, blind: float, blind_se: float) -> Crow
     """
     if not np.isfinite(pattern.radius).any() or blind <= 0:
         return None
+    reached = chance_within_reach(pattern, blind)
+    ratio, ratio_se = _pairs_beside(pattern, blind)
+    # Neighbours go by the square of the reach, so the reach errs by half of what the ratio does.
+    unsure = math.hypot(blind_se / blind, ratio_se / ratio / 2)
     limits, neighbours = corrected_for_patches(
-        len(pattern), chance_within_reach(pattern, blind), reach_uncertainty=blind_se / blind
+        len(pattern), reached * ratio, reach_uncertainty=unsure
     )
     return Crowding(len(pattern), limits, neighbours, "patches")
+
+
+def _pairs_beside(pattern: Pattern, blind: float) -> tuple[float, float]:
+    """Return pairs just beyond the blind distance for each one expected at random, and its s.e."""
+    known = np.isfinite(pattern.radius)
+    points, radii = pattern.points[known], pattern.radius[known]
+    least, most = (factor * blind for factor in _BESIDE)
+    n = len(points)
+    expected = n * (n - 1) / 2
+    expected *= chance_within_reach(pattern, most) - chance_within_reach(pattern, least)
+    pairs = cKDTree(points).query_pairs(2 * most * float(radii.max()), output_type="ndarray")
+    apart = np.hypot(*(points[pairs[:, 0]] - points[pairs[:, 1]]).T)
+    sums = radii[pairs[:, 0]] + radii[pairs[:, 1]]
+    seen = int(((apart >= least * sums) & (apart < most * sums)).sum())
+    return (seen + _PRIOR) / (expected + _PRIOR), math.sqrt(seen + _PRIOR) / (expected + _PRIOR)
 
 
 def positive_hole(filled: int, holes: int) -> float:

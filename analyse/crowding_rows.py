@@ -19,7 +19,7 @@ CROWDING_SUMMARY_COLUMNS = [
     "count_crowding_high",
     "crowding_by",
 ]
-_PATCHES = "clumps of objects at random, to the second order (Armitage 1949)"
+_PATCHES = "clumps of objects, to the second order (Armitage 1949)"
 _HOLES = "positive holes (Andersen 1958; Macher 1989), binomial limits (Clopper and Pearson 1934)"
 
 
@@ -73,7 +73,7 @@ def _about(seen: Crowding) -> str:
         return f"{seen.holes} holes on a plate ({filled})"
     if seen.corrected is None:
         return "too crowded to be corrected: more than 0.5 others within reach of each"
-    return f"{seen.neighbours:.3g} others within reach of each; if objects lie at random"
+    return f"{seen.neighbours:.3g} others within reach of each, by the pairs just beyond"
 
 
 def _three(limits: Limits | None) -> list[Cell]:

@@ -28,9 +28,9 @@ FLAGS: dict[str, str] = {
     "duplicates": "Points at the very place of another: {duplicates}; check for double entries.",
     "touching": "Nearer than {touching} there are too few neighbours, and a spot is usually {width}"
     " wide: touching spots counted as one make any pattern look more even than it is.",
-    "crowded": "Spots lie so close that some hide others: if they lie at random, the {counted} counted are"
-    " rather {corrected} (95 % limits {corrected_low} to {corrected_high}); more where they are clumped,"
-    " fewer where they keep apart.",
+    "crowded": "Spots lie so close that some hide others: by how many lie just beside each other, the"
+    " {counted} counted are rather {corrected} (95 % limits {corrected_low} to {corrected_high});"
+    " where objects cannot overlap, none are hidden.",
     "too_crowded": "The spots lie so close that the count cannot be corrected for those seen as one;"
     " dilute, or count a part of the area by eye.",
     "usual_blind": "How near two may lie to be seen as one was not measured in this photograph: the usual"

@@ -1,5 +1,6 @@
 // The rings: true radius; shape and colour by standing, origin and doubt; on a layer of their own.
 
+import { blind } from "./blind.js";
 import { sheet } from "./sheet.js";
 import { view } from "./view.js";
 
@@ -91,6 +92,7 @@ function sprite(look, radius) {
 
 /** Returns the rows in a rectangle of the photograph by look, struck ones only where they are wanted. */
 export function rowsBy(x0, y0, x1, y1, withStruck) {
+  if (blind.on) return [];
   const { spots } = sheet;
   const rows = LOOKS.map(() => []);
   const reach = spots.buckets.largest + ROOM / view.scale;
