@@ -24,12 +24,20 @@ class CheckerOf:
         How to lay them; None for the rule.
     options : SpotCheckOptions or None
         How many are drawn, and the seed.
+
+    Examples
+    --------
+    >>> CheckerOf(options=SpotCheckOptions(quadrats=8))
+    <CheckerOf 8 quadrats, seed 1>
     """
 
     def __init__(
         self, grid: GridOptions | None = None, options: SpotCheckOptions | None = None
     ) -> None:
         self._grid, self._options = grid, options or SpotCheckOptions()
+
+    def __repr__(self) -> str:
+        return f"<CheckerOf {self._options.quadrats} quadrats, seed {self._options.seed}>"
 
     def draw(self, state: Sheet) -> Draw:
         """Draw quadrats over a photograph as it stands.
