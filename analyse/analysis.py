@@ -10,12 +10,12 @@ from pathlib import Path
 from numpy.typing import ArrayLike
 
 from analyse.count_table import CountTable
-from analyse.crowding import crowding_of_holes
 from analyse.envelope_rows import curves_csv
 from analyse.findings import Findings, analyse_counts, analyse_pattern
 from analyse.grid_options import GridOptions
 from analyse.pattern import Pattern, pattern_from_sheet
 from analyse.plan import Trial
+from analyse.positive_holes import crowding_of_holes
 from analyse.quick import verdict_as_found
 from analyse.report import RenderedPage, render_page, write_report
 from analyse.spot_check import spot_check_of

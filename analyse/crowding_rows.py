@@ -6,8 +6,9 @@ import math
 from collections.abc import Iterator
 from typing import TYPE_CHECKING
 
-from analyse.crowding import Crowding, positive_hole
+from analyse.crowding import Crowding
 from analyse.density import Limits
+from analyse.positive_holes import positive_hole
 from detect.files import Cell
 
 if TYPE_CHECKING:

@@ -24,16 +24,14 @@ from analyse.crowding import (
     Crowding,
     chance_within_reach,
     corrected_for_patches,
-    crowding_of_holes,
     crowding_of_patches,
-    positive_hole,
-    positive_hole_limits,
     share_of_clumps,
 )
 from analyse.errors import TableWrong
 from analyse.flags import FLAGS
 from analyse.nulls import random_points
 from analyse.pattern import Pattern
+from analyse.positive_holes import crowding_of_holes, positive_hole, positive_hole_limits
 from analyse.report import render_page, report_html
 from analyse.tables import summary_csv
 from detect.errors import OptionWrong
