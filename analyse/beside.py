@@ -2,19 +2,23 @@
 
 from __future__ import annotations
 
-import zlib
 from dataclasses import dataclass
 from functools import partial
 
 from analyse.departures import Departure, departures_of, disagreement, judged_together
+from analyse.errors import TooCrowded
+from analyse.eyes import Eyes
 from analyse.global_tests import GlobalTests, global_tests
 from analyse.gradient import gradient_remark
 from analyse.holm import HolmFamily
 from analyse.pattern import Pattern
+from analyse.seeing import own_seed, seen_null
 from analyse.trend import TrendRandomness
 from analyse.trend_record import Trend
 from analyse.trends import Trends
 from analyse.verdict import Verdict
+
+PLAIN_SIMULATIONS = 199  # of plain chance, where it only stands beside the null with eyes
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -31,12 +35,18 @@ class Beside:
         The same tests against points placed at random along the gradient.
     beyond_holm : HolmFamily or None
         Their adjusted p.
+    plain : GlobalTests or None
+        The first tests without eyes, by fewer simulations; None where there are none.
+    plain_holm : HolmFamily or None
+        Their adjusted p.
     """
 
     tests: GlobalTests | None = None
     holm: HolmFamily | None = None
     beyond: GlobalTests | None = None
     beyond_holm: HolmFamily | None = None
+    plain: GlobalTests | None = None
+    plain_holm: HolmFamily | None = None
 
     @property
     def departures(self) -> tuple[Departure, ...]:
@@ -51,6 +61,7 @@ def judge_beside(
     seed: int,
     simulations: int,
     workers: int = 1,
+    eyes: Eyes | None = None,
 ) -> Beside:
     """Test a pattern over all sides and distances, and once more beyond its gradient.
 
@@ -66,6 +77,8 @@ def judge_beside(
         How many.
     workers : int
         How many processes may share the simulations.
+    eyes : Eyes or None
+        Of the null that the verdict rests on; None for points as they are.
 
     Returns
     -------
@@ -84,13 +97,23 @@ def judge_beside(
     >>> beside.holm["nearest_neighbour"]
     0.03
     """
-    judge = partial(global_tests, pattern, simulations=simulations, workers=workers)
-    tests = judge(seed=_own_seed(seed, pattern.name))
+    judge = partial(global_tests, pattern, workers=workers)
+    own = own_seed(seed, pattern.name)
+    null = None if eyes is None else seen_null(pattern, eyes)
+    tests = judge(seed=own, null=null, simulations=simulations)
+    plain = None
+    if tests is not None and eyes is not None:
+        plain = judge(seed=own, simulations=min(simulations, PLAIN_SIMULATIONS))
     beyond = None
     if tests is not None and gradient is not None:
-        own = _own_seed(seed, f"{pattern.name}, beyond the gradient")
-        beyond = judge(seed=own, null=TrendRandomness(pattern.area, gradient))
-    return Beside(tests, _family(tests), beyond, _family(beyond))
+        own = own_seed(seed, f"{pattern.name}, beyond the gradient")
+        law = TrendRandomness(pattern.area, gradient)
+        seen = law if eyes is None else seen_null(pattern, eyes, law)
+        try:
+            beyond = judge(seed=own, null=seen, simulations=simulations)
+        except TooCrowded:  # where the gradient is densest: points as they are, then
+            beyond = judge(seed=own, null=law, simulations=simulations)
+    return Beside(tests, _family(tests), beyond, _family(beyond), plain, _family(plain))
 
 
 def remark(
@@ -152,8 +175,3 @@ def _family(tests: GlobalTests | None) -> HolmFamily | None:
 def _departures(tests: GlobalTests | None, family: HolmFamily | None) -> tuple[Departure, ...]:
     """Return how the tests of a family depart."""
     return () if tests is None or family is None else departures_of(tests.envelopes, family)
-
-
-def _own_seed(seed: int, name: str) -> int:
-    """Return the seed of one photograph's simulations, which no other one shares."""
-    return (seed << 32) + zlib.crc32(name.encode("utf-8"))

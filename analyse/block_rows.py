@@ -9,6 +9,7 @@ import numpy as np
 
 from analyse.blocks import BlockVariance
 from analyse.contiguous import Blocks, MergedBlocks
+from analyse.side_rows import side_rows
 from detect.files import Cell
 
 if TYPE_CHECKING:
@@ -27,7 +28,6 @@ _TEST = (
     " rank length (Myllymaki and others 2017)"
 )
 _MOVED = "between the middles of quadrats, side 1"
-_SIDES = {"clumped": "upper tail", "even": "lower tail", "two_sided": "twice the smaller tail"}
 
 
 def block_rows(each: Findings) -> Iterator[list[Cell]]:
@@ -122,11 +122,9 @@ def _merged(blocks: Blocks, merged: MergedBlocks) -> Iterator[list[Cell]]:
     ):
         if np.isfinite(value):
             yield [f"merged_{shape}_{name}", value, None, None, None, method, seen.q, note]
-    for side, words in _SIDES.items():
-        method = f"index of dispersion, chi-square (Fisher, Thornton and Mackenzie 1922), {words}"
-        name = f"merged_{shape}_chi2_{side}"
-        p = getattr(seen, f"p_{side}")
-        yield [name, seen.chi2, None, None, p, method, seen.q, f"df {seen.df}; {note}"]
+    method = "index of dispersion, chi-square (Fisher, Thornton and Mackenzie 1922)"
+    note = f"df {seen.df}; {note}"
+    yield from side_rows(f"merged_{shape}_chi2", seen.chi2, seen, method, seen.q, note)
 
 
 def _quadrats(n: int) -> str:

@@ -9,20 +9,20 @@ from typing import Literal
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 from scipy import special
+from scipy.spatial import cKDTree
 
 from analyse.density import Limits
-from analyse.errors import TableWrong
 from analyse.flags import flag_sentences
 from analyse.pattern import Pattern
-from detect.errors import OptionWrong
 
 CROWDED = 0.05  # share of the objects lost in others from which a count is called crowded
 MOST_CROWDED = 0.5  # neighbours within reach beyond which the correction would be a guess
-MOST_HOLES = 100_000
-_LEVEL = 0.95
+LEVEL = 0.95
 # Three objects that all reach each other are one clump, not two merges of three: the integral over
 # such triangles (Armitage 1949; the same as in the third virial coefficient of hard discs).
 _TRIANGLES = (4 * math.pi - 3 * math.sqrt(3)) / (24 * math.pi)
+_PRIOR = 4.0  # pairs as if at random that are added to those counted there, so that few say little
+_BESIDE = (1.4, 2.1)  # times the blind distance: where pairs are counted beside those merged
 _STEADIER = (
     0.6  # by which merges vary less than Poisson counts, per neighbour within reach: simulated
 )
@@ -161,7 +161,7 @@ def corrected_for_patches(
     (400, 0.2)
     """
     if patches < 2 or reached == 0:
-        return Limits(float(patches), float(patches), float(patches), _LEVEL), 0.0
+        return Limits(float(patches), float(patches), float(patches), LEVEL), 0.0
 
     def seen(n: float) -> float:
         return n * float(share_of_clumps((n - 1) * reached))
@@ -178,8 +178,8 @@ def corrected_for_patches(
     slope = 1 - m + 3 * _TRIANGLES * m**2  # objects seen for each one more
     chance = math.sqrt(max(0.0, (n - patches) * (1 - _STEADIER * m))) / slope
     reach = n * (0.5 - 2 * _TRIANGLES * m) * 2 * m * reach_uncertainty / slope
-    half = float(special.ndtri(0.5 + _LEVEL / 2)) * math.hypot(chance, reach)
-    return Limits(n, max(float(patches), n - half), n + half, _LEVEL), m
+    half = float(special.ndtri(0.5 + LEVEL / 2)) * math.hypot(chance, reach)
+    return Limits(n, max(float(patches), n - half), n + half, LEVEL), m
 
 
 def chance_within_reach(pattern: Pattern, blind: float) -> float:
@@ -238,143 +238,47 @@ def crowding_of_patches(pattern: Pattern, blind: float, blind_se: float) -> Crow
     Crowding or None
         None without radii.
 
+    Notes
+    -----
+    Objects at random have a known number of neighbours within reach. Clumped ones have more, and
+    those that keep apart fewer: as many times as pairs lie from 1.4 to 2.1 times the blind distance
+    apart, just beyond what is merged, for each one expected there at random. By that ratio the
+    neighbours within reach are multiplied; how unsure it is, as a Poisson count, goes into the
+    limits. Four pairs as if at random are added to both, so that few pairs say little.
+
     Examples
     --------
     >>> import shapely
     >>> points = np.random.default_rng(1).uniform(0, 100, (400, 2))
     >>> dish = Pattern.of(points, shapely.box(0, 0, 100, 100), radius=np.full(400, 1.0))
     >>> crowding_of_patches(dish, 0.8, 0.05)
-    <Crowding by patches: 400 counted, 486.7 corrected>
+    <Crowding by patches: 400 counted, 489.4 corrected>
     """
     if not np.isfinite(pattern.radius).any() or blind <= 0:
         return None
+    reached = chance_within_reach(pattern, blind)
+    ratio, ratio_se = _pairs_beside(pattern, blind)
+    # Neighbours go by the square of the reach, so the reach errs by half of what the ratio does.
+    unsure = math.hypot(blind_se / blind, ratio_se / ratio / 2)
     limits, neighbours = corrected_for_patches(
-        len(pattern), chance_within_reach(pattern, blind), reach_uncertainty=blind_se / blind
+        len(pattern), reached * ratio, reach_uncertainty=unsure
     )
     return Crowding(len(pattern), limits, neighbours, "patches")
 
 
-def positive_hole(filled: int, holes: int) -> float:
-    """Return how many particles fill so many of the holes of a plate.
-
-    Parameters
-    ----------
-    filled : int
-        Holes that hold something, 0 to `holes`.
-    holes : int
-        Of the plate.
-
-    Returns
-    -------
-    float
-
-    Notes
-    -----
-    N (1/N + 1/(N - 1) + ... + 1/(N - r + 1)): the expected number of particles that it takes to
-    fill r of N holes at random.
-
-    References
-    ----------
-    Feller, W. (1950). An Introduction to Probability Theory and its Applications, vol. 1. Wiley
-    (waiting times in coupon collecting).
-    Andersen, A. A. (1958). New sampler for the collection, sizing, and enumeration of viable
-    airborne particles. Journal of Bacteriology 76, 471-484.
-    Macher, J. M. (1989). Positive-hole correction of multiple-jet impactors for collecting viable
-    microorganisms. American Industrial Hygiene Association Journal 50, 561-568.
-
-    Examples
-    --------
-    >>> round(positive_hole(100, 400), 2), round(positive_hole(400, 400), 2)
-    (114.91, 2627.97)
-    """
-    return float(holes * (1 / np.arange(holes, holes - filled, -1, dtype=np.float64)).sum())
-
-
-def positive_hole_limits(filled: int, holes: int) -> Limits:
-    """Return the positive-hole count with 95 % limits of what such a sample has on average.
-
-    Parameters
-    ----------
-    filled : int
-        Holes that hold something.
-    holes : int
-        Of the plate.
-
-    Returns
-    -------
-    Limits
-        The upper one is infinite where every hole is filled.
-
-    Notes
-    -----
-    Where particles come as a Poisson count of mean m, each hole stays empty with chance
-    exp(-m / N), independently: exact binomial limits p of the share filled give m = -N ln(1 - p).
-
-    References
-    ----------
-    Clopper, C. J. and Pearson, E. S. (1934). The use of confidence or fiducial limits illustrated in
-    the case of the binomial. Biometrika 26, 404-413.
-
-    Examples
-    --------
-    >>> limits = positive_hole_limits(100, 400)
-    >>> round(limits.low, 1), round(limits.high, 1)
-    (93.4, 140.1)
-    """
-    tail = (1 - _LEVEL) / 2
-    low = float(special.betaincinv(filled, holes - filled + 1, tail)) if filled else 0.0
-    high = float(special.betaincinv(filled + 1, holes - filled, 1 - tail)) if filled < holes else 1
-    upper = math.inf if high == 1 else -holes * math.log1p(-high)
-    return Limits(positive_hole(filled, holes), -holes * math.log1p(-low), upper, _LEVEL)
-
-
-def crowding_of_holes(counts: ArrayLike, holes: int) -> Crowding:
-    """Correct counts of filled holes for holes that were hit more than once.
-
-    Parameters
-    ----------
-    counts : array_like of int
-        Filled holes, one number for each plate.
-    holes : int
-        Of a plate.
-
-    Returns
-    -------
-    Crowding
-        The sum over plates; its limits by adding half widths in quadrature.
-
-    Raises
-    ------
-    OptionWrong
-        If a plate can have no such number of holes.
-    TableWrong
-        If more holes are filled than a plate has.
-
-    Examples
-    --------
-    >>> crowding_of_holes([100], 400)
-    <Crowding by holes: 100 counted, 114.9 corrected>
-    """
-    if not 1 <= holes <= MOST_HOLES:
-        raise OptionWrong(f"--holes must be from 1 to {MOST_HOLES}, not {holes}.")
-    plates = [int(count) for count in np.asarray(counts).reshape(-1)]
-    if plates and max(plates) > holes:
-        raise TableWrong(
-            f"{max(plates)} are counted on a plate of {holes} holes, and no more than {holes} can be"
-            " filled; check --holes and the counts."
-        )
-    parts = [(count, positive_hole_limits(count, holes)) for count in plates]
-    value = sum(each.value for _, each in parts)
-    below = math.hypot(*(each.value - each.low for _, each in parts))
-    above = math.hypot(*(each.high - each.value for _, each in parts))
-    return Crowding(
-        sum(plates),
-        Limits(value, value - below, value + above, _LEVEL),
-        value / (holes * max(1, len(plates))),
-        "holes",
-        holes,
-        tuple(parts) if len(parts) > 1 else (),
-    )
+def _pairs_beside(pattern: Pattern, blind: float) -> tuple[float, float]:
+    """Return pairs just beyond the blind distance for each one expected at random, and its s.e."""
+    known = np.isfinite(pattern.radius)
+    points, radii = pattern.points[known], pattern.radius[known]
+    least, most = (factor * blind for factor in _BESIDE)
+    n = len(points)
+    expected = n * (n - 1) / 2
+    expected *= chance_within_reach(pattern, most) - chance_within_reach(pattern, least)
+    pairs = cKDTree(points).query_pairs(2 * most * float(radii.max()), output_type="ndarray")
+    apart = np.hypot(*(points[pairs[:, 0]] - points[pairs[:, 1]]).T)
+    sums = radii[pairs[:, 0]] + radii[pairs[:, 1]]
+    seen = int(((apart >= least * sums) & (apart < most * sums)).sum())
+    return (seen + _PRIOR) / (expected + _PRIOR), math.sqrt(seen + _PRIOR) / (expected + _PRIOR)
 
 
 def _said_of_holes(crowding: Crowding) -> str:

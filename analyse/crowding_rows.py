@@ -6,8 +6,9 @@ import math
 from collections.abc import Iterator
 from typing import TYPE_CHECKING
 
-from analyse.crowding import Crowding, positive_hole
+from analyse.crowding import Crowding
 from analyse.density import Limits
+from analyse.positive_holes import positive_hole
 from detect.files import Cell
 
 if TYPE_CHECKING:
@@ -19,7 +20,7 @@ CROWDING_SUMMARY_COLUMNS = [
     "count_crowding_high",
     "crowding_by",
 ]
-_PATCHES = "clumps of objects at random, to the second order (Armitage 1949)"
+_PATCHES = "clumps of objects, to the second order (Armitage 1949)"
 _HOLES = "positive holes (Andersen 1958; Macher 1989), binomial limits (Clopper and Pearson 1934)"
 
 
@@ -73,7 +74,7 @@ def _about(seen: Crowding) -> str:
         return f"{seen.holes} holes on a plate ({filled})"
     if seen.corrected is None:
         return "too crowded to be corrected: more than 0.5 others within reach of each"
-    return f"{seen.neighbours:.3g} others within reach of each; if objects lie at random"
+    return f"{seen.neighbours:.3g} others within reach of each, by the pairs just beyond"
 
 
 def _three(limits: Limits | None) -> list[Cell]:

@@ -10,6 +10,8 @@ from scipy import special
 
 from analyse.dispersion import normal_deviate
 from analyse.indices import cluster_size_index, greens_index, mean_crowding, morisita_index
+from analyse.seeing import rests_words
+from analyse.side_rows import side_rows
 from analyse.verdict import POWER
 from detect.files import Cell
 
@@ -20,7 +22,6 @@ NORMAL_ABOVE = 30  # degrees of freedom from which the normal approximation serv
 _FISHER = "index of dispersion, chi-square (Fisher, Thornton and Mackenzie 1922)"
 _BY_AREA = "index of dispersion with expected counts by area, chi-square (Pearson 1900)"
 _SIMULATED = "simulated given the total (Davison and Hinkley 1997)"
-_SIDES = {"clumped": "upper tail", "even": "lower tail", "two_sided": "twice the smaller tail"}
 
 
 def dispersion_rows(each: Findings) -> Iterator[list[Cell]]:
@@ -66,7 +67,9 @@ def _whole_rows(each: Findings) -> Iterator[list[Cell]]:
     ):
         yield [name, value, None, None, None, method, whole.q, note]
     yield ["vmr", whole.vmr, None, None, None, "variance-to-mean ratio", whole.q, note]
-    yield from _sides("chi2_whole", whole.chi2, whole, _FISHER, whole.q, f"df {whole.df}; {note}")
+    yield from side_rows(
+        "chi2_whole", whole.chi2, whole, _FISHER, whole.q, f"df {whole.df}; {note}"
+    )
     indices = {
         "morisita_index": (morisita_index(counts), "Morisita (1959)"),
         "mean_crowding": (mean_crowding(counts), "m + VMR - 1 (Lloyd 1967)"),
@@ -82,7 +85,7 @@ def _all_rows(each: Findings) -> Iterator[list[Cell]]:
     seen = each.dispersion_all
     note = f"df {seen.df}; all quadrats"
     yield ["vmr_by_area", seen.vmr, None, None, None, "X2 / df", seen.q, note]
-    yield from _sides("chi2", seen.chi2, seen, _BY_AREA, seen.q, note)
+    yield from side_rows("chi2", seen.chi2, seen, _BY_AREA, seen.q, note)
     if seen.df > NORMAL_ABOVE and math.isfinite(seen.chi2):
         d = normal_deviate(seen.chi2, seen.df)
         p = 2 * float(special.ndtr(-abs(d)))
@@ -100,9 +103,10 @@ def _simulated_rows(each: Findings) -> Iterator[list[Cell]]:
     """Yield the simulated test, which the verdict rests on."""
     test = each.simulated
     note = f"{test.simulations} simulations, seed {each.seed}; all quadrats"
+    note += rests_words(each.eyes)
     if each.verdict != "too few to tell":
         note += "; the verdict's test"
-    yield from _sides("chi2_simulated", test.statistic, test, _SIMULATED, len(each.counts), note)
+    yield from side_rows("chi2_simulated", test.statistic, test, _SIMULATED, len(each.counts), note)
 
 
 def _poisson_rows(each: Findings) -> Iterator[list[Cell]]:
@@ -113,12 +117,3 @@ def _poisson_rows(each: Findings) -> Iterator[list[Cell]]:
         note = f"df {fit.df}; classes {', '.join(fit.labels)}; whole quadrats"
         n = int(fit.observed.sum())
         yield ["poisson_fit", fit.chi2, None, None, fit.p, method, n, note]
-
-
-def _sides(
-    name: str, value: float, test: object, method: str, n: int, note: str
-) -> Iterator[list[Cell]]:
-    """Yield one row per side of a test, each saying which it is."""
-    for side, words in _SIDES.items():
-        p = getattr(test, f"p_{side}")
-        yield [f"{name}_{side}", value, None, None, p, f"{method}, {words}", n, note]

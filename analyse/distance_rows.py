@@ -11,13 +11,13 @@ from shapely.geometry.base import BaseGeometry
 
 from analyse.judging import stream
 from analyse.neighbours import (
-    ClarkEvans,
     clark_evans,
     clark_evans_torus,
     donnelly,
     hopkins_skellam,
 )
 from analyse.set_covariance import rectangle_sides
+from analyse.side_rows import SMALL_IF_CLUMPED, side_rows
 from detect.files import Cell
 
 if TYPE_CHECKING:
@@ -32,7 +32,6 @@ _SKELLAM = (
     "squared distances from random places over those between neighbours (Hopkins and Skellam 1954)"
 )
 _NO_EDGE = "the edge is not allowed for: too large, the more so the fewer the points"
-_SIDES = {"clumped": "lower tail", "even": "upper tail", "two_sided": "twice the smaller tail"}
 
 
 def distance_rows(each: Findings) -> Iterator[list[Cell]]:
@@ -60,7 +59,8 @@ def distance_rows(each: Findings) -> Iterator[list[Cell]]:
     lengths = f"mean distance {plain.mean:.6g} {pattern.unit}, expected {plain.expected:.6g}"
     yield ["clark_evans", plain.ratio, None, None, None, _PLAIN, n, f"{lengths}; {_NO_EDGE}"]
     note = f"normal p; {_NO_EDGE}"
-    yield from _by_side("clark_evans_z", plain, "R in standard errors (Clark and Evans 1954)", note)
+    method = "R in standard errors (Clark and Evans 1954)"
+    yield from side_rows("clark_evans_z", plain.z, plain, method, n, note, sides=SMALL_IF_CLUMPED)
     if rectangle_sides(area) is not None:
         yield from _in_rectangles(points, area, pattern.unit)
     skellam = hopkins_skellam(points, area, stream(each.seed, f"{each.name}, random places"))
@@ -74,13 +74,9 @@ def _in_rectangles(points: Floats, area: BaseGeometry, unit: str) -> Iterator[li
     edge, torus = donnelly(points, area), clark_evans_torus(points, area)
     lengths = f"mean distance {edge.mean:.6g} {unit}, expected {edge.expected:.6g}"
     yield ["donnelly", edge.ratio, None, None, None, _DONNELLY, edge.n, lengths]
-    yield from _by_side("donnelly_z", edge, "R in standard errors (Donnelly 1978)", "normal p")
+    method = "R in standard errors (Donnelly 1978)"
+    yield from side_rows(
+        "donnelly_z", edge.z, edge, method, edge.n, "normal p", sides=SMALL_IF_CLUMPED
+    )
     note = "a check: the pattern is taken to go on beyond the edge"
     yield ["clark_evans_torus", torus.ratio, None, None, None, _TORUS, torus.n, note]
-
-
-def _by_side(name: str, seen: ClarkEvans, method: str, note: str) -> Iterator[list[Cell]]:
-    """Yield z with one p per side, each saying which it is."""
-    for side, words in _SIDES.items():
-        p = getattr(seen, f"p_{side}")
-        yield [f"{name}_{side}", seen.z, None, None, p, f"{method}, {words}", seen.n, note]

@@ -77,8 +77,8 @@ def envelope_rows(each: Findings) -> Iterator[list[Cell]]:
         Statistic, distance of the greatest departure, no limits, p, method, points, notes; then
         the adjusted p of the family. Tests against the fitted trend end in ``_beyond_trend``.
     """
-    yield from _tested(each, each.tests, each.holm, "")
-    yield from _tested(each, each.beyond, each.beyond_holm, BEYOND)
+    yield from tested_rows(each, each.tests, each.holm, "")
+    yield from tested_rows(each, each.beyond, each.beyond_holm, BEYOND)
 
 
 def beside_cells(each: Findings) -> list[Cell]:
@@ -148,10 +148,27 @@ def curves_csv(findings: Sequence[Findings]) -> str:
     return csv_text(CURVE_COLUMNS, rows, digits=DIGITS)
 
 
-def _tested(
+def tested_rows(
     each: Findings, tests: GlobalTests | None, family: HolmFamily | None, ending: str
 ) -> Iterator[list[Cell]]:
-    """Yield the tests against one null, and their adjusted p."""
+    """Yield the tests against one null, and their adjusted p, their names with an ending.
+
+    Parameters
+    ----------
+    each : Findings
+        For its number of points and seed.
+    tests : GlobalTests or None
+        Nothing is yielded without them.
+    family : HolmFamily or None
+        Their adjusted p.
+    ending : str
+        Of each name.
+
+    Yields
+    ------
+    list
+        As `envelope_rows` does.
+    """
     if tests is None:
         return
     for name, seen in tests.envelopes.items():

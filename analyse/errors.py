@@ -5,6 +5,7 @@
     ├── GridWrong           the quadrats asked for do not fit the study area
     ├── TooFewQuadrats      a test needs more quadrats than there are
     ├── AreaUnfit           a method is not made for an area of this shape
+    ├── TooCrowded          so many spots can hardly be told apart, or find no room, at random
     ├── TrendNotFound       no slope of the density fits, or it cannot be judged
     └── RecipeWrong         the recipe of a survey cannot be followed
 
@@ -32,6 +33,10 @@ class TooFewQuadrats(AnalyseError):
 
 class AreaUnfit(AnalyseError):
     """A method is not made for an area of this shape; the message names one that is."""
+
+
+class TooCrowded(AnalyseError):
+    """So many spots can hardly be told apart, or find no room, if they are placed at random."""
 
 
 class TrendNotFound(AnalyseError):

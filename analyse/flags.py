@@ -24,17 +24,23 @@ FLAGS: dict[str, str] = {
     " checked as they stand.",
     "doubtful": "Counted spots that are more likely false than real: {doubtful} of {n};"
     " check them (orange in the pictures).",
-    "recall_assumed": "Nobody has measured what the detector misses here: behind the share of draws and the"
-    " limits with detection error stands what it misses on drawn scenes. Detect with --planted.",
     "outside": "Points outside the study area, which were left out: {outside}.",
     "duplicates": "Points at the very place of another: {duplicates}; check for double entries.",
     "touching": "Nearer than {touching} there are too few neighbours, and a spot is usually {width}"
     " wide: touching spots counted as one make any pattern look more even than it is.",
-    "crowded": "Spots lie so close that some hide others: if they lie at random, the {counted} counted are"
-    " rather {corrected} (95 % limits {corrected_low} to {corrected_high}); more where they are clumped,"
-    " fewer where they keep apart.",
+    "crowded": "Spots lie so close that some hide others: by how many lie just beside each other, the"
+    " {counted} counted are rather {corrected} (95 % limits {corrected_low} to {corrected_high});"
+    " where objects cannot overlap, none are hidden.",
     "too_crowded": "The spots lie so close that the count cannot be corrected for those seen as one;"
     " dilute, or count a part of the area by eye.",
+    "usual_blind": "How near two may lie to be seen as one was not measured in this photograph: the usual"
+    " {blind:.2f} of their radii's sum was taken; --planted measures it.",
+    "person_blind": "A person has checked these spots and told near ones apart: two nearer than"
+    " {blind:.2f} of their radii's sum are taken to be seen as one even so, which is assumed, not measured.",
+    "contact": "Spots that cannot overlap keep a distance by contact alone: more even counts than plain"
+    " chance gives are no even spacing here.",
+    "crowded_null": "So many spots of these sizes can hardly be told apart at random: the test takes them as"
+    " points, and may take that for even spacing.",
     "no_area": "A table of counts tells no study area, so no density is given.",
     "like_frequencies": "Counts that run 0, 1, 2, ... were each taken for one of {q} quadrats; if the"
     " column beside them says how many quadrats held each, name the two columns count and frequency.",

@@ -10,11 +10,11 @@ from shapely.geometry.base import BaseGeometry
 
 from analyse.analysis import Analysed, analyse_sheet, analyse_table
 from analyse.count_table import read_counts
-from analyse.crowding import MOST_HOLES
 from analyse.errors import AnalyseError
 from analyse.grid_options import GridOptions
 from analyse.plan import Trial
 from analyse.point_table import read_points
+from analyse.positive_holes import MOST_HOLES
 from analyse.region import TableUnit, area_from_option
 from detect.amendments import amendments_path, read_amendments
 from detect.batch import Each

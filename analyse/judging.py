@@ -5,6 +5,7 @@ from __future__ import annotations
 import math
 import zlib
 from dataclasses import dataclass
+from functools import partial
 from typing import Any
 
 import numpy as np
@@ -34,8 +35,8 @@ from analyse.pooling import LARGEST_COUNT
 from analyse.power import WouldShow, would_show
 from analyse.quadrats import QuadratCounts
 from analyse.said import Findings
+from analyse.seeing import PlainTests, Seeing, eyes_sentence, judge_seen, seen_null
 from analyse.trends import Trends, pattern_trends, table_trends
-from analyse.trust import assumed, trust_in
 from analyse.verdict import LEVEL, Verdict, decide, detectable, sentence
 
 
@@ -97,7 +98,11 @@ def judged(subject: Subject, seed: int, simulations: int, workers: int = 1) -> F
     whole = dispersion(x[is_whole]) if is_whole.sum() >= 2 else None
     weights = np.ones(x.size) if areas is None else areas
     rng = stream(seed, subject.name)
-    simulated = simulated_p(x, weights, simulations=simulations, rng=rng)
+    plain = simulated_p(x, weights, simulations=simulations, rng=rng)
+    seeing = judge_seen(
+        subject.pattern, subject.counts, plain, seed=seed, simulations=simulations, workers=workers
+    )  # fmt: skip
+    simulated = seeing.simulated
     clumped_mean, clumped_density = clumped_in_quadrats(
         subject.counts,
         rng=stream(seed, f"{subject.name}, bootstrap of quadrats"),
@@ -110,27 +115,28 @@ def judged(subject: Subject, seed: int, simulations: int, workers: int = 1) -> F
         "whole": int(is_whole.sum()),
         "mean_expected": everything.mean,
         "clipped_percent": 100 * subject.counts.clipped_share,
+        "blind": math.nan if seeing.eyes is None else seeing.eyes.blind,
     }
     seen = _seen(verdict, everything, weights)
     shown = _shown(verdict, everything, subject)
-    trend = _trends(subject, seed, simulations)
-    trust = trust_in(
-        subject.pattern,
-        subject.counts,
-        simulated,
-        verdict=verdict,
-        rng=stream(seed, f"{subject.name}, draws"),
-    )
+    trend = _trends(subject, seeing, seed, simulations)
     beside = Beside()
     if subject.pattern is not None:
         gradient = None if trend is None else trend.clearest
         beside = judge_beside(
-            subject.pattern, gradient, seed=seed, simulations=simulations, workers=workers
+            subject.pattern,
+            gradient,
+            seed=seed,
+            simulations=simulations,
+            workers=workers,
+            eyes=seeing.eyes,
         )
+    unseen = decide(everything.n, everything.q, plain)
     width = math.nan if subject.pattern is None else subject.pattern.width
     where = {"side": subject.settings["side"], "unit": subject.unit, "width": width}
     said = [
         sentence(verdict, everything, whole, simulated, seen, shown),
+        eyes_sentence(verdict, unseen, seeing),
         remark(verdict, trend, beside, **where),
     ]
     touching = [each for each in beside.departures if within_a_spot(each, width)]
@@ -158,7 +164,7 @@ def judged(subject: Subject, seed: int, simulations: int, workers: int = 1) -> F
         detectable=seen,
         shown=shown,
         flags=subject.flags
-        + ("recall_assumed",) * assumed(trust)
+        + seeing.flags
         + ("touching",) * bool(touching)
         + (() if crowding is None else crowding.flags)
         + count_flags(values),
@@ -175,7 +181,10 @@ def judged(subject: Subject, seed: int, simulations: int, workers: int = 1) -> F
         beyond=beside.beyond,
         beyond_holm=beside.beyond_holm,
         crowding=crowding,
-        trust=trust,
+        eyes=seeing.eyes,
+        plain=None
+        if seeing.eyes is None
+        else PlainTests(unseen, plain, beside.plain, beside.plain_holm),
     )
 
 
@@ -216,12 +225,13 @@ def _crowding(pattern: Pattern | None) -> Crowding | None:
     return crowding_of_patches(pattern, blind.value, blind.standard_error)
 
 
-def _trends(subject: Subject, seed: int, simulations: int) -> Trends | None:
+def _trends(subject: Subject, seeing: Seeing, seed: int, simulations: int) -> Trends | None:
     """Return the gradients of the density of a pattern, or of a table of contiguous quadrats."""
     rng = stream(seed, f"{subject.name}, trend")
     counts, settings = subject.counts, subject.settings
     if subject.pattern is not None:
-        return pattern_trends(subject.pattern, counts, simulations=simulations, rng=rng)
+        seen = None if seeing.eyes is None else partial(seen_null, subject.pattern, seeing.eyes)
+        return pattern_trends(subject.pattern, counts, simulations=simulations, rng=rng, seen=seen)
     if settings["rows"] is None:
         return None
     shape = (settings["rows"], settings["columns"])

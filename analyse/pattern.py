@@ -86,8 +86,6 @@ class Pattern:
         Radius of each point in `unit`, NaN where not known; an empty one stands for none known.
     sought : str
         What a detector looked for: colonies, seedlings, lesions or spots; empty where none did.
-    spots : tuple of str
-        Ids of the points on their sheet; empty for what is no photograph.
 
     Raises
     ------
@@ -115,7 +113,6 @@ class Pattern:
     width: float = math.nan
     radius: NDArray[np.float64] = field(default_factory=lambda: np.empty(0))
     sought: str = ""
-    spots: tuple[str, ...] = ()
 
     def __post_init__(self) -> None:
         points: NDArray[np.float64] = np.array(self.points, dtype=np.float64).reshape(-1, 2)
@@ -170,7 +167,8 @@ class Pattern:
         points : array_like of shape (n, 2)
             Points as x, y in `unit`.
         area : shapely geometry or four numbers
-            Study area in `unit`; four numbers are x0, y0, x1, y1 of a rectangle.
+            Study area in `unit`; four numbers are x0, y0, x1, y1 of a rectangle. A polygon that is
+            a disc (of more than 32 sides) counts as a dish.
         name : str
             What the pattern is called in tables and reports.
         unit : {"mm", "px"}
@@ -196,6 +194,8 @@ class Pattern:
         >>> pattern = Pattern.of([[1, 2], [5, 5], [12, 3]], (0, 0, 10, 10))
         >>> len(pattern), pattern.outside, pattern.flags
         (2, 1, ('outside',))
+        >>> Pattern.of([[1, 2]], shapely.Point(0, 0).buffer(10)).dish is None
+        False
         """
         kind = "polygon" if isinstance(area, BaseGeometry) else "rectangle"
         region = area if isinstance(area, BaseGeometry) else rectangle([float(v) for v in area])
@@ -226,7 +226,7 @@ class Pattern:
             doubts,
             True,
             _point_flags(kept, outside, doubts),
-            None,
+            _disc(region),
             outside,
             width=2 * float(np.median(known)) if known.size else math.nan,
             radius=sizes,
@@ -317,7 +317,6 @@ def pattern_of_state(sheet: Sheet, changes: Changes) -> Pattern:
         2 * float(np.median(radii)) if len(radii) else math.nan,
         radii,
         str(sheet.settings.get("kind", "")),
-        spots.id,
     )
 
 
@@ -346,6 +345,14 @@ def _blind(sheet: Sheet) -> float:
         return math.nan if sheet.planted is None else sheet.planted.blind_px
     middle = sheet.area.polygon.centroid
     return sheet.planted.blind_px * float(sheet.scale.mm_per_px([[middle.x, middle.y]])[0])
+
+
+def _disc(area: BaseGeometry) -> Circle | None:
+    """Return the circle of an area that is a disc, so that what holds for dishes holds for it."""
+    from analyse.set_covariance import dish_circle  # loads scipy, which help has no use for
+
+    found = dish_circle(area)
+    return None if found is None else Circle(*found)
 
 
 def _circle(area: BaseGeometry) -> Circle:

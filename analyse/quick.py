@@ -6,12 +6,13 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from analyse.chance import SEED, SIMULATIONS
+from analyse.chance import FEWEST_SIMULATIONS, SEED, SIMULATIONS
 from analyse.count_chance import SimulatedTest, simulated_p
 from analyse.dispersion import Dispersion, clipped_dispersion, dispersion
 from analyse.findings import stream
 from analyse.pattern import Pattern, pattern_of_state
 from analyse.quadrats import Grid, GridOptions, QuadratCounts, count_in_quadrats, lay_grid
+from analyse.seeing import judge_seen
 from analyse.verdict import Verdict, decide
 from detect.changes import Changes
 from detect.sheet import Sheet
@@ -51,6 +52,7 @@ def quick_test(
     grid: Grid | None = None,
     seed: int = SEED,
     simulations: int = SIMULATIONS,
+    points_at_most: int | None = None,
 ) -> QuickTest:
     """Count a pattern in quadrats and test the counts as `analyse_pattern` does, and do no more.
 
@@ -64,6 +66,9 @@ def quick_test(
         The grid that follows from them, where it was laid before.
     seed, simulations : int
         Of the simulated p.
+    points_at_most : int or None
+        Where points must be drawn because the detector's eyes are known, how many in all, so that
+        there are fewer simulations, but not below 99; None for no limit.
 
     Returns
     -------
@@ -87,8 +92,12 @@ def quick_test(
     everything = clipped_dispersion(x, grid.area)
     whole = dispersion(x[grid.whole]) if int(np.sum(grid.whole)) >= 2 else None
     rng = stream(seed, pattern.name)
-    simulated = simulated_p(x, grid.area, simulations=simulations, rng=rng)
+    plain = simulated_p(x, grid.area, simulations=simulations, rng=rng)
     counts = QuadratCounts(x, grid.area, grid.whole, grid, grid.row, grid.column)
+    fewer = (
+        simulations if points_at_most is None else _fewer(simulations, points_at_most, len(pattern))
+    )
+    simulated = judge_seen(pattern, counts, plain, seed=seed, simulations=fewer).simulated
     verdict = decide(everything.n, everything.q, simulated)
     return QuickTest(pattern, counts, everything, whole, simulated, verdict)
 
@@ -97,3 +106,8 @@ def verdict_as_found(sheet: Sheet, options: GridOptions, *, seed: int, simulatio
     """Return the verdict of a sheet's quadrat test before anybody changed anything on it."""
     pattern = pattern_of_state(sheet, Changes())
     return quick_test(pattern, options, seed=seed, simulations=simulations).verdict
+
+
+def _fewer(simulations: int, points_at_most: int, n: int) -> int:
+    """Return how many simulations of n points are drawn."""
+    return min(simulations, max(FEWEST_SIMULATIONS, points_at_most // max(n, 1)))

@@ -14,6 +14,7 @@ from analyse.contiguous import Blocks
 from analyse.count_chance import SimulatedTest
 from analyse.density import Limits
 from analyse.dispersion import Dispersion
+from analyse.eyes import Eyes
 from analyse.fits import NegativeBinomialFit
 from analyse.flags import flag_sentences
 from analyse.holm import HolmFamily
@@ -21,6 +22,7 @@ from analyse.models import PoissonFit
 from analyse.pattern import Pattern, Unit
 from analyse.power import WouldShow
 from analyse.quadrats import QuadratCounts
+from analyse.seeing import PlainTests, rests_words
 from analyse.trends import Trends
 from analyse.verdict import Verdict
 
@@ -28,7 +30,6 @@ if TYPE_CHECKING:
     from analyse.crowding import Crowding
     from analyse.global_tests import GlobalTests
     from analyse.spot_check import SpotCheck
-    from analyse.trust import Trust
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -56,7 +57,8 @@ class Findings:
     dispersion_all : Dispersion
         Over all quadrats, expected counts by area.
     simulated : SimulatedTest
-        X2 over all quadrats judged by simulation given n: what the verdict rests on.
+        X2 over all quadrats judged by simulation given n, with `eyes` where they are known: what the
+        verdict rests on.
     density : Limits or None
         Points per square centimetre with 95 % limits; None where no millimetres are known.
     poisson : PoissonFit or None
@@ -111,9 +113,11 @@ class Findings:
     crowding : Crowding or None
         The count corrected for those that lie in others' reach, or for holes hit more than once;
         None where nothing is known of either.
-    trust : Trust or None
-        What it would take to overturn the verdict, and how likely that is; None without points, and
-        with more than a million.
+    eyes : Eyes or None
+        Of the null that `simulated`, `tests` and `beyond` were drawn from: how near two may lie to
+        be seen as one; None for plain chance, as with tables.
+    plain : PlainTests or None
+        What plain chance gives beside it; None where there are no eyes.
     """
 
     name: str
@@ -149,7 +153,8 @@ class Findings:
     shown: WouldShow | None = None
     spot_check: SpotCheck | None = None
     crowding: Crowding | None = None
-    trust: Trust | None = None
+    eyes: Eyes | None = None
+    plain: PlainTests | None = None
 
     def __post_init__(self) -> None:
         hold_columns(self, ("expected", "residuals"), length=len(self.counts))
@@ -169,5 +174,5 @@ class Findings:
             return "the numbers of points and quadrats alone: too few for a test"
         return (
             f"simulated two-sided p of X2 over all {len(self.counts)} quadrats,"
-            " expected counts by area, given the total"
+            f" expected counts by area, given the total{rests_words(self.eyes)}"
         )

@@ -168,6 +168,33 @@ def compared(checked: Checked, state: Sheet, *, within: float) -> SpotCheck:
     )
 
 
+def missed_marks(sheet: Sheet, amendments: Sequence[Amendment]) -> list[list[float]]:
+    """Return the places that a person marked in a spot check and where no spot counts now.
+
+    Parameters
+    ----------
+    sheet : Sheet
+        As found.
+    amendments : sequence of Amendment
+        Its log.
+
+    Returns
+    -------
+    list of [x, y]
+        In pixels; empty where nothing was marked.
+    """
+    checked = latest_spot_check(amendments)
+    if checked is None:
+        return []
+    spots = Amended.of(sheet, amendments).state().spots
+    spots = spots.where(spots.counted)
+    marks = [each.marks for each in checked.marked.values() if each.marks is not None]
+    places = np.concatenate(marks) if marks else np.empty((0, 2))
+    pairs = match_spots(places, spots.centres, spots.radius, options=MatchOptions(radii=_REACH))
+    missed = np.delete(places, pairs.found, axis=0)
+    return [[float(x), float(y)] for x, y in missed]
+
+
 def judged_by(
     total: Limits, counted: int, within: float, recall: Limits | None, precision: Limits | None
 ) -> Trusted:

@@ -12,6 +12,7 @@ from analyse.dispersion_rows import dispersion_rows
 from analyse.distance_rows import distance_rows
 from analyse.envelope_rows import BESIDE_COLUMNS, beside_cells, envelope_rows
 from analyse.findings import Findings
+from analyse.plain_rows import EYES_COLUMNS, eyes_cells, plain_rows
 from analyse.power_rows import power_rows
 from analyse.reviewing import REVIEW_SUMMARY_COLUMNS, review_cells
 from analyse.spot_check_rows import (
@@ -20,7 +21,6 @@ from analyse.spot_check_rows import (
     spot_check_rows,
 )
 from analyse.trend_rows import trend_rows
-from analyse.trust_rows import TRUST_SUMMARY_COLUMNS, trust_cells, trust_rows
 from analyse.unseen import planted_cells, planted_rows
 from detect.files import Cell, csv_text
 
@@ -89,7 +89,7 @@ SUMMARY_COLUMNS = [
     *BESIDE_COLUMNS,
     *SPOT_CHECK_SUMMARY_COLUMNS,
     *CROWDING_SUMMARY_COLUMNS,
-    *TRUST_SUMMARY_COLUMNS,
+    *EYES_COLUMNS,
 ]
 TEST_COLUMNS = ["photograph", "statistic", "value", "low", "high", "p", "method", "n", "notes"]
 
@@ -141,7 +141,8 @@ def summary_csv(
     are of all ``quadrats``, with expected counts by area, and ``vmr_by_area`` is their chi2 / df.
     ``k`` with its limits is of whole quadrats, and ``k_note`` says what an empty one means;
     ``density_low_clumped`` and ``density_high_clumped`` are of all, by area.
-    ``p_simulated`` is two-sided and what the verdict rests on. Columns that end in ``_whole`` are
+    ``p_simulated`` is two-sided and what the verdict rests on; ``p_simulated_plain`` and
+    ``verdict_plain`` are without the detector's eyes. Columns that end in ``_whole`` are
     the chi-square test of whole quadrats.
 
     Examples
@@ -253,7 +254,7 @@ def _summary(each: Findings) -> list[Cell]:
         *beside_cells(each),
         *spot_check_cells(each),
         *crowding_cells(each),
-        *trust_cells(each),
+        *eyes_cells(each),
     ]
 
 
@@ -280,5 +281,5 @@ _PARTS = (
     envelope_rows,
     spot_check_rows,
     crowding_rows,
-    trust_rows,
+    plain_rows,
 )

@@ -7,6 +7,7 @@ from typing import TYPE_CHECKING
 
 from scipy import special
 
+from analyse.side_rows import side_rows
 from analyse.trend_record import LEVEL, Trend
 from analyse.trends import FEWEST_SPOTS
 from detect.files import Cell
@@ -19,7 +20,6 @@ _COUNTS = "log-linear trend of Poisson counts (McCullagh and Nelder 1989)"
 _NONE = (
     f"no slope fitted: fewer than {FEWEST_SPOTS} spots, all of them at one end, or too few quadrats"
 )
-_SIDES = {"clumped": "upper tail", "even": "lower tail", "two_sided": "twice the smaller tail"}
 _BEYOND = (
     "index of dispersion with expected counts by the trend, simulated given the total (Davison and"
     " Hinkley 1997)"
@@ -52,10 +52,8 @@ def trend_rows(each: Findings) -> Iterator[list[Cell]]:
     if beyond is None or clearest is None:
         return
     note = f"around the {clearest.kind} trend; {beyond.simulations} simulations, seed {each.seed}"
-    for side, words in _SIDES.items():
-        p = getattr(beyond, f"p_{side}")
-        name, method = f"chi2_around_trend_{side}", f"{_BEYOND}, {words}"
-        yield [name, beyond.statistic, None, None, p, method, len(each.counts), note]
+    name, q = "chi2_around_trend", len(each.counts)
+    yield from side_rows(name, beyond.statistic, beyond, _BEYOND, q, note)
 
 
 def _trend(trend: Trend, adjusted: float, tried: int, base: str, unit: str) -> Iterator[list[Cell]]:

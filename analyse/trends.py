@@ -2,17 +2,20 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from collections.abc import Callable
+from dataclasses import dataclass, replace
 
 import numpy as np
 
 from analyse.count_chance import SimulatedTest, simulated_p
 from analyse.count_trend import fit_count_trend
-from analyse.errors import GridWrong, TrendNotFound
+from analyse.errors import GridWrong, TooCrowded, TrendNotFound
 from analyse.holm import holm_adjusted
+from analyse.nulls import Null
 from analyse.pattern import Pattern
 from analyse.quadrats import QuadratCounts
-from analyse.trend import fit_trend
+from analyse.seen_counts import seen_p
+from analyse.trend import TrendRandomness, fit_trend
 from analyse.trend_record import LEVEL, Trend
 
 FEWEST_SPOTS = 10  # common practice, as for the verdict
@@ -77,7 +80,12 @@ def _beyond_words(test: SimulatedTest | None) -> list[str]:
 
 
 def pattern_trends(
-    pattern: Pattern, counts: QuadratCounts, *, simulations: int, rng: np.random.Generator
+    pattern: Pattern,
+    counts: QuadratCounts,
+    *,
+    simulations: int,
+    rng: np.random.Generator,
+    seen: Callable[[Null], Null] | None = None,
 ) -> Trends | None:
     """Return the trends of a pattern of points.
 
@@ -91,11 +99,19 @@ def pattern_trends(
         For that.
     rng : numpy.random.Generator
         Source of randomness.
+    seen : callable, optional
+        From a law of places to that of what is seen of them; None where points are seen as they are.
 
     Returns
     -------
     Trends or None
         None with fewer than 10 points, or where no trend can be fitted.
+
+    Notes
+    -----
+    Where eyes are known, the counts around the trend are compared with random objects along it, as
+    those eyes see them. The trend itself is fitted to what is seen, which is a little flatter than
+    what is there, since more is merged where it is denser.
 
     Examples
     --------
@@ -121,6 +137,21 @@ def pattern_trends(
     if tried.clearest is None:
         return tried
     expected = tried.clearest.expected(np.array(counts.grid.polygons, dtype=object))
+    if seen is not None:
+        law = seen(TrendRandomness(pattern.area, tried.clearest))
+        own = int(rng.integers(2**63))
+        try:
+            beyond = seen_p(
+                counts.counts,
+                counts.grid,
+                law,
+                simulations=simulations,
+                seed=own,
+                expected=_masses(expected),
+            )
+            return replace(tried, beyond=beyond)
+        except TooCrowded:  # where the gradient is densest: plain chance then
+            pass
     return _with_beyond(tried, counts, expected, simulations, rng)
 
 
@@ -180,6 +211,13 @@ def _together(fits: list[Trend]) -> Trends:
     return Trends(tuple(fits), tuple(holm_adjusted([fit.p for fit in fits]).tolist()))
 
 
+def _masses(
+    expected: np.ndarray[tuple[int], np.dtype[np.float64]],
+) -> np.ndarray[tuple[int], np.dtype[np.float64]]:
+    """Return expected counts, none of them 0."""
+    return np.asarray(np.maximum(expected, _TINY * expected.sum()))
+
+
 def _with_beyond(
     tried: Trends,
     counts: QuadratCounts,
@@ -188,6 +226,5 @@ def _with_beyond(
     rng: np.random.Generator,
 ) -> Trends:
     """Add how the counts vary around the clearest trend."""
-    weights = np.maximum(expected, _TINY * expected.sum())
-    beyond = simulated_p(counts.counts, weights, simulations=simulations, rng=rng)
+    beyond = simulated_p(counts.counts, _masses(expected), simulations=simulations, rng=rng)
     return Trends(tried.fits, tried.adjusted, beyond)

@@ -9,6 +9,7 @@ from typing import TYPE_CHECKING, Any
 import numpy as np
 
 from analyse.dispersion import Dispersion
+from analyse.seeing import rests_words
 from analyse.verdict import p_text
 
 if TYPE_CHECKING:
@@ -157,10 +158,18 @@ def method_words(findings: Findings) -> list[str]:
         )
         text.append(
             f"{rests} X\u00b2 = \u03a3 (x \u2212 E)\u00b2 / E over all quadrats, compared with"
-            f" {findings.simulated.simulations:,} sets of {n} placed at random in the same quadrats"
+            f" {findings.simulated.simulations:,} sets of {n} placed at random in the same quadrats{_as_seen(findings)}"
             f" (seed {findings.seed}); two-sided at {percent(settings['level'])}."
         )
     return text
+
+
+def _as_seen(findings: Findings) -> str:
+    """Say with which eyes the random spots were seen, and what plain chance gives."""
+    if findings.eyes is None or findings.plain is None:
+        return ""
+    words, p = rests_words(findings.eyes), p_text(findings.plain.simulated.p_two_sided)
+    return f"{words} (with points as they are, the plain null: {p})"
 
 
 def marks_words(sheet: Sheet) -> dict[str, int]:

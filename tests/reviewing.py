@@ -69,10 +69,12 @@ class Page:
     folder: Path
     sheets: list[Path]
     panel: Any = None
+    checker: Any = None
     server: Server = field(init=False)
 
     def __post_init__(self) -> None:
-        self.server = Server(self.sheets, self.panel or (lambda found, now, changes: {"now": None}))
+        panel = self.panel or (lambda found, now, changes: {"now": None})
+        self.server = Server(self.sheets, panel, self.checker)
         self.guard = Guard(self.server.app, TOKEN, PORT)
 
     def ask(

@@ -36,13 +36,13 @@ WITHOUT = {
         "dispersion_rows",
         "distance_rows",
         "envelope_rows",
+        "plain_rows",
         "power_rows",
     ),
-    *("reviewing", "rows", "spot_check_rows", "trend_rows", "trust_rows", "unseen"),
+    *("reviewing", "rows", "spot_check_rows", "trend_rows", "unseen"),
     # words and pictures
     *("blind_pictures", "curve_words", "hand_counts", "page_words", "report", "wording"),
-    "trust_words",
-    *("charts", "curve_charts", "drawn", "embedding", "figures", "marks", "trust_charts"),
+    *("charts", "curve_charts", "drawn", "embedding", "figures", "marks"),
     "errors",
 }
 Public = ast.FunctionDef | ast.ClassDef

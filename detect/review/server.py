@@ -19,7 +19,7 @@ from starlette.responses import Response, StreamingResponse
 from starlette.routing import Route
 
 from detect.amendment import SCHEMA
-from detect.errors import DetectError
+from detect.errors import DetectError, RequestWrong
 from detect.outcome import write_points, write_views
 from detect.requests import tool_version
 from detect.review.asking import (
@@ -31,6 +31,7 @@ from detect.review.asking import (
     tell_wrong,
     whole_number,
 )
+from detect.review.checking import SpotChecker, asked_draw, drawn, told
 from detect.review.fit import fit_circle, usual_radius
 from detect.review.guard import MOST_BYTES, error
 from detect.review.live import Live, Panel
@@ -60,9 +61,14 @@ class Server:
         In the order of the queue.
     panel : callable
         What the page shows of a sheet's statistics; see `detect.review.live.Panel`.
+    checker : SpotChecker or None
+        What draws and judges spot checks; None where the review is none.
     """
 
-    def __init__(self, sheets: Sequence[Path], panel: Panel) -> None:
+    def __init__(
+        self, sheets: Sequence[Path], panel: Panel, checker: SpotChecker | None = None
+    ) -> None:
+        self._checker = checker
         self.pictures, self.shapes = Pictures(), Shapes()
         self._pool = ThreadPoolExecutor(1, thread_name_prefix="statistics")
         records = [Record(path) for path in sheets]
@@ -93,6 +99,7 @@ class Server:
         yield Route(f"{sheet}/amendments", self.amend, methods=["POST"])
         yield Route(f"{sheet}/events", self.events)
         yield Route(f"{sheet}/panel", self.panel)
+        yield Route(f"{sheet}/spot_check", self.spot_check, methods=["GET", "POST"])
         yield Route(f"{sheet}/fit", self.fit)
         yield Route(f"{sheet}/picture", self.picture)
         yield Route(f"{sheet}/tiles/{{level}}/{{column}}/{{row}}", self.tile)
@@ -123,6 +130,7 @@ class Server:
             "folder": "" if first is None else first.record.path.resolve().parent.name,
             "who": _login_name(),
             "first": None if first is None else first.record.id,
+            "spot_check": self._checker is not None,
             "limits": {"body_bytes": MOST_BYTES, "amendments": MOST_AMENDMENTS, **LONGEST},
         }
         return _json(answer)
@@ -204,6 +212,25 @@ class Server:
     async def panel(self, request: Request) -> Response:
         """Answer with the newest statistics."""
         return _json(await self._live(request).panel())
+
+    async def spot_check(self, request: Request) -> Response:
+        """Draw the quadrats of a spot check where asked to, and tell how far it is."""
+        live, checker = self._live(request), self._checker
+        if checker is None:
+            raise Wrong(
+                404, "not_found", "This review is no spot check; start it with --spot-check."
+            )
+        if request.method == "POST":
+            who, again = asked_draw(await request.body())
+            try:
+                answer = await asyncio.to_thread(drawn, live.record, checker, who, again=again)
+            except RequestWrong as trouble:
+                raise Wrong(409, "request", str(trouble)) from trouble
+            live.ring()
+            if answer is not None and answer.trouble is not None:
+                code = "disk_full" if answer.disk_is_full else "not_writable"
+                return error(507, code, str(answer.trouble))
+        return _json(await asyncio.to_thread(told, live.record, checker))
 
     async def fit(self, request: Request) -> Response:
         """Fit a circle to the picture at a point."""

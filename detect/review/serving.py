@@ -15,6 +15,7 @@ from typing import Any
 import uvicorn
 
 from detect.errors import OptionWrong
+from detect.review.checking import SpotChecker
 from detect.review.guard import Guard
 from detect.review.keys import Key, fresh_token, remember, remembered
 from detect.review.live import Panel
@@ -31,6 +32,7 @@ def serve(
     port: int | None = None,
     open_page: bool = True,
     say: Callable[[str], None],
+    checker: SpotChecker | None = None,
 ) -> None:
     """Serve the review of some sheets until Ctrl-C.
 
@@ -46,6 +48,8 @@ def serve(
         Whether to open the browser.
     say : callable
         Shows a line to the person.
+    checker : SpotChecker or None
+        What draws and judges spot checks, where the review is one.
 
     Raises
     ------
@@ -54,7 +58,7 @@ def serve(
     """
     folder = sheets[0].parent
     listening, key = bind(folder, port or 0)
-    server = Server(sheets, panel)
+    server = Server(sheets, panel, checker)
     url = f"http://{HOST}:{key.port}/{key.token}/"
     with listening:
         if not remember(folder, key):

@@ -21,6 +21,7 @@ VALUES = {
     "duplicates": 2,
     "touching": "1.14 mm",
     "width": "1.5 mm",
+    "blind": 0.6,
     "dish_notes": "several round things are seen",
     "counted": "362",
     "corrected": "400",

@@ -230,3 +230,14 @@ def test_columns_cannot_be_changed_and_the_input_is_left_alone() -> None:
 def test_a_point_that_is_no_number_is_refused_not_left_out() -> None:
     with pytest.raises(ValueError, match="a point is not finite"):
         Pattern.of([[1, 1], [math.nan, 2]], (0, 0, 10, 10))
+
+
+def test_a_round_area_of_a_table_is_a_dish() -> None:
+    """It once was none, so that no gradient from its edge was tried and no rings could be laid."""
+    disc = Pattern.of([[1, 2]], shapely.Point(3, 4).buffer(10))
+    assert disc.dish is not None
+    assert (disc.dish.x, disc.dish.y) == pytest.approx((3, 4))
+    assert disc.dish.radius == pytest.approx(10, rel=2e-3)
+    holed = shapely.Point(3, 4).buffer(10).difference(shapely.Point(3, 9).buffer(1))
+    for area in (shapely.box(0, 0, 5, 5), shapely.Point(3, 4).buffer(10, quad_segs=2), holed):
+        assert Pattern.of([[1, 2]], area).dish is None

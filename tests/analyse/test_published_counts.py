@@ -32,6 +32,7 @@ SERIES = (
     "bliss_fisher1953_mites",
     "greenwood_yule1920",
     "mcguire1957_cornborer",
+    "bliss_fisher1953_ticks",
 )
 
 
@@ -201,6 +202,14 @@ def test_negative_binomial_k(
     ):
         if value is not None:
             assert told.value(series, statistic) == pytest.approx(value, abs=6e-5)
+
+
+def test_ticks_on_sheep(told: Tables) -> None:
+    """Bliss and Fisher (1953), after Fisher (1941): mean 3.25 and k 3.75, all from memory."""
+    assert float(told.summary["bliss_fisher1953_ticks.csv"]["mean"]) == 3.25
+    assert told.value("bliss_fisher1953_ticks", "negative_binomial_k") == pytest.approx(
+        3.75, abs=5e-3
+    )
 
 
 @pytest.mark.parametrize(

@@ -23,7 +23,7 @@ from analyse.count_trend import fit_count_trend
 from analyse.errors import TrendNotFound
 from analyse.findings import analyse_counts, analyse_points
 from analyse.nulls import random_points
-from analyse.pattern import Circle, CountTable, Pattern
+from analyse.pattern import CountTable, Pattern
 from analyse.quadrats import GridOptions, QuadratCounts, count_in_quadrats, lay_grid
 from analyse.quadrature import quadrature
 from analyse.trend import Trend, TrendModel, TrendRandomness, fit_trend
@@ -351,9 +351,7 @@ def test_a_dish_is_tried_both_ways() -> None:
     disc = shapely.Point(0, 0).buffer(43, quad_segs=60)
     x = random_points(disc, 900, np.random.default_rng(8))
     x = x[np.random.default_rng(9).random(900) < np.exp(-2.5 * (x**2).sum(axis=1) / 43**2)]
-    plain = Pattern.of(x, disc)
-    fields = {name: getattr(plain, name) for name in Pattern.__slots__}
-    dish = Pattern(**(fields | {"dish": Circle(0.0, 0.0, 43.0)}))
+    dish = Pattern.of(x, disc)
     grid = lay_grid(disc, len(x))
     counts = QuadratCounts(count_in_quadrats(x, grid), grid.area, grid.whole, grid)
     found = pattern_trends(dish, counts, simulations=199, rng=np.random.default_rng(1))

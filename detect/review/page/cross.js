@@ -1,6 +1,7 @@
 // The cross: what a pointer does, done by keys. Arrows move it, Enter clicks, D takes hold and lets go.
 
 import { tell } from "./bell.js";
+import { blind } from "./blind.js";
 import { byId } from "./elements.js";
 import { hand } from "./hand.js";
 import { ringAt } from "./hits.js";
@@ -46,6 +47,7 @@ export function moveTo(x, y) {
 /** Says what lies under the cross. */
 function tellUnder() {
   const { spots } = sheet;
+  if (blind.on) return say(`${Math.round(hand.cross.x)}, ${Math.round(hand.cross.y)}.`);
   const row = ringAt(spots, hand.cross.x, hand.cross.y, 6 / view.scale);
   const place = `${Math.round(hand.cross.x)}, ${Math.round(hand.cross.y)}`;
   say(row < 0 ? `${place}: no ring.` : `${place}: ${describe(spots.at(row))}`);

@@ -5,6 +5,7 @@ import { tell } from "./bell.js";
 import { markAndNext } from "./checked.js";
 import { hold, press, step } from "./cross.js";
 import { callFalse, callReal, next, previous } from "./doubtful.js";
+import { blind } from "./blind.js";
 import { byId } from "./elements.js";
 import { toggle as toggleHelp } from "./help.js";
 import { keep, kept } from "./kept.js";
@@ -83,6 +84,11 @@ function belongsElsewhere(event) {
   return target.isContentEditable || ["TEXTAREA", "SELECT"].includes(target.tagName) || (target.tagName === "INPUT" && target.type !== "checkbox");
 }
 
+/** Single letters, digits and signs that act now. */
+function letters() {
+  return blind.on ? blind.keys : LETTERS;
+}
+
 /** A key goes down. */
 function pressed(event) {
   if (event.isComposing || belongsElsewhere(event)) return;
@@ -90,7 +96,7 @@ function pressed(event) {
   if (event.altKey || event.ctrlKey || event.metaKey) return;
   const own = event.target === byId("stage") || event.target === document.body;
   const key = event.key.length === 1 ? event.key.toLowerCase() : event.key;
-  const row = (own ? ON_STAGE : []).find(([keys]) => keys.includes(key)) ?? (choice.letters ? LETTERS : []).find(([keys]) => keys.includes(key));
+  const row = (own ? ON_STAGE : []).find(([keys]) => keys.includes(key)) ?? (choice.letters ? letters() : []).find(([keys]) => keys.includes(key));
   if (!row) return;
   event.preventDefault();
   const repeats = row[0].includes("ArrowLeft") || ["+", "=", "-", "[", "]"].includes(key);
@@ -102,6 +108,7 @@ function turned(event) {
   const key = event.key.toLowerCase();
   if (key !== "z" && key !== "y") return;
   event.preventDefault();
+  if (blind.on) return blind.undo();
   if (key === "y" || event.shiftKey) redo();
   else undo();
 }

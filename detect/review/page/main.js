@@ -20,6 +20,7 @@ import * as photograph from "./photograph.js";
 import * as pointer from "./pointer.js";
 import * as queue from "./queue.js";
 import { open, sheet } from "./sheet.js";
+import * as spotCheck from "./spot_check.js";
 import * as stage from "./stage.js";
 import * as status from "./status.js";
 import * as tools from "./tools.js";
@@ -109,6 +110,7 @@ async function start() {
   person.start(session.who, session.limits.who);
   checked.start(session.limits.text);
   takeUp();
+  spotCheck.start(session.spot_check);
   await openSheet(await early.first.id);
   tell("who");
   document.body.dataset.ready = "yes";

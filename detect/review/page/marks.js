@@ -28,6 +28,12 @@ export function handleUnder(sx, sy, reach) {
   return null;
 }
 
+/** Whether there is anything to draw on this layer. */
+export function anyMarks() {
+  const { preview, ghosts, hovered, chosen } = marks;
+  return hand.cross.shown || (layers.rings && (preview.length || ghosts.length || hovered !== null || chosen !== null || Boolean(hand.tool?.draw)));
+}
+
 /** Draws everything of this layer. */
 export function drawMarks(context) {
   if (layers.rings) {

@@ -7,6 +7,7 @@ import { view } from "./view.js";
 
 const SHARP_ABOVE = 3; // screen pixels for one pixel, above which pixels are shown as they are
 const [MOST_TILES, MOST_AT_ONCE] = [300, 4];
+const SOFT = 1.12; // screen pixels for one of a reduced copy, up to which it is shown
 const SMALLEST_COPY = 900; // pixels on the longer side
 
 /** The photograph that is shown; `trouble` says why there is none. */
@@ -55,7 +56,7 @@ async function addCopies(wanted) {
 export function drawPhotograph(context, { scale, x, y, width, height } = view) {
   context.imageSmoothingEnabled = scale < SHARP_ABOVE;
   if (photograph.kind === "tiles") return drawTiles(context, { scale, x, y, width, height });
-  const fits = photograph.copies.filter((copy) => copy.shrink * scale * view.dpr <= 1.01);
+  const fits = photograph.copies.filter((copy) => copy.shrink * scale * view.dpr <= SOFT);
   const copy = fits[fits.length - 1] ?? photograph.copies[0];
   if (copy) drawPart(context, copy.bitmap, [-0.5, -0.5, photograph.width, photograph.height], { scale, x, y, width, height });
   return 0;

@@ -1,5 +1,6 @@
 // The rings: true radius; shape and colour by standing, origin and doubt; on a layer of their own.
 
+import { blind } from "./blind.js";
 import { sheet } from "./sheet.js";
 import { view } from "./view.js";
 
@@ -10,7 +11,6 @@ const ORDER = [4, 0, 1, 2, 3]; // doubtful and struck ones last, so that nothing
 const HALO = "rgba(8, 13, 18, 0.72)";
 const LARGEST_SPRITE = 64; // screen pixels of radius; larger ones are few, and drawn as they are
 const ROOM = 14; // around a ring for its marks
-const SLICE = 9; // milliseconds of drawing before the page may do something else
 
 const sprites = new Map();
 
@@ -92,6 +92,7 @@ function sprite(look, radius) {
 
 /** Returns the rows in a rectangle of the photograph by look, struck ones only where they are wanted. */
 export function rowsBy(x0, y0, x1, y1, withStruck) {
+  if (blind.on) return [];
   const { spots } = sheet;
   const rows = LOOKS.map(() => []);
   const reach = spots.buckets.largest + ROOM / view.scale;
@@ -104,13 +105,11 @@ export function rowsBy(x0, y0, x1, y1, withStruck) {
   return ORDER.map((look) => rows[look].map((row) => [row, look])).flat();
 }
 
-/** Draws some rings, from one index on, until time is up; returns the index that comes next. */
-export function drawRings(context, rows, from, seen, until = Infinity) {
-  for (let index = from; index < rows.length; index += 1) {
-    drawOne(context, rows[index], seen);
-    if (index % 64 === 63 && performance.now() > until) return index + 1;
-  }
-  return rows.length;
+/** Draws rings from one index to another; returns the index that comes next. */
+export function drawRings(context, rows, from, seen, until = rows.length) {
+  const end = Math.min(until, rows.length);
+  for (let index = from; index < end; index += 1) drawOne(context, rows[index], seen);
+  return end;
 }
 
 /** Draws one ring of a list. */
@@ -121,9 +120,4 @@ function drawOne(context, [row, look], seen) {
   if (radius > LARGEST_SPRITE) return drawRing(context, look, x, y, radius);
   const { canvas, half } = sprite(look, Math.max(2.5, Math.round(2 * radius) / 2));
   context.drawImage(canvas, x - half, y - half, 2 * half, 2 * half);
-}
-
-/** When a slice of drawing that begins now must end. */
-export function sliceEnd() {
-  return performance.now() + SLICE;
 }

@@ -3,14 +3,15 @@
 import { on } from "./bell.js";
 import { byId } from "./elements.js";
 import { drawGround } from "./ground.js";
-import { drawMarks } from "./marks.js";
+import { anyMarks, drawMarks } from "./marks.js";
 import { drawPhotograph } from "./photograph.js";
-import { drawRings, rowsBy, sliceEnd } from "./rings.js";
+import { drawRings, rowsBy } from "./rings.js";
 import { layers } from "./looks.js";
 import { sheet } from "./sheet.js";
 import { resize, view } from "./view.js";
 
 const FEW = 1200; // rings that are drawn anew in every frame; more are shifted as a picture
+const SLICE = 1500; // rings in one frame, so that the page can do something else in between
 const STILL = 90; // milliseconds without a movement, after which many rings are drawn anew
 
 const canvases = Object.fromEntries(["photograph", "ground", "rings", "marks"].map((name) => [name, byId(`layer-${name}`)]));
@@ -18,7 +19,7 @@ const contexts = Object.fromEntries(Object.entries(canvases).map(([name, canvas]
 const back = { canvas: byId("layer-rings-back"), context: byId("layer-rings-back").getContext("2d") };
 const stale = { photograph: true, ground: true, rings: true, marks: true };
 const shown = { ground: null, rings: null }; // the view that a layer was drawn for
-let [frame, job, lastMove, stillTimer] = [0, null, 0, 0];
+let [frame, job, lastMove, stillTimer, marked] = [0, null, 0, 0, false];
 
 /** Asks for layers to be drawn anew in the next frame. */
 export function redraw(...names) {
@@ -47,7 +48,7 @@ function drawFrame() {
   if (stale.ground) clean("ground", drawGround), (shown.ground = { ...view }), place(canvases.ground, view);
   if (stale.rings) startRings();
   if (job) goOn();
-  if (stale.marks) clean("marks", drawMarks);
+  if (stale.marks && (anyMarks() || marked)) clean("marks", drawMarks), (marked = anyMarks());
   Object.assign(stale, { photograph: false, ground: false, rings: false, marks: false });
 }
 
@@ -71,8 +72,7 @@ function startRings() {
 
 /** Draws some more rings; when all are there, the two layers change places. */
 function goOn() {
-  const end = job.rows.length > FEW ? sliceEnd() : Infinity;
-  job.next = drawRings(back.context, job.rows, job.next, job.seen, end);
+  job.next = drawRings(back.context, job.rows, job.next, job.seen, job.next + SLICE);
   if (job.next < job.rows.length) {
     if (!frame) frame = requestAnimationFrame(drawFrame);
     return;

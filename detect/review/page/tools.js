@@ -2,6 +2,7 @@
 
 import { setBar } from "./bar.js";
 import { on, tell } from "./bell.js";
+import { blind } from "./blind.js";
 import { byId, button, make } from "./elements.js";
 import { hand, letGo } from "./hand.js";
 import { areaTool } from "./tool_area.js";
@@ -30,6 +31,7 @@ export function take(name) {
 
 /** Steps back: ends a drag, then what a tool has begun, then puts the tool away. */
 export function stepBack() {
+  if (blind.on) return;
   if (letGo() || hand.tool.escape?.()) {
     say("Left as it was.");
     tell("marks");

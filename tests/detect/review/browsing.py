@@ -54,14 +54,15 @@ def browser_path() -> str:
 class Server:
     """`strewn review` in a process of its own."""
 
-    def __init__(self, folder: Path, state: Path) -> None:
-        self.folder, self._state = folder, state
+    def __init__(self, folder: Path, state: Path, *options: str) -> None:
+        self.folder, self._state, self._options = folder, state, options
         self.process: subprocess.Popen[str] | None = None
         self.url = ""
 
     def start(self, **more: Any) -> None:
         """Start it, on the port it had before if it ran before."""
         command = [sys.executable, "-m", "analyse", "review", str(self.folder), "--no-open"]
+        command += self._options
         own = {
             "XDG_STATE_HOME": str(self._state),
             "XDG_CACHE_HOME": str(self._state),
