@@ -20,6 +20,7 @@ from analyse.quick import verdict_as_found
 from analyse.report import RenderedPage, render_page, write_report
 from analyse.spot_check import spot_check_of
 from analyse.tables import quadrats_csv, summary_csv, tests_csv
+from analyse.trust_rows import look_first_csv
 from detect.amended import current_state
 from detect.amendments import Amendment
 from detect.batch import Failure
@@ -147,7 +148,7 @@ def _with_holes(findings: Findings, counts: ArrayLike, holes: int | None) -> Fin
 def write_results(
     results: Sequence[Analysed], failures: Sequence[Failure], folder: Path, trial: Trial
 ) -> Path:
-    """Write quadrats.csv, summary.csv, tests.csv, curves.csv and report.html.
+    """Write quadrats.csv, summary.csv, tests.csv, curves.csv, look_first.csv and report.html.
 
     Parameters
     ----------
@@ -177,6 +178,7 @@ def write_results(
     write_text_atomically(folder / "summary.csv", summary_csv(findings, factors=factors))
     write_text_atomically(folder / "tests.csv", tests_csv(findings))
     write_text_atomically(folder / "curves.csv", curves_csv(findings))
+    write_text_atomically(folder / "look_first.csv", look_first_csv(findings))
     report = folder / "report.html"
     write_report(
         [result.page for result in results],

@@ -8,7 +8,9 @@ from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
+from scipy import special
 
+from analyse.chance import LEVEL
 from analyse.count_chance import SimulatedTest
 from analyse.dispersion import checked_areas, checked_counts
 from analyse.extremes import (
@@ -45,7 +47,8 @@ class Judge:
     At the total n this is the reported test. At another total m the two critical values keep their
     distance from the mean q - 1 in standard deviations, which are known exactly:
     Var(X2) = 2 (q - 1) + (sum 1/p - q^2 - 2q + 2) / m for shares p of the area. So the same
-    simulations judge all totals, and chance does not decide between neighbouring ones.
+    simulations judge all totals, and chance does not decide between neighbouring ones. Fewer than 10
+    points were never judged; there the quantiles of chi-square stand in.
 
     References
     ----------
@@ -74,6 +77,11 @@ class Judge:
         x, share = checked_counts(counts), _shares(areas)
         return cls(int(x.sum()), x.size, test.low, test.high, float((1 / share).sum()))
 
+    @property
+    def too_few_quadrats(self) -> bool:
+        """Whether no number of points would be enough."""
+        return self.q < FEWEST_QUADRATS
+
     def spread(self, totals: ArrayLike) -> NDArray[np.float64]:
         """Return the standard deviation of X2 at random, for each total."""
         m, q = np.asarray(totals, dtype=np.float64), self.q
@@ -82,8 +90,12 @@ class Judge:
 
     def limits(self, totals: ArrayLike) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
         """Return the critical values, low and high, for each total of at least 1."""
-        df, ratio = self.q - 1, self.spread(totals) / self.spread(self.n)
-        return df + (self.low - df) * ratio, df + (self.high - df) * ratio
+        df, low, high = self.q - 1, self.low, self.high
+        here = self.spread(self.n) if self.n >= FEWEST_SPOTS else math.sqrt(2 * df)
+        if self.n < FEWEST_SPOTS:
+            low, high = special.chdtri(df, [1 - LEVEL / 2, LEVEL / 2])
+        ratio = self.spread(totals) / here
+        return df + (low - df) * ratio, df + (high - df) * ratio
 
     def signs(self, chi2: ArrayLike, totals: ArrayLike) -> NDArray[np.int64]:
         """Return 1 for clumped, -1 for even and 0 for neither, whatever the number of points."""
@@ -96,7 +108,7 @@ class Judge:
         """Return the verdict on other counts in the same quadrats."""
         x, share = checked_counts(counts), _shares(areas)
         m = int(x.sum())
-        if m < FEWEST_SPOTS or self.q < FEWEST_QUADRATS:
+        if m < FEWEST_SPOTS or self.too_few_quadrats:
             return "too few to tell"
         sign = int(self.signs((x * x / share).sum() / m - m, m))
         return ("no departure from random found", "clumped", "evenly spaced")[sign]
@@ -218,6 +230,32 @@ def breaking_point(
     return search.result()
 
 
+def false_to_change(
+    counts: NDArray[np.int64],
+    areas: ArrayLike,
+    judge: Judge,
+    *,
+    verdict: Verdict,
+    removable: NDArray[np.int64],
+    limit: int,
+) -> int | None:
+    """Return the fewest false points alone that change a verdict, if no more than `limit` do.
+
+    Examples
+    --------
+    >>> counts, areas = np.array([9, 0, 1, 0, 6, 0, 0, 8, 0, 1]), np.ones(10)
+    >>> from analyse.count_chance import simulated_p
+    >>> judge = Judge.of(counts, areas, simulated_p(counts, areas, rng=np.random.default_rng(1)))
+    >>> false_to_change(counts, areas, judge, verdict="clumped", removable=counts, limit=20)
+    14
+    >>> false_to_change(counts, areas, judge, verdict="clumped", removable=counts, limit=5) is None
+    True
+    """
+    if judge.too_few_quadrats or judge.n < FEWEST_SPOTS:
+        return None
+    return _Search(counts, 1 / _shares(areas), removable, judge, verdict).false(limit)[0]
+
+
 class _Search:
     """The smallest numbers of errors, kind by kind."""
 
@@ -250,17 +288,19 @@ class _Search:
 
     def result(self) -> BreakingPoint:
         """Return the breaking point."""
-        false, too_few = self._false()
+        false, too_few = self.false()
         missed = self._missed()
         bounds = [many for many in (false, missed) if many is not None]
         either = self._either(min(bounds)) if bounds else None
         verdict: Verdict = ("no departure from random found", "clumped", "evenly spaced")[self.sign]
         return BreakingPoint(self.n, verdict, false, missed, either, too_few, self.exact)
 
-    def _false(self) -> tuple[int | None, bool]:
-        """Return the fewest removals, and whether they count only as leaving too few."""
-        most = min(self.n - FEWEST_SPOTS, int(self.spare.sum()))
-        enough = most < int(self.spare.sum())  # one more leaves too few
+    def false(self, limit: int | None = None) -> tuple[int | None, bool]:
+        """Return the fewest removals up to a limit, and whether they only leave too few."""
+        spare = int(self.spare.sum())
+        spare = spare if limit is None else min(spare, limit)
+        most = min(self.n - FEWEST_SPOTS, spare)
+        enough = most < spare  # one more leaves too few
         found = most + 1
         if self.down:
             least = least_after_removals(self.counts, self.weights, self.spare, most)

@@ -24,6 +24,8 @@ FLAGS: dict[str, str] = {
     " checked as they stand.",
     "doubtful": "Counted spots that are more likely false than real: {doubtful} of {n};"
     " check them (orange in the pictures).",
+    "recall_assumed": "Nobody has measured what the detector misses here: behind the share of draws and the"
+    " limits with detection error stands what it misses on drawn scenes. Detect with --planted.",
     "outside": "Points outside the study area, which were left out: {outside}.",
     "duplicates": "Points at the very place of another: {duplicates}; check for double entries.",
     "touching": "Nearer than {touching} there are too few neighbours, and a spot is usually {width}"

@@ -37,6 +37,7 @@ from analyse.quadrats import QuadratCounts
 from analyse.said import Findings
 from analyse.seeing import PlainTests, Seeing, eyes_sentence, judge_seen, seen_null
 from analyse.trends import Trends, pattern_trends, table_trends
+from analyse.trust import assumed, trust_in
 from analyse.verdict import LEVEL, Verdict, decide, detectable, sentence
 
 
@@ -120,6 +121,13 @@ def judged(subject: Subject, seed: int, simulations: int, workers: int = 1) -> F
     seen = _seen(verdict, everything, weights)
     shown = _shown(verdict, everything, subject)
     trend = _trends(subject, seeing, seed, simulations)
+    trust = trust_in(
+        subject.pattern,
+        subject.counts,
+        simulated,
+        verdict=verdict,
+        rng=stream(seed, f"{subject.name}, draws"),
+    )
     beside = Beside()
     if subject.pattern is not None:
         gradient = None if trend is None else trend.clearest
@@ -165,6 +173,7 @@ def judged(subject: Subject, seed: int, simulations: int, workers: int = 1) -> F
         shown=shown,
         flags=subject.flags
         + seeing.flags
+        + ("recall_assumed",) * assumed(trust)
         + ("touching",) * bool(touching)
         + (() if crowding is None else crowding.flags)
         + count_flags(values),
@@ -185,6 +194,7 @@ def judged(subject: Subject, seed: int, simulations: int, workers: int = 1) -> F
         plain=None
         if seeing.eyes is None
         else PlainTests(unseen, plain, beside.plain, beside.plain_holm),
+        trust=trust,
     )
 
 

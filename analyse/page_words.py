@@ -9,6 +9,7 @@ from analyse.curve_words import curves_said
 from analyse.look import MOST_COUNTS
 from analyse.marks import photograph_inches
 from analyse.reviewing import review_sentence
+from analyse.trust_words import trust_alt, trust_said
 from analyse.unseen import planted_sentence
 from analyse.wording import (
     area_words,
@@ -93,6 +94,8 @@ def page_words(
         "poisson": " ".join(filter(None, (poisson_words(findings), law_words(findings)))),
         "beside": _beside(findings),
         "curves": curves_said(findings),
+        "trust": trust_said(findings),
+        "trust_alt": trust_alt(findings),
         "columns": _columns(findings),
         "numbers": number_rows(findings),
         "method": method_words(findings),

@@ -13,10 +13,11 @@ from analyse.density import density_per_cm2
 from analyse.errors import AnalyseError
 from analyse.flags import count_flags, flag_sentences
 from analyse.grid_options import GridOptions, default_side
+from analyse.influence import look_first
 from analyse.models import poisson_frequencies
 from analyse.pattern import Pattern, pattern_of_state
 from analyse.pooling import LARGEST_COUNT
-from analyse.quadrats import Grid, lay_grid
+from analyse.quadrats import Grid, lay_grid, quadrats_of
 from analyse.quick import QuickTest, quick_test
 from analyse.verdict import p_text
 from analyse.wording import number, several
@@ -78,6 +79,7 @@ class PanelOf:
             "said": None,
             "frequencies": None if test is None else _frequencies(test),
             "quadrats": None if test is None else _outlines(test, now.scale),
+            "look_first": None if test is None else _look_first(test),
         }
         if changed and test is not None and before is not None:
             panel["said"] = (
@@ -111,6 +113,25 @@ class PanelOf:
             grid = lay_grid(pattern.area, len(pattern), self._options, pattern.unit, pattern.dish)
             self._grid = key, grid
         return self._grid[1]
+
+
+def _look_first(test: QuickTest) -> dict[str, Any] | None:
+    """Return which spots to look at first; None where a person has checked all, or nothing doubts them."""
+    pattern, counts = test.pattern, test.counts
+    unsure = pattern.doubt > 0
+    checked = pattern.changes is not None and pattern.changes.is_checked
+    if checked or counts.grid is None or counts.area is None or not unsure.any():
+        return None
+    where = quadrats_of(pattern.points, counts.grid)
+    look = look_first(
+        pattern.doubt, counts.counts, counts.area, where, test.simulated, verdict=test.verdict
+    )
+    return {
+        "order": [pattern.spots[k] for k in look.order.tolist() if unsure[k]],
+        "decisive": look.decisive,
+        "settled": look.settled,
+        "said": look.sentence,
+    }
 
 
 def _brief(test: QuickTest) -> dict[str, Any]:

@@ -86,6 +86,8 @@ class Pattern:
         Radius of each point in `unit`, NaN where not known; an empty one stands for none known.
     sought : str
         What a detector looked for: colonies, seedlings, lesions or spots; empty where none did.
+    spots : tuple of str
+        Ids of the points on their sheet; empty for what is no photograph.
 
     Raises
     ------
@@ -113,6 +115,7 @@ class Pattern:
     width: float = math.nan
     radius: NDArray[np.float64] = field(default_factory=lambda: np.empty(0))
     sought: str = ""
+    spots: tuple[str, ...] = ()
 
     def __post_init__(self) -> None:
         points: NDArray[np.float64] = np.array(self.points, dtype=np.float64).reshape(-1, 2)
@@ -317,6 +320,7 @@ def pattern_of_state(sheet: Sheet, changes: Changes) -> Pattern:
         2 * float(np.median(radii)) if len(radii) else math.nan,
         radii,
         str(sheet.settings.get("kind", "")),
+        spots.id,
     )
 
 

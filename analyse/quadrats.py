@@ -241,12 +241,37 @@ def count_in_quadrats(points: ArrayLike, grid: Grid) -> NDArray[np.int64]:
     >>> count_in_quadrats([[0, 0], [1, 1], [2, 1]], grid).tolist()
     [1, 2]
     """
+    return np.bincount(quadrats_of(points, grid), minlength=len(grid)).astype(np.int64)
+
+
+def quadrats_of(points: ArrayLike, grid: Grid) -> NDArray[np.int64]:
+    """Return which quadrat each point lies in, as `count_in_quadrats` counts it.
+
+    Parameters
+    ----------
+    points : array_like of shape (n, 2)
+        Points in the study area, x, y in the unit of the grid.
+    grid : Grid
+        The quadrats.
+
+    Returns
+    -------
+    ndarray of int, shape (n,)
+        Positions in the grid, from 0.
+
+    Examples
+    --------
+    >>> import shapely
+    >>> grid = lay_grid(shapely.box(0, 0, 2, 1), 2, GridOptions(shape=(1, 2)))
+    >>> quadrats_of([[0, 0], [1, 1], [2, 1]], grid).tolist()
+    [0, 1, 1]
+    """
     xy = np.asarray(points, dtype=np.float64).reshape(-1, 2)
     quadrat = grid.home[grid.cells.cell(xy)]
     for i in np.flatnonzero(quadrat < 0):
         away = shapely.distance(shapely.Point(xy[i]), np.array(grid.polygons, dtype=object))
         quadrat[i] = int(np.argmin(away))
-    return np.bincount(quadrat, minlength=len(grid)).astype(np.int64)
+    return np.asarray(quadrat, dtype=np.int64)
 
 
 def _clipped(

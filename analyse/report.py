@@ -23,12 +23,13 @@ from analyse.figures import (
 )
 from analyse.findings import Findings
 from analyse.page_words import page_words
+from analyse.trust_charts import trust_figure
 from detect.files import write_text_atomically
 from detect.photograph import Photograph, read_photograph
 from detect.sheet import Sheet
 
 TITLE = "Counts and dispersion"
-_FIGURES = ("photograph", "marks", "points", "residuals", "frequencies", *LOOKS)
+_FIGURES = ("photograph", "marks", "points", "residuals", "frequencies", "trust", *LOOKS)
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -65,7 +66,7 @@ class RenderedPage:
         What the template prints.
     figures : dict of str to bytes
         Pictures by name: ``photograph`` (JPEG), ``marks`` (SVG to lie over it), ``points``,
-        ``residuals``, ``frequencies`` and the curves of `analyse.curve_charts.LOOKS` (SVG). Those
+        ``residuals``, ``frequencies``, ``trust`` and the curves of `analyse.curve_charts.LOOKS` (SVG). Those
         that cannot be drawn are missing.
     """
 
@@ -109,6 +110,9 @@ def page_figures(page: ReportPage) -> dict[str, bytes]:
     if findings.n > 0 and findings.poisson is not None:
         figure = plain_figure(draw_frequencies, findings, width=4.8, height=3.9)
         figures["frequencies"] = svg_bytes(figure)
+    doubt = None if findings.trust is None else findings.trust.doubt
+    if doubt is not None and doubt.count.low < doubt.count.high:
+        figures["trust"] = svg_bytes(trust_figure(doubt, findings.density))
     if findings.tests is not None and findings.unit is not None:
         for name in LOOKS:
             if name in findings.tests.envelopes:

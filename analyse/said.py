@@ -30,6 +30,7 @@ if TYPE_CHECKING:
     from analyse.crowding import Crowding
     from analyse.global_tests import GlobalTests
     from analyse.spot_check import SpotCheck
+    from analyse.trust import Trust
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -118,6 +119,9 @@ class Findings:
         be seen as one; None for plain chance, as with tables.
     plain : PlainTests or None
         What plain chance gives beside it; None where there are no eyes.
+    trust : Trust or None
+        What it would take to overturn the verdict, and how likely that is; None without points, and
+        with more than a million.
     """
 
     name: str
@@ -155,6 +159,7 @@ class Findings:
     crowding: Crowding | None = None
     eyes: Eyes | None = None
     plain: PlainTests | None = None
+    trust: Trust | None = None
 
     def __post_init__(self) -> None:
         hold_columns(self, ("expected", "residuals"), length=len(self.counts))

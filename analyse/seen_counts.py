@@ -8,13 +8,12 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
-from analyse.count_chance import SimulatedTest, check_simulations
+from analyse.count_chance import SimulatedTest, check_simulations, judged_among
 from analyse.nulls import Null
 from analyse.quadrats import Grid, count_in_quadrats
 from analyse.simulated_curves import simulate_curves
 
 Floats = NDArray[np.float64]
-_TIE = 1e-9  # statistics closer than this share of themselves count as equal
 
 
 def seen_p(
@@ -92,10 +91,7 @@ def seen_p(
     drawn = simulate_curves(
         ratio, null, n=n, simulations=simulations, seed=seed, workers=workers
     )[:, 0]  # fmt: skip
-    tie = _TIE * max(1.0, own)
-    upper = (1 + int((drawn >= own - tie).sum())) / (simulations + 1)
-    lower = (1 + int((drawn <= own + tie).sum())) / (simulations + 1)
-    return SimulatedTest(own, upper, lower, min(1.0, 2 * min(upper, lower)), simulations)
+    return judged_among(own, drawn)
 
 
 @dataclass(frozen=True, slots=True, eq=False)

@@ -21,6 +21,7 @@ from analyse.spot_check_rows import (
     spot_check_rows,
 )
 from analyse.trend_rows import trend_rows
+from analyse.trust_rows import TRUST_SUMMARY_COLUMNS, trust_cells, trust_rows
 from analyse.unseen import planted_cells, planted_rows
 from detect.files import Cell, csv_text
 
@@ -90,6 +91,7 @@ SUMMARY_COLUMNS = [
     *SPOT_CHECK_SUMMARY_COLUMNS,
     *CROWDING_SUMMARY_COLUMNS,
     *EYES_COLUMNS,
+    *TRUST_SUMMARY_COLUMNS,
 ]
 TEST_COLUMNS = ["photograph", "statistic", "value", "low", "high", "p", "method", "n", "notes"]
 
@@ -255,6 +257,7 @@ def _summary(each: Findings) -> list[Cell]:
         *spot_check_cells(each),
         *crowding_cells(each),
         *eyes_cells(each),
+        *trust_cells(each),
     ]
 
 
@@ -282,4 +285,5 @@ _PARTS = (
     spot_check_rows,
     crowding_rows,
     plain_rows,
+    trust_rows,
 )

@@ -39,10 +39,11 @@ WITHOUT = {
         "plain_rows",
         "power_rows",
     ),
-    *("reviewing", "rows", "spot_check_rows", "trend_rows", "unseen"),
+    *("reviewing", "rows", "spot_check_rows", "trend_rows", "trust_rows", "unseen"),
     # words and pictures
     *("blind_pictures", "curve_words", "hand_counts", "page_words", "report", "wording"),
-    *("charts", "curve_charts", "drawn", "embedding", "figures", "marks"),
+    "trust_words",
+    *("charts", "curve_charts", "drawn", "embedding", "figures", "marks", "trust_charts"),
     "errors",
 }
 Public = ast.FunctionDef | ast.ClassDef

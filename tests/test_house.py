@@ -15,7 +15,7 @@ ROOMS = sorted([*(ROOT / "detect").rglob("*.py"), *(ROOT / "analyse").rglob("*.p
 DRAWING = {"analyse/figures.py", "detect/overlay.py"}
 # Also drawing, one question each: how a mark looks, and how a figure becomes part of a page.
 DRAWING |= {"analyse/charts.py", "analyse/marks.py", "analyse/embedding.py"}
-DRAWING |= {"analyse/curve_charts.py"}
+DRAWING |= {"analyse/curve_charts.py", "analyse/trust_charts.py"}
 # The one chart of the first half: axes, ticks and text are not to be drawn by hand.
 DRAWING |= {"detect/reliability_chart.py"}
 

@@ -103,7 +103,9 @@ def test_a_sheet_is_analysed_with_its_photograph(sheets: Path, tmp_path: Path) -
     assert lines[3:] == [f"Tables: {out}", f"Report: {out / 'report.html'}"]
     assert "Note: No person has checked these spots" in result.stderr
     names = sorted(path.name for path in out.iterdir())
-    assert names == ["curves.csv", "quadrats.csv", "report.html", "summary.csv", "tests.csv"]
+    assert names == [
+        "curves.csv", "look_first.csv", "quadrats.csv", "report.html", "summary.csv", "tests.csv",
+    ]  # fmt: skip
     (row,) = csv.DictReader((out / "summary.csv").read_text(encoding="utf-8").splitlines())
     assert float(row["density_per_cm2"]) == pytest.approx(24 / (420 * 320 * 0.0625) * 100)
     quadrats = csv.DictReader((out / "quadrats.csv").read_text(encoding="utf-8").splitlines())
@@ -386,7 +388,7 @@ def test_a_folder_is_surveyed_by_options(beds: Path, tmp_path: Path) -> None:
     assert "bed_1.png" in result.stdout
     assert sorted(path.name for path in out.iterdir()) == [
         "bed_1.overlay.jpg", "bed_1.points.csv", "bed_1.sheet.json", "curves.csv",
-        "quadrats.csv", "report.html",
+        "look_first.csv", "quadrats.csv", "report.html",
         "summary.csv", "tests.csv",
     ]  # fmt: skip
     rows = list(csv.DictReader((out / "quadrats.csv").read_text(encoding="utf-8").splitlines()))

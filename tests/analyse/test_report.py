@@ -287,7 +287,7 @@ def test_few_or_no_spots_make_a_page_without_nan(n, matrix):
         assert wrong not in page.text
     assert f"Count {several(n, 'spot')}" in page.text
     pictures = len([image for image in page.all("img") if image["alt"]])
-    assert pictures == 1 + (n > 0) + (n > 0 and findings.poisson is not None)
+    assert pictures == 1 + 2 * (n > 0) + (n > 0 and findings.poisson is not None)
 
 
 def test_a_page_in_pixels_says_so():

@@ -62,7 +62,7 @@ class Scene:
         """For each spot whether it is a true object."""
         real = np.zeros(len(self.sheet.spots), dtype=bool)
         matched = match_spots(self.sheet.spots.centres, self.truth.xy, self.truth.radius)
-        real[matched.spots] = True
+        real[matched.found] = True
         return real
 
 
@@ -75,7 +75,7 @@ def kept(folder: Path, *, fewest: int = FEWEST_OBJECTS) -> Iterator[Scene]:
             yield scene
 
 
-def make(folder: Path, name: str, seed: int) -> str:
+def make(folder: Path, name: str, seed: int, rounds: int) -> str:
     """Draw, detect and keep one scene, and say what came of it."""
     stem = f"{name}_{seed}"
     if (folder / f"{stem}.sheet.json").exists():
@@ -86,10 +86,11 @@ def make(folder: Path, name: str, seed: int) -> str:
     if len(objects) < FEWEST_OBJECTS:
         return f"only {len(objects)} objects: left out"
     row = records.trial_row(stem, shot, len(objects), "small scene")
+    planted = {"planted": rounds} if rounds else {}
     with tempfile.TemporaryDirectory() as at:
         path = Path(at) / f"{stem}.jpg"
         path.write_bytes(jpeg(draw.draw(shot), shot.exposure.quality))
-        _, sheet = detect_photograph(path, parse_request(asked(row) | {"planted": ROUNDS}))
+        _, sheet = detect_photograph(path, parse_request(asked(row) | planted))
     records.write_objects(folder / f"{stem}.truth.csv", objects)
     write_sheet(sheet, folder)
     return f"{len(objects)} objects, {len(sheet.spots)} spots"
@@ -99,6 +100,7 @@ def main() -> None:
     parser = argparse.ArgumentParser(description=__doc__.splitlines()[0])
     parser.add_argument("--out", type=Path, required=True)
     parser.add_argument("--first", type=int, required=True)
+    parser.add_argument("--rounds", type=int, default=ROUNDS, help="of planted objects; 0 for none")
     for name in ("dishes", "plots", "leaves"):
         parser.add_argument(f"--{name}", type=int, default=0)
     chosen = parser.parse_args()
@@ -114,7 +116,7 @@ def main() -> None:
     ]
     for _, name, seed in sorted(wanted):  # kinds in turn, so that a part of a run is mixed as well
         try:
-            print(f"{name}_{seed}", make(chosen.out, name, seed), flush=True)
+            print(f"{name}_{seed}", make(chosen.out, name, seed, chosen.rounds), flush=True)
         except (DetectError, RuntimeError, ValueError) as trouble:
             print(f"{name}_{seed} left out: {trouble}", flush=True)
 
