@@ -319,7 +319,7 @@ def pattern_of_state(sheet: Sheet, changes: Changes) -> Pattern:
         changes,
         2 * float(np.median(radii)) if len(radii) else math.nan,
         radii,
-        str(sheet.settings.get("kind", "")),
+        str(sheet.settings.get("detector", {}).get("kind", "spots")),
         spots.id,
     )
 

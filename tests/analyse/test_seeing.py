@@ -14,14 +14,15 @@ import shapely
 
 from analyse import tables
 from analyse.count_chance import SimulatedTest
-from analyse.eyes import Eyes
+from analyse.eyes import DEFAULTS, Eyes
 from analyse.findings import analyse_pattern
 from analyse.nulls import CompleteRandomness
-from analyse.pattern import Pattern
+from analyse.pattern import Pattern, pattern_from_sheet
 from analyse.plain_rows import EYES_COLUMNS
 from analyse.quick import quick_test
 from analyse.seeing import Seeing, avoids_overlap, eyes_sentence, rests_words
 from analyse.seen_randomness import SeenRandomness
+from tests.analyse.finished import sheet_of
 from tests.patterns import apart, thomas
 
 DISH = shapely.Point(0, 0).buffer(43)
@@ -95,6 +96,17 @@ def test_the_page_of_the_reviewer_says_the_same(merged: Any) -> None:
     assert quick.simulated == merged.simulated
     fewer = quick_test(merged.pattern, seed=3, simulations=999, points_at_most=1000)
     assert fewer.simulated.simulations == 99
+
+
+def test_the_eyes_of_a_sheet_are_those_of_what_was_looked_for() -> None:
+    """The kind stands among the detector's settings; read elsewhere, no sheet had eyes."""
+    sheet = sheet_of(CompleteRandomness(DISH).draw(60, np.random.default_rng(2)) * 3 + 160)
+    for settings, sought in (({"detector": {"kind": "lesions"}}, "lesions"), ({}, "spots")):
+        pattern = pattern_from_sheet(replace(sheet, settings=settings))
+        assert pattern.sought == sought
+        eyes = Eyes.of(pattern)
+        assert eyes is not None
+        assert (eyes.blind, eyes.source) == (DEFAULTS[sought][0], "default")
 
 
 def test_workers_do_not_change_it(merged: Any) -> None:
