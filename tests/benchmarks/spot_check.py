@@ -10,10 +10,13 @@ or clumped, 40 to 300 of them, in 16 to 144 quadrats, of which 5 to 30 are drawn
 from __future__ import annotations
 
 import argparse
+import sys
 from dataclasses import dataclass
 from pathlib import Path
 
 import numpy as np
+
+sys.path.insert(0, str(Path(__file__).resolve().parents[2]))
 
 from analyse.double_sampling import (
     DoubleSample,
