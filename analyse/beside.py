@@ -100,7 +100,10 @@ def judge_beside(
     judge = partial(global_tests, pattern, workers=workers)
     own = own_seed(seed, pattern.name)
     null = None if eyes is None else seen_null(pattern, eyes)
-    tests = judge(seed=own, null=null, simulations=simulations)
+    try:
+        tests = judge(seed=own, null=null, simulations=simulations)
+    except TooCrowded:  # of so many a rare pattern cannot be drawn: points as they are, then
+        tests = judge(seed=own, simulations=simulations)
     plain = None
     if tests is not None and eyes is not None:
         plain = judge(seed=own, simulations=min(simulations, PLAIN_SIMULATIONS))
