@@ -30,6 +30,7 @@ from analyse.pattern import Pattern, pattern_from_sheet
 from analyse.quick import QuickTest, quick_test
 from analyse.recalls import DrawOptions
 
+POINTS = 20_000  # drawn by the simulations of one test, to save time: 99 or a few more of them
 SPREADS = (0.0, 0.3, 0.5, 0.7, 0.85, 1.0, 1.2, 1.4, 1.7, 2.0)
 
 
@@ -82,7 +83,7 @@ def fit(scenes: list[Scene]) -> None:
 def drawn(scene: Scene, options: DrawOptions) -> tuple[Pattern, QuickTest, UnderDoubt]:
     """The draws of one scene."""
     pattern = pattern_from_sheet(scene.sheet)
-    test = quick_test(pattern)
+    test = quick_test(pattern, points_at_most=POINTS)
     judge = Judge.of(test.counts.counts, test.counts.area, test.simulated)
     rng = stream(1, f"{pattern.name}, draws")
     return (
@@ -111,9 +112,8 @@ def truly(scene: Scene) -> str:
     """The verdict on the true objects, in the study area as it was found."""
     pattern = pattern_from_sheet(scene.sheet)
     points = scene.sheet.scale.to_mm(scene.objects) if scene.sheet.scale else scene.objects
-    return quick_test(
-        Pattern.of(points, pattern.area, name=pattern.name, unit=pattern.unit)
-    ).verdict
+    true = Pattern.of(points, pattern.area, name=pattern.name, unit=pattern.unit)
+    return quick_test(true, points_at_most=POINTS).verdict
 
 
 def measure(scenes: list[Scene]) -> None:
