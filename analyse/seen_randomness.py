@@ -9,7 +9,7 @@ import numpy as np
 import shapely
 from numpy.typing import NDArray
 from scipy.sparse import coo_matrix
-from scipy.sparse.csgraph import connected_components
+from scipy.sparse.csgraph import connected_components, minimum_spanning_tree
 from scipy.spatial import cKDTree
 from shapely.geometry.base import BaseGeometry
 
@@ -296,18 +296,13 @@ def _candidates(xy: Floats, reach: Floats) -> Ints:
 
 def _unions(pairs: Ints, m: int) -> NDArray[np.int64]:
     """Return how many groups each object joins into one, beyond its own, when it comes after those before."""
-    joined = [0] * m
-    parent = list(range(m))
-    for i, j in pairs[np.argsort(pairs.max(axis=1))].tolist():
-        later = i if i > j else j
-        while parent[i] != i:
-            parent[i] = i = parent[parent[i]]
-        while parent[j] != j:
-            parent[j] = j = parent[parent[j]]
-        if i != j:
-            parent[i] = j
-            joined[later] += 1
-    return np.asarray(joined, dtype=np.int64)
+    if not len(pairs):
+        return np.zeros(m, dtype=np.int64)
+    later = pairs.max(axis=1)
+    # Of a spanning forest that takes early pairs first, each edge is one such join.
+    links = coo_matrix((later + 1.0, pairs.T), shape=(m, m))
+    joins = minimum_spanning_tree(links).data.astype(np.int64) - 1
+    return np.asarray(np.bincount(joins, minlength=m), dtype=np.int64)
 
 
 def _nearer(xy: Floats, radii: Floats, within: float) -> Ints:

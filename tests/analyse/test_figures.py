@@ -358,7 +358,7 @@ def test_a_spot_too_small_to_see_gets_a_mark_that_shows():
 def test_thousands_of_spots_stay_small():
     sheet = sheet_of(scattered(8000))
     spots = sheet.spots
-    sheet = replace(sheet, spots=replace(spots, radius=np.full(len(spots), 1.0)))
+    sheet = replace(sheet, spots=replace(spots, radius=np.full(len(spots), 0.5)))
     findings = findings_of(sheet, side="60px")
     assert len(svg_bytes(photograph_figure(findings, sheet))) < 1_300_000
 
