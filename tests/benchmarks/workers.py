@@ -4,8 +4,9 @@
 
 The folder holds N copies of the sample's crowded dish enlarged to 6 megapixels, each with noise of
 its own. What is timed is `strewn detect FOLDER` as a person runs it, in a process of its own, start
-and end included; a worker is one core (OpenCV's threads keep to it), as `--workers` says; runs with one and two workers take turns, so that a busy machine harms both. Below
-it stands what the machine itself allows: the same ratio for two processes that only decode.
+and end included. A worker is one core, to which OpenCV's threads keep too, as `--workers` says.
+Runs with one and two workers take turns, so that a busy machine harms both. Below it stands what
+the machine itself allows: the same ratio for two processes that only decode.
 """
 
 from __future__ import annotations
@@ -56,7 +57,7 @@ def decode(photo: Path, processes: int, times: int) -> float:
 
 def main() -> None:
     parser = argparse.ArgumentParser(description=__doc__.splitlines()[0])
-    parser.add_argument("--photographs", type=int, default=24)
+    parser.add_argument("--photographs", type=int, default=80)
     parser.add_argument("--runs", type=int, default=3)
     asked = parser.parse_args()
     with tempfile.TemporaryDirectory() as name:
